@@ -1,0 +1,8 @@
+//! The physics: pure functions of numbers and of a checked layout.
+
+pub mod array_time;
+pub mod constants;
+pub mod dd;
+pub mod motion;
+pub mod plan;
+
