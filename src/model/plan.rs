@@ -64,6 +64,13 @@ impl Phase {
         }
         let gone = at.attoseconds() - origin.attoseconds();
         let left = length.attoseconds() - gone;
+        // The ends themselves are exact: the sign of a rate is decided there.
+        if gone == 0 {
+            return Dd::new(from_m_s2);
+        }
+        if left == 0 {
+            return Dd::new(to_m_s2);
+        }
         weighted(from_m_s2, left, to_m_s2, gone).to_dd() / Dd::from_i128(length.attoseconds())
     }
 
@@ -381,8 +388,7 @@ fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), P
         return Err(PlanFault::TooLong { phase: index });
     }
     for acceleration_m_s2 in [phase.line.from_m_s2, phase.line.to_m_s2] {
-        // A comparison that a NaN fails.
-        if !(acceleration_m_s2.abs() <= LARGEST_ACCELERATION_M_S2) {
+        if acceleration_m_s2.is_nan() || acceleration_m_s2.abs() > LARGEST_ACCELERATION_M_S2 {
             return Err(PlanFault::TooStrong { phase: index, acceleration_m_s2 });
         }
     }
