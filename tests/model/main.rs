@@ -1,1 +1,6 @@
-fn main() {}
+//! The library against identities, independent references and published values.
+
+mod identities;
+mod published;
+mod reference;
+mod tolerance;

@@ -34,7 +34,7 @@ Checks made before anything is written
   per proper time) is alpha/N, and the integral of sqrt(dt^2 - dz^2/c^2) is tau + h phi/c.
 * Two nodes keep their distance in the instantaneous rest frame of either (Born rigidity).
 * Light sent from a node to the reference under held thrust, as null rays in the launch frame,
-  arrives with frequency ratio 1/N.
+  arrives with wavelength ratio 1/N.
 
 Files
 -----
@@ -344,8 +344,8 @@ def launch_values(plan, positions, moments):
 # Checks from first principles ---------------------------------------------------------------------
 
 
-def close(wanted, got, digits, what):
-    scale = max(abs(wanted), abs(got))
+def close(wanted, got, digits, what, least_scale=0):
+    scale = max(abs(wanted), abs(got), least_scale)
     if scale != 0 and abs(wanted - got) > scale * mpf(10) ** -digits:
         raise AssertionError(f"{what}: {mp.nstr(wanted, 30)} against {mp.nstr(got, 30)}")
 
@@ -361,7 +361,9 @@ def check_exponential(line, times):
         with mp.workdps(80):
             phi = number(line.plan.rapidities(time)[0])
             close(mp.cosh(phi), cosh, 42, f"{line.plan.name}: cosh of the rapidity")
-            close(mp.sinh(phi), sinh, 42, f"{line.plan.name}: sinh of the rapidity")
+            # The least scale lets a plan return to a rapidity of exactly zero.
+            what = f"{line.plan.name}: sinh of the rapidity"
+            close(mp.sinh(phi), sinh, 42, what, mpf(10) ** -60)
 
 
 def chord(line, position, time, half):
@@ -395,7 +397,9 @@ def check_felt(plan, position, moment):
         felt = C2 * (after - before) / interval(*chord(line, position, time, wide))
         alpha = plan.acceleration(time)
         wanted = number(alpha / (1 + alpha * Fraction(position) / C2))
-        close(wanted, felt, 20, f"{plan.name}: felt acceleration at {position!r} m, {moment} as")
+        # The scale keeps a coast, and a moment at which the thrust crosses zero, comparable.
+        what = f"{plan.name}: felt acceleration at {position!r} m, {moment} as"
+        close(wanted, felt, 20, what, mpf(10) ** -40)
     return 1
 
 
@@ -457,13 +461,17 @@ def check_rigidity(plan, position, other, moment):
         t_other, _, z_other, _ = line.event(when, other)
         away, later = z_other - z, C * (t_other - t)
         distance = mp.sqrt((away - later) * (away + later))
-        wanted = mpf(abs(Fraction(other) - Fraction(position)))
+        wanted = number(abs(Fraction(other) - Fraction(position)))
         close(wanted, distance, 30, f"{plan.name}: rest-frame distance")
     return 1
 
 
 def check_redshift(plan, position, moment):
-    """Two rays sent to the reference under one hold arrive 1/N times as often as they were sent."""
+    """Rays sent to the reference under one hold arrive 1/N times as far apart as they were sent.
+
+    This is the wavelength ratio, so that a node on the aft side under forward thrust has a positive
+    redshift; the frequency ratio is N.
+    """
     time = Fraction(moment, ATTO)
     line = Worldline(plan, digits_for(plan, plan.end_as) + 200)
     side = 1 if position < 0 else -1
@@ -486,7 +494,7 @@ def check_redshift(plan, position, moment):
         heard = received(time + narrow) - received(time - narrow)
         sent = interval(*chord(line, position, time, narrow)) / C
         rate = 1 + plan.acceleration(time) * Fraction(position) / C2
-        close(number(1 / rate), sent / number(heard), 30, f"{plan.name}: redshift by null rays")
+        close(number(1 / rate), number(heard) / sent, 30, f"{plan.name}: redshift by null rays")
     return 1
 
 
@@ -521,7 +529,7 @@ def check_integrator():
         close(-C2 * 2 * mp.sinh(phi_end / 2) ** 2 / mpf(1e6), z, 60, "hyperbola of a hold, z")
 
 
-# Inputs ---------------------------------------------------------------------------------------------
+# Inputs ---------------------------------------------------------------------------------------
 
 
 class Generator:
@@ -831,7 +839,7 @@ def add_grid(cases):
             cases.add(plan, "grid", positions, moments)
 
 
-# Tables ---------------------------------------------------------------------------------------------
+# Tables ---------------------------------------------------------------------------------------
 
 
 def forty(value):
@@ -940,7 +948,8 @@ def horizon_inputs(cases, generator):
             plan = random_plan(generator, f"horizon_random_{index:02d}", count, Fraction(20, count))
         cases.plan(plan)
         near(plan, [peak for peak in (plan.highest, plan.lowest) if peak != 0.0])
-    plan = cases.plan(Plan("horizon_1g_steps", [(ATTO, gees(f"{k}"), gees(f"{k}")) for k in (1, 2, 3)]))
+    steps = [(ATTO, gees(text), gees(text)) for text in ("1", "2", "3")]
+    plan = cases.plan(Plan("horizon_1g_steps", steps))
     near(plan, [gees("1"), gees("2"), gees("3")])
     return inputs
 
@@ -974,7 +983,7 @@ def check_sample(groups):
             done["rigidity"] += check_rigidity(plan, position, other, moment)
     one = gees("1")
     year = Plan("year", [(YEAR_S * ATTO, one, one)])
-    for position in (-1e15, -8e15, 1e15, 4e15):
+    for position in (-1e15, -4e15, 1e15, 4e15):
         done["redshift"] += check_redshift(year, position, YEAR_S * ATTO // 5)
         done["redshift"] += check_redshift(year.mirrored(), -position, YEAR_S * ATTO // 5)
     assert min(done.values()) >= 8, done
