@@ -1,0 +1,7 @@
+//! stub
+/// stub
+pub struct Extreme;
+/// stub
+pub struct Extremes;
+/// stub
+pub struct Range;
