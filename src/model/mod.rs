@@ -8,4 +8,4 @@ pub mod links;
 pub mod motion;
 pub mod plan;
 pub mod rates;
-
+pub mod reach;

@@ -88,8 +88,7 @@ fn every_flight() {
         let at = attoseconds(&row["emitted_as"]);
         let (from_m, to_m) = (number(&row["from_m"]), number(&row["to_m"]));
         let kind = row["kind"].as_str();
-        let input =
-            format!("{kind}, plan {} at {at} s, {from_m:e} m to {to_m:e} m", row["plan"]);
+        let input = format!("{kind}, plan {} at {at} s, {from_m:e} m to {to_m:e} m", row["plan"]);
         let k = |key: &str| row[key].parse::<f64>().unwrap_or(0.0);
         let (from_moved, to_moved) =
             (following(plan, k("from_k_s2")), following(plan, k("to_k_s2")));
@@ -126,7 +125,13 @@ fn every_flight() {
         let shift = wanted("received_shift");
         if held {
             let scale = shift.abs();
-            judged.compare("received_shift, one hold", flight.received_shift, &shift, &scale, &input);
+            judged.compare(
+                "received_shift, one hold",
+                flight.received_shift,
+                &shift,
+                &scale,
+                &input,
+            );
             assert_eq!(flight.shift_rate_per_s, 0.0, "{input}");
             assert_eq!(trip.two_way_error_s, 0.0, "{input}");
             continue;
@@ -148,7 +153,13 @@ fn every_flight() {
         let error = wanted("two_way_error_s");
         if kind == "ramp" {
             let scale = error.abs();
-            judged.compare("two_way_error_s, one ramp", trip.two_way_error_s, &error, &scale, &input);
+            judged.compare(
+                "two_way_error_s, one ramp",
+                trip.two_way_error_s,
+                &error,
+                &scale,
+                &input,
+            );
         } else {
             // A millionth of the value or 1e-22 s.
             let scale = error.abs() + exact(1e-16);

@@ -32,6 +32,7 @@ mod shift;
 mod two_way;
 
 pub use extremes::{Extreme, Extremes, Range};
+pub(crate) use one_way::later;
 pub use one_way::{End, Flight, Moved, NoFlight};
 pub use rays::{Ray, Rays};
 pub use two_way::RoundTrip;

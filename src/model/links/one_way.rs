@@ -115,7 +115,9 @@ impl fmt::Display for NoFlight {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         f.write_str(match self {
             NoFlight::Horizon => "a node is at or behind the horizon",
-            NoFlight::Step => "the thrust steps while the signal is under way on a line that stretches",
+            NoFlight::Step => {
+                "the thrust steps while the signal is under way on a line that stretches"
+            }
             NoFlight::Outrun => "the receiver outruns the signal while this thrust is held",
         })
     }

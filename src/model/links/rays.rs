@@ -143,9 +143,7 @@ impl Block {
             sums: [fore_sum, aft_sum],
             changes: [fore_change, aft_change],
             swing,
-            is_usable: self.is_usable
-                && next.is_usable
-                && swing.hi.abs() <= LARGEST_BLOCK_SWING,
+            is_usable: self.is_usable && next.is_usable && swing.hi.abs() <= LARGEST_BLOCK_SWING,
         }
     }
 }
@@ -187,7 +185,7 @@ pub(crate) struct Place {
 
 impl Place {
     /// The place some seconds later in the same piece.
-    fn after(self, seconds: Dd) -> Place {
+    pub(crate) fn after(self, seconds: Dd) -> Place {
         let room = if self.room == ENDLESS { ENDLESS } else { self.room - seconds };
         Place { piece: self.piece, offset: self.offset + seconds, room }
     }
@@ -460,13 +458,7 @@ impl Way {
     /// The end of the way inside a stretch; `None` when it is not there, `Some(None)` when
     /// the stretch has no end and the node outruns the ray for ever.
     #[inline]
-    fn finish(
-        &self,
-        push: Dd,
-        slope: Dd,
-        room: Dd,
-        drift: Option<Drift>,
-    ) -> Option<Option<Last>> {
+    fn finish(&self, push: Dd, slope: Dd, room: Dd, drift: Option<Drift>) -> Option<Option<Last>> {
         let is_endless = room == ENDLESS;
         let rate = self.target * push + 1.0;
         // The rate where the ray is, which the gap leads to.
@@ -531,7 +523,11 @@ impl Way {
         for _ in 0..200 {
             let (beyond, derivative, reached) = excess(seconds);
             over = reached;
-            if beyond.is_negative() { low = seconds.hi } else { high = seconds.hi };
+            if beyond.is_negative() {
+                low = seconds.hi
+            } else {
+                high = seconds.hi
+            };
             let step = beyond.hi / derivative;
             let mut next = seconds - step;
             if !(next.hi >= low && next.hi <= high) {
@@ -601,7 +597,9 @@ fn cut(
         let zero = stretch
             .moment_of(Dd::ZERO)
             .and_then(ArrayTime::nearest)
-            .map(|after| ArrayTime::from_attoseconds(stretch.start.attoseconds() + after.attoseconds()))
+            .map(|after| {
+                ArrayTime::from_attoseconds(stretch.start.attoseconds() + after.attoseconds())
+            })
             .filter(|&at| at > stretch.start && at < stretch.end);
         for end in zero.into_iter().chain([stretch.end]) {
             let start = *edges.last().expect("the start");
@@ -611,7 +609,9 @@ fn cut(
             let count = ((swing / LARGEST_SWING).ceil().max(1.0) as i128).min(whole);
             let (part, rest) = (whole / count, whole % count);
             edges.extend((1..=count).map(|index| {
-                ArrayTime::from_attoseconds(start.attoseconds() + part * index + rest * index / count)
+                ArrayTime::from_attoseconds(
+                    start.attoseconds() + part * index + rest * index / count,
+                )
             }));
         }
     } else {

@@ -8,7 +8,7 @@
 use crate::model::dd::Dd;
 
 /// `ln 2` to 107 bits (DLMF 4.2.1; OEIS A002162).
-const LN_2: Dd = Dd { hi: 0.693_147_180_559_945_3, lo: 2.319_046_813_846_299_6e-17 };
+const LN_2: Dd = Dd { hi: std::f64::consts::LN_2, lo: 2.319_046_813_846_299_6e-17 };
 
 /// Number of stored reciprocals: the longest series below needs about fifty terms.
 const RECIPROCAL_COUNT: usize = 72;
