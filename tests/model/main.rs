@@ -3,5 +3,6 @@
 mod identities;
 mod links;
 mod published;
+mod reach;
 mod reference;
 mod tolerance;

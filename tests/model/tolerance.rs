@@ -167,6 +167,55 @@ pub const ALLOWED: &[Allowed] = &[
         scale: "value + 1e-16 s, so 1e-22 s where it is small",
         reason: "difference of two double-double clock times",
     },
+    Allowed {
+        quantity: "arrives_array_s",
+        required: 1e-14,
+        held: 2.0 * U,
+        scale: "sum of the moduli of the terms over the slope, + 1e-4 s for the attosecond",
+        reason: "null coordinates in double-double",
+    },
+    Allowed {
+        quantity: "launch times of a signal",
+        required: 1e-14,
+        held: 1.0 * U,
+        scale: "sum of the moduli of the terms",
+        reason: "null coordinates in double-double",
+    },
+    Allowed {
+        quantity: "ln_ratio",
+        required: 1e-14,
+        held: 2.0 * U,
+        scale: "total rapidity + what the arrival may be off times the acceleration",
+        reason: "the rapidity itself, rounded once",
+    },
+    Allowed {
+        quantity: "last_call_s",
+        required: 1e-14,
+        held: 1.0 * U,
+        scale: "sum of the moduli of the terms",
+        reason: "null coordinates in double-double",
+    },
+    Allowed {
+        quantity: "reception of a released node",
+        required: 1e-14,
+        held: 1.0 * U,
+        scale: "value",
+        reason: "the ray of a link from a point farther off",
+    },
+    Allowed {
+        quantity: "passes",
+        required: 1e-14,
+        held: 4.0 * U,
+        scale: "sum of the moduli of the terms over the slope + value",
+        reason: "positions in double-double, times in doubles",
+    },
+    Allowed {
+        quantity: "closing_speed_m_s",
+        required: 1e-14,
+        held: 6.0 * U,
+        scale: "value + what the moment may be off times the acceleration",
+        reason: "hyperbolic tangent of the relative rapidity",
+    },
 ];
 
 /// The row of a quantity.

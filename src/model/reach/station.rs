@@ -87,7 +87,7 @@ fn is_before(first: Place, second: Place) -> bool {
 
 impl Rays {
     /// `∫ e^(∓φ) dτ` from array time zero to a place, s, times [`LAUNCH_SCALE`]: first for rays
-    /// towards the fore end, then aft. Reckoned from the nearer end of the piece.
+    /// towards the fore end, then aft.
     pub(crate) fn null(&self, place: Place) -> [Dd; 2] {
         let piece = &self.pieces()[place.piece];
         let (origin, push, seconds) = if self.pieces().len() == 1 {
@@ -95,10 +95,11 @@ impl Rays {
             (&Piece { rapidity: Dd::ZERO, null: [Dd::ZERO; 2], ..*piece }, piece.push, {
                 place.offset + piece.start.seconds()
             })
-        } else if place.offset < place.room {
+        } else if place.piece > 0 {
             (piece, piece.push, place.offset)
         } else {
-            (&self.pieces()[place.piece + 1], piece.end_push, -place.room)
+            // Array time zero is nearer than the start of the domain.
+            (&self.pieces()[1], piece.end_push, -place.room)
         };
         let mut null = origin.null;
         for (side, sign) in [1.0, -1.0].into_iter().enumerate() {

@@ -37,6 +37,7 @@ Files
 import math
 import random
 import sys
+from bisect import bisect_right
 from fractions import Fraction
 from pathlib import Path
 
@@ -161,19 +162,13 @@ class World:
         """The same at an array time; before the plan the line rests."""
         if tau < 0:
             return (tau, 0, self.one, 0, 0, 0, 0)
-        low, high = 0, len(self.starts)
-        while high - low > 1:
-            middle = (low + high) // 2
-            low, high = (middle, high) if self.starts[middle] <= tau else (low, middle)
+        low = bisect_right(self.starts, tau) - 1
         return self.step(self.pieces[low], tau - self.starts[low])
 
     def slope(self, tau):
         if tau < 0:
             return 0
-        index = 0
-        while index + 1 < len(self.starts) and self.starts[index + 1] <= tau:
-            index += 1
-        return self.pieces[index][2]
+        return self.pieces[bisect_right(self.starts, tau) - 1][2]
 
 
 class Node:
@@ -253,14 +248,29 @@ def meet(node, event, sign, tau, guess):
         dt, dz = node.velocity(state, at)
         return (t - event[0]) - sign * (z - event[1]), dt - sign * dz, world.one
 
-    high = max(guess, tau + 1)
-    width = max(high - tau, world.one >> 40)
-    while ahead(high)[0] < 0:
-        high += width
-        width *= 4
-        if high > world.one * 10**40:
+    if ahead(tau)[0] >= 0:
+        return tau
+    return solve_along(world, ahead, tau, guess)
+
+
+def solve_along(world, function, low, guess):
+    """Root of a rising function of array time, negative at `low`; piece by piece first."""
+    first, last = bisect_right(world.starts, low), len(world.starts)
+    while first < last:
+        middle = (first + last) // 2
+        if function(world.starts[middle])[0] < 0:
+            low, first = world.starts[middle], middle + 1
+        else:
+            last = middle
+    if first < len(world.starts):
+        high = world.starts[first]
+    else:
+        # The line coasts, so the function is a straight line.
+        value, slope, one = function(low)
+        high = low - value * one // slope + (1 << 70)
+        if high > world.one * 10**12:
             return None
-    return solve(ahead, tau, high, min(max(guess, tau), high))
+    return solve(function, low, high, min(max(guess, low), high))
 
 
 def gamma(world, dt, dz):
@@ -355,7 +365,7 @@ def link(plan, case, digits):
 def until_agreed(work, digits):
     """Works a case with two precisions until they agree."""
     first, _ = work(digits)
-    while True:
+    while first is not None:
         digits += 40
         second, world = work(digits)
         agreed = True
@@ -373,6 +383,7 @@ def until_agreed(work, digits):
         if agreed:
             return second, world
         first = second
+    return None, None
 
 
 # Plans and cases drawn at random ---------------------------------------------------------------
@@ -495,7 +506,8 @@ def inside_one_phase(plan, start, end_fixed, world):
 
 def digits_for(plan, spans, moments):
     longest = max([1.0] + [abs(m) / ATTO for m in moments])
-    return 85 + max(0, math.log10(C * longest / min(spans)))
+    # In steps, so that the worldlines of a plan can be used again.
+    return 85 + 20 * math.ceil(max(0, math.log10(C * longest / min(spans))) / 20)
 
 
 FLIGHT_KEYS = [
@@ -578,6 +590,311 @@ def add_flight(rows, plan, case):
     rows.append(",".join(cells))
 
 
+# Stations --------------------------------------------------------------------------------------
+
+
+STATION_KEYS = [
+    "node_array_s", "node_scale_s", "sent_launch_s", "arrives_launch_s", "age_launch_s",
+    "launch_scale_s", "ln_ratio", "ln_scale", "received_shift", "last_call_s", "last_scale_s",
+]
+
+
+def node_moment_at_launch(node, launch):
+    """Array time at which a node has a launch time."""
+    world = node.world
+
+    def ahead(at):
+        state = world.at(at)
+        t, _ = node.event(state)
+        dt, _ = node.velocity(state, at)
+        return t - launch, dt, world.one
+
+    low, width = -world.one, world.one
+    while ahead(low)[0] >= 0:
+        low, width = low - width, 4 * width
+    return solve_along(world, ahead, low, launch)
+
+
+def scales(world, node, tau, station, sign):
+    """Sums of moduli at the node's event: over the slope, and of its launch time."""
+    state = world.at(tau)
+    real = world.real
+    null = abs(real(state[0] - sign * state[1]))
+    factor = real(state[2] - sign * state[3])
+    h = abs(real(node.h))
+    rate = 1 + real(world.mul(node.h, state[6]))
+    moduli = null + h * factor
+    launch = abs(real(state[0])) + abs(real(state[1])) + h * real(state[2]) + abs(station)
+    return moduli, rate * factor, launch
+
+
+def contact(plan, case, digits):
+    world = plan.world(digits)
+    node = Node(world, case["node"])
+    station = world.fix(Fraction(case["station"]) / C)
+    out = dict.fromkeys(STATION_KEYS)
+    if case["direction"] == "to line":
+        sent = world.fix(Fraction(case["sent"]))
+        start = node_moment_at_launch(node, sent)
+        if start is None:
+            return None, world
+        _, z = node.event(world.at(start))
+        sign = 1 if z > station else -1
+        tau = meet(node, (sent, station), sign, start, start + abs(z - station))
+        if tau is None:
+            return None, world
+        arrives, _ = node.event(world.at(tau))
+        ratio_sign = -sign
+        moduli, slope, launch = scales(world, node, tau, world.real(station), sign)
+        moduli += abs(world.real(sent)) + abs(world.real(station))
+        out["node_array_s"] = world.real(tau)
+        out["node_scale_s"] = moduli / slope
+        push = world.real(world.at(tau)[6])
+        extra = abs(push) * moduli / slope
+    else:
+        tau = world.fix(Fraction(case["sent"], ATTO))
+        sent, z = node.event(world.at(tau))
+        sign = -1 if z > station else 1
+        arrives = sent + abs(z - station)
+        ratio_sign = sign
+        _, _, launch = scales(world, node, tau, world.real(station), sign)
+        extra = 0
+    state = world.at(tau)
+    out["sent_launch_s"] = world.real(sent)
+    out["arrives_launch_s"] = world.real(arrives)
+    out["age_launch_s"] = world.real(arrives - sent)
+    out["launch_scale_s"] = launch + abs(world.real(sent))
+    # From the four-velocity in the launch frame, not from the rapidity.
+    out["ln_ratio"] = ratio_sign * mp.log(world.real(state[2] + state[3]))
+    out["ln_scale"] = world.real(state[5]) + extra
+    out["received_shift"] = mp.expm1(out["ln_ratio"])
+    if case["direction"] == "to station" and state[6] != 0:
+        push, one = world.real(state[6]), world.one
+        side = 1 if push > 0 else -1
+        # The centre of the hyperbola; t - z of it loses the digits of exp(2 phi).
+        with mp.workdps(60 + int(1.8 * plan.largest)):
+            push = world.real(state[6])
+            centre_t = world.real(state[0]) - world.real(state[3]) / push
+            centre_z = world.real(state[1]) - world.real(state[2]) / push
+            out["last_call_s"] = centre_t + side * (world.real(station) - centre_z)
+        null = abs(world.real(state[0] - side * state[1]))
+        factor = world.real(state[2] - side * state[3])
+        out["last_scale_s"] = abs(world.real(station)) + null + factor / abs(push)
+    return out, world
+
+
+def contact_agreed(plan, case, digits):
+    first, _ = contact(plan, case, digits)
+    while first is not None:
+        digits += 40
+        second, _ = contact(plan, case, digits)
+        agreed = all(
+            value is None or abs(value - first[key]) <= mpf(10) ** (-33) * abs(value)
+            or abs(value) < mpf(10) ** (-70)
+            for key, value in second.items()
+        )
+        if agreed:
+            return second
+        first = second
+    return None
+
+
+def stations(plans_out):
+    draw = Draw(20260106)
+    rows = []
+    for number in range(60):
+        while True:
+            plan = random_plan(draw, f"reach{number}", "mixed")
+            if number % 3 == 0:
+                plan = fast_plan(draw, f"reach{number}", 250 if number % 6 == 0 else 20)
+            if plan.is_fit():
+                break
+        plans_out.append(plan)
+        for index in range(12):
+            case = {"node": position(draw, plan), "direction": ["to line", "to station"][index % 2]}
+            natural = C2 / max(abs(plan.highest), abs(plan.lowest), 1e-6)
+            case["station"] = draw.sign() * draw.log(1e-4, 1e3) * natural
+            if index % 12 == 2:
+                case["station"] = case["node"]
+            if case["direction"] == "to line":
+                case["sent"] = draw.sign() * draw.log(1e-4, 1e3) * natural / C
+            else:
+                case["sent"] = int(draw.between(-0.1, 1.2) * plan.end)
+            longest = max(abs(case["station"]), abs(case["node"]), 1.0)
+            digits = digits_for(plan, [1e-3 / longest], [plan.end])
+            out = contact_agreed(plan, case, digits)
+            if out is None or abs(out["node_array_s"] or 0) > 9e10:
+                continue
+            sent = repr(case["sent"]) if isinstance(case["sent"], float) else str(case["sent"])
+            cells = [plan.name, case["direction"], repr(case["station"]), repr(case["node"]), sent]
+            for key in STATION_KEYS:
+                value = out[key]
+                if value is not None and abs(value) > sys.float_info.max:
+                    value = None
+                cells.append(text(value, 17 if "scale" in key else 34))
+            rows.append(",".join(cells))
+    return rows
+
+
+def fast_plan(draw, name, most):
+    """Holds and ramps that gain rapidities of tens and hundreds."""
+    scale = draw.log(1e-2, 1e4)
+    pieces, last = [], 0.0
+    for index in range(1 + int(draw.random() * 4)):
+        size = draw.sign() * scale * draw.between(0.1, 1)
+        duration = max(1, int(min(draw.between(0.05, 1) * most * C / scale, 2e10) * ATTO))
+        if draw.random() < 0.6:
+            pieces.append((duration, size, size))
+        else:
+            pieces.append((duration, last, size))
+        last = size
+    return Plan(name, pieces)
+
+
+# Released nodes --------------------------------------------------------------------------------
+
+
+def release_frame(world, node, tau):
+    state = world.at(tau)
+    return node.event(state), state[2], state[3]
+
+
+def seen_from(world, frame, event):
+    """An event in the rest frame of the released node, counted from its release."""
+    (t0, z0), cosh, sinh = frame
+    t, z = event[0] - t0, event[1] - z0
+    mul = world.mul
+    return mul(t, cosh) - mul(z, sinh), mul(z, cosh) - mul(t, sinh)
+
+
+def heard(plan, case, digits):
+    world = plan.world(digits)
+    node, other = Node(world, case["released"]), Node(world, case["node"])
+    tau = world.fix(Fraction(case["at"], ATTO))
+    frame = release_frame(world, node, tau)
+    s = world.fix(Fraction(case["own"]))
+    event = (
+        frame[0][0] + world.mul(s, frame[1]),
+        frame[0][1] + world.mul(s, frame[2]),
+    )
+    # Whichever way the node lies at the launch time of the tick.
+    launch = node_moment_at_launch(other, event[0])
+    if launch is None:
+        return None, world
+    _, z = other.event(world.at(launch))
+    sign = 1 if z > event[1] else -1
+    received = meet(other, event, sign, launch, max(launch, tau) + abs(z - event[1]))
+    if received is None:
+        return None, world
+    state = world.at(received)
+    own = world.real(frame[1] - sign * frame[2])
+    ratio = world.real(state[2] - sign * state[3]) / own
+    spent = world.real(abs(state[5] - world.at(tau)[5]))
+    return {
+        "since_release_s": world.real(received - tau),
+        "received_shift": ratio - 1,
+        "shift_scale": mp.expm1(spent),
+    }, world
+
+
+def passes(plan, case, digits):
+    world = plan.world(digits)
+    node, other = Node(world, case["released"]), Node(world, case["node"])
+    tau = world.fix(Fraction(case["at"], ATTO))
+    frame = release_frame(world, node, tau)
+    until = world.fix(Fraction(case["until"], ATTO))
+
+    def away(at):
+        return seen_from(world, frame, other.event(world.at(at)))[1]
+
+    edges = [tau] + [s for s in world.starts if tau < s < until] + [until]
+    found = []
+    for first, last in zip(edges, edges[1:]):
+        grid = [first + (last - first) * k // 12 for k in range(13)]
+        values = [away(at) for at in grid]
+        for a, b, p, q in zip(grid, grid[1:], values, values[1:]):
+            if (p < 0) == (q < 0) or p == 0:
+                continue
+            low, high = a, b
+            rising = p < 0
+            for _ in range(200):
+                # Regula falsi with the Illinois weight, then halving.
+                middle = (low + high) // 2
+                value = away(middle)
+                if (value < 0) == rising:
+                    low = middle
+                else:
+                    high = middle
+            found.append(low)
+    out = []
+    for at in found:
+        state = world.at(at)
+        own, _ = seen_from(world, frame, other.event(state))
+        cosh = world.mul(state[2], frame[1]) - world.mul(state[3], frame[2])
+        sinh = world.mul(state[3], frame[1]) - world.mul(state[2], frame[2])
+        rate = world.one + world.mul(other.h, state[6])
+        apart = abs(world.real(node.h - other.h))
+        bulge = abs(world.real(other.h)) * (world.real(cosh) - 1)
+        moduli = apart + bulge + abs(apart - bulge)
+        slope = world.real(rate) * abs(world.real(sinh))
+        out.append(
+            (
+                world.real(own),
+                world.real(at - tau),
+                abs(world.real(sinh) / world.real(cosh)) * C,
+                moduli / slope,
+            )
+        )
+    return out
+
+
+def released(plans_out):
+    draw = Draw(20260107)
+    heard_rows, pass_rows = [], []
+    for number in range(40):
+        while True:
+            kind = ["mixed", "reversal", "hold", "ramp"][number % 4]
+            plan = random_plan(draw, f"release{number}", kind)
+            if number % 5 == 0:
+                plan = fast_plan(draw, f"release{number}", 6)
+            if plan.is_fit() and plan.largest < 20:
+                break
+        plans_out.append(plan)
+        natural = C / max(abs(plan.highest), abs(plan.lowest), 1e-6)
+        for index in range(6):
+            node, other = pair(draw, plan)
+            at = int(draw.between(-0.05, 1.0) * plan.end)
+            case = {"released": node, "node": other, "at": at}
+            case["own"] = draw.log(1e-6, 30) * natural
+            digits = digits_for(plan, [1e-3], [plan.end]) + 20
+            out, _ = until_agreed(lambda d: heard(plan, case, d), digits)
+            if out is None or out["since_release_s"] * ATTO + at > 9e28:
+                continue
+            cells = [plan.name, str(at), repr(node), repr(other), repr(case["own"])]
+            cells += [text(out["since_release_s"]), text(out["received_shift"])]
+            cells.append(text(out["shift_scale"], 17))
+            heard_rows.append(",".join(cells))
+        for index in range(3):
+            node, other = pair(draw, plan)
+            # Near enough to be met.
+            aft, fore = limits(plan)
+            reach = draw.log(1e-8, 1) * C * natural
+            other = min(max(node + draw.sign() * reach, aft), fore)
+            if abs(other - node) < 1e-3:
+                continue
+            at = int(draw.between(-0.05, 1.0) * plan.end)
+            case = {"released": node, "node": other, "at": at, "until": 3 * plan.end + 1}
+            digits = digits_for(plan, [1e-3], [plan.end]) + 40
+            found = passes(plan, case, digits)
+            cells = [plan.name, str(at), repr(node), repr(other), str(case["until"])]
+            if not found:
+                pass_rows.append(",".join(cells + ["", "", "", "", "0"]))
+            for row in found:
+                values = [text(value) for value in row[:3]] + [text(row[3], 17)]
+                pass_rows.append(",".join(cells + values + [str(len(found))]))
+    return heard_rows, pass_rows
+
+
 def write_plans(plans):
     lines = ["plan,start_as,end_as,from_m_s2,to_m_s2"]
     for plan in plans:
@@ -590,6 +907,13 @@ def make():
     plans = []
     head = "plan,kind,emitted_as,from_m,to_m,from_k_s2,to_k_s2," + ",".join(FLIGHT_KEYS)
     files = {"flights.csv": "\n".join([head] + flights(plans)) + "\n"}
+    head = "plan,direction,station_m,node_m,sent," + ",".join(STATION_KEYS)
+    files["stations.csv"] = "\n".join([head] + stations(plans)) + "\n"
+    heard_rows, pass_rows = released(plans)
+    head = "plan,at_as,released_m,node_m,own_time_s,since_release_s,received_shift,shift_scale"
+    files["released.csv"] = "\n".join([head] + heard_rows) + "\n"
+    head = "plan,at_as,released_m,node_m,until_as,own_time_s,since_release_s,closing_speed_m_s"
+    files["passes.csv"] = "\n".join([head + ",scale_s,count"] + pass_rows) + "\n"
     files["plans.csv"] = write_plans(plans)
     return files
 
