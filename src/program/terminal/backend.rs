@@ -434,11 +434,11 @@ mod tests {
         terminal
             .draw(|frame| {
                 frame.buffer_mut()[(0, 0)].set_symbol("\x1b]0;x\x07");
-                frame.buffer_mut()[(1, 0)].set_symbol("\u{9b}");
+                frame.buffer_mut()[(4, 1)].set_symbol("\u{9b}");
             })
             .expect("memory takes every byte");
         let bytes = String::from_utf8(terminal.backend().sink.clone()).expect("UTF-8");
-        assert_eq!(bytes.replace('\x1b', "^"), "^[?2026h^[1H??^[?2026l");
+        assert_eq!(bytes.replace('\x1b', "^"), "^[?2026h^[1H?^[2;5H?^[?2026l");
     }
 
     #[test]
