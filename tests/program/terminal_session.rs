@@ -78,16 +78,13 @@ impl Launch {
     }
 
     pub fn arguments<A: AsRef<OsStr>>(self, arguments: impl IntoIterator<Item = A>) -> Launch {
-        arguments
-            .into_iter()
-            .fold(self, |launch, argument| launch.argument(argument))
+        arguments.into_iter().fold(self, |launch, argument| launch.argument(argument))
     }
 
     /// Sets a variable; the environment of the test itself is not passed on.
     pub fn variable(mut self, name: &str, value: impl AsRef<OsStr>) -> Launch {
         self.variables.retain(|(known, _)| known != name);
-        self.variables
-            .push((name.into(), value.as_ref().to_owned()));
+        self.variables.push((name.into(), value.as_ref().to_owned()));
         self
     }
 
@@ -199,10 +196,7 @@ impl Session {
     }
 
     pub fn resize(&self, columns: u16, rows: u16) {
-        self.seen()
-            .parser
-            .screen_mut()
-            .set_size(at_least_one(rows), at_least_one(columns));
+        self.seen().parser.screen_mut().set_size(at_least_one(rows), at_least_one(columns));
         set_size(self.master(), columns, rows);
     }
 
@@ -213,19 +207,12 @@ impl Session {
 
     /// The text of one row, without the blanks at its end.
     pub fn row(&self, row: u16) -> String {
-        self.screen()
-            .lines()
-            .nth(usize::from(row))
-            .unwrap_or("")
-            .to_owned()
+        self.screen().lines().nth(usize::from(row)).unwrap_or("").to_owned()
     }
 
     /// The row in which a text stands.
     pub fn row_of(&self, text: &str) -> Option<u16> {
-        let row = self
-            .screen()
-            .lines()
-            .position(|line| line.contains(text))?;
+        let row = self.screen().lines().position(|line| line.contains(text))?;
         u16::try_from(row).ok()
     }
 
@@ -276,17 +263,13 @@ impl Session {
     /// Waits until a text stands on the screen.
     #[track_caller]
     pub fn wait_text(&self, text: &str) {
-        self.wait_until(&format!("the text {text:?}"), || {
-            self.screen().contains(text)
-        });
+        self.wait_until(&format!("the text {text:?}"), || self.screen().contains(text));
     }
 
     /// Waits until a text no longer stands on the screen.
     #[track_caller]
     pub fn wait_no_text(&self, text: &str) {
-        self.wait_until(&format!("the text {text:?} to go"), || {
-            !self.screen().contains(text)
-        });
+        self.wait_until(&format!("the text {text:?} to go"), || !self.screen().contains(text));
     }
 
     /// Waits until nothing has come out for a while; gives the number of bytes then.
@@ -354,10 +337,7 @@ impl Session {
                     screen.fgcolor() != vt100::Color::Default || screen.inverse(),
                     "the pen is not plain",
                 ),
-                (
-                    modes(self.master()) != self.modes_before,
-                    "the modes have changed",
-                ),
+                (modes(self.master()) != self.modes_before, "the modes have changed"),
             ]
         };
         for (fault, what) in faults {
@@ -465,17 +445,12 @@ impl Process {
     pub fn descendant(self, name: &str) -> Option<Process> {
         let path = format!("/proc/{0}/task/{0}/children", self.0);
         let children = std::fs::read_to_string(path).ok()?;
-        children
-            .split_whitespace()
-            .filter_map(|id| id.parse().ok().map(Process))
-            .find_map(|child| {
+        children.split_whitespace().filter_map(|id| id.parse().ok().map(Process)).find_map(
+            |child| {
                 let command = std::fs::read_to_string(format!("/proc/{}/comm", child.0)).ok()?;
-                if command.trim_end() == name {
-                    Some(child)
-                } else {
-                    child.descendant(name)
-                }
-            })
+                if command.trim_end() == name { Some(child) } else { child.descendant(name) }
+            },
+        )
     }
 
     /// The fields of `/proc/PID/stat` after the name, the state first.
@@ -489,10 +464,7 @@ impl Process {
 /// Reads what the program puts out until it has closed its end or is told to stop.
 fn read_output(master: &OwnedFd, seen: &Mutex<Seen>, stop: &AtomicBool) {
     let mut buffer = [0; 8192];
-    let rest = Timespec {
-        tv_sec: 0,
-        tv_nsec: 10_000_000,
-    };
+    let rest = Timespec { tv_sec: 0, tv_nsec: 10_000_000 };
     while !stop.load(Ordering::SeqCst) {
         let mut waited = [PollFd::new(master, PollFlags::IN)];
         if !poll(&mut waited, Some(&rest)).is_ok_and(|ready| ready > 0) {
@@ -509,10 +481,7 @@ fn read_output(master: &OwnedFd, seen: &Mutex<Seen>, stop: &AtomicBool) {
 
 fn text_of(screen: &vt100::Screen) -> String {
     let (_, columns) = screen.size();
-    screen
-        .rows(0, columns.get())
-        .map(|row| row.trim_end().to_owned() + "\n")
-        .collect()
+    screen.rows(0, columns.get()).map(|row| row.trim_end().to_owned() + "\n").collect()
 }
 
 fn modes(master: &OwnedFd) -> Modes {
@@ -526,12 +495,7 @@ fn modes(master: &OwnedFd) -> Modes {
 }
 
 fn set_size(master: &OwnedFd, columns: u16, rows: u16) {
-    let size = Winsize {
-        ws_row: rows,
-        ws_col: columns,
-        ws_xpixel: 0,
-        ws_ypixel: 0,
-    };
+    let size = Winsize { ws_row: rows, ws_col: columns, ws_xpixel: 0, ws_ypixel: 0 };
     tcsetwinsize(master, size).expect("the terminal's size");
 }
 

@@ -3,9 +3,9 @@
 //! # How it holds together
 //!
 //! * The main thread owns the [`Terminal`] and is the only one that draws.
-//! * A thread reads keys, a thread hears signals, a thread notices a lost line; all
-//!   three send into one channel, from which [`Terminal::recv`] takes.
-//! * At rest nothing runs: every thread is blocked, and no byte is sent.
+//! * A thread reads keys and notices a lost line, another hears signals; both send
+//!   into one channel, from which [`Terminal::recv`] takes.
+//! * At rest nothing runs: the threads are blocked, and no byte is sent.
 //! * The terminal is never asked a question, because the answer would come as keys.
 //! * A frame that changed is one write; a frame that did not change is none.
 //!
@@ -21,6 +21,7 @@ mod colour;
 mod events;
 mod glyphs;
 mod guard;
+mod keys;
 mod pace;
 mod signals;
 mod usable;
@@ -38,7 +39,7 @@ pub use colour::{ColourChoice, Depth};
 pub use events::{Incoming, Waker};
 pub use glyphs::{ASCII, GlyphChoice, Glyphs, UNICODE};
 pub use pace::FramePace;
-pub use ratatui::crossterm::event::{KeyCode, KeyEvent, KeyEventKind, KeyModifiers};
+pub use ratatui::crossterm::event::{KeyCode, KeyEvent, KeyModifiers};
 pub use signals::{Ended, die_by};
 pub use usable::{Unusable, is_usable};
 
@@ -83,9 +84,8 @@ impl Terminal {
     }
 
     fn set_up(options: Options) -> io::Result<Terminal> {
-        let variable = |name: &str| {
-            std::env::var_os(name).map(|value| value.to_string_lossy().into_owned())
-        };
+        let variable =
+            |name: &str| std::env::var_os(name).map(|value| value.to_string_lossy().into_owned());
         let depth = colour::depth(options.colour, io::stdout().is_terminal(), &variable);
         let glyphs = Glyphs::choose(options.glyphs, &variable);
         let backend = ScreenBackend::new(Screen, guard::size, depth, glyphs.ascii_only);
@@ -98,13 +98,7 @@ impl Terminal {
         guard::enter()?;
         let keys = sender.clone();
         signals::spawn("keys", move || events::read_keys(&keys))?;
-        Ok(Terminal {
-            drawing,
-            reports,
-            waker: Waker::new(sender),
-            glyphs,
-            depth,
-        })
+        Ok(Terminal { drawing, reports, waker: Waker::new(sender), glyphs, depth })
     }
 
     /// Draws a frame and sends what differs from the one before, in one write.

@@ -1,4 +1,4 @@
-//! The threads that hear of signals and of a lost line, and the ways to end.
+//! The thread that hears signals, and the ways to end.
 //!
 //! Signals have a thread of their own. A flag that the main loop looks at would not
 //! do: reading keys from a line that has dropped may never return.
@@ -10,9 +10,7 @@ use std::sync::mpsc::Sender;
 use std::thread;
 use std::time::{Duration, Instant};
 
-use rustix::event::{PollFd, PollFlags, Timespec, poll};
-use rustix::stdio::stdin;
-use signal_hook::consts::{SIGCONT, SIGHUP, SIGINT, SIGQUIT, SIGTERM, SIGTSTP};
+use signal_hook::consts::{SIGCONT, SIGHUP, SIGINT, SIGQUIT, SIGTERM, SIGTSTP, SIGWINCH};
 use signal_hook::iterator::Signals;
 use signal_hook::low_level;
 
@@ -27,11 +25,6 @@ const TO_CLOSE: Duration = Duration::from_secs(10);
 /// A second signal ends the program at once, unless it comes sooner than this: one
 /// wish to end often reaches a program twice, by its group and by itself.
 const INSISTENCE: Duration = Duration::from_millis(250);
-/// How often a line is looked at that does not report its own loss.
-const LINE_CHECK: Timespec = Timespec {
-    tv_sec: 5,
-    tv_nsec: 0,
-};
 
 /// Whether the desk is open, stopped or not.
 static OPEN: AtomicBool = AtomicBool::new(false);
@@ -89,20 +82,15 @@ pub(super) fn note_closing() {
     OPEN.store(false, Ordering::SeqCst);
 }
 
-/// Starts the threads that hear of signals and of a lost line.
+/// Starts the thread that hears signals.
 pub(super) fn start(sender: &Sender<Report>) -> io::Result<()> {
-    let signals = Signals::new([SIGTERM, SIGHUP, SIGINT, SIGQUIT, SIGTSTP, SIGCONT])?;
+    let signals = Signals::new([SIGTERM, SIGHUP, SIGINT, SIGQUIT, SIGTSTP, SIGCONT, SIGWINCH])?;
     let heard = sender.clone();
-    spawn("signals", move || hear_signals(signals, &heard))?;
-    let lost = sender.clone();
-    spawn("line", move || watch_line(&lost))
+    spawn("signals", move || hear_signals(signals, &heard))
 }
 
 pub(super) fn spawn(name: &str, body: impl FnOnce() + Send + 'static) -> io::Result<()> {
-    thread::Builder::new()
-        .name(name.to_owned())
-        .spawn(body)
-        .map(|_| ())
+    thread::Builder::new().name(name.to_owned()).spawn(body).map(|_| ())
 }
 
 /// Passes signals on to the main thread, and ends the program when it does not act.
@@ -112,6 +100,7 @@ fn hear_signals(mut signals: Signals, sender: &Sender<Report>) {
         match (signal, first_wish) {
             (SIGTSTP, _) => drop(sender.send(Report::StopAsked)),
             (SIGCONT, _) => drop(sender.send(Report::Continued)),
+            (SIGWINCH, _) => drop(sender.send(Report::Told(Incoming::Resized))),
             (_, None) => {
                 first_wish = Some(Instant::now());
                 let ended = Report::Told(Incoming::Ended(Ended::Signal(signal)));
@@ -130,20 +119,8 @@ fn hear_signals(mut signals: Signals, sender: &Sender<Report>) {
     }
 }
 
-/// Waits until the other end of the terminal is gone, then says so.
-///
-/// No SIGHUP comes when the terminal is not the controlling one, as under some ways
-/// of becoming another user. Asking for no event at all, `poll` still reports the
-/// loss, and nothing wakes up while somebody types.
-fn watch_line(sender: &Sender<Report>) {
-    loop {
-        let input = stdin();
-        let mut watched = [PollFd::new(&input, PollFlags::empty())];
-        if poll(&mut watched, Some(&LINE_CHECK)).is_ok_and(|ready| ready > 0) {
-            break;
-        }
-    }
-    let _ = sender.send(Report::Told(Incoming::Ended(Ended::TerminalLost)));
+/// Ends the program when the main thread does not act on the loss of the terminal.
+pub(super) fn force_end_of_lost_terminal() {
     force_after_grace(|| die_by_force(SIGHUP));
 }
 

@@ -58,8 +58,8 @@ Coverage
   1e-41 beside the zero of a ramp; array times from -1e11 to 1e11 s, most of them odd attoseconds.
 * Nodes at N = 1e-6 on either side, and N up to 1e8.
 * Rapidities to 699.9, launch values on both sides of the largest double, total rapidities to 2535.
-* Brakes that leave 1e-17 to 1e-27 of the total rapidity, or exactly none, through accelerations
-  whose doubles do not cancel.
+* Brakes that leave 1e-17 to 1e-22 of the total rapidity through accelerations whose doubles do not
+  cancel, or exactly none.
 * Ramps through zero with moments within 1 as of the zero of alpha and of the rapidity.
 * Jumps, coasts, phases of 1 as and of 1e11 s, plans of 200 phases; phase ends exactly and 1 as to
   either side, before the plan and after it.
