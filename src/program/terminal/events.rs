@@ -7,10 +7,8 @@ use std::sync::mpsc::Sender;
 use ratatui::crossterm::event::{KeyCode, KeyEvent, KeyModifiers};
 use rustix::event::{PollFd, PollFlags, Timespec, poll};
 use rustix::io::Errno;
-use rustix::process::{Signal, kill_current_process_group};
 use rustix::stdio::stdin;
 
-use super::guard;
 use super::keys::{KeyParser, Typed};
 use super::signals::{self, Ended};
 
@@ -43,8 +41,10 @@ pub enum Incoming {
 pub(super) enum Report {
     /// For the desk.
     Told(Incoming),
-    /// Ctrl-Z, or SIGTSTP from outside.
-    StopAsked,
+    /// The key Ctrl-Z.
+    StopKey,
+    /// SIGTSTP.
+    StopSignal,
     /// SIGCONT.
     Continued,
 }
@@ -107,36 +107,21 @@ pub(super) fn read_keys(sender: &Sender<Report>) {
             Err(_) => break,
         }
         for input in typed.drain(..) {
-            if let Some(report) = understood(input) {
-                let _ = sender.send(report);
-            }
+            let _ = sender.send(understood(input));
         }
     }
     let _ = sender.send(Report::Told(Incoming::Ended(Ended::TerminalLost)));
     signals::force_end_of_lost_terminal();
 }
 
-/// The report that a key or a paste gives rise to, if any.
-fn understood(typed: Typed) -> Option<Report> {
+/// The report that a key or a paste gives rise to.
+fn understood(typed: Typed) -> Report {
     match typed {
         Typed::Key(key) if key == KeyEvent::new(KeyCode::Char('z'), KeyModifiers::CONTROL) => {
-            stop_asked_by_key()
+            Report::StopKey
         }
-        Typed::Key(key) => Some(Report::Told(Incoming::Key(key))),
-        Typed::Paste(text) => Some(Report::Told(Incoming::Paste(text))),
-    }
-}
-
-/// Does what the terminal does for Ctrl-Z when it is not in raw mode.
-///
-/// The whole foreground group gets the signal, so that a wrapper the program was
-/// started from stops as well and the shell comes back. Our own copy arrives at the
-/// signal thread like one from outside.
-fn stop_asked_by_key() -> Option<Report> {
-    if guard::is_foreground_group() && kill_current_process_group(Signal::TSTP).is_ok() {
-        None
-    } else {
-        Some(Report::StopAsked)
+        Typed::Key(key) => Report::Told(Incoming::Key(key)),
+        Typed::Paste(text) => Report::Told(Incoming::Paste(text)),
     }
 }
 

@@ -32,6 +32,7 @@ use std::time::{Duration, Instant};
 
 use ratatui::Frame;
 use ratatui::layout::{Rect, Size};
+use rustix::process::{Signal, kill_current_process_group};
 use signal_hook::consts::SIGSTOP;
 use signal_hook::low_level;
 
@@ -147,10 +148,23 @@ impl Terminal {
                 }
                 Some(incoming)
             }
-            Report::StopAsked => {
+            // What the terminal does for Ctrl-Z when it is not in raw mode: the whole
+            // foreground group gets the signal, so that a wrapper the program was
+            // started from stops too and the shell comes back. The terminal is given
+            // back before, while it is still ours. Our own copy of the signal then
+            // stops us.
+            Report::StopKey => {
                 guard::leave();
-                // SIGSTOP, because SIGTSTP would be dropped in an orphaned group.
-                let _ = low_level::raise(SIGSTOP);
+                if !guard::is_foreground_group()
+                    || kill_current_process_group(Signal::TSTP).is_err()
+                {
+                    stop();
+                }
+                None
+            }
+            Report::StopSignal => {
+                guard::leave();
+                stop();
                 None
             }
             // This follows every stop, the one above and one from outside, which
@@ -193,6 +207,12 @@ impl Terminal {
     pub fn frames(&self) -> u64 {
         self.drawing.backend().frames()
     }
+}
+
+/// Stops the program until it is continued.
+fn stop() {
+    // SIGTSTP would be dropped in a group that no shell looks after.
+    let _ = low_level::raise(SIGSTOP);
 }
 
 impl Drop for Terminal {

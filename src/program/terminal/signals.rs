@@ -98,7 +98,7 @@ fn hear_signals(mut signals: Signals, sender: &Sender<Report>) {
     let mut first_wish: Option<Instant> = None;
     for signal in signals.forever() {
         match (signal, first_wish) {
-            (SIGTSTP, _) => drop(sender.send(Report::StopAsked)),
+            (SIGTSTP, _) => drop(sender.send(Report::StopSignal)),
             (SIGCONT, _) => drop(sender.send(Report::Continued)),
             (SIGWINCH, _) => drop(sender.send(Report::Told(Incoming::Resized))),
             (_, None) => {

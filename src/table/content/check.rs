@@ -12,8 +12,6 @@ use crate::model::plan::Plan;
 use crate::model::rates::{Instant, is_realisable};
 use crate::table::{Cell, Column, Measure, Report, Scalar, Table};
 
-use super::LineAt;
-
 /// A rule of a layout.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub enum Rule {
@@ -291,16 +289,7 @@ pub fn check_report<'a>(
     span: Span,
     judgements: &'a [Judgement],
 ) -> Report<'a> {
-    let at = match span {
-        Span::Plan => ArrayTime::ZERO,
-        Span::Moment(at) => at,
-    };
-    let mut report = LineAt::of_layout(layout, at).report("check", Vec::new());
-    if span == Span::Plan {
-        report.at = Err("the rules are judged over the whole plan");
-        report.reference_acceleration_m_s2 = Err("the rules are judged over the whole plan");
-        report.rapidity = Err("the rules are judged over the whole plan");
-    }
+    let mut report = head(layout, span);
     let broken = judgements.iter().filter(|judgement| judgement.state == State::Broken).count();
     let smallest = judgements.iter().min_by(|a, b| a.margin.total_cmp(&b.margin));
     let scalar = |key, heading, measure, value| Scalar { key, heading, measure, value };
@@ -329,6 +318,35 @@ pub fn check_report<'a>(
         fill: Box::new(move |row, cells| fill(layout, &judgements[row], cells)),
     });
     report
+}
+
+/// The head: a line that reaches the horizon has no state, so it is made from the plan.
+fn head(layout: &Layout, span: Span) -> Report<'_> {
+    const WHOLE: &str = "the rules are judged over the whole plan";
+    let (at, acceleration, rapidity) = match (span, &layout.course) {
+        (Span::Plan, _) => (Err(WHOLE), Err(WHOLE), Err(WHOLE)),
+        (Span::Moment(at), Course::Thrust(plan)) => {
+            let moment = plan.moment(at);
+            let acceleration = moment.acceleration_m_s2.to_f64();
+            (Ok(at), Ok(acceleration), Ok(moment.rapidity.to_f64()))
+        }
+        (Span::Moment(at), Course::Standing(standing)) => {
+            (Ok(at), Ok(standing.gravity_m_s2), Err(super::NO_RAPIDITY))
+        }
+    };
+    Report {
+        command: "check",
+        schema_version: 1,
+        layout: &layout.name,
+        revision: layout.revision.as_deref(),
+        layout_sha256: &layout.source.sha256,
+        at,
+        reference_acceleration_m_s2: acceleration,
+        rapidity,
+        scalars: Vec::new(),
+        tables: Vec::new(),
+        remarks: Vec::new(),
+    }
 }
 
 fn fill<'a>(layout: &'a Layout, judgement: &'a Judgement, cells: &mut Vec<Cell<'a>>) {

@@ -3,8 +3,10 @@
 use std::borrow::Cow;
 use std::collections::HashMap;
 
-use super::{LineAt, column, predicted_reading_s};
+use super::{column, head, predicted_reading_s};
+use crate::layout::Layout;
 use crate::model::dd::Dd;
+use crate::run::State;
 use crate::table::{Cell, Column, Measure, Report, Scalar, Table};
 
 /// One number that differs, or that only one side has.
@@ -32,9 +34,9 @@ const COLUMNS: [Column; 5] = [
 /// a whole, then node by node in the order of the first, then what only the second has.
 /// Differences are formed before anything is rounded.
 #[must_use]
-pub fn differences(a: &LineAt<'_>, b: &LineAt<'_>) -> Vec<Difference> {
+pub fn differences(a: &State<'_>, b: &State<'_>) -> Vec<Difference> {
     let mut found = Vec::new();
-    let (first, second) = (&a.instant.moment, &b.instant.moment);
+    let (first, second) = (&a.instant().moment, &b.instant().moment);
     for (quantity, a, b) in [
         ("reference_acceleration_m_s2", first.acceleration_m_s2, second.acceleration_m_s2),
         ("rapidity", first.rapidity, second.rapidity),
@@ -42,14 +44,14 @@ pub fn differences(a: &LineAt<'_>, b: &LineAt<'_>) -> Vec<Difference> {
         push(&mut found, None, quantity, Some(a), Some(b));
     }
     let rows: HashMap<&str, usize> =
-        b.layout.nodes.iter().enumerate().map(|(row, node)| (node.name.as_str(), row)).collect();
-    for (row, node) in a.layout.nodes.iter().enumerate() {
+        b.run().layout().nodes.iter().enumerate().map(|(row, node)| (node.name.as_str(), row)).collect();
+    for (row, node) in a.run().layout().nodes.iter().enumerate() {
         let theirs = rows.get(node.name.as_str()).and_then(|&row| values(b, row));
         push_node(&mut found, &node.name, values(a, row), theirs);
     }
     let known: HashMap<&str, ()> =
-        a.layout.nodes.iter().map(|node| (node.name.as_str(), ())).collect();
-    for (row, node) in b.layout.nodes.iter().enumerate() {
+        a.run().layout().nodes.iter().map(|node| (node.name.as_str(), ())).collect();
+    for (row, node) in b.run().layout().nodes.iter().enumerate() {
         if !known.contains_key(node.name.as_str()) {
             push_node(&mut found, &node.name, None, values(b, row));
         }
@@ -65,15 +67,16 @@ const QUANTITIES: [&str; 5] = [
     "predicted_reading_s",
 ];
 
-fn values(line: &LineAt<'_>, row: usize) -> Option<[Dd; 5]> {
-    let state = (line.nodes)(row)?;
-    let position = state.position_m;
+fn values(state: &State<'_>, row: usize) -> Option<[Dd; 5]> {
+    let aboard = state.node(row).aboard()?;
+    let position = Dd::new(aboard.position_m);
+    let instant = state.instant();
     Some([
         position,
-        line.instant.felt_acceleration_m_s2(position),
-        line.instant.rate_minus_one(position),
-        state.clock_offset_s,
-        predicted_reading_s(line.layout, &line.instant, row, &state),
+        instant.felt_acceleration_m_s2(position),
+        aboard.rate_minus_one,
+        aboard.clock_offset_s,
+        predicted_reading_s(state.run().layout(), instant, row, &aboard),
     ])
 }
 
@@ -105,11 +108,12 @@ fn push(
 /// The compare report: the head is that of the first line, the second stands in scalars.
 #[must_use]
 pub fn compare_report<'a>(
-    a: &LineAt<'a>,
-    b: &LineAt<'a>,
+    a: &State<'a>,
+    b: &State<'a>,
     differences: Vec<Difference>,
 ) -> Report<'a> {
-    let mut report = a.report("compare", Vec::new());
+    let mut report = head(a, "compare");
+    let other: &'a Layout = b.run().layout();
     let word = |key, heading, text: &'a str| Scalar {
         key,
         heading,
@@ -117,8 +121,8 @@ pub fn compare_report<'a>(
         value: Cell::Text(Cow::Borrowed(text)),
     };
     report.scalars = vec![
-        word("other_layout", "compared with", &b.layout.name),
-        match &b.layout.revision {
+        word("other_layout", "compared with", &other.name),
+        match &other.revision {
             Some(revision) => word("other_revision", "its revision", revision),
             None => Scalar {
                 key: "other_revision",
@@ -127,7 +131,7 @@ pub fn compare_report<'a>(
                 value: Cell::Absent("the layout states no revision".into()),
             },
         },
-        word("other_layout_sha256", "its hash", &b.layout.source.sha256),
+        word("other_layout_sha256", "its hash", &other.source.sha256),
         Scalar {
             key: "count",
             heading: "differences",

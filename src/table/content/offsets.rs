@@ -1,9 +1,10 @@
 //! `offsets`: clock offsets against the reference, or of every ordered pair.
 
 use std::borrow::Cow;
-use std::sync::Arc;
 
-use super::{LineAt, RELEASED, column, number, predicted_reading_s};
+use super::{RELEASED, column, head, number, predicted_reading_s};
+use crate::model::dd::Dd;
+use crate::run::State;
 use crate::table::{Cell, Column, Measure, Report, Table};
 
 const NODES: [Column; 4] = [
@@ -23,43 +24,43 @@ const PAIRS: [Column; 4] = [
 /// The offsets report of a line at a moment; with `pairs` also the table of every ordered
 /// pair, to − from.
 #[must_use]
-pub fn offsets_report(line: LineAt<'_>, pairs: bool) -> Report<'_> {
-    let mut report = line.report("offsets", Vec::new());
-    let line = Arc::new(line);
-    report.tables.push(nodes(Arc::clone(&line)));
+pub fn offsets_report(state: State<'_>, pairs: bool) -> Report<'_> {
+    let mut report = head(&state, "offsets");
     if pairs {
-        report.tables.push(pair_table(line));
+        report.tables = vec![node_table(state.clone()), pair_table(state)];
+    } else {
+        report.tables.push(node_table(state));
     }
     report
 }
 
-fn nodes(line: Arc<LineAt<'_>>) -> Table<'_> {
-    let layout = line.layout;
+fn node_table(state: State<'_>) -> Table<'_> {
+    let layout = state.run().layout();
     Table {
         name: "nodes",
         columns: NODES.to_vec(),
-        rows: layout.nodes.len(),
+        rows: state.rows(),
         marked: Some(layout.reference),
         fill: Box::new(move |row, cells| {
             cells.push(Cell::Text(Cow::Borrowed(&layout.nodes[row].name)));
-            let Some(state) = (line.nodes)(row) else {
+            let Some(aboard) = state.node(row).aboard() else {
                 cells.extend((1..NODES.len()).map(|_| Cell::Absent(RELEASED.into())));
                 return;
             };
-            cells.push(number(state.clock_offset_s));
-            cells.push(number(line.instant.rate_minus_one(state.position_m)));
-            cells.push(number(predicted_reading_s(layout, &line.instant, row, &state)));
+            cells.push(number(aboard.clock_offset_s));
+            cells.push(number(aboard.rate_minus_one));
+            cells.push(number(predicted_reading_s(layout, state.instant(), row, &aboard)));
         }),
     }
 }
 
-fn pair_table(line: Arc<LineAt<'_>>) -> Table<'_> {
-    let layout = line.layout;
-    let others = layout.nodes.len() - 1;
+fn pair_table(state: State<'_>) -> Table<'_> {
+    let layout = state.run().layout();
+    let others = state.rows() - 1;
     Table {
         name: "pairs",
         columns: PAIRS.to_vec(),
-        rows: layout.nodes.len() * others,
+        rows: state.rows() * others,
         marked: None,
         fill: Box::new(move |row, cells| {
             let from = row / others;
@@ -68,19 +69,21 @@ fn pair_table(line: Arc<LineAt<'_>>) -> Table<'_> {
             for end in [from, to] {
                 cells.push(Cell::Text(Cow::Borrowed(&layout.nodes[end].name)));
             }
-            let (Some(first), Some(second)) = ((line.nodes)(from), (line.nodes)(to)) else {
+            let ends = (state.node(from).aboard(), state.node(to).aboard());
+            let (Some(first), Some(second)) = ends else {
                 cells.extend([Cell::Absent(RELEASED.into()), Cell::Absent(RELEASED.into())]);
                 return;
             };
-            let (here, there) = (first.position_m, second.position_m);
+            let instant = state.instant();
+            let (here, there) = (Dd::new(first.position_m), Dd::new(second.position_m));
             // Two nodes side by side far from the reference: the difference of their positions
             // is exact, that of their offsets is not.
-            cells.push(number(if first.has_moved || second.has_moved {
+            cells.push(number(if state.is_changed(from) || state.is_changed(to) {
                 second.clock_offset_s - first.clock_offset_s
             } else {
-                line.instant.clock_offset_difference_s(here, there)
+                instant.clock_offset_difference_s(here, there)
             }));
-            cells.push(number(line.instant.rate_difference(here, there)));
+            cells.push(number(instant.rate_difference(here, there)));
         }),
     }
 }

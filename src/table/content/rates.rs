@@ -2,7 +2,10 @@
 
 use std::borrow::Cow;
 
-use super::{LineAt, OVERFLOW, RELEASED, STANDING, column, number, predicted_reading_s};
+use super::{OVERFLOW, RELEASED, STANDING, column, head, number, predicted_reading_s};
+use crate::model::dd::Dd;
+use crate::model::rates::LaunchFrame;
+use crate::run::State;
 use crate::table::{Cell, Column, Measure, Report, Table};
 
 const COLUMNS: [Column; 11] = [
@@ -21,21 +24,24 @@ const COLUMNS: [Column; 11] = [
 
 /// The rates report of a line at a moment.
 #[must_use]
-pub fn rates_report(line: LineAt<'_>) -> Report<'_> {
-    let layout = line.layout;
-    let mut report = line.report("rates", Vec::new());
-    let table = Table {
+pub fn rates_report(state: State<'_>) -> Report<'_> {
+    let mut report = head(&state, "rates");
+    let layout = state.run().layout();
+    let moment = state.instant().moment;
+    let frame =
+        state.run().plan().map(|plan| LaunchFrame::new(plan.launch(moment.at), moment.rapidity));
+    report.tables.push(Table {
         name: "nodes",
         columns: COLUMNS.to_vec(),
-        rows: layout.nodes.len(),
+        rows: state.rows(),
         marked: Some(layout.reference),
         fill: Box::new(move |row, cells| {
             cells.push(Cell::Text(Cow::Borrowed(&layout.nodes[row].name)));
-            let Some(state) = (line.nodes)(row) else {
+            let Some(aboard) = state.node(row).aboard() else {
                 cells.extend((1..COLUMNS.len()).map(|_| Cell::Absent(RELEASED.into())));
                 return;
             };
-            let (instant, position) = (&line.instant, state.position_m);
+            let (instant, position) = (state.instant(), Dd::new(aboard.position_m));
             cells.push(number(position));
             cells.push(match instant.horizon_m(position) {
                 Some(horizon) => number(horizon),
@@ -45,23 +51,18 @@ pub fn rates_report(line: LineAt<'_>) -> Report<'_> {
                 None => Cell::Absent("no thrust, no horizon".into()),
             });
             cells.push(number(instant.felt_acceleration_m_s2(position)));
-            cells.push(number(instant.rate_minus_one(position)));
+            cells.push(number(aboard.rate_minus_one));
             cells.push(number(instant.redshift(position)));
-            cells.push(number(state.clock_offset_s));
-            cells.push(number(instant.moment.at.seconds() + state.clock_offset_s));
-            cells.push(number(predicted_reading_s(layout, instant, row, &state)));
-            match &line.frame {
-                Some(frame) => {
-                    for value in [frame.time_s(position), frame.position_m(position)] {
-                        cells.push(value.map_or(Cell::Absent(OVERFLOW.into()), Cell::Number));
-                    }
-                }
-                None => {
-                    cells.extend([Cell::Absent(STANDING.into()), Cell::Absent(STANDING.into())]);
-                }
-            }
+            cells.push(number(aboard.clock_offset_s));
+            cells.push(number(moment.at.seconds() + aboard.clock_offset_s));
+            cells.push(number(predicted_reading_s(layout, instant, row, &aboard)));
+            let events = match &frame {
+                Some(frame) => [frame.time_s(position), frame.position_m(position)]
+                    .map(|value| value.map_or(Cell::Absent(OVERFLOW.into()), Cell::Number)),
+                None => [Cell::Absent(STANDING.into()), Cell::Absent(STANDING.into())],
+            };
+            cells.extend(events);
         }),
-    };
-    report.tables.push(table);
+    });
     report
 }
