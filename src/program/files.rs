@@ -29,10 +29,15 @@ pub fn load(path: &Path) -> Result<Layout, Problem> {
         let text = read_bounded(io::stdin().lock(), "standard input")?;
         return read_layout("standard input", &text, Path::new("."));
     }
-    let name = path.display().to_string();
+    let name = shown_name(path);
     let file = File::open(path).map_err(|error| unreadable(&name, &error))?;
     let text = read_bounded(file, &name)?;
     read_layout(&name, &text, path.parent().unwrap_or(Path::new(".")))
+}
+
+/// How a path is named in messages.
+pub fn shown_name(path: &Path) -> String {
+    if path == Path::new("-") { "standard input".to_owned() } else { path.display().to_string() }
 }
 
 fn read_layout(name: &str, text: &str, folder: &Path) -> Result<Layout, Problem> {

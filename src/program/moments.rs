@@ -42,13 +42,30 @@ impl Moments {
         every_moment(from, until, step("--every", every)?)
     }
 
+    /// How many moments there are.
+    pub fn count(self) -> usize {
+        match self {
+            Moments::One(_) => 1,
+            Moments::Every { from, until, every } => {
+                let steps = (until.attoseconds() - from.attoseconds()) / every.attoseconds();
+                usize::try_from(steps).unwrap_or(usize::MAX).saturating_add(1)
+            }
+        }
+    }
+
+    /// A moment, by its number from 0.
+    pub fn nth(self, index: usize) -> ArrayTime {
+        match self {
+            Moments::One(at) => at,
+            Moments::Every { from, every, .. } => {
+                from.stepped(every, index as i128).unwrap_or(ArrayTime::LIMIT)
+            }
+        }
+    }
+
     /// The moments, in order.
     pub fn iter(self) -> impl Iterator<Item = ArrayTime> {
-        let (from, until, every) = match self {
-            Moments::One(at) => (at, at, ArrayTime::from_seconds(1)),
-            Moments::Every { from, until, every } => (from, until, every),
-        };
-        (0..).map_while(move |count| from.stepped(every, count).filter(|&at| at <= until))
+        (0..self.count()).map(move |index| self.nth(index))
     }
 }
 

@@ -2,10 +2,13 @@
 
 mod compare;
 mod recordings;
+mod show;
 mod tables;
 
-use clockspar::layout::{Course, Layout};
-use clockspar::model::horizon::{Extremes, reached};
+use std::sync::Arc;
+
+use clockspar::layout::Layout;
+use clockspar::run::Run;
 use clockspar::table::content::{Span, State, judge};
 
 use super::arguments::{Arguments, Command};
@@ -36,33 +39,15 @@ fn built_in(look: &super::arguments::Look) -> Result<u8, Problem> {
     if std::io::stdout().is_terminal() {
         return desk::run(layout, look);
     }
-    tables::print_rates(&layout)
+    tables::print_rates(layout)
 }
 
-/// Refuses a layout in which a node reaches the horizon: its numbers do not exist.
-fn refuse_horizon(layout: &Layout, file: &str) -> Result<(), Problem> {
-    let Course::Thrust(plan) = &layout.course else { return Ok(()) };
-    let Some(extremes) = Extremes::of(plan) else { return Ok(()) };
-    for node in &layout.nodes {
-        let Some(found) = reached(plan, &extremes, node.position_m) else { continue };
-        return Err(Problem::new(
-            format_args!(
-                "{file}: node `{}` at {:?} m reaches the horizon in phase {}, at {} s of array time",
-                node.name,
-                node.position_m,
-                found.phase + 1,
-                found.at_s.to_f64()
-            ),
-            "every node keeps its rate 1 + a h/c^2 above zero at every moment of the plan",
-            format_args!(
-                "hold no more than {:?} m/s^2 at the reference in that direction, or place the node \
-                 no farther than {:?} m; `clockspar check` lists every such node",
-                found.largest_acceleration_m_s2.abs(),
-                found.nearest_position_m
-            ),
-        ));
-    }
-    Ok(())
+/// The run of a layout; one in which a node reaches the horizon is refused, because its
+/// numbers do not exist.
+fn run_of(layout: Layout, file: &str) -> Result<Run, Problem> {
+    Run::new(Arc::new(layout)).map_err(|fault| {
+        Problem::new(format_args!("{file}: {fault}"), fault.rule(), fault.remedy())
+    })
 }
 
 /// One line of warning when a layout breaks a rule the command does not show.

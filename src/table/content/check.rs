@@ -1,6 +1,7 @@
 //! `check`: every rule a layout must meet, with margins.
 
 use std::borrow::Cow;
+use std::sync::Arc;
 
 use super::column;
 use crate::layout::{Course, Layout};
@@ -284,11 +285,7 @@ const COLUMNS: [Column; 10] = [
 
 /// The check report of a layout, from its judgements.
 #[must_use]
-pub fn check_report<'a>(
-    layout: &'a Layout,
-    span: Span,
-    judgements: &'a [Judgement],
-) -> Report<'a> {
+pub fn check_report(layout: &Layout, span: Span, judgements: Arc<[Judgement]>) -> Report<'_> {
     let mut report = head(layout, span);
     let broken = judgements.iter().filter(|judgement| judgement.state == State::Broken).count();
     let smallest = judgements.iter().min_by(|a, b| a.margin.total_cmp(&b.margin));
@@ -349,7 +346,7 @@ fn head(layout: &Layout, span: Span) -> Report<'_> {
     }
 }
 
-fn fill<'a>(layout: &'a Layout, judgement: &'a Judgement, cells: &mut Vec<Cell<'a>>) {
+fn fill<'a>(layout: &'a Layout, judgement: &Judgement, cells: &mut Vec<Cell<'a>>) {
     let word = |word: &'static str| Cell::Text(Cow::Borrowed(word));
     cells.push(word(judgement.rule.word()));
     cells.push(Cell::Text(Cow::Borrowed(&layout.nodes[judgement.node].name)));
@@ -369,6 +366,6 @@ fn fill<'a>(layout: &'a Layout, judgement: &'a Judgement, cells: &mut Vec<Cell<'
     cells.push(if judgement.remedy.is_empty() {
         Cell::Absent("nothing to mend".into())
     } else {
-        Cell::Text(Cow::Borrowed(&judgement.remedy))
+        Cell::Text(Cow::Owned(judgement.remedy.clone()))
     });
 }
