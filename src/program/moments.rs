@@ -1,6 +1,7 @@
 //! Moments as people write them: durations, `end`, dates.
 
 use clockspar::layout::quantity::{self, QuantityFault};
+use clockspar::layout::date::parse_moment;
 use clockspar::layout::{Course, Layout};
 use clockspar::model::array_time::ArrayTime;
 
@@ -83,50 +84,13 @@ pub fn every_moment(from: ArrayTime, until: ArrayTime, every: ArrayTime) -> Resu
 
 /// A step, above zero.
 pub fn step(option: &str, text: &str) -> Result<ArrayTime, Problem> {
-    let step = quantity::parse_duration(text).map_err(|fault| told(option, text, &fault))?;
-    if step <= ArrayTime::ZERO {
-        return Err(Problem::new(
-            format_args!("{option} {text}: a step of {step} s"),
-            "a step is longer than zero",
-            "give a duration such as `10 min`",
-        ));
-    }
-    Ok(step)
+    quantity::parse_length_of_time(text).map_err(|fault| told(option, text, &fault))
 }
 
 /// A moment: a duration, `end`, or a date when the layout has an epoch.
 pub fn moment(option: &str, text: &str, layout: &Layout) -> Result<ArrayTime, Problem> {
-    let text = text.trim();
-    if text == "end" {
-        return Ok(plan_end(layout));
-    }
-    if !looks_like_date(text) {
-        return quantity::parse_duration(text).map_err(|fault| told(option, text, &fault));
-    }
-    let Some(epoch) = &layout.epoch else {
-        return Err(Problem::new(
-            format_args!("{option} {text}: a date, but the layout states no epoch"),
-            "a date is a moment of array time only through the date of array time zero",
-            "give a duration since the start, or add `epoch = \"…\"` to the layout",
-        ));
-    };
-    let date = quantity::parse_date(text).map_err(|fault| told(option, text, &fault))?;
-    date.tai_since_2000.checked_sub(epoch.tai_since_2000).ok_or_else(|| {
-        Problem::new(
-            format_args!("{option} {text}: more than 1e11 s from the epoch"),
-            "array time is within ±1e11 s",
-            "give a date nearer to the epoch",
-        )
-    })
-}
-
-/// A date has its year, month and day before anything else.
-fn looks_like_date(text: &str) -> bool {
-    let mut parts = text.splitn(3, '-');
-    let is_number = |part: Option<&str>| {
-        part.is_some_and(|part| !part.is_empty() && part.bytes().all(|byte| byte.is_ascii_digit()))
-    };
-    is_number(parts.next()) && is_number(parts.next()) && parts.next().is_some()
+    parse_moment(text, layout.epoch.as_ref(), plan_end(layout))
+        .map_err(|fault| told(option, text, &fault))
 }
 
 /// The end of the plan; a standing line has none, so a day.

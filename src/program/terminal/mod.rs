@@ -28,6 +28,7 @@ mod usable;
 
 use std::io::{self, IsTerminal};
 use std::sync::mpsc::{Receiver, Sender, channel};
+use std::thread;
 use std::time::{Duration, Instant};
 
 use ratatui::Frame;
@@ -165,6 +166,15 @@ impl Terminal {
             Report::StopSignal => {
                 guard::leave();
                 stop();
+                None
+            }
+            // In the background, a shell continues a program because of `bg`, which
+            // cannot be granted here, or to let it die of a signal already sent.
+            Report::Continued if guard::is_in_background() => {
+                thread::sleep(Duration::from_millis(50));
+                if !signals::is_ending() {
+                    stop();
+                }
                 None
             }
             // This follows every stop, the one above and one from outside, which

@@ -31,6 +31,9 @@ static OPEN: AtomicBool = AtomicBool::new(false);
 /// Whether the desk has been open and has ended.
 static CLOSING: AtomicBool = AtomicBool::new(false);
 
+/// Whether a signal to end has been heard.
+static ENDING: AtomicBool = AtomicBool::new(false);
+
 /// Why the desk ended.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum Ended {
@@ -71,6 +74,10 @@ pub(super) fn is_open() -> bool {
     OPEN.load(Ordering::SeqCst)
 }
 
+pub(super) fn is_ending() -> bool {
+    ENDING.load(Ordering::SeqCst)
+}
+
 /// Notes that the desk is open; false when it is or was open already.
 pub(super) fn note_open() -> bool {
     !CLOSING.load(Ordering::SeqCst) && !OPEN.swap(true, Ordering::SeqCst)
@@ -103,6 +110,7 @@ fn hear_signals(mut signals: Signals, sender: &Sender<Report>) {
             (SIGWINCH, _) => drop(sender.send(Report::Told(Incoming::Resized))),
             (_, None) => {
                 first_wish = Some(Instant::now());
+                ENDING.store(true, Ordering::SeqCst);
                 let ended = Report::Told(Incoming::Ended(Ended::Signal(signal)));
                 // When the desk has ended nobody hears this, but closing the files
                 // still gets its time.
