@@ -1,1 +1,2 @@
-fn main(){}
+mod table_sample;
+mod table_text;
