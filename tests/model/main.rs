@@ -1,6 +1,8 @@
 //! The library against identities, independent references and published values.
 
 mod identities;
+mod layout_read;
+mod layout_refused;
 mod pinned;
 mod published;
 mod reference;
