@@ -18,6 +18,8 @@ pub struct ColumnFormat {
     form: Form,
     signed: bool,
     unicode: bool,
+    /// Smallest magnitude that the form was chosen for.
+    pub(super) smallest: f64,
     pub(super) width: usize,
 }
 
@@ -60,6 +62,7 @@ impl ColumnFormat {
             form,
             signed,
             unicode,
+            smallest: f64::INFINITY,
             width: 0,
         }
     }
@@ -185,6 +188,9 @@ impl ColumnFormat {
         let Form::Fixed { scale, decimals } = self.form else {
             return true;
         };
+        if value.abs() >= self.smallest {
+            return true;
+        }
         let last = -(decimals as i32);
         let shift = match scale {
             Scale::Ten(tens) => tens,
@@ -212,7 +218,7 @@ impl ColumnFormat {
         }
         let (whole, rest) = (magnitude / size, magnitude % size);
         let parts = 10_u128.pow(decimals as u32);
-        if rest * parts % size != 0 {
+        if !(rest * parts).is_multiple_of(size) {
             // From outside the cells the form was chosen for: exact in seconds all the same.
             return format!("{} s", ArrayTime::from_attoseconds(count));
         }

@@ -114,6 +114,9 @@ pub struct Column {
     pub measure: Measure,
 }
 
+/// Makes a row: one cell per column, pushed onto the vector it is given.
+pub type Fill<'a> = Box<dyn Fn(usize, &mut Vec<Cell<'a>>) + Send + Sync + 'a>;
+
 /// A table whose rows are made when they are asked for, so that it can be streamed,
 /// windowed or rendered on all cores without being held.
 pub struct Table<'a> {
@@ -124,7 +127,7 @@ pub struct Table<'a> {
     /// Number of rows.
     pub rows: usize,
     /// Fills a row with one cell per column. The vector comes in empty.
-    pub fill: Box<dyn Fn(usize, &mut Vec<Cell<'a>>) + Send + Sync + 'a>,
+    pub fill: Fill<'a>,
     /// Row to mark in text (the reference node), if any.
     pub marked: Option<usize>,
 }

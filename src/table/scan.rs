@@ -15,6 +15,11 @@ const SHORT_DIGITS: i32 = 10;
 /// Decimals up to which minutes, hours, days and years serve: further ones are fractions
 /// of a second that are read better as such.
 const MOST_LONG_DECIMALS: i32 = 6;
+/// Power of ten of the first digit of the largest value, in its unit, from which and up to
+/// which plain notation serves; less far up for numbers that have no unit.
+const LEAST_FIRST: i32 = -3;
+const MOST_WHOLE: i32 = 11;
+const MOST_BARE: i32 = 6;
 /// Steps between neighbours smaller than this part of the column's spread need not show.
 const LEAST_STEP: f64 = 1e-15;
 
@@ -144,6 +149,10 @@ impl ColumnScan {
             return;
         }
         self.smallest = self.smallest.min(value.abs());
+        // A number with as many digits as are ever shown settles that none can be saved.
+        if self.longest >= MOST_DIGITS {
+            return;
+        }
         let shortest = Decimal::shortest(value);
         self.shortest_position = self.shortest_position.min(shortest.last_position());
         self.longest = self.longest.max(shortest.digits.len());
@@ -170,6 +179,7 @@ impl ColumnScan {
             )
         };
         let mut format = ColumnFormat::new(unit, form, self.signed, unicode);
+        format.smallest = self.smallest;
         let mut width = self.text_columns.max(usize::from(self.anything_absent));
         if self.numbers > 0 {
             for value in [self.lowest, self.highest, self.smallest] {
@@ -221,14 +231,18 @@ impl ColumnScan {
         if let Some(unit) = long_unit(self.measure, largest) {
             let places = self.places(unit.scale);
             let readable = self.measure == Measure::Length || -places.last <= MOST_LONG_DECIMALS;
-            if readable && places.span <= MOST_DECADES {
+            if readable && places.first <= MOST_WHOLE && places.span <= MOST_DECADES {
                 return fixed(unit, places);
             }
         }
         let unit = decimal_unit(self.measure, largest);
         let places = self.places(unit.scale);
-        let most = if unit.label.is_empty() { 6 } else { 11 };
-        if (-3..=most).contains(&places.first)
+        let most = if unit.label.is_empty() {
+            MOST_BARE
+        } else {
+            MOST_WHOLE
+        };
+        if (LEAST_FIRST..=most).contains(&places.first)
             && (places.span <= MOST_DECADES || places.digits() <= SHORT_DIGITS)
         {
             return fixed(unit, places);
@@ -295,7 +309,7 @@ impl ColumnScan {
             }
             let decimals = (0..=2).find(|&decimals| {
                 let parts = self.common_divisor.checked_mul(10_u128.pow(decimals));
-                parts.is_some_and(|parts| parts % size == 0)
+                parts.is_some_and(|parts| parts.is_multiple_of(size))
             });
             if let Some(decimals) = decimals {
                 return (
@@ -317,7 +331,10 @@ impl ColumnScan {
         let place = place.unwrap_or(0);
         let size = 1000_u128.pow(place as u32);
         let decimals = (0..3 * place as u32)
-            .find(|&decimals| self.common_divisor % (size / 10_u128.pow(decimals)) == 0)
+            .find(|&decimals| {
+                self.common_divisor
+                    .is_multiple_of(size / 10_u128.pow(decimals))
+            })
             .unwrap_or(3 * place as u32);
         (
             TIMES[place],
@@ -360,7 +377,9 @@ fn is_difference(key: &str) -> bool {
         "applied",
         "residual",
     ];
-    key.split('_').any(|word| DIFFERENCES.contains(&word))
+    // The worst of several is a size.
+    let is_size = key.starts_with("worst_");
+    !is_size && key.split('_').any(|word| DIFFERENCES.contains(&word))
 }
 
 fn common_divisor(mut left: u128, mut right: u128) -> u128 {
