@@ -202,7 +202,7 @@ pub fn many(start: usize, rows: usize) -> Report<'static> {
     let fill = move |row: usize, cells: &mut Vec<Cell<'static>>| {
         let place = start + row;
         cells.push(Cell::Text(Cow::Owned(format!("s{}", place / 317))));
-        cells.push(if place % 7 == 0 {
+        cells.push(if place.is_multiple_of(7) {
             absent("no node")
         } else {
             text("hub")

@@ -133,6 +133,19 @@ fn the_longest_names_fit_forty_columns() {
 }
 
 #[test]
+fn nothing_is_cut_even_below_forty_columns() {
+    let digits = |shown: &str| shown.matches("8.729").count();
+    let whole = digits(&page(&rates(), None, true));
+    for width in 0..40 {
+        assert_eq!(
+            digits(&page(&rates(), Some(width), true)),
+            whole,
+            "{width} columns"
+        );
+    }
+}
+
+#[test]
 fn absent_moments_and_revisions_are_said() {
     let report = Report {
         revision: None,
