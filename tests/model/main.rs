@@ -6,6 +6,8 @@ mod layout_refused;
 mod pinned;
 mod published;
 mod reference;
+mod table_csv;
+mod table_json;
 mod table_sample;
 mod table_text;
 mod tolerance;
