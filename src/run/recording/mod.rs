@@ -32,8 +32,6 @@ mod verify;
 mod window;
 mod writer;
 
-use sha2::{Digest, Sha256};
-
 use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
 
@@ -166,13 +164,13 @@ impl Opening {
             program: PROGRAM.to_owned(),
             model: crate::model::constants::MODEL,
             layout: layout.name.clone(),
-            layout_sha256: sha256_hex(layout.source.text.as_bytes()),
+            layout_sha256: layout.source.sha256.clone(),
             layout_text: layout.source.text.clone(),
             files: files
                 .map(|file| EmbeddedFile {
                     name: file.name.clone(),
                     text: file.text.clone(),
-                    sha256: sha256_hex(file.text.as_bytes()),
+                    sha256: file.sha256.clone(),
                 })
                 .collect(),
             seed,
@@ -182,12 +180,6 @@ impl Opening {
             has_readings: seed.is_some(),
         }
     }
-}
-
-/// SHA-256 of some bytes as 64 hex digits.
-#[must_use]
-pub fn sha256_hex(bytes: &[u8]) -> String {
-    hex(&Sha256::digest(bytes))
 }
 
 fn hex(bytes: &[u8]) -> String {

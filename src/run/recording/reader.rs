@@ -176,6 +176,23 @@ impl<R: ReadAt> Reader<R> {
         self.frame_before(self.data_end)
     }
 
+    /// The moment of the last frame or event; `None` when there is none, or its line is
+    /// damaged.
+    ///
+    /// # Errors
+    ///
+    /// When the bytes cannot be read.
+    pub fn last_moment(&self) -> io::Result<Option<ArrayTime>> {
+        if self.data_end <= self.data_start {
+            return Ok(None);
+        }
+        let start = line_start(&self.source, self.data_start, self.data_end - 1)?;
+        let mut window = Window::new(&self.source);
+        let found = window.line(start, self.data_end, self.longest_line())?;
+        let body = found.held.and_then(|range| decode::body(window.held(range)).ok());
+        Ok(body.and_then(|body| decode::moment(body).ok()))
+    }
+
     /// Where the lines after the opening begin.
     pub(super) fn data_start(&self) -> u64 {
         self.data_start
@@ -291,10 +308,12 @@ impl Opening {
     ///
     /// The faults of its text.
     pub fn read_layout(&self) -> Result<Layout, Faults> {
-        layout::read(&self.layout_text, |name| {
-            let file = self.files.iter().find(|file| file.name == name);
-            file.map(|file| file.text.clone())
-        })
+        let file = |name: &str| {
+            let found = self.files.iter().find(|file| file.name == name);
+            let text = found.map(|file| file.text.clone());
+            text.ok_or_else(|| "it is not in the recording".to_owned())
+        };
+        layout::read("layout in the recording", &self.layout_text, &file)
     }
 }
 
@@ -334,5 +353,7 @@ fn is_newer(format: &str) -> bool {
     let is_number = !found_version.is_empty()
         && found_version.len() < 10
         && found_version.bytes().all(|byte| byte.is_ascii_digit());
-    kind == found_kind && is_number && found_version.parse::<u32>() > version.parse::<u32>()
+    kind == found_kind
+        && is_number
+        && found_version.parse::<u32>().ok() > version.parse::<u32>().ok()
 }
