@@ -4,4 +4,6 @@ mod identities;
 mod pinned;
 mod published;
 mod reference;
+mod table_sample;
+mod table_text;
 mod tolerance;

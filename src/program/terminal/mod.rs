@@ -168,12 +168,13 @@ impl Terminal {
                 stop();
                 None
             }
-            // In the background, a shell continues a program because of `bg`, which
-            // cannot be granted here, or to let it die of a signal already sent.
+            // In the background, a shell continues a program because of `bg`, or to let
+            // it die of a signal already sent. The first cannot be granted, and the
+            // group stops again as if it had used the terminal; the second must be.
             Report::Continued if guard::is_in_background() => {
                 thread::sleep(Duration::from_millis(50));
                 if !signals::is_ending() {
-                    stop();
+                    let _ = kill_current_process_group(Signal::TTOU);
                 }
                 None
             }
