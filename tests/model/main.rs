@@ -3,7 +3,11 @@
 mod identities;
 mod pinned;
 mod published;
+mod recording;
+mod recording_hostile;
 mod reference;
+mod run;
+mod run_refused;
 mod table_sample;
 mod table_text;
 mod tolerance;
