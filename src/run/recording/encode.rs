@@ -10,7 +10,6 @@ use super::{COLUMNS, Closing, FORMAT, Opening, READING_COLUMN};
 #[derive(Debug, Default)]
 pub(super) struct LineBuffer {
     bytes: Vec<u8>,
-    number: zmij::Buffer,
 }
 
 impl LineBuffer {
@@ -189,7 +188,8 @@ impl LineBuffer {
 
     /// The shortest decimal that reads back to the same double; −0 is written as 0.
     fn number(&mut self, value: f64) {
-        self.bytes.extend_from_slice(self.number.format_finite(value + 0.0).as_bytes());
+        let mut digits = zmij::Buffer::new();
+        self.raw(digits.format_finite(value + 0.0));
     }
 
     fn number_or_null(&mut self, value: Option<f64>) {
