@@ -1,6 +1,8 @@
 //! The library against identities, independent references and published values.
 
 mod identities;
+mod layout_read;
+mod layout_refused;
 mod pinned;
 mod published;
 mod recording;
@@ -8,6 +10,8 @@ mod recording_hostile;
 mod reference;
 mod run;
 mod run_refused;
+mod table_csv;
+mod table_json;
 mod table_sample;
 mod table_text;
 mod tolerance;
