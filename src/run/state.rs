@@ -109,6 +109,13 @@ impl<'a> State<'a> {
         self.run.layout.nodes.len()
     }
 
+    /// Whether a node has been moved or released up to the moment, or will be later: its
+    /// offset is then not that of a node that has always stood where it stands.
+    #[must_use]
+    pub fn is_changed(&self, row: usize) -> bool {
+        self.changed.binary_search_by_key(&row, |(row, _)| *row).is_ok()
+    }
+
     /// One node, by its row.
     #[must_use]
     pub fn node(&self, row: usize) -> NodeState {
