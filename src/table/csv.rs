@@ -143,6 +143,7 @@ fn push_cell(out: &mut Vec<u8>, cell: &Cell<'_>) {
         Cell::Number(value) => _ = push_f64(out, *value),
         Cell::Integer(value) => push_i64(out, *value),
         Cell::Time(time) => push_time(out, *time),
+        Cell::Flag(flag) => out.extend_from_slice(flag.to_string().as_bytes()),
         Cell::Absent(_) => {}
     }
 }

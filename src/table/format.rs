@@ -10,6 +10,11 @@ use crate::model::array_time::ArrayTime;
 /// Digits under which a value that has more is not shown in plain notation.
 const LEAST_DIGITS: i32 = 4;
 
+/// A flag for people.
+pub(super) fn yes_or_no(flag: bool) -> &'static str {
+    if flag { "yes" } else { "no" }
+}
+
 /// How the cells of a column are shown: chosen once from the cells of a whole table or of
 /// the rows in view, then used for each of them.
 #[derive(Clone, Debug)]
@@ -18,6 +23,8 @@ pub struct ColumnFormat {
     form: Form,
     signed: bool,
     unicode: bool,
+    /// Smallest magnitude that the form was chosen for.
+    pub(super) smallest: f64,
     pub(super) width: usize,
 }
 
@@ -60,6 +67,7 @@ impl ColumnFormat {
             form,
             signed,
             unicode,
+            smallest: f64::INFINITY,
             width: 0,
         }
     }
@@ -101,6 +109,7 @@ impl ColumnFormat {
         match cell {
             Cell::Text(text) if self.is_left() => push_left(out, text, width),
             Cell::Text(text) => push_right(out, text, width),
+            Cell::Flag(flag) if self.is_left() => push_left(out, yes_or_no(*flag), width),
             Cell::Absent(_) if self.is_left() => push_left(out, &format!("-{mark}"), width),
             _ => push_right(out, &self.value(cell, mark), width),
         }
@@ -119,6 +128,7 @@ impl ColumnFormat {
                 _ => self.number_in_width(*value as f64),
             },
             Cell::Time(time) => self.time(time.attoseconds()),
+            Cell::Flag(flag) => yes_or_no(*flag).to_owned(),
         }
     }
 
@@ -185,6 +195,9 @@ impl ColumnFormat {
         let Form::Fixed { scale, decimals } = self.form else {
             return true;
         };
+        if value.abs() >= self.smallest {
+            return true;
+        }
         let last = -(decimals as i32);
         let shift = match scale {
             Scale::Ten(tens) => tens,
@@ -212,7 +225,7 @@ impl ColumnFormat {
         }
         let (whole, rest) = (magnitude / size, magnitude % size);
         let parts = 10_u128.pow(decimals as u32);
-        if rest * parts % size != 0 {
+        if !(rest * parts).is_multiple_of(size) {
             // From outside the cells the form was chosen for: exact in seconds all the same.
             return format!("{} s", ArrayTime::from_attoseconds(count));
         }

@@ -164,7 +164,7 @@ pub(super) fn rounded(value: f64, scale: Scale, count: usize) -> String {
     format!("{sign}{mantissa}{exponent}")
 }
 
-/// An acceleration in m/s² and in parts of g0, each to ten digits: `0.196133 m/s² = 0.02 g0`.
+/// An acceleration in m/s² to ten digits and in parts of g0 to seven: `0.196133 m/s² = 0.02 g0`.
 pub(super) fn acceleration(value_m_s2: f64, unicode: bool) -> String {
     let unit = METRES_PER_SECOND_SQUARED;
     let label = if unicode { unit.label } else { unit.ascii };
@@ -178,7 +178,7 @@ pub(super) fn acceleration(value_m_s2: f64, unicode: bool) -> String {
         _ => MICRO_GRAVITY,
     };
     let label = if unicode { parts.label } else { parts.ascii };
-    format!("{si} = {} {label}", rounded(value_m_s2, parts.scale, 10))
+    format!("{si} = {} {label}", rounded(value_m_s2, parts.scale, 7))
 }
 
 /// A length of array time in the units people count in, exactly: `6 h 10 min`,

@@ -1,9 +1,13 @@
 //! The library against identities, independent references and published values.
 
 mod identities;
+mod layout_read;
+mod layout_refused;
 mod pinned;
 mod published;
 mod reference;
+mod table_csv;
+mod table_json;
 mod table_sample;
 mod table_text;
 mod tolerance;

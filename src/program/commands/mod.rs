@@ -9,7 +9,7 @@ use std::sync::Arc;
 
 use clockspar::layout::Layout;
 use clockspar::run::Run;
-use clockspar::table::content::{Span, State, judge};
+use clockspar::table::content::{JudgedOver, RuleState, judge};
 
 use super::arguments::{Arguments, Command};
 use super::problem::{Problem, STATUS_RULE};
@@ -52,8 +52,8 @@ fn run_of(layout: Layout, file: &str) -> Result<Run, Problem> {
 
 /// One line of warning when a layout breaks a rule the command does not show.
 fn warn_of_broken_rules(layout: &Layout, file: &str) {
-    let judgements = judge(layout, Span::Plan);
-    let mut broken = judgements.iter().filter(|judgement| judgement.state == State::Broken);
+    let judgements = judge(layout, JudgedOver::Plan);
+    let mut broken = judgements.iter().filter(|judgement| judgement.state == RuleState::Broken);
     let Some(first) = broken.next() else { return };
     let others = broken.count();
     let more = if others == 0 { String::new() } else { format!(" and {others} more") };

@@ -6,15 +6,14 @@ use std::time::{Duration, Instant};
 
 use clockspar::model::array_time::ArrayTime;
 use clockspar::table::{
-    Report, Series, TextOptions, TextWriter, write_csv, write_csv_series, write_json,
+    Head, Report, Series, TextOptions, TextWriter, write_csv, write_csv_series, write_json,
     write_json_series, write_text, write_text_series,
 };
 
 use crate::program::arguments::{Form, OutputArguments};
 use crate::program::moments::Moments;
-use crate::program::output::Output;
+use crate::program::output::{Output, locale_is_unicode};
 use crate::program::problem::Problem;
-use crate::program::terminal::locale_is_unicode;
 
 /// Makes the report of a moment.
 pub type Reporter<'a> = &'a (dyn Fn(ArrayTime) -> Report<'a> + 'a);
@@ -34,23 +33,16 @@ pub fn show<'a>(
             format_args!("one of `{}`", unknown.known.join("`, `")),
         )
     })?;
-    let chosen = move |at: ArrayTime| {
-        let mut report = reporter(at);
-        if arguments.table.is_some() {
-            report.tables.swap(0, index);
-            report.tables.truncate(1);
-        }
-        report
-    };
+    let chosen = Chosen { reporter, only: arguments.table.is_some().then_some(index) };
     let form = arguments.form.unwrap_or(Form::Text);
     let output = Output::open(arguments.out.as_deref(), arguments.replace)?;
     let options = TextOptions { width: output.width(), unicode: locale_is_unicode() };
     if paced {
-        return show_paced(moments, form, options, output, arguments.replace, &chosen);
+        return show_paced(moments, form, options, output, arguments.replace, chosen);
     }
     match moments {
         Moments::One(at) => {
-            let report = chosen(at);
+            let report = chosen.report(at);
             output.write(arguments.replace, |out| match form {
                 Form::Text => write_text(&report, &options, out),
                 Form::Csv => write_csv(&report, 0, out),
@@ -58,7 +50,7 @@ pub fn show<'a>(
             })
         }
         Moments::Every { .. } => {
-            let series = series(moments, &chosen);
+            let series = series(moments, chosen);
             output.write(arguments.replace, |out| match form {
                 Form::Text => write_text_series(&series, &options, out),
                 Form::Csv => write_csv_series(&series, 0, out),
@@ -68,34 +60,43 @@ pub fn show<'a>(
     }
 }
 
+/// Makes reports, with all their tables or with one.
+#[derive(Clone, Copy)]
+struct Chosen<'a> {
+    reporter: Reporter<'a>,
+    only: Option<usize>,
+}
+
+impl<'a> Chosen<'a> {
+    fn report(self, at: ArrayTime) -> Report<'a> {
+        let mut report = (self.reporter)(at);
+        if let Some(index) = self.only {
+            report.tables.swap(0, index);
+            report.tables.truncate(1);
+        }
+        report
+    }
+}
+
 /// The reports of a range of moments.
-fn series<'b, 'a: 'b>(
-    moments: Moments,
-    chosen: &'b (dyn Fn(ArrayTime) -> Report<'a> + 'b),
-) -> Series<'b> {
-    let head = chosen(moments.nth(0));
-    let head = clockspar::table::Head {
-        command: head.command,
-        schema_version: head.schema_version,
-        layout: head.layout,
-        revision: head.revision,
-        layout_sha256: head.layout_sha256,
-    };
+fn series(moments: Moments, chosen: Chosen<'_>) -> Series<'_> {
+    let Report { command, schema_version, layout, revision, layout_sha256, .. } =
+        chosen.report(moments.nth(0));
     Series {
-        head,
+        head: Head { command, schema_version, layout, revision, layout_sha256 },
         moments: moments.count(),
-        report: Box::new(move |index| chosen(moments.nth(index))),
+        report: Box::new(move |index| chosen.report(moments.nth(index))),
     }
 }
 
 /// Appends one block a moment at wall-clock pace: the step of array time is waited for.
-fn show_paced<'a>(
+fn show_paced(
     moments: Moments,
     form: Form,
     options: TextOptions,
     output: Output,
     replace: bool,
-    chosen: &dyn Fn(ArrayTime) -> Report<'a>,
+    chosen: Chosen<'_>,
 ) -> Result<(), Problem> {
     if form == Form::Json {
         return Err(Problem::new(
@@ -110,10 +111,10 @@ fn show_paced<'a>(
         for index in 0..moments.count() {
             let at = moments.nth(index);
             wait_until(begun, at.seconds_since(moments.nth(0)).to_f64());
-            let report = chosen(at);
             if form == Form::Csv {
-                write_rows(&report, index == 0, out)?;
+                write_rows(&series(Moments::One(at), chosen), index == 0, out)?;
             } else {
+                let report = chosen.report(at);
                 if index == 0 {
                     text.head(&report.head(), out)?;
                 }
@@ -134,9 +135,9 @@ fn wait_until(begun: Instant, seconds: f64) {
 }
 
 /// The rows of one moment of a table over time, with the header only at the first.
-fn write_rows(report: &Report<'_>, first: bool, out: &mut dyn Write) -> io::Result<()> {
+fn write_rows(moment: &Series<'_>, first: bool, out: &mut dyn Write) -> io::Result<()> {
     let mut bytes = Vec::new();
-    clockspar::table::write_csv_moment(report, 0, &mut bytes)?;
+    write_csv_series(moment, 0, &mut bytes)?;
     let rows = if first {
         &bytes[..]
     } else {

@@ -8,7 +8,7 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
-    Judgement, Span, State as RuleState, check_report, judge, offsets_report, rates_report,
+    Judgement, JudgedOver, RuleState, check_report, judge, offsets_report, rates_report,
 };
 
 use super::show::show;
@@ -74,18 +74,18 @@ pub fn check(arguments: &TableArguments) -> Result<u8, Problem> {
     let layout = Arc::new(files::load(&arguments.layout)?);
     let asked = arguments.moments.at.is_some() || arguments.moments.every.is_some();
     if !asked {
-        let judgements = judge(&layout, Span::Plan);
-        let report = |_| check_report(&layout, Span::Plan, judgements.clone().into());
+        let judgements = judge(&layout, JudgedOver::Plan);
+        let report = |_| check_report(&layout, JudgedOver::Plan, judgements.clone().into());
         show(Moments::One(ArrayTime::ZERO), false, &arguments.output, &report)?;
         return Ok(status_of(is_broken(&judgements)));
     }
     let moments = Moments::of(&arguments.moments, &layout)?;
     let report = |at| {
-        let span = Span::Moment(at);
+        let span = JudgedOver::Moment(at);
         check_report(&layout, span, judge(&layout, span).into())
     };
     show(moments, arguments.moments.paced, &arguments.output, &report)?;
-    let broken = moments.iter().any(|at| is_broken(&judge(&layout, Span::Moment(at))));
+    let broken = moments.iter().any(|at| is_broken(&judge(&layout, JudgedOver::Moment(at))));
     Ok(status_of(broken))
 }
 

@@ -22,7 +22,8 @@ const LINE_CHECK: Timespec = Timespec { tv_sec: 5, tv_nsec: 0 };
 /// Everything that can reach the desk from outside.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub enum Incoming {
-    /// A key was pressed, or is being held.
+    /// A key was pressed, or is being held. Ctrl-C comes as a key; Ctrl-Z does not
+    /// come, because it stops the program.
     Key(KeyEvent),
     /// Text was pasted; it may hold line ends and control characters.
     Paste(String),

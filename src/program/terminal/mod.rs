@@ -5,16 +5,18 @@
 //! * The main thread owns the [`Terminal`] and is the only one that draws.
 //! * A thread reads keys and notices a lost line, another hears signals; both send
 //!   into one channel, from which [`Terminal::recv`] takes.
-//! * At rest nothing runs: the threads are blocked, and no byte is sent.
+//! * At rest no byte is sent and the main thread sleeps; the thread that reads keys
+//!   looks every five seconds whether the line still stands.
 //! * The terminal is never asked a question, because the answer would come as keys.
 //! * A frame that changed is one write; a frame that did not change is none.
 //!
 //! # Ways to end
 //!
-//! The desk returns why it ended, its caller closes the files, and [`Ended::finish`]
-//! then ends the program as the reason demands. When the main thread is too busy to
-//! do so within about a second of a signal, the terminal is given back and the
-//! program dies by the signal all the same.
+//! The desk returns why it ended, its caller drops the [`Terminal`] and closes the
+//! files, and [`Ended::finish`] then ends the program as the reason demands. When the
+//! main thread is too busy to drop the terminal within about a second of a signal, the
+//! terminal is given back and the program dies by the signal all the same; once it
+//! has dropped the terminal, it has ten seconds for the files.
 
 mod backend;
 mod colour;
@@ -168,18 +170,9 @@ impl Terminal {
                 stop();
                 None
             }
-            // In the background, a shell continues a program because of `bg`, or to let
-            // it die of a signal already sent. The first cannot be granted, and the
-            // group stops again as if it had used the terminal; the second must be.
-            Report::Continued if guard::is_in_background() => {
-                thread::sleep(Duration::from_millis(50));
-                if !signals::is_ending() {
-                    let _ = kill_current_process_group(Signal::TTOU);
-                }
-                None
-            }
-            // This follows every stop, the one above and one from outside, which
+            // This follows every stop, the ones above and one from outside, which
             // leaves no time to give the terminal back.
+            Report::Continued if !may_enter() => None,
             Report::Continued => match guard::enter().and_then(|()| self.repaint()) {
                 Ok(()) => Some(Incoming::Resumed),
                 Err(_) => Some(Incoming::Ended(Ended::TerminalLost)),
@@ -218,6 +211,26 @@ impl Terminal {
     pub fn frames(&self) -> u64 {
         self.drawing.backend().frames()
     }
+}
+
+/// Whether the terminal may be taken over after the program has been continued.
+///
+/// In the background it may not. A shell continues a program there because of `bg`,
+/// or to let it die of a signal that it has already sent. The first cannot be
+/// granted, and the group stops again as if it had used the terminal; the second has
+/// to be heard first.
+fn may_enter() -> bool {
+    if guard::is_in_background() {
+        thread::sleep(Duration::from_millis(50));
+    }
+    if signals::is_ending() {
+        return false;
+    }
+    let in_background = guard::is_in_background();
+    if in_background {
+        let _ = kill_current_process_group(Signal::TTOU);
+    }
+    !in_background
 }
 
 /// Stops the program until it is continued.

@@ -30,7 +30,6 @@ const INSISTENCE: Duration = Duration::from_millis(250);
 static OPEN: AtomicBool = AtomicBool::new(false);
 /// Whether the desk has been open and has ended.
 static CLOSING: AtomicBool = AtomicBool::new(false);
-
 /// Whether a signal to end has been heard.
 static ENDING: AtomicBool = AtomicBool::new(false);
 

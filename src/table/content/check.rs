@@ -35,27 +35,27 @@ impl Rule {
 
 /// Whether a rule is met.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
-pub enum State {
+pub enum RuleState {
     /// It is met.
     Kept,
     /// It is not.
     Broken,
 }
 
-impl State {
+impl RuleState {
     /// Its word in the tables.
     #[must_use]
     pub fn word(self) -> &'static str {
         match self {
-            State::Kept => "kept",
-            State::Broken => "broken",
+            RuleState::Kept => "kept",
+            RuleState::Broken => "broken",
         }
     }
 }
 
 /// What the rules are judged over.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub enum Span {
+pub enum JudgedOver {
     /// The whole plan.
     Plan,
     /// One moment of it.
@@ -80,7 +80,7 @@ pub struct Judgement {
     /// `1 − value/limit`; for the horizon the smallest `N`.
     pub margin: f64,
     /// Whether the rule is met.
-    pub state: State,
+    pub state: RuleState,
     /// What would mend it; empty when it is kept.
     pub remedy: String,
 }
@@ -94,7 +94,7 @@ struct Judged<'a> {
 }
 
 impl Judged<'_> {
-    fn of(layout: &Layout, span: Span) -> Judged<'_> {
+    fn of(layout: &Layout, span: JudgedOver) -> Judged<'_> {
         let single = |acceleration_m_s2, at| {
             let extreme = Extreme { acceleration_m_s2, phase: 0, at };
             Extremes { largest: extreme, smallest: extreme }
@@ -106,7 +106,7 @@ impl Judged<'_> {
                 gradient_per_s2: standing.gradient_per_s2,
                 plan: None,
             },
-            (Course::Thrust(plan), Span::Moment(at)) => {
+            (Course::Thrust(plan), JudgedOver::Moment(at)) => {
                 let moment = plan.moment(at);
                 let mut extremes = single(moment.acceleration_m_s2, at);
                 extremes.largest.phase = moment.phase.unwrap_or(0);
@@ -114,7 +114,7 @@ impl Judged<'_> {
                 let phases = moment.phase.is_some();
                 Judged { extremes, phases, gradient_per_s2: 0.0, plan: None }
             }
-            (Course::Thrust(plan), Span::Plan) => {
+            (Course::Thrust(plan), JudgedOver::Plan) => {
                 let extremes = Extremes::of(plan);
                 Judged {
                     extremes: extremes.unwrap_or_else(|| single(Dd::ZERO, ArrayTime::ZERO)),
@@ -159,7 +159,7 @@ impl Judged<'_> {
             value,
             limit,
             margin: rate.to_f64(),
-            state: if kept { State::Kept } else { State::Broken },
+            state: if kept { RuleState::Kept } else { RuleState::Broken },
             remedy: String::new(),
         };
         if !kept {
@@ -190,7 +190,7 @@ impl Judged<'_> {
             value,
             limit: Some(rating),
             margin: 1.0 - value / rating,
-            state: if kept { State::Kept } else { State::Broken },
+            state: if kept { RuleState::Kept } else { RuleState::Broken },
             remedy: String::new(),
         };
         if !kept {
@@ -257,7 +257,7 @@ fn amount(acceleration_m_s2: f64) -> String {
 
 /// Judges every rule: the horizon for each node, then the rating of each node that has one.
 #[must_use]
-pub fn judge(layout: &Layout, span: Span) -> Vec<Judgement> {
+pub fn judge(layout: &Layout, span: JudgedOver) -> Vec<Judgement> {
     let judged = Judged::of(layout, span);
     let mut judgements: Vec<Judgement> = Vec::with_capacity(layout.nodes.len());
     for (row, node) in layout.nodes.iter().enumerate() {
@@ -285,9 +285,9 @@ const COLUMNS: [Column; 10] = [
 
 /// The check report of a layout, from its judgements.
 #[must_use]
-pub fn check_report(layout: &Layout, span: Span, judgements: Arc<[Judgement]>) -> Report<'_> {
+pub fn check_report(layout: &Layout, span: JudgedOver, judgements: Arc<[Judgement]>) -> Report<'_> {
     let mut report = head(layout, span);
-    let broken = judgements.iter().filter(|judgement| judgement.state == State::Broken).count();
+    let broken = judgements.iter().filter(|judgement| judgement.state == RuleState::Broken).count();
     let smallest = judgements.iter().min_by(|a, b| a.margin.total_cmp(&b.margin));
     let scalar = |key, heading, measure, value| Scalar { key, heading, measure, value };
     let count = |number: usize| Cell::Integer(i64::try_from(number).unwrap_or(i64::MAX));
@@ -318,16 +318,16 @@ pub fn check_report(layout: &Layout, span: Span, judgements: Arc<[Judgement]>) -
 }
 
 /// The head: a line that reaches the horizon has no state, so it is made from the plan.
-fn head(layout: &Layout, span: Span) -> Report<'_> {
+fn head(layout: &Layout, span: JudgedOver) -> Report<'_> {
     const WHOLE: &str = "the rules are judged over the whole plan";
     let (at, acceleration, rapidity) = match (span, &layout.course) {
-        (Span::Plan, _) => (Err(WHOLE), Err(WHOLE), Err(WHOLE)),
-        (Span::Moment(at), Course::Thrust(plan)) => {
+        (JudgedOver::Plan, _) => (Err(WHOLE), Err(WHOLE), Err(WHOLE)),
+        (JudgedOver::Moment(at), Course::Thrust(plan)) => {
             let moment = plan.moment(at);
             let acceleration = moment.acceleration_m_s2.to_f64();
             (Ok(at), Ok(acceleration), Ok(moment.rapidity.to_f64()))
         }
-        (Span::Moment(at), Course::Standing(standing)) => {
+        (JudgedOver::Moment(at), Course::Standing(standing)) => {
             (Ok(at), Ok(standing.gravity_m_s2), Err(super::NO_RAPIDITY))
         }
     };

@@ -1,0 +1,1 @@
+//! Layouts that are refused, each with its message.
