@@ -3,6 +3,7 @@
 use clockspar::table::width::wrapped;
 use ratatui::buffer::Buffer;
 use ratatui::layout::{Position, Rect};
+use unicode_segmentation::UnicodeSegmentation;
 
 use super::geometry::{Extent, Geometry};
 use super::keys::Focus;
@@ -118,13 +119,13 @@ fn draw_entry(desk: &Desk, line: Rect, painter: &mut Painter<'_>) -> Option<Posi
 
 /// The end of a text that takes at most so many columns.
 fn tail(text: &str, width: u16) -> &str {
-    let mut start = 0;
-    let signs = text.char_indices().map(|(at, _)| at);
-    for at in signs {
-        start = at;
-        if width_of(&text[at..]) <= width {
-            return &text[at..];
+    let (mut start, mut taken) = (text.len(), 0_u16);
+    for (at, cluster) in text.grapheme_indices(true).rev() {
+        taken = taken.saturating_add(width_of(cluster));
+        if taken > width {
+            break;
         }
+        start = at;
     }
-    if width_of(text) <= width { text } else { &text[text.len().min(start + text[start..].len())..] }
+    &text[start..]
 }
