@@ -14,7 +14,7 @@ use super::state::Desk;
 use super::words;
 
 /// Columns for the labels of the upright axis.
-const LABELS: u16 = 10;
+const LABELS: u16 = 12;
 /// Phase boundaries are marked up to so many columns per boundary.
 const LEAST_COLUMNS_A_PHASE: usize = 3;
 
@@ -36,7 +36,7 @@ pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) {
         draw_strip(desk, plan, area, painter);
         return;
     }
-    let chart = Chart::new(desk, plan, area);
+    let chart = Chart::new(desk, area);
     chart.draw_labels(desk, area, painter);
     chart.draw_axis(plan, area, painter);
     chart.draw_line(plan, painter);
@@ -108,8 +108,7 @@ fn slope(plan: &Plan, at: ArrayTime) -> (f64, i8) {
 }
 
 impl Chart {
-    fn new(desk: &Desk, plan: &Plan, area: Rect) -> Chart {
-        let _ = plan;
+    fn new(desk: &Desk, area: Rect) -> Chart {
         let shape = &desk.plan_shape;
         let (mut lowest, mut highest) = (shape.smallest_m_s2.min(0.0), shape.largest_m_s2.max(0.0));
         if highest == lowest {
@@ -196,10 +195,10 @@ impl Chart {
         for x in inside.left()..inside.right() {
             painter.put(inside, x, zero, glyphs.plan_zero, QUIET);
         }
-        let mut before: Option<u16> = None;
+        // Before the plan there is no thrust.
+        let mut before = zero;
         for column in 0..self.time.columns {
             let x = self.time.left + column;
-            let from = self.time.moment(2 * column);
             let to = self.time.moment(2 * column + 2);
             let (acceleration, direction) = slope(plan, self.time.moment(2 * column + 1));
             let y = self.row(acceleration);
@@ -208,11 +207,10 @@ impl Chart {
                 -1 => glyphs.plan_falling,
                 _ => glyphs.plan_level,
             };
-            if let Some(before) = before
-                && before.abs_diff(y) > 1
-            {
+            if before.abs_diff(y) > 1 {
                 // What happened between two columns: a jump, or a ramp too short to see.
-                let upright = match between(plan, self.time.moment(2 * column.saturating_sub(1)), to) {
+                let since = self.time.moment((2 * column).saturating_sub(1));
+                let upright = match between(plan, since, to) {
                     Between::Jump => glyphs.plan_jump,
                     Between::Ramp if before > y => glyphs.plan_rising,
                     Between::Ramp => glyphs.plan_falling,
@@ -221,9 +219,8 @@ impl Chart {
                     painter.put(inside, x, row, upright, PLAIN);
                 }
             }
-            let _ = from;
             painter.put(inside, x, y, glyph, PLAIN);
-            before = Some(y);
+            before = y;
         }
     }
 

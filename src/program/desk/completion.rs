@@ -114,17 +114,14 @@ impl Found {
             }
             _ => {}
         }
-        if let Some(dimension) = slot.dimension() {
-            let number_end = typed.rfind(|sign: char| sign.is_ascii_digit() || sign == '.');
-            let Some(end) = number_end else { return };
-            let unit = &typed[end + 1..];
-            // A unit is offered once a blank says that the number is complete.
-            if let Some(unit) = unit.strip_prefix(' ')
-                && !unit.contains(' ')
-            {
-                for known in dimension.units() {
-                    self.offer(unit, known, false);
-                }
+        let number_end = typed.rfind(|sign: char| sign.is_ascii_digit() || sign == '.');
+        let Some(end) = number_end else { return };
+        // A unit is offered once a blank says that the number is complete.
+        if let Some(unit) = typed[end + 1..].strip_prefix(' ')
+            && !unit.contains(' ')
+        {
+            for known in slot.units() {
+                self.offer(unit, known, false);
             }
         }
     }

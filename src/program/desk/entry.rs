@@ -50,10 +50,8 @@ impl Entry {
             self.cursor += sign.len_utf8();
         }
         // A combining sign may have joined what stands behind the cursor.
-        self.cursor = self
-            .boundaries()
-            .find(|boundary| *boundary >= self.cursor)
-            .unwrap_or(self.text.len());
+        let cursor = self.boundaries().find(|boundary| *boundary >= self.cursor);
+        self.cursor = cursor.unwrap_or(self.text.len());
         self.recalled = None;
     }
 
@@ -85,8 +83,8 @@ impl Entry {
 
     /// Moves the cursor one sign right.
     pub fn right(&mut self) {
-        self.cursor =
-            self.boundaries().find(|at| *at > self.cursor).unwrap_or(self.text.len());
+        let cursor = self.boundaries().find(|at| *at > self.cursor);
+        self.cursor = cursor.unwrap_or(self.text.len());
     }
 
     /// Moves the cursor to the beginning.

@@ -33,9 +33,7 @@ pub struct Geometry {
     pub table: Rect,
     /// The thrust plan.
     pub plan: Rect,
-    /// The message line.
-    pub message: Rect,
-    /// The entry line.
+    /// The entry line; a message stands there too, or above it.
     pub entry: Rect,
     /// Whether the rows are nodes, with a row for the horizon.
     has_horizon: bool,
@@ -58,12 +56,12 @@ impl Geometry {
         };
         let (head, plan) = match extent {
             // A taller screen gives the plan a fifth of what it has more.
-            Extent::Full => (3, 6 + (area.height - FULL.1) / 5),
+            Extent::Full => (4, 6 + (area.height - FULL.1) / 5),
             Extent::Narrow => (2, 1),
             Extent::OneLine => (area.height.min(1), 0),
         };
         let plan = plan.min(12);
-        let bottom = if extent == Extent::OneLine { 0 } else { 2 };
+        let bottom = if extent == Extent::OneLine { 0 } else { 1 };
         let mut y = area.y;
         let mut take = |rows: u16| {
             let part = Rect { x: area.x, y, width: area.width, height: rows };
@@ -76,9 +74,8 @@ impl Geometry {
             _ => take(area.height - head.height - plan - bottom),
         };
         let plan = take(plan);
-        let message = take(bottom / 2);
-        let entry = take(bottom / 2);
-        Geometry { extent, head, table, plan, message, entry, has_horizon: desk.view().nodes }
+        let entry = take(bottom);
+        Geometry { extent, head, table, plan, entry, has_horizon: desk.view().nodes }
     }
 
     /// How many rows of the table are seen at once.

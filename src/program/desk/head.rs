@@ -1,5 +1,6 @@
 //! The head: what is shown, when, and how things stand.
 
+use clockspar::table::Measure;
 use ratatui::layout::Rect;
 
 use super::geometry::{Extent, Geometry};
@@ -19,16 +20,22 @@ pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) {
         height: u16::from(index < area.height),
         ..area
     };
-    draw_name(desk, line(0), painter);
+    let is_full = geometry.extent == Extent::Full;
+    draw_name(desk, line(0), is_full, painter);
     draw_moment(desk, line(1), painter);
-    if geometry.extent == Extent::Full {
-        draw_views(desk, line(2), painter);
+    if is_full {
+        draw_thrust(desk, line(2), painter);
+        draw_views(desk, line(3), painter);
     }
 }
 
-/// Name, revision, hash; on the right what is recorded.
-fn draw_name(desk: &Desk, line: Rect, painter: &mut Painter<'_>) {
-    let (text, word) = recording_words(desk);
+/// Name, revision, hash; on the right what is recorded, or else, where there is no line
+/// for it, the acceleration.
+fn draw_name(desk: &Desk, line: Rect, is_full: bool, painter: &mut Painter<'_>) {
+    let (mut text, word) = recording_words(desk);
+    if !is_full && word.is_empty() {
+        text = thrust(desk).unwrap_or_default();
+    }
     let right = painter.put_right(line, line.y, &text, PLAIN);
     let word_area = Rect { x: right, width: width_of(word), ..line };
     painter.restyle(word_area.intersection(line), state_style(word));
@@ -69,12 +76,7 @@ fn recording_words(desk: &Desk) -> (String, &'static str) {
 /// The moment; on the right what the line is doing.
 fn draw_moment(desk: &Desk, line: Rect, painter: &mut Painter<'_>) {
     let states = states(desk);
-    let phase = phase(desk);
-    let mut text = states.join(", ");
-    if !phase.is_empty() {
-        text = format!("{text}, {phase}");
-    }
-    let right = painter.put_right(line, line.y, &text, PLAIN);
+    let right = painter.put_right(line, line.y, &states.join(", "), PLAIN);
     let mut x = right;
     for state in &states {
         let width = width_of(&painter.signs(state));
@@ -118,41 +120,51 @@ fn phase(desk: &Desk) -> String {
     }
 }
 
-/// The views with their digits; on the right acceleration and rapidity.
-fn draw_views(desk: &Desk, line: Rect, painter: &mut Painter<'_>) {
-    let right = match desk.state() {
-        Some(state) => {
-            let acceleration = words::acceleration(state.reference_acceleration_m_s2());
-            match state.rapidity() {
-                Some(rapidity) => format!("α {acceleration}  φ {}", words::rounded(rapidity)),
-                None => format!("gravity {acceleration}"),
-            }
-        }
-        None => String::new(),
-    };
+/// Acceleration of the reference, or the gravity it stands in.
+fn thrust(desk: &Desk) -> Option<String> {
+    let state = desk.state()?;
+    let acceleration = words::acceleration(state.reference_acceleration_m_s2());
+    Some(match state.rapidity() {
+        Some(_) => format!("α {acceleration}"),
+        None => format!("gravity {acceleration}"),
+    })
+}
+
+/// Acceleration and rapidity; on the right the phase and what the numbers are against.
+fn draw_thrust(desk: &Desk, line: Rect, painter: &mut Painter<'_>) {
+    let mut right = phase(desk);
+    if let Some(node) = desk.against.and_then(|row| desk.layout().nodes.get(row)) {
+        right = format!("against {}, {right}", node.name);
+    }
     let right = painter.put_right(line, line.y, &right, PLAIN);
-    let left = Rect { width: right.saturating_sub(line.x + 1), ..line };
-    let mut x = left.x;
+    let left = Rect { width: right.saturating_sub(line.x + 2), ..line };
+    let mut text = thrust(desk).unwrap_or_default();
+    if let Some(rapidity) = desk.state().and_then(|state| state.rapidity()) {
+        text = format!("{text}   φ {}", words::rounded(rapidity));
+    }
+    painter.put(left, left.x, left.y, &text, PLAIN);
+}
+
+/// The views with their digits.
+fn draw_views(desk: &Desk, line: Rect, painter: &mut Painter<'_>) {
+    let mut x = line.x;
     for (place, view) in VIEWS.iter().enumerate().filter(|(_, view)| view.table.is_some()) {
         let text = format!(" {} {} ", view.digit, view.name);
         let style = if place == desk.view { CHOSEN } else { PLAIN };
-        x = painter.put(left, x, left.y, &text, style);
+        x = painter.put(line, x, line.y, &text, style);
     }
 }
 
 /// Everything in one line, for an area too small for a table.
 pub fn draw_one_line(desk: &Desk, area: Rect, painter: &mut Painter<'_>) {
     let row = desk.nodes.row.min(desk.layout().nodes.len().saturating_sub(1));
-    let mut text = format!("{}, {}", words::time(desk.at), states(desk).join(", "));
+    let mut text = format!("{} {}", words::time(desk.at), desk.doing());
     if let Some(node) = desk.layout().nodes.get(row) {
-        text = format!("{text}, {}", node.name);
+        text = format!("{text}; {}", node.name);
         if let Some(aboard) = desk.state().and_then(|state| state.node(row).aboard()) {
             let rate = words::rounded(aboard.rate_minus_one.to_f64());
-            let offset = words::value(
-                clockspar::table::Measure::Time,
-                aboard.clock_offset_s.to_f64(),
-            );
-            text = format!("{text} rate - 1 {rate} offset {offset}");
+            let offset = aboard.clock_offset_s.to_f64();
+            text = format!("{text} {rate} {}", words::value(Measure::Time, offset));
         }
     }
     painter.put(area, area.x, area.y, &text, PLAIN);

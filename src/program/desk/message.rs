@@ -94,8 +94,6 @@ pub enum Effect {
 pub enum Wanted {
     /// The first one.
     First,
-    /// The last one.
-    Last,
     /// The first one after a moment.
     After(ArrayTime),
     /// The last one before a moment.

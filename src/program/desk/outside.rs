@@ -164,7 +164,6 @@ impl Outside {
         };
         let found = match wanted {
             Wanted::First => reader.first_frame(),
-            Wanted::Last => reader.last_frame(),
             Wanted::After(at) => reader.frame(Seek::After, at),
             Wanted::Before(at) => reader.frame(Seek::Before, at),
             Wanted::At(at) => reader.frame(Seek::AtOrBefore, at),

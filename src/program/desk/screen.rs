@@ -3,6 +3,7 @@
 use clockspar::table::width::wrapped;
 use ratatui::buffer::Buffer;
 use ratatui::layout::{Position, Rect};
+use ratatui::style::Style;
 use unicode_segmentation::UnicodeSegmentation;
 
 use super::geometry::{Extent, Geometry};
@@ -30,7 +31,7 @@ pub fn view(desk: &Desk, area: Rect, buffer: &mut Buffer) -> Option<Position> {
     head::draw(desk, &geometry, &mut painter);
     table_pane::draw(desk, &geometry, &mut painter);
     chart::draw(desk, &geometry, &mut painter);
-    draw_message(desk, geometry.message, area, &mut painter);
+    draw_message(desk, geometry.entry, area, &mut painter);
     draw_entry(desk, geometry.entry, &mut painter)
 }
 
@@ -48,40 +49,45 @@ fn draw_one_line(desk: &Desk, line: Rect, painter: &mut Painter<'_>) -> Option<P
     None
 }
 
-/// The message, in as many rows as it needs; further ones lie over the plan.
-fn draw_message(desk: &Desk, line: Rect, area: Rect, painter: &mut Painter<'_>) {
-    let (text, style) = match (&desk.question, &desk.notice) {
-        (Some(question), None) => (question.text.clone(), ASKED),
-        (_, Some(notice)) if notice.refusal.is_some() => (notice.text(), REFUSED),
-        (_, Some(notice)) => (notice.text(), PLAIN),
-        (None, None) => {
-            painter.put(line, line.x, line.y, hint(desk), QUIET);
-            return;
-        }
-    };
-    let text = painter.signs(&text);
-    let lines = wrapped(&text, Some(usize::from(line.width)));
-    let rows = u16::try_from(lines.len()).unwrap_or(u16::MAX).min(MOST_MESSAGE_ROWS);
-    let top = (line.y + 1).saturating_sub(rows).max(area.y);
-    for (place, text) in lines.iter().take(usize::from(rows)).enumerate() {
-        let y = top + place as u16;
-        let row = Rect { y, height: 1, ..line };
-        let is_last = place + 1 == usize::from(rows) && lines.len() > usize::from(rows);
-        let mark = if is_last { painter.glyphs.ellipsis } else { "" };
-        painter.put(row, line.x, y, &blank(line.width), PLAIN);
-        painter.put(row, line.x, y, &format!("{text}{mark}"), style);
+/// What there is to say, and how.
+fn message(desk: &Desk) -> Option<(String, Style)> {
+    match (&desk.question, &desk.notice) {
+        (_, Some(notice)) if notice.refusal.is_some() => Some((notice.text(), REFUSED)),
+        (_, Some(notice)) => Some((notice.text(), PLAIN)),
+        (Some(question), None) => Some((question.text.clone(), ASKED)),
+        (None, None) => None,
     }
 }
 
-fn blank(width: u16) -> String {
-    " ".repeat(usize::from(width))
+/// Whether a message has room in the entry line itself.
+fn fits_entry(desk: &Desk, text: &str, line: Rect) -> bool {
+    desk.entry.text().is_empty() && width_of(PROMPT) + 1 + width_of(text) <= line.width
+}
+
+/// A message that has no room in the entry line lies over the rows above it.
+fn draw_message(desk: &Desk, entry: Rect, area: Rect, painter: &mut Painter<'_>) {
+    let Some((text, style)) = message(desk) else { return };
+    let text = painter.signs(&text);
+    if fits_entry(desk, &text, entry) {
+        return;
+    }
+    let lines = wrapped(&text, Some(usize::from(entry.width)));
+    let rows = u16::try_from(lines.len()).unwrap_or(u16::MAX).min(MOST_MESSAGE_ROWS);
+    let top = entry.y.saturating_sub(rows).max(area.y);
+    for (place, text) in lines.iter().take(usize::from(rows)).enumerate() {
+        let row = Rect { y: top + place as u16, height: 1, ..entry };
+        let is_cut = place + 1 == usize::from(rows) && lines.len() > usize::from(rows);
+        let mark = if is_cut { painter.glyphs.ellipsis } else { "" };
+        painter.put(row, row.x, row.y, &" ".repeat(usize::from(row.width)), PLAIN);
+        painter.put(row, row.x, row.y, &format!("{text}{mark}"), style);
+    }
 }
 
 fn hint(desk: &Desk) -> &'static str {
     match desk.focus {
-        Focus::Table => "Left and Right step; 0 lists keys and sentences; Ctrl-C leaves",
-        Focus::Plan => "Enter starts and stops running; Left and Right go to phase ends",
-        Focus::Entry => "Enter does the sentence; Esc leaves the entry; Tab completes",
+        Focus::Table => "Left, Right step; 0 lists keys and sentences",
+        Focus::Plan => "Enter starts and stops; Left, Right to phase ends",
+        Focus::Entry => "Enter does the sentence; Esc leaves the entry",
     }
 }
 
@@ -100,7 +106,12 @@ fn draw_entry(desk: &Desk, line: Rect, painter: &mut Painter<'_>) -> Option<Posi
     let after = &desk.entry.text()[desk.entry.before_cursor().len()..];
     let cursor = painter.put(room, start, line.y, before, PLAIN);
     let mut x = painter.put(room, cursor, line.y, after, PLAIN);
-    if is_entered {
+    if desk.entry.text().is_empty() {
+        let (text, style) = message(desk).unwrap_or_else(|| (hint(desk).to_owned(), QUIET));
+        if fits_entry(desk, &painter.signs(&text), line) {
+            painter.put(line, start + 1, line.y, &text, style);
+        }
+    } else if is_entered {
         if let Some(rest) = &desk.entry.completion.rest {
             x = painter.put(room, x, line.y, rest, QUIET);
         }

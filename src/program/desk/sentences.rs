@@ -78,14 +78,19 @@ impl Slot {
         }
     }
 
-    /// Units that may follow a number in it.
-    pub fn dimension(self) -> Option<Dimension> {
-        match self {
-            Slot::Moment | Slot::Time => Some(Dimension::Time),
-            Slot::Acceleration => Some(Dimension::Acceleration),
-            Slot::Position => Some(Dimension::Length),
-            Slot::Node | Slot::Number | Slot::Text | Slot::File => None,
-        }
+    /// Units that may follow a number in it, those most wanted first.
+    pub fn units(self) -> Vec<&'static str> {
+        let (dimension, wanted): (_, &[&str]) = match self {
+            Slot::Moment | Slot::Time => (Dimension::Time, &["s", "min", "h", "d", "ms", "us"]),
+            Slot::Acceleration => (Dimension::Acceleration, &["g0", "mg0"]),
+            Slot::Position => (Dimension::Length, &["m", "km"]),
+            Slot::Node | Slot::Number | Slot::Text | Slot::File => return Vec::new(),
+        };
+        let mut units: Vec<&str> = dimension.units().collect();
+        units.sort_by_key(|unit| {
+            wanted.iter().position(|known| known == unit).unwrap_or(wanted.len())
+        });
+        units
     }
 }
 
