@@ -23,7 +23,3 @@ pub const JULIAN_YEAR_S: f64 = 31_557_600.0;
 /// Light-year, m. Exact: the speed of light times the Julian year,
 /// 9 460 730 472 580 800 (IAU style manual, 1989).
 pub const LIGHT_YEAR_M: f64 = 9_460_730_472_580_800.0;
-
-/// Number of this model: raised whenever any printed bit may change. Two recordings
-/// compare bit by bit only under one number.
-pub const MODEL: u32 = 1;

@@ -163,7 +163,7 @@ impl RunFault {
                 "`{}` at {} m would reach the horizon at {} s",
                 fault.name,
                 number(fault.position_m),
-                fault.at
+                nine_digits(fault.at)
             ),
             RunFault::GravityTurned { name, .. } => {
                 format!("the gradient would turn gravity round at `{name}`")
@@ -282,8 +282,16 @@ impl fmt::Display for RunFault {
 
 impl std::error::Error for RunFault {}
 
+/// A computed moment in seconds, to nine digits: its last attosecond tells nobody more.
+fn nine_digits(at: ArrayTime) -> String {
+    let rounded = format!("{:.8e}", at.to_f64());
+    rounded.parse().map_or(rounded, number)
+}
+
 /// The shortest decimal that reads back to the same double, so that a figure given as a
 /// remedy is accepted when it is typed in.
 fn number(value: f64) -> String {
-    zmij::Buffer::new().format(value).to_owned()
+    let mut digits = zmij::Buffer::new();
+    let text = digits.format(value);
+    text.strip_suffix(".0").unwrap_or(text).to_owned()
 }

@@ -125,13 +125,6 @@ impl<'a> State<'a> {
         }
     }
 
-    /// Whether a node has been moved or released at any time of the run: its clock offset
-    /// is then not that of its position alone.
-    #[must_use]
-    pub fn is_changed(&self, row: usize) -> bool {
-        self.changed.binary_search_by_key(&row, |(row, _)| *row).is_ok()
-    }
-
     /// All nodes, in the order of their rows.
     pub fn nodes(&self) -> impl Iterator<Item = NodeState> + '_ {
         let mut changed = self.changed.iter().peekable();

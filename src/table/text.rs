@@ -150,7 +150,10 @@ impl TextWriter {
     /// Those of the writer.
     pub fn moment(&mut self, report: &Report<'_>, out: &mut dyn Write) -> io::Result<()> {
         let options = self.options;
-        let parts = moment_parts(report, options).map(|(label, value)| format!("{label} {value}"));
+        let parts: Vec<String> = moment_parts(report, options)
+            .into_iter()
+            .map(|(label, value)| format!("{label} {value}"))
+            .collect();
         let mut text = String::from("\n");
         options.push_lines(&mut text, &parts.join(", "));
         push_scalars(&mut text, &report.scalars, options);
@@ -203,8 +206,13 @@ fn push_head(text: &mut String, head: &Head<'_>, options: TextOptions) {
 }
 
 /// The moment, the acceleration of the reference and the rapidity, with their labels.
-fn moment_parts(report: &Report<'_>, options: TextOptions) -> [(&'static str, String); 3] {
-    let absent = |why: &'static str| format!("- ({why})");
+fn moment_parts(report: &Report<'_>, options: TextOptions) -> Vec<(&'static str, String)> {
+    if let (Err(why), Err(_), Err(_)) =
+        (report.at, report.reference_acceleration_m_s2, report.rapidity)
+    {
+        return vec![("array time", absent_alone(why))];
+    }
+    let absent = absent_alone;
     let moment = report.at.map_or_else(absent, |at| {
         let (readable, exact) = (readable_time(at), format!("{at} s"));
         if readable == exact {
@@ -219,11 +227,12 @@ fn moment_parts(report: &Report<'_>, options: TextOptions) -> [(&'static str, St
     });
     let rapidity = report.rapidity;
     let rapidity = rapidity.map_or_else(absent, |value| rounded(value, Scale::Ten(0), 10));
-    [
-        ("array time", moment),
-        ("reference acceleration", reference),
-        ("rapidity", rapidity),
-    ]
+    vec![("array time", moment), ("reference acceleration", reference), ("rapidity", rapidity)]
+}
+
+/// What stands for a value that does not exist, outside a table.
+fn absent_alone(why: &str) -> String {
+    format!("- ({why})")
 }
 
 fn push_scalars(text: &mut String, scalars: &[Scalar<'_>], options: TextOptions) {

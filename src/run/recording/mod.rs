@@ -34,6 +34,7 @@ mod writer;
 
 use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
+use crate::table::{MODEL, PROGRAM};
 
 pub use fault::{Condition, Cut, Damage, Missing, OpenFault, ReadFault, WriteFault};
 pub use lines::{Events, Lines};
@@ -47,9 +48,6 @@ use super::Event;
 
 /// What the first and the last line of a recording call its format.
 pub const FORMAT: &str = "clockspar.recording/1";
-
-/// The program, as recordings name it.
-pub const PROGRAM: &str = concat!("clockspar ", env!("CARGO_PKG_VERSION"));
 
 /// The most bytes the text of a note has, unless it stands in the layout.
 pub const LONGEST_NOTE: usize = 64 * 1024;
@@ -162,7 +160,7 @@ impl Opening {
         let files = layout.source.files.iter();
         Opening {
             program: PROGRAM.to_owned(),
-            model: crate::model::constants::MODEL,
+            model: MODEL,
             layout: layout.name.clone(),
             layout_sha256: layout.source.sha256.clone(),
             layout_text: layout.source.text.clone(),

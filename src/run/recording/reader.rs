@@ -151,10 +151,14 @@ impl<R: ReadAt> Reader<R> {
     /// A damaged line in its place, or bytes that cannot be read.
     pub fn frame(&self, seek: Seek, at: ArrayTime) -> Result<Option<Frame>, ReadFault> {
         match seek {
-            Seek::Before => self.frame_before(self.first_line_where(|moment| moment >= at)?),
-            Seek::AtOrBefore => self.frame_before(self.first_line_where(|moment| moment > at)?),
-            Seek::AtOrAfter => self.frame_from(self.first_line_where(|moment| moment >= at)?),
-            Seek::After => self.frame_from(self.first_line_where(|moment| moment > at)?),
+            Seek::Before => self.frame_up_to(self.first_line_where(|moment| moment >= at)?, None),
+            Seek::AtOrBefore => {
+                self.frame_up_to(self.first_line_where(|moment| moment > at)?, Some(at))
+            }
+            Seek::AtOrAfter => {
+                self.frame_from(self.first_line_where(|moment| moment >= at)?, Some(at))
+            }
+            Seek::After => self.frame_from(self.first_line_where(|moment| moment > at)?, None),
         }
     }
 
@@ -164,7 +168,7 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// A damaged line in its place, or bytes that cannot be read.
     pub fn first_frame(&self) -> Result<Option<Frame>, ReadFault> {
-        self.frame_from(self.data_start)
+        self.frame_from(self.data_start, None)
     }
 
     /// The last frame.
@@ -241,13 +245,42 @@ impl<R: ReadAt> Reader<R> {
         Ok(cut(size, Missing::Closing))
     }
 
-    fn frame_from(&self, offset: u64) -> Result<Option<Frame>, ReadFault> {
+    /// The first frame from a byte on. A damaged line before it may have been that frame,
+    /// unless the frame is just the one that was wanted.
+    fn frame_from(
+        &self,
+        offset: u64,
+        wanted: Option<ArrayTime>,
+    ) -> Result<Option<Frame>, ReadFault> {
+        let mut damaged = None;
         for line in Lines::new(self, offset) {
-            if let Line::Frame(frame) = line? {
-                return Ok(Some(frame));
+            match line {
+                Ok(Line::Event(_)) => {}
+                Ok(Line::Frame(frame)) if damaged.is_none() || wanted == Some(frame.at) => {
+                    return Ok(Some(frame));
+                }
+                Ok(Line::Frame(_)) => break,
+                Err(ReadFault::Io(error)) => return Err(error.into()),
+                Err(ReadFault::Damaged(damage)) => {
+                    damaged.get_or_insert(damage);
+                }
             }
         }
-        Ok(None)
+        damaged.map_or(Ok(None), |damage| Err(ReadFault::Damaged(damage)))
+    }
+
+    /// The last frame before a byte. A damaged line at that byte may have been that frame,
+    /// unless the frame is just the one that was wanted.
+    fn frame_up_to(
+        &self,
+        offset: u64,
+        wanted: Option<ArrayTime>,
+    ) -> Result<Option<Frame>, ReadFault> {
+        let frame = self.frame_before(offset)?;
+        if wanted.is_none() || frame.as_ref().map(|frame| frame.at) != wanted {
+            Lines::new(self, offset).next().transpose()?;
+        }
+        Ok(frame)
     }
 
     fn frame_before(&self, offset: u64) -> Result<Option<Frame>, ReadFault> {

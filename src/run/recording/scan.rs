@@ -89,7 +89,7 @@ impl<'a> Scanner<'a> {
             self.at = (self.at + length + 2).min(self.bytes.len());
         }
         serde_json::from_slice(&self.bytes[start..self.at])
-            .or_else(|_| Err(Malformed { at: start, what: "a malformed text".to_owned() }))
+            .map_err(|_| Malformed { at: start, what: "a malformed text".to_owned() })
     }
 
     /// The next number, as it is written.
@@ -137,15 +137,16 @@ impl<'a> Scanner<'a> {
     pub(super) fn whole(&mut self) -> Scanned<u64> {
         let at = self.at;
         let parsed = self.number()?.parse();
-        parsed.or_else(|_| Err(Malformed { at, what: "not a whole number".to_owned() }))
+        parsed.map_err(|_| Malformed { at, what: "not a whole number".to_owned() })
     }
 
     /// An exact moment or length of array time.
     pub(super) fn time(&mut self) -> Scanned<ArrayTime> {
         let at = self.at;
         let written = self.number()?;
-        parse_duration(written).or_else(|_| {
-            Err(Malformed { at, what: format!("`{written:.40}` is not a moment of array time") })
+        parse_duration(written).map_err(|_| Malformed {
+            at,
+            what: format!("`{written:.40}` is not a moment of array time"),
         })
     }
 

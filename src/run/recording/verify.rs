@@ -5,8 +5,9 @@ use std::sync::Arc;
 use sha2::{Digest, Sha256};
 
 use crate::layout::Layout;
-use crate::model::constants::{MODEL, SPEED_OF_LIGHT_M_S};
+use crate::model::constants::SPEED_OF_LIGHT_M_S;
 use crate::run::{Run, State};
+use crate::table::MODEL;
 
 use super::record::Readings;
 use super::window::{ReadAt, for_each_chunk};
