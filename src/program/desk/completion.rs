@@ -50,9 +50,9 @@ impl Found {
         if choices.len() < MOST_CHOICES {
             choices.push(word.to_owned());
         }
+        let blank = if more_follows { " " } else { "" };
         // A word that stands there whole may still be the beginning of a longer one.
-        if self.completion.rest.is_none() && !rest.is_empty() {
-            let blank = if more_follows { " " } else { "" };
+        if self.completion.rest.is_none() && rest.len() + blank.len() > 0 {
             self.completion.rest = Some(format!("{rest}{blank}"));
         }
     }

@@ -26,7 +26,7 @@ impl Step {
             .iter()
             .map(|seconds| ArrayTime::from_seconds(*seconds))
             .filter(|step| step.attoseconds().saturating_mul(50) <= end.attoseconds())
-            .last();
+            .next_back();
         let least = || {
             // Plans of seconds and less: the power of ten below a fiftieth.
             let mut step = ArrayTime::from_seconds(1).attoseconds();

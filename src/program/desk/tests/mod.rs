@@ -1,5 +1,8 @@
 //! The desk without a terminal: messages in, effects and buffers out.
 
+mod acting;
+mod anything;
+mod replays;
 mod screens;
 
 use std::sync::Arc;
