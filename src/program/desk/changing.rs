@@ -152,8 +152,8 @@ impl Desk {
     fn run_with(&self, kind: &EventKind) -> Result<Change, Notice> {
         let at = self.at;
         let event = Event { at, kind: kind.clone() };
-        let later = self.run.events().len()
-            - self.run.events().partition_point(|event| event.at <= at);
+        let later =
+            self.run.events().len() - self.run.events().partition_point(|event| event.at <= at);
         let told = words::event(kind);
         if later == 0 {
             let mut run = self.run.clone();
@@ -208,6 +208,7 @@ impl Desk {
             return;
         }
         self.stop_running(effects);
+        self.failed = None;
         effects.push(Effect::OpenRecording { path: path.clone() });
         self.recording = Some(self.new_recording(path));
     }

@@ -100,7 +100,11 @@ fn slope(plan: &Plan, at: ArrayTime) -> (f64, i8) {
     let acceleration = moment.acceleration_m_s2.to_f64();
     let direction = match moment.phase.and_then(|index| plan.phases().get(index)) {
         Some(phase) if !phase.is_hold() => {
-            if phase.line.to_m_s2 > phase.line.from_m_s2 { 1 } else { -1 }
+            if phase.line.to_m_s2 > phase.line.from_m_s2 {
+                1
+            } else {
+                -1
+            }
         }
         _ => 0,
     };
@@ -235,7 +239,8 @@ impl Chart {
         painter.put(area, x, area.y, mark, STRONG);
         let told = words::time(desk.at);
         let width = width_of(&told);
-        let beside = if x + 2 + width <= area.right() { x + 2 } else { x.saturating_sub(width + 1) };
+        let beside =
+            if x + 2 + width <= area.right() { x + 2 } else { x.saturating_sub(width + 1) };
         if beside >= self.time.left {
             painter.put(area, beside, area.y, &told, QUIET);
         }

@@ -103,8 +103,7 @@ impl Found {
     fn fill(&mut self, slot: Slot, typed: &str, layout: &Layout) {
         match slot {
             Slot::Node => {
-                let fitting =
-                    layout.nodes.iter().filter(|node| node.name.starts_with(typed));
+                let fitting = layout.nodes.iter().filter(|node| node.name.starts_with(typed));
                 for node in fitting.take(MOST_CHOICES) {
                     self.offer(typed, &node.name, false);
                 }

@@ -75,18 +75,12 @@ pub fn horizon(desk: &Desk) -> Option<Horizon> {
     let distance = state.instant().horizon_m(Dd::new(position_m))?.to_f64();
     let side = if is_fore { "fore" } else { "aft" };
     let name = &desk.layout().nodes[row].name;
-    let text =
-        format!("horizon {} {side} of {name}", words::value(Measure::Length, distance));
+    let text = format!("horizon {} {side} of {name}", words::value(Measure::Length, distance));
     Some(Horizon { is_fore, text })
 }
 
 /// Draws the row of the horizon, or says that there is none.
-pub fn draw_horizon(
-    horizon: Option<&Horizon>,
-    area: Rect,
-    y: u16,
-    painter: &mut Painter<'_>,
-) {
+pub fn draw_horizon(horizon: Option<&Horizon>, area: Rect, y: u16, painter: &mut Painter<'_>) {
     let glyphs = painter.glyphs;
     match horizon {
         Some(horizon) => {

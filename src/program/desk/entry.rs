@@ -156,10 +156,7 @@ impl Entry {
 
     /// The places between grapheme clusters, the end included.
     fn boundaries(&self) -> impl Iterator<Item = usize> + '_ {
-        self.text
-            .grapheme_indices(true)
-            .map(|(at, _)| at)
-            .chain(std::iter::once(self.text.len()))
+        self.text.grapheme_indices(true).map(|(at, _)| at).chain(std::iter::once(self.text.len()))
     }
 }
 

@@ -15,11 +15,8 @@ const HASH_DIGITS: usize = 12;
 /// Draws the head.
 pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) {
     let area = geometry.head;
-    let line = |index: u16| Rect {
-        y: area.y + index,
-        height: u16::from(index < area.height),
-        ..area
-    };
+    let line =
+        |index: u16| Rect { y: area.y + index, height: u16::from(index < area.height), ..area };
     let is_full = geometry.extent == Extent::Full;
     draw_name(desk, line(0), is_full, painter);
     draw_moment(desk, line(1), painter);
@@ -57,10 +54,16 @@ fn recording_words(desk: &Desk) -> (String, &'static str) {
             Some(frame) => format!(", frame {}", frame.index),
             None => String::new(),
         };
-        return (format!("{} recording {}{frame}", replay.condition, replay.path), replay.condition);
+        return (
+            format!("{} recording {}{frame}", replay.condition, replay.path),
+            replay.condition,
+        );
     }
     match &desk.recording {
-        None => ("not recording".to_owned(), ""),
+        None => match &desk.failed {
+            Some(path) => (format!("failed recording {path}"), "failed"),
+            None => ("not recording".to_owned(), ""),
+        },
         Some(recording) if desk.at < recording.reached => (
             format!("recording {} waits at {}", recording.path, words::time(recording.reached)),
             "recording",
@@ -112,7 +115,9 @@ fn phase(desk: &Desk) -> String {
     let phases = plan.phases();
     let instant = desk.run.instant_at(desk.at.min(desk.run.last_moment()));
     match instant.moment.phase {
-        Some(index) if desk.plan_shape.is_open && index + 1 == phases.len() => "for good".to_owned(),
+        Some(index) if desk.plan_shape.is_open && index + 1 == phases.len() => {
+            "for good".to_owned()
+        }
         Some(index) => format!("phase {} of {}", index + 1, phases.len()),
         None if phases.is_empty() => "no plan".to_owned(),
         None if desk.at < phases[0].start => "before the plan".to_owned(),

@@ -201,9 +201,8 @@ pub static BINDINGS: [Binding; 16] = [
 /// What a key does where the focus is.
 pub fn action(key: KeyEvent, focus: Focus) -> Option<Action> {
     let held = key.modifiers & (KeyModifiers::CONTROL | KeyModifiers::ALT);
-    let binding = BINDINGS
-        .iter()
-        .find(|binding| binding.code == key.code && binding.modifiers == held)?;
+    let binding =
+        BINDINGS.iter().find(|binding| binding.code == key.code && binding.modifiers == held)?;
     binding.actions[focus as usize]
 }
 

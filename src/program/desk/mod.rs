@@ -48,9 +48,7 @@ use clockspar::run::recording::Reader;
 use super::arguments::{Look, When};
 use super::problem::{Problem, STATUS_RULE};
 use super::recording_file::RecordingSource;
-use super::terminal::{
-    ColourChoice, Ended, FramePace, GlyphChoice, Incoming, Options, Terminal,
-};
+use super::terminal::{ColourChoice, Ended, FramePace, GlyphChoice, Incoming, Options, Terminal};
 
 use message::{Effect, Message, Wanted};
 use outside::Outside;
@@ -68,11 +66,7 @@ pub fn run(layout: Layout, look: &Look) -> Result<u8, Problem> {
 }
 
 /// Opens the desk on a recording; returns the exit status.
-pub fn replay(
-    reader: Reader<RecordingSource>,
-    name: &str,
-    look: &Look,
-) -> Result<u8, Problem> {
+pub fn replay(reader: Reader<RecordingSource>, name: &str, look: &Look) -> Result<u8, Problem> {
     let run = run_of(reader.layout().map_err(Problem::told)?)?;
     let terminal = open_terminal(look)?;
     let desk = Desk::on_recording(run, name.to_owned(), terminal.glyphs());
@@ -228,10 +222,10 @@ fn summary(desk: &Desk) -> String {
     };
     let mut lines = vec![format!("{}{revision}: left at {}", layout.name, words::moment(desk.at))];
     if let Some(replay) = &desk.replay {
-        let frame = replay.frame.as_ref().map_or_else(
-            || "no frame shown".to_owned(),
-            |frame| format!("frame {}", frame.index),
-        );
+        let frame = replay
+            .frame
+            .as_ref()
+            .map_or_else(|| "no frame shown".to_owned(), |frame| format!("frame {}", frame.index));
         lines.push(format!("{}: {frame}; {}", replay.path, replay.particulars));
     }
     for made in &desk.made {
@@ -243,4 +237,3 @@ fn summary(desk: &Desk) -> String {
     }
     lines.join("\n")
 }
-

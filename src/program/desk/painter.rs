@@ -22,11 +22,7 @@ impl<'b> Painter<'b> {
 
     /// A text of ours in the signs that may be used.
     pub fn signs(&self, text: &str) -> String {
-        if self.glyphs.ascii_only {
-            in_ascii(text).replace('φ', "phi")
-        } else {
-            text.to_owned()
-        }
+        if self.glyphs.ascii_only { in_ascii(text).replace('φ', "phi") } else { text.to_owned() }
     }
 
     /// Puts a text at a place of an area, cut at the area's right edge, where a mark says
@@ -82,7 +78,7 @@ pub fn state_style(word: &str) -> Style {
         "ramping" | "slack" | "stale" => Color::Yellow,
         "coasting" | "standing" => Color::Cyan,
         "what-if" => Color::Magenta,
-        "recording" | "damaged" | "cut" | "broken" | "over" => Color::Red,
+        "recording" | "failed" | "damaged" | "cut" | "broken" | "over" => Color::Red,
         _ if word.starts_with("running") => Color::Blue,
         _ => return PLAIN,
     };

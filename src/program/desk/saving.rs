@@ -34,8 +34,7 @@ pub fn layout_as_flown(desk: &Desk) -> Result<String, Notice> {
         .iter()
         .filter(|event| !is_thrust(event) && !matches!(event.kind, EventKind::Note { .. }))
         .count();
-    let mut text =
-        if is_flown_otherwise { without_plan(source) } else { source.clone() };
+    let mut text = if is_flown_otherwise { without_plan(source) } else { source.clone() };
     let mut added = String::new();
     if left_out > 0 {
         let _ = writeln!(

@@ -29,16 +29,17 @@ pub fn view(desk: &Desk, area: Rect, buffer: &mut Buffer) -> Option<Position> {
         return draw_one_line(desk, geometry.head, &mut painter);
     }
     head::draw(desk, &geometry, &mut painter);
-    table_pane::draw(desk, &geometry, &mut painter);
+    let cut = table_pane::draw(desk, &geometry, &mut painter);
     chart::draw(desk, &geometry, &mut painter);
-    draw_message(desk, geometry.entry, area, &mut painter);
-    draw_entry(desk, geometry.entry, &mut painter)
+    let message = message(desk).or_else(|| Some((cut?, QUIET)));
+    draw_message(desk, message.as_ref(), geometry.entry, area, &mut painter);
+    draw_entry(desk, message.as_ref(), geometry.entry, &mut painter)
 }
 
 /// One line of text: what is being typed, else what was said, else how things stand.
 fn draw_one_line(desk: &Desk, line: Rect, painter: &mut Painter<'_>) -> Option<Position> {
     if desk.focus == Focus::Entry {
-        return draw_entry(desk, line, painter);
+        return draw_entry(desk, None, line, painter);
     }
     match &desk.notice {
         Some(notice) => {
@@ -65,9 +66,15 @@ fn fits_entry(desk: &Desk, text: &str, line: Rect) -> bool {
 }
 
 /// A message that has no room in the entry line lies over the rows above it.
-fn draw_message(desk: &Desk, entry: Rect, area: Rect, painter: &mut Painter<'_>) {
-    let Some((text, style)) = message(desk) else { return };
-    let text = painter.signs(&text);
+fn draw_message(
+    desk: &Desk,
+    message: Option<&(String, Style)>,
+    entry: Rect,
+    area: Rect,
+    painter: &mut Painter<'_>,
+) {
+    let Some((text, style)) = message else { return };
+    let text = painter.signs(text);
     if fits_entry(desk, &text, entry) {
         return;
     }
@@ -79,7 +86,7 @@ fn draw_message(desk: &Desk, entry: Rect, area: Rect, painter: &mut Painter<'_>)
         let is_cut = place + 1 == usize::from(rows) && lines.len() > usize::from(rows);
         let mark = if is_cut { painter.glyphs.ellipsis } else { "" };
         painter.put(row, row.x, row.y, &" ".repeat(usize::from(row.width)), PLAIN);
-        painter.put(row, row.x, row.y, &format!("{text}{mark}"), style);
+        painter.put(row, row.x, row.y, &format!("{text}{mark}"), *style);
     }
 }
 
@@ -92,7 +99,12 @@ fn hint(desk: &Desk) -> &'static str {
 }
 
 /// The entry: the text, what would complete it, and what else could stand there.
-fn draw_entry(desk: &Desk, line: Rect, painter: &mut Painter<'_>) -> Option<Position> {
+fn draw_entry(
+    desk: &Desk,
+    message: Option<&(String, Style)>,
+    line: Rect,
+    painter: &mut Painter<'_>,
+) -> Option<Position> {
     if line.is_empty() {
         return None;
     }
@@ -107,9 +119,12 @@ fn draw_entry(desk: &Desk, line: Rect, painter: &mut Painter<'_>) -> Option<Posi
     let cursor = painter.put(room, start, line.y, before, PLAIN);
     let mut x = painter.put(room, cursor, line.y, after, PLAIN);
     if desk.entry.text().is_empty() {
-        let (text, style) = message(desk).unwrap_or_else(|| (hint(desk).to_owned(), QUIET));
-        if fits_entry(desk, &painter.signs(&text), line) {
-            painter.put(line, start + 1, line.y, &text, style);
+        let (text, style) = match message {
+            Some((text, style)) => (text.as_str(), *style),
+            None => (hint(desk), QUIET),
+        };
+        if fits_entry(desk, &painter.signs(text), line) {
+            painter.put(line, start + 1, line.y, text, style);
         }
     } else if is_entered {
         if let Some(rest) = &desk.entry.completion.rest {

@@ -115,13 +115,13 @@ pub static FORMS: &[Form] = &[
     Form {
         parts: &[W("to"), S(Slot::Moment)],
         example: "to 12 h",
-        does: "go to a moment: a time, `end`, or a date when the layout has an epoch",
+        does: "go to a time, `end`, or a date",
         make: |filled, layout| moment(filled[0], layout).map(Sentence::To),
     },
     Form {
         parts: &[W("step"), S(Slot::Time), W("of"), S(Slot::Node)],
         example: "step 1 s of s5",
-        does: "step until the clock of that node has gone on by this",
+        does: "step by this much of its own clock",
         make: |filled, layout| {
             let (length, of) = (length(filled[0])?, row(filled[1], layout)?);
             Ok(Sentence::Step(Step { length, of: Some(of) }))
@@ -136,7 +136,7 @@ pub static FORMS: &[Form] = &[
     Form {
         parts: &[W("against"), S(Slot::Node)],
         example: "against s5",
-        does: "show rates and clock offsets against this node",
+        does: "rates and offsets against this node",
         make: |filled, layout| row(filled[0], layout).map(|row| Sentence::Against(Some(row))),
     },
     Form {
@@ -148,13 +148,13 @@ pub static FORMS: &[Form] = &[
     Form {
         parts: &[W("pace"), S(Slot::Number)],
         example: "pace 60",
-        does: "run at so many seconds of array time per second",
+        does: "run at so many s of array time a second",
         make: |filled, _| pace(filled[0]).map(Sentence::Pace),
     },
     Form {
         parts: &[W("hold"), S(Slot::Acceleration)],
         example: "hold 0.2 g0",
-        does: "what if: hold this acceleration from now on",
+        does: "what if: hold it from now on",
         make: |filled, _| {
             let acceleration_m_s2 = quantity(filled[0], Dimension::Acceleration)?;
             Ok(Sentence::Change(EventKind::Hold { acceleration_m_s2 }))
@@ -163,7 +163,7 @@ pub static FORMS: &[Form] = &[
     Form {
         parts: &[W("ramp"), S(Slot::Acceleration), W("for"), S(Slot::Time)],
         example: "ramp 0.1 g0 for 10 min",
-        does: "what if: go to this acceleration in that time, then hold it",
+        does: "what if: go there, then hold it",
         make: |filled, _| {
             let to_m_s2 = quantity(filled[0], Dimension::Acceleration)?;
             Ok(Sentence::Change(EventKind::Ramp { to_m_s2, length: length(filled[1])? }))
@@ -178,7 +178,7 @@ pub static FORMS: &[Form] = &[
     Form {
         parts: &[W("move"), S(Slot::Node), W("to"), S(Slot::Position)],
         example: "move s3 to -15.2 km",
-        does: "what if: the node stands there from now on",
+        does: "what if: the node stands there",
         make: |filled, layout| {
             let node = name(filled[0], layout)?;
             let position_m = quantity(filled[1], Dimension::Length)?;
@@ -188,7 +188,7 @@ pub static FORMS: &[Form] = &[
     Form {
         parts: &[W("release"), S(Slot::Node)],
         example: "release s8",
-        does: "what if: the node is let go and leaves the line",
+        does: "what if: it leaves the line",
         make: |filled, layout| {
             Ok(Sentence::Change(EventKind::Release { node: name(filled[0], layout)? }))
         },
@@ -196,7 +196,7 @@ pub static FORMS: &[Form] = &[
     Form {
         parts: &[W("fail"), S(Slot::Node), W("and"), S(Slot::Node)],
         example: "fail hub and s1",
-        does: "what if: the link between the two stops working",
+        does: "what if: their link stops working",
         make: |filled, layout| {
             let between = [name(filled[0], layout)?, name(filled[1], layout)?];
             Ok(Sentence::Change(EventKind::Fail { between }))
@@ -232,7 +232,7 @@ pub static FORMS: &[Form] = &[
     Form {
         parts: &[W("save"), W("as"), S(Slot::File)],
         example: "save as flown.toml",
-        does: "write a layout with the plan as flown and the notes to a new file",
+        does: "the layout, its plan as flown",
         make: |filled, _| Ok(Sentence::SaveAs(filled[0].to_owned())),
     },
     Form {
@@ -319,8 +319,7 @@ pub fn read(text: &str, layout: &Layout) -> Result<Sentence, Notice> {
     let Some(example) = alike.first().map(|form| form.example) else {
         return Err(unknown(first));
     };
-    let patterns: Vec<String> =
-        alike.iter().map(|form| format!("`{}`", form.pattern())).collect();
+    let patterns: Vec<String> = alike.iter().map(|form| format!("`{}`", form.pattern())).collect();
     Err(Notice::refused(
         format!("`{}` is not a whole sentence", text.trim()),
         format!("the sentence is {}", patterns.join(" or ")),

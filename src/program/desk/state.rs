@@ -56,6 +56,8 @@ pub struct Desk {
     pub recording: Option<Recording>,
     /// What became of recordings that were closed.
     pub made: Vec<Made>,
+    /// A recording that could not be written on, until another one is begun.
+    pub failed: Option<String>,
     /// The recording that is replayed.
     pub replay: Option<Replay>,
     /// The thrust plan as the chart needs it.
@@ -164,10 +166,7 @@ impl PlanShape {
     fn of(run: &Run) -> PlanShape {
         let Some(plan) = run.plan() else { return PlanShape::default() };
         let changes_thrust = |event: &&Event| {
-            matches!(
-                event.kind,
-                EventKind::Hold { .. } | EventKind::Ramp { .. } | EventKind::Plan
-            )
+            matches!(event.kind, EventKind::Hold { .. } | EventKind::Ramp { .. } | EventKind::Plan)
         };
         let last_change = run.events().iter().rev().find(changes_thrust);
         let is_open = last_change.is_some_and(|event| event.kind != EventKind::Plan);
@@ -211,6 +210,7 @@ impl Desk {
             question: None,
             recording: None,
             made: Vec::new(),
+            failed: None,
             replay: None,
             plan_shape: PlanShape::default(),
             glyphs,

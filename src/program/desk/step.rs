@@ -16,8 +16,20 @@ pub struct Step {
 }
 
 /// Steps that a new desk may begin with, s.
-const LADDER_S: [i64; 12] =
-    [1, 10, 60, 600, 3_600, 21_600, 86_400, 604_800, 2_592_000, 31_557_600, 315_576_000, 3_155_760_000];
+const LADDER_S: [i64; 12] = [
+    1,
+    10,
+    60,
+    600,
+    3_600,
+    21_600,
+    86_400,
+    604_800,
+    2_592_000,
+    31_557_600,
+    315_576_000,
+    3_155_760_000,
+];
 
 impl Step {
     /// A step of which a plan has some fifty.
@@ -94,17 +106,16 @@ fn own_step(
     let mut near = at;
     let mut reach = length;
     let far = loop {
-        let moved = at.stepped(reach, count).map_or(edge, |moment| {
-            if forward { moment.min(edge) } else { moment.max(edge) }
-        });
+        let moved = at
+            .stepped(reach, count)
+            .map_or(edge, |moment| if forward { moment.min(edge) } else { moment.max(edge) });
         if is_past(moved)? == forward {
             break moved;
         }
         if moved == edge {
-            return Err(run.check_moment(edge.stepped(length, count).unwrap_or(edge)).map_or_else(
-                Notice::from,
-                |()| outside(),
-            ));
+            return Err(run
+                .check_moment(edge.stepped(length, count).unwrap_or(edge))
+                .map_or_else(Notice::from, |()| outside()));
         }
         near = moved;
         reach = ArrayTime::from_attoseconds(reach.attoseconds().saturating_mul(2));

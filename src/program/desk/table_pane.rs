@@ -22,14 +22,15 @@ struct Shown {
     width: u16,
 }
 
-/// Draws the table of the view.
-pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) {
+/// Draws the table of the view; returns the whole text of the chosen row's last cell when
+/// there was no room for it.
+pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) -> Option<String> {
     let area = geometry.table;
     let view = desk.view();
     let Some(table) = view.table.and_then(|table| table(desk)) else {
         let text = if desk.replay.is_some() { "no frame has been read" } else { "no numbers" };
         painter.put(area, area.x + MARGIN, area.y, text, QUIET);
-        return;
+        return None;
     };
     let visible = usize::from(geometry.visible_rows());
     let cursor = desk.cursor();
@@ -89,7 +90,7 @@ pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) {
         if top + rows.len() < table.rows {
             painter.put(area, area.x, below, painter.glyphs.more_below, STRONG);
         }
-        return;
+        return None;
     }
     if top > 0 {
         painter.put(area, area.x, area.y + 1, painter.glyphs.more_above, STRONG);
@@ -99,6 +100,16 @@ pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) {
     }
     if table.rows == 0 {
         painter.put(area, body.x, area.y + HEADINGS, "nothing yet", QUIET);
+    }
+    let chosen = rows.iter().position(|row| *row == cursor.row)?;
+    match cells.get(chosen)?.last()? {
+        Cell::Text(text) => {
+            let is_cut = columns.last().is_none_or(|shown| {
+                shown.place + 1 < table.columns.len() || width_of(text) > shown.width
+            });
+            is_cut.then(|| text.clone().into_owned())
+        }
+        _ => None,
     }
 }
 
@@ -115,9 +126,8 @@ fn row_style(is_chosen: bool, focus: Focus, is_marked: bool) -> Style {
 /// the order the view states; the first one always stays.
 fn choose(desk: &Desk, table: &Table<'_>, cells: &[Vec<Cell<'_>>], room: u16) -> Vec<Shown> {
     let first = desk.view().first;
-    let rank = |column: &Column| {
-        first.iter().position(|key| *key == column.key).unwrap_or(first.len())
-    };
+    let rank =
+        |column: &Column| first.iter().position(|key| *key == column.key).unwrap_or(first.len());
     let mut order: Vec<usize> = (0..table.columns.len()).collect();
     order.sort_by_key(|place| rank(&table.columns[*place]));
     let mut chosen: Vec<Shown> = Vec::new();

@@ -35,7 +35,12 @@ impl Desk {
                     recording.path = path;
                 }
             }
-            Message::RecordingClosed { made } => self.made.push(made),
+            Message::RecordingClosed { made } => {
+                if !made.is_whole {
+                    self.failed = Some(made.path.clone());
+                }
+                self.made.push(made);
+            }
             Message::RecordingFailed(notice) => {
                 self.recording = None;
                 self.notice = Some(notice);
@@ -73,6 +78,7 @@ impl Desk {
 
     fn paste(&mut self, text: &str) {
         self.focus_on(Focus::Entry);
+        self.focus = Focus::Entry;
         self.type_text(text);
     }
 
@@ -96,15 +102,19 @@ impl Desk {
     fn choose_view(&mut self, place: usize) {
         let view = VIEWS[place];
         if view.table.is_none() {
-            self.notice =
-                Some(Notice::said(format!("the view `{}` is not there yet", view.name)));
+            self.notice = Some(Notice::said(format!("the view `{}` is not there yet", view.name)));
             return;
         }
         self.notice = None;
         self.view = place;
     }
 
+    /// Moves the focus, unless a question waits for its answer in the entry.
     fn focus_on(&mut self, focus: Focus) {
+        if self.question.is_some() {
+            return;
+        }
+        self.notice = None;
         if self.focus != Focus::Entry {
             self.focus_before = self.focus;
         }
@@ -228,8 +238,7 @@ impl Desk {
         self.notice = None;
         self.stop_running(effects);
         if self.replay.is_some() {
-            let wanted =
-                if forward { Wanted::After(self.at) } else { Wanted::Before(self.at) };
+            let wanted = if forward { Wanted::After(self.at) } else { Wanted::Before(self.at) };
             return self.read(wanted, effects);
         }
         match self.step.from(&self.run, self.at, forward) {
@@ -241,11 +250,8 @@ impl Desk {
     fn jump_to_phase_end(&mut self, forward: bool, effects: &mut Vec<Effect>) {
         self.notice = None;
         self.stop_running(effects);
-        let found = if forward {
-            self.phase_end_after(self.at)
-        } else {
-            self.phase_end_before(self.at)
-        };
+        let found =
+            if forward { self.phase_end_after(self.at) } else { self.phase_end_before(self.at) };
         match found {
             Some(at) if self.replay.is_some() => {
                 // The frames of a recording need not stand at the ends of phases.

@@ -106,6 +106,5 @@ fn a_frame_of_a_million_nodes_is_drawn_at_once() {
         best = best.min(start.elapsed());
         drop(buffer);
     }
-    // The aim is 2 ms with optimisation; a test build is slower.
-    assert!(best < std::time::Duration::from_millis(10), "{best:?}");
+    assert!(best < std::time::Duration::from_millis(2), "{best:?}");
 }

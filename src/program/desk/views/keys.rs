@@ -36,7 +36,13 @@ fn line(row: usize) -> Option<[String; 2]> {
         return Some(["any other sign".to_owned(), "begins a sentence in the entry".to_owned()]);
     }
     let form = FORMS.get(row - 1)?;
-    Some([form.example.to_owned(), format!("{}; {}", form.does, form.pattern())])
+    let pattern = form.pattern();
+    let does = if pattern == form.example {
+        form.does.to_owned()
+    } else {
+        format!("{}: {pattern}", form.does)
+    };
+    Some([form.example.to_owned(), does])
 }
 
 fn table(_: &Desk) -> Option<Table<'_>> {

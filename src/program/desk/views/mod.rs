@@ -87,15 +87,11 @@ fn against<'a>(desk: &'a Desk, from: usize, table: Table<'a>) -> Option<Table<'a
     let kept: Vec<usize> = (0..table.columns.len())
         .filter(|place| !LEFT_OUT.contains(&table.columns[*place].key))
         .collect();
-    let mut columns: Vec<Column> =
-        kept.iter().map(|place| table.columns[*place].clone()).collect();
+    let mut columns: Vec<Column> = kept.iter().map(|place| table.columns[*place].clone()).collect();
     let (rate, offset) = (place_of(&columns, RATE), place_of(&columns, OFFSET));
     if let Some(place) = rate {
-        columns[place] = Column {
-            key: "rate_difference",
-            heading: "rate difference",
-            measure: Measure::Ratio,
-        };
+        columns[place] =
+            Column { key: "rate_difference", heading: "rate difference", measure: Measure::Ratio };
     }
     let differences = differences_from(desk, from)?;
     let Table { name, rows, fill, .. } = table;
