@@ -7,4 +7,3 @@ pub mod horizon;
 pub mod motion;
 pub mod plan;
 pub mod rates;
-

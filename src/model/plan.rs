@@ -423,10 +423,8 @@ fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), P
 
 /// The rapidity is extreme at the ends of a phase and where a ramp passes through zero.
 fn check_rapidity(index: usize, phase: &Phase, start: Dd, end: Dd) -> Result<(), PlanFault> {
-    let turning = (!phase.is_hold())
-        .then(|| phase.moment_of(Dd::ZERO))
-        .flatten()
-        .map_or(start, |after| {
+    let turning =
+        (!phase.is_hold()).then(|| phase.moment_of(Dd::ZERO)).flatten().map_or(start, |after| {
             let first = phase.acceleration(phase.start);
             start + first * after / (2.0 * SPEED_OF_LIGHT_M_S)
         });

@@ -83,7 +83,11 @@ impl From<Vec<ArrayTime>> for Moments {
 }
 
 /// A range of moments, checked.
-pub fn every_moment(from: ArrayTime, until: ArrayTime, every: ArrayTime) -> Result<Moments, Problem> {
+pub fn every_moment(
+    from: ArrayTime,
+    until: ArrayTime,
+    every: ArrayTime,
+) -> Result<Moments, Problem> {
     if until < from {
         return Err(Problem::new(
             format_args!("the last moment, {until} s, lies before the first, {from} s"),
@@ -116,14 +120,12 @@ fn plan_end(layout: &Layout) -> ArrayTime {
 /// The middle of the first hold; no hold: 0; a standing line: 1 d.
 pub fn default_moment(layout: &Layout) -> ArrayTime {
     match &layout.course {
-        Course::Thrust(plan) => plan
-            .phases()
-            .iter()
-            .find(|phase| phase.is_hold())
-            .map_or(ArrayTime::ZERO, |hold| {
+        Course::Thrust(plan) => {
+            plan.phases().iter().find(|phase| phase.is_hold()).map_or(ArrayTime::ZERO, |hold| {
                 let (start, end) = (hold.start.attoseconds(), hold.end.attoseconds());
                 ArrayTime::from_attoseconds(start + (end - start) / 2)
-            }),
+            })
+        }
         Course::Standing(_) => ArrayTime::from_seconds(86_400),
     }
 }

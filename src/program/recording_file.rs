@@ -126,9 +126,8 @@ impl Write for RecordingFile {
     /// Writes one whole line.
     fn write(&mut self, line: &[u8]) -> io::Result<usize> {
         let is_first = self.length == 0;
-        let written = self.file.write_all(line).and_then(|()| {
-            if is_first { self.settle() } else { Ok(()) }
-        });
+        let written =
+            self.file.write_all(line).and_then(|()| if is_first { self.settle() } else { Ok(()) });
         if let Err(error) = written {
             self.take_back();
             return Err(error);

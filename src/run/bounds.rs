@@ -34,15 +34,19 @@ impl Run {
     ) -> Result<(), RunFault> {
         let reached = match plan {
             Some(plan) => first_unrealisable(plan, from, position_m),
-            None => self.check_standing(row, position_m)?.map(|gravity| (from, Dd::new(gravity))),
+            None => {
+                let gravity = self.check_standing(row, position_m)?;
+                gravity.map(|gravity| (None, from, Dd::new(gravity)))
+            }
         };
-        let Some((at, acceleration_m_s2)) = reached else {
+        let Some((phase, at, acceleration_m_s2)) = reached else {
             return Ok(());
         };
         let offered = horizon::partners(Extreme { acceleration_m_s2, phase: 0, at }, position_m);
         Err(RunFault::Horizon(Box::new(HorizonFault {
             name: self.layout.nodes[row].name.clone(),
             position_m,
+            phase,
             at,
             largest_acceleration_m_s2: offered.largest_acceleration_m_s2,
             nearest_position_m: offered.nearest_position_m,
@@ -95,9 +99,13 @@ impl Run {
     }
 }
 
-/// The first moment from `from` on at which `N` of a position is not above zero, and the
-/// acceleration that brings it farthest below.
-fn first_unrealisable(plan: &Plan, from: ArrayTime, position_m: f64) -> Option<(ArrayTime, Dd)> {
+/// The first moment from `from` on at which `N` of a position is not above zero, with the
+/// index of its phase, and the acceleration that brings it farthest below.
+fn first_unrealisable(
+    plan: &Plan,
+    from: ArrayTime,
+    position_m: f64,
+) -> Option<(Option<usize>, ArrayTime, Dd)> {
     // The acceleration whose product with the position is lowest.
     let is_worse = |one: Dd, other: Dd| if position_m > 0.0 { one < other } else { one > other };
     let first = plan.phases().partition_point(|phase| phase.end <= from);
@@ -111,9 +119,10 @@ fn first_unrealisable(plan: &Plan, from: ArrayTime, position_m: f64) -> Option<(
     if is_realisable(worst, position_m) {
         return None;
     }
-    let phase = left.iter().find(|phase| {
+    let index = left.iter().position(|phase| {
         ends(phase).into_iter().any(|acceleration| !is_realisable(acceleration, position_m))
     })?;
+    let phase = &left[index];
     let start = phase.start.max(from);
     let at = if is_realisable(phase.acceleration(start), position_m) {
         let limit = -C2_M2_S2 / Dd::new(position_m);
@@ -125,5 +134,5 @@ fn first_unrealisable(plan: &Plan, from: ArrayTime, position_m: f64) -> Option<(
     } else {
         start
     };
-    Some((at, worst))
+    Some((Some(first + index), at, worst))
 }

@@ -114,6 +114,8 @@ pub struct HorizonFault {
     pub name: String,
     /// The position it would have, m.
     pub position_m: f64,
+    /// Index of the phase, from 0, in which its rate would reach zero; `None` when it stands.
+    pub phase: Option<usize>,
     /// When its rate would reach zero, to the nearest attosecond.
     pub at: ArrayTime,
     /// The largest acceleration of the reference node, in that direction, that the node
@@ -160,9 +162,10 @@ impl RunFault {
                 format!("a position of {} m is outside the line", number(*position_m))
             }
             RunFault::Horizon(fault) => format!(
-                "`{}` at {} m would reach the horizon at {} s",
+                "`{}` at {} m would reach the horizon{} at {} s",
                 fault.name,
                 number(fault.position_m),
+                fault.phase.map_or(String::new(), |phase| format!(" in phase {}", phase + 1)),
                 nine_digits(fault.at)
             ),
             RunFault::GravityTurned { name, .. } => {

@@ -43,20 +43,14 @@ struct Scratch {
 impl Write for Scratch {
     fn write_str(&mut self, text: &str) -> fmt::Result {
         let end = self.len + text.len();
-        self.bytes
-            .get_mut(self.len..end)
-            .ok_or(fmt::Error)?
-            .copy_from_slice(text.as_bytes());
+        self.bytes.get_mut(self.len..end).ok_or(fmt::Error)?.copy_from_slice(text.as_bytes());
         self.len = end;
         Ok(())
     }
 }
 
 impl Decimal {
-    const ZERO: Decimal = Decimal {
-        digits: Vec::new(),
-        exponent: 0,
-    };
+    const ZERO: Decimal = Decimal { digits: Vec::new(), exponent: 0 };
 
     /// Reads what the standard formatter or the shortest printer wrote, in either notation.
     fn read(text: &[u8]) -> Decimal {
@@ -81,23 +75,14 @@ impl Decimal {
             return Decimal::ZERO;
         }
         digits.drain(..zeros);
-        Decimal {
-            digits,
-            exponent: exponent + whole as i32 - 1 - zeros as i32,
-        }
+        Decimal { digits, exponent: exponent + whole as i32 - 1 - zeros as i32 }
     }
 
     /// The magnitude with a number of digits, correctly rounded.
     fn with_digits(value: f64, count: usize) -> Decimal {
-        let mut scratch = Scratch {
-            bytes: [0; 64],
-            len: 0,
-        };
+        let mut scratch = Scratch { bytes: [0; 64], len: 0 };
         let written = write!(scratch, "{:.*e}", count - 1, value.abs());
-        debug_assert!(
-            written.is_ok(),
-            "the scratch holds {SETTLING_DIGITS} digits"
-        );
+        debug_assert!(written.is_ok(), "the scratch holds {SETTLING_DIGITS} digits");
         Decimal::read(&scratch.bytes[..scratch.len])
     }
 
@@ -183,10 +168,7 @@ impl Decimal {
         digits.push(u8::from(rest != 0));
         let zeros = digits.iter().take_while(|&&digit| digit == 0).count();
         digits.drain(..zeros);
-        Decimal {
-            digits,
-            exponent: self.exponent - zeros as i32,
-        }
+        Decimal { digits, exponent: self.exponent - zeros as i32 }
     }
 
     /// The decimal rounded to a multiple of 10^`position`, ties to even. Unless these
@@ -213,12 +195,7 @@ impl Decimal {
         };
         self.digits.truncate(keep);
         if up {
-            let nines = self
-                .digits
-                .iter()
-                .rev()
-                .take_while(|&&digit| digit == 9)
-                .count();
+            let nines = self.digits.iter().rev().take_while(|&&digit| digit == 9).count();
             self.digits[keep - nines..].fill(0);
             if nines == keep {
                 self.digits.insert(0, 1);
@@ -227,11 +204,7 @@ impl Decimal {
                 self.digits[keep - nines - 1] += 1;
             }
         }
-        Some(if self.digits.is_empty() {
-            Decimal::ZERO
-        } else {
-            self
-        })
+        Some(if self.digits.is_empty() { Decimal::ZERO } else { self })
     }
 
     /// Plain notation with a number of decimals: `0.0120`, `43200.00`.
@@ -243,9 +216,7 @@ impl Decimal {
                 text.push('.');
             }
             let place = self.exponent - position;
-            let digit = usize::try_from(place)
-                .ok()
-                .and_then(|place| self.digits.get(place));
+            let digit = usize::try_from(place).ok().and_then(|place| self.digits.get(place));
             text.push(char::from(b'0' + digit.copied().unwrap_or(0)));
         }
         text
@@ -282,19 +253,7 @@ mod tests {
             Decimal::at_position(value, Scale::Ten(0), -decimals).fixed(decimals as usize)
         };
         for decimals in 0..17 {
-            for value in [
-                0.5,
-                1.5,
-                2.5,
-                0.125,
-                9.5,
-                0.05,
-                99.95,
-                0.1,
-                1.0 / 3.0,
-                1e-3,
-                0.0,
-            ] {
+            for value in [0.5, 1.5, 2.5, 0.125, 9.5, 0.05, 99.95, 0.1, 1.0 / 3.0, 1e-3, 0.0] {
                 let wanted = format!("{value:.*}", decimals as usize);
                 let digits = Decimal::shortest(value).exponent + decimals + 1;
                 if digits <= 17 {
@@ -304,10 +263,7 @@ mod tests {
         }
         // 1e23 is a little below its shortest form.
         assert_eq!(Decimal::at_position(1e23, Scale::Ten(0), 23).digits, [1]);
-        assert_eq!(
-            Decimal::at_position(1e23, Scale::Ten(3), 5).fixed(0),
-            "100000000000000000000"
-        );
+        assert_eq!(Decimal::at_position(1e23, Scale::Ten(3), 5).fixed(0), "100000000000000000000");
     }
 
     #[test]
@@ -325,17 +281,13 @@ mod tests {
             4,
         );
         assert_eq!(shown.fixed(3), "1.000");
-        assert_eq!(
-            Decimal::at_position(1.0, light_year, -20).fixed(20),
-            "0.00000000000000010570"
-        );
+        assert_eq!(Decimal::at_position(1.0, light_year, -20).fixed(20), "0.00000000000000010570");
     }
 
     /// A generator of bits that is good enough to pick inputs with.
     fn next(state: &mut u64) -> u64 {
-        *state = state
-            .wrapping_mul(6_364_136_223_846_793_005)
-            .wrapping_add(1_442_695_040_888_963_407);
+        *state =
+            state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
         *state ^ (*state >> 29)
     }
 
@@ -365,11 +317,7 @@ mod tests {
                     let scale = Scale::Whole(divisor as u64, 0);
                     let shown = Decimal::at_position(count as f64, scale, -(decimals as i32));
                     let shown = shown.fixed(decimals).replace('.', "");
-                    assert_eq!(
-                        shown.parse(),
-                        Ok(wanted),
-                        "{count} / {divisor} to {decimals}"
-                    );
+                    assert_eq!(shown.parse(), Ok(wanted), "{count} / {divisor} to {decimals}");
                 }
             }
         }

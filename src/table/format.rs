@@ -38,10 +38,7 @@ pub(super) enum Form {
     /// Plain notation with the same number of decimals in each cell.
     Fixed { scale: Scale, decimals: usize },
     /// A power of ten in each cell, of which the longest takes that many columns.
-    Scientific {
-        digits: usize,
-        exponent_width: usize,
-    },
+    Scientific { digits: usize, exponent_width: usize },
     /// Exact times with the same number of decimals, in a unit of so many attoseconds.
     Exact { size: u128, decimals: usize },
 }
@@ -62,24 +59,13 @@ pub fn fit<'c, 'a: 'c>(
 
 impl ColumnFormat {
     pub(super) fn new(unit: Unit, form: Form, signed: bool, unicode: bool) -> ColumnFormat {
-        ColumnFormat {
-            unit,
-            form,
-            signed,
-            unicode,
-            smallest: f64::INFINITY,
-            width: 0,
-        }
+        ColumnFormat { unit, form, signed, unicode, smallest: f64::INFINITY, width: 0 }
     }
 
     /// The unit for the heading; empty where there is none.
     #[must_use]
     pub fn unit(&self) -> &'static str {
-        if self.unicode {
-            self.unit.label
-        } else {
-            self.unit.ascii
-        }
+        if self.unicode { self.unit.label } else { self.unit.ascii }
     }
 
     /// Columns of a cell, without room for the heading.
@@ -150,18 +136,14 @@ impl ColumnFormat {
         let sign = self.sign(value < 0.0);
         match self.form {
             Form::Fixed { decimals, .. } if value == 0.0 => zero(decimals, 0),
-            Form::Scientific {
-                digits,
-                exponent_width,
-            } if value == 0.0 => zero(digits - 1, exponent_width),
+            Form::Scientific { digits, exponent_width } if value == 0.0 => {
+                zero(digits - 1, exponent_width)
+            }
             Form::Fixed { scale, decimals } => {
                 let decimal = Decimal::at_position(value, scale, -(decimals as i32));
                 format!("{sign}{}", decimal.fixed(decimals))
             }
-            Form::Scientific {
-                digits,
-                exponent_width,
-            } => {
+            Form::Scientific { digits, exponent_width } => {
                 let (mantissa, exponent) =
                     Decimal::significant(value, Scale::Ten(0), digits).scientific();
                 format!("{sign}{mantissa}{exponent:exponent_width$}")
@@ -240,9 +222,6 @@ impl ColumnFormat {
 /// An exact zero, in line with the digit before the decimal point.
 fn zero(decimals: usize, exponent_width: usize) -> String {
     let mut shown = "0".to_owned();
-    push_blanks(
-        &mut shown,
-        if decimals > 0 { decimals + 1 } else { 0 } + exponent_width,
-    );
+    push_blanks(&mut shown, if decimals > 0 { decimals + 1 } else { 0 } + exponent_width);
     shown
 }

@@ -113,10 +113,7 @@ fn open_rows(out: &mut Vec<u8>, name: &str) {
 
 fn push_head(out: &mut Vec<u8>, head: &Head<'_>) {
     out.extend_from_slice(b"{\"schema\":");
-    push_string(
-        out,
-        &format!("clockspar.{}/{}", head.command, head.schema_version),
-    );
+    push_string(out, &format!("clockspar.{}/{}", head.command, head.schema_version));
     out.extend_from_slice(b",\"program\":");
     push_string(out, PROGRAM);
     out.extend_from_slice(b",\"model\":");

@@ -97,11 +97,7 @@ impl<'a> Cell<'a> {
     /// A number, or its absence with the reason when it is not finite.
     #[must_use]
     pub fn finite(value: f64, why_not: &'a str) -> Cell<'a> {
-        if value.is_finite() {
-            Cell::Number(value)
-        } else {
-            Cell::Absent(why_not.into())
-        }
+        if value.is_finite() { Cell::Number(value) } else { Cell::Absent(why_not.into()) }
     }
 }
 
@@ -237,23 +233,17 @@ impl Report<'_> {
             None if self.tables.is_empty() => "",
             None => return Ok(0),
         };
-        self.tables
-            .iter()
-            .position(|table| table.name == wanted)
-            .ok_or_else(|| UnknownTable {
-                wanted: wanted.to_owned(),
-                known: self.tables.iter().map(|table| table.name).collect(),
-            })
+        self.tables.iter().position(|table| table.name == wanted).ok_or_else(|| UnknownTable {
+            wanted: wanted.to_owned(),
+            known: self.tables.iter().map(|table| table.name).collect(),
+        })
     }
 
     /// The moment and what the reference does at it, with their keys in order.
     fn moment_cells(&self) -> [(&'static str, Cell<'static>); 3] {
         [
             ("at_s", self.at.into()),
-            (
-                "reference_acceleration_m_s2",
-                self.reference_acceleration_m_s2.into(),
-            ),
+            ("reference_acceleration_m_s2", self.reference_acceleration_m_s2.into()),
             ("rapidity", self.rapidity.into()),
         ]
     }
@@ -300,12 +290,7 @@ impl fmt::Display for UnknownTable {
         if self.known.is_empty() {
             return f.write_str("this report has no tables");
         }
-        write!(
-            f,
-            "no table `{}`; there is `{}`",
-            self.wanted,
-            self.known.join("`, `")
-        )
+        write!(f, "no table `{}`; there is `{}`", self.wanted, self.known.join("`, `"))
     }
 }
 

@@ -1,7 +1,7 @@
 //! What a column holds, gathered in one pass and constant memory, and the form it asks for.
 
-use super::format::yes_or_no;
 use super::digits::{Decimal, MOST_DIGITS, Scale, exponent_of};
+use super::format::yes_or_no;
 use super::format::{ColumnFormat, Form};
 use super::unit::{LONG_TIMES, SECOND, TIMES, Unit, base_unit, decimal_unit, long_unit};
 use super::width::columns_of;
@@ -103,10 +103,7 @@ impl ColumnScan {
     pub fn see(&mut self, cell: &Cell<'_>) {
         match cell {
             Cell::Text(text) => {
-                debug_assert!(
-                    !text.chars().any(char::is_control),
-                    "names are clean: {text:?}"
-                );
+                debug_assert!(!text.chars().any(char::is_control), "names are clean: {text:?}");
                 self.text_columns = self.text_columns.max(columns_of(text));
             }
             Cell::Flag(flag) => self.text_columns = self.text_columns.max(yes_or_no(*flag).len()),
@@ -132,10 +129,7 @@ impl ColumnScan {
 
     /// Whether whole numbers are counts and not values with a unit.
     fn counts(&self) -> bool {
-        matches!(
-            self.measure,
-            Measure::Word | Measure::Count | Measure::Ratio
-        )
+        matches!(self.measure, Measure::Word | Measure::Count | Measure::Ratio)
     }
 
     fn see_number(&mut self, value: f64) {
@@ -146,9 +140,7 @@ impl ColumnScan {
             let step = (value - previous).abs();
             if step > 0.0 {
                 self.step = self.step.min(step);
-                self.relative_step = self
-                    .relative_step
-                    .min(step / value.abs().max(previous.abs()));
+                self.relative_step = self.relative_step.min(step / value.abs().max(previous.abs()));
             }
         }
         if value == 0.0 {
@@ -176,13 +168,7 @@ impl ColumnScan {
         } else if self.measure == Measure::Word {
             (base_unit(Measure::Word), Form::Words)
         } else {
-            (
-                base_unit(self.measure),
-                Form::Fixed {
-                    scale: Scale::Ten(0),
-                    decimals: 0,
-                },
-            )
+            (base_unit(self.measure), Form::Fixed { scale: Scale::Ten(0), decimals: 0 })
         };
         let mut format = ColumnFormat::new(unit, form, self.signed, unicode);
         format.smallest = self.smallest;
@@ -212,23 +198,10 @@ impl ColumnScan {
         let largest = self.largest();
         let fixed = |unit: Unit, place: Places| {
             let decimals = usize::try_from(-place.last).unwrap_or(0);
-            (
-                unit,
-                Form::Fixed {
-                    scale: unit.scale,
-                    decimals,
-                },
-            )
+            (unit, Form::Fixed { scale: unit.scale, decimals })
         };
         if largest == 0.0 {
-            return fixed(
-                base_unit(self.measure),
-                Places {
-                    first: 0,
-                    span: 0,
-                    last: 0,
-                },
-            );
+            return fixed(base_unit(self.measure), Places { first: 0, span: 0, last: 0 });
         }
         // Exact times beside numbers are told in seconds, so the numbers are as well.
         if self.times > 0 {
@@ -243,11 +216,7 @@ impl ColumnScan {
         }
         let unit = decimal_unit(self.measure, largest);
         let places = self.places(unit.scale);
-        let most = if unit.label.is_empty() {
-            MOST_BARE
-        } else {
-            MOST_WHOLE
-        };
+        let most = if unit.label.is_empty() { MOST_BARE } else { MOST_WHOLE };
         if (LEAST_FIRST..=most).contains(&places.first)
             && (places.span <= MOST_DECADES || places.digits() <= SHORT_DIGITS)
         {
@@ -261,18 +230,9 @@ impl ColumnScan {
         let digits = usize::try_from(self.least_digits.max(told_apart)).unwrap_or(MOST_DIGITS);
         let digits = digits.min(self.longest).clamp(1, MOST_DIGITS);
         let exponents = [exponent_of(self.smallest), exponent_of(largest)];
-        let exponent_width = exponents
-            .map(|power| format!("e{power}").len())
-            .into_iter()
-            .max();
+        let exponent_width = exponents.map(|power| format!("e{power}").len()).into_iter().max();
         let exponent_width = exponent_width.unwrap_or(0);
-        (
-            base_unit(self.measure),
-            Form::Scientific {
-                digits,
-                exponent_width,
-            },
-        )
+        (base_unit(self.measure), Form::Scientific { digits, exponent_width })
     }
 
     fn largest(&self) -> f64 {
@@ -299,11 +259,7 @@ impl ColumnScan {
         if let Scale::Ten(tens) = scale {
             last = last.max(self.shortest_position - tens);
         }
-        Places {
-            first,
-            span: first - smallest,
-            last: last.min(0),
-        }
+        Places { first, span: first - smallest, last: last.min(0) }
     }
 
     /// Exact times: the largest unit in which they all are exact and short.
@@ -323,13 +279,7 @@ impl ColumnScan {
                 parts.is_some_and(|parts| parts.is_multiple_of(size))
             });
             if let Some(decimals) = decimals {
-                return (
-                    unit,
-                    Form::Exact {
-                        size,
-                        decimals: decimals as usize,
-                    },
-                );
+                return (unit, Form::Exact { size, decimals: decimals as usize });
             }
         }
         let mut place = TIMES.iter().rposition(|unit| match unit.scale {
@@ -342,18 +292,9 @@ impl ColumnScan {
         let place = place.unwrap_or(0);
         let size = 1000_u128.pow(place as u32);
         let decimals = (0..3 * place as u32)
-            .find(|&decimals| {
-                self.common_divisor
-                    .is_multiple_of(size / 10_u128.pow(decimals))
-            })
+            .find(|&decimals| self.common_divisor.is_multiple_of(size / 10_u128.pow(decimals)))
             .unwrap_or(3 * place as u32);
-        (
-            TIMES[place],
-            Form::Exact {
-                size,
-                decimals: decimals as usize,
-            },
-        )
+        (TIMES[place], Form::Exact { size, decimals: decimals as usize })
     }
 }
 

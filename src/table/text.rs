@@ -32,11 +32,7 @@ pub struct TextOptions {
 impl TextOptions {
     /// A text of our own in the signs that may be used.
     pub(super) fn signs(self, text: &str) -> String {
-        if self.unicode {
-            text.to_owned()
-        } else {
-            in_ascii(text)
-        }
+        if self.unicode { text.to_owned() } else { in_ascii(text) }
     }
 
     /// Appends a text as lines that fit, the later ones indented.
@@ -123,11 +119,7 @@ impl TextWriter {
     /// Nothing written yet.
     #[must_use]
     pub fn new(options: TextOptions) -> TextWriter {
-        TextWriter {
-            options,
-            moments: 0,
-            remarks: Vec::new(),
-        }
+        TextWriter { options, moments: 0, remarks: Vec::new() }
     }
 
     /// Writes what stands on top, once.
@@ -191,17 +183,11 @@ fn joined(text: &str) -> String {
 
 fn push_head(text: &mut String, head: &Head<'_>, options: TextOptions) {
     // The name of the layout and its revision are the layout's own, so no sign is changed.
-    let named = TextOptions {
-        unicode: true,
-        ..options
-    };
+    let named = TextOptions { unicode: true, ..options };
     named.push_lines(text, &format!("layout: {}", head.layout));
     let revision = head.revision.unwrap_or("-");
     named.push_lines(text, &format!("revision: {revision}"));
-    let hash = head
-        .layout_sha256
-        .get(..HASH_DIGITS)
-        .unwrap_or(head.layout_sha256);
+    let hash = head.layout_sha256.get(..HASH_DIGITS).unwrap_or(head.layout_sha256);
     options.push_lines(text, &format!("hash: {hash}"));
 }
 
@@ -215,16 +201,11 @@ fn moment_parts(report: &Report<'_>, options: TextOptions) -> Vec<(&'static str,
     let absent = absent_alone;
     let moment = report.at.map_or_else(absent, |at| {
         let (readable, exact) = (readable_time(at), format!("{at} s"));
-        if readable == exact {
-            exact
-        } else {
-            format!("{readable} = {exact}")
-        }
+        if readable == exact { exact } else { format!("{readable} = {exact}") }
     });
     let reference = report.reference_acceleration_m_s2;
-    let reference = reference.map_or_else(absent, |value| {
-        joined(&acceleration(value, options.unicode))
-    });
+    let reference =
+        reference.map_or_else(absent, |value| joined(&acceleration(value, options.unicode)));
     let rapidity = report.rapidity;
     let rapidity = rapidity.map_or_else(absent, |value| rounded(value, Scale::Ten(0), 10));
     vec![("array time", moment), ("reference acceleration", reference), ("rapidity", rapidity)]
@@ -246,11 +227,7 @@ fn push_scalars(text: &mut String, scalars: &[Scalar<'_>], options: TextOptions)
         let value = match &scalar.value {
             Cell::Absent(why) => format!("- ({why})"),
             Cell::Number(value) if !value.is_finite() => format!("- ({})", super::NOT_FINITE),
-            value => format!(
-                "{}{JOINT}{}",
-                format.value(value, "").trim_end(),
-                format.unit()
-            ),
+            value => format!("{}{JOINT}{}", format.value(value, "").trim_end(), format.unit()),
         };
         let line = format!("{}: {}", scalar.heading, value.trim_end_matches(JOINT));
         options.push_lines(text, &line);

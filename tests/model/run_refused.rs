@@ -109,7 +109,7 @@ fn refusals_say_what_the_rule_is_and_what_would_be_right() {
             "1 s",
             move_to("s1", -9e18),
             [
-                "`s1` at -9e+18 m would reach the horizon at 30.5491742 s",
+                "`s1` at -9e+18 m would reach the horizon in phase 1 at 30.5491742 s",
                 "the rate of every node is above zero at every moment",
                 "a position of -4.582376136279043e+17 m, or nearer to the reference node",
             ],

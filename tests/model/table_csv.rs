@@ -20,14 +20,9 @@ fn csv_series(series: &Series<'_>, index: usize) -> String {
 }
 
 fn records(text: &str) -> Vec<Vec<String>> {
-    let mut reader = csv::ReaderBuilder::new()
-        .has_headers(false)
-        .from_reader(text.as_bytes());
+    let mut reader = csv::ReaderBuilder::new().has_headers(false).from_reader(text.as_bytes());
     let fields = |record: csv::StringRecord| record.iter().map(str::to_owned).collect();
-    reader
-        .records()
-        .map(|record| fields(record.expect("a record")))
-        .collect()
+    reader.records().map(|record| fields(record.expect("a record"))).collect()
 }
 
 #[test]
@@ -47,22 +42,10 @@ fn the_moment_leads_and_what_is_absent_is_empty() {
 #[test]
 fn names_are_quoted_where_they_must_be() {
     let names = ["a \"b\"", "plain", "with, comma", "two\nlines", ""];
-    let columns = vec![
-        column("node", "node", Measure::Word),
-        column("why", "why", Measure::Word),
-    ];
-    let rows = names
-        .iter()
-        .map(|name| vec![text(name), absent("no clock")])
-        .collect();
-    let text = csv(
-        &report("rates", vec![table("nodes", columns, rows, None)]),
-        Some("nodes"),
-    );
-    assert!(
-        text.starts_with("at_s,node,why\n22200,\"a \"\"b\"\"\",\n22200,plain,\n"),
-        "{text}"
-    );
+    let columns = vec![column("node", "node", Measure::Word), column("why", "why", Measure::Word)];
+    let rows = names.iter().map(|name| vec![text(name), absent("no clock")]).collect();
+    let text = csv(&report("rates", vec![table("nodes", columns, rows, None)]), Some("nodes"));
+    assert!(text.starts_with("at_s,node,why\n22200,\"a \"\"b\"\"\",\n22200,plain,\n"), "{text}");
     let records = records(&text);
     for (name, record) in names.iter().zip(&records[1..]) {
         assert_eq!(record[1], *name);
@@ -80,25 +63,13 @@ fn a_moment_of_the_rows_own_takes_the_first_place() {
     let rows = vec![vec![text("ramp"), Cell::Time(time), Cell::Number(0.5)]];
     let mut report = report("check", vec![table("rules", columns, rows, None)]);
     report.at = Err("the report spans the plan");
-    assert_eq!(
-        csv(&report, None),
-        "at_s,rule,value\n1.500000000000000001,ramp,0.5\n"
-    );
+    assert_eq!(csv(&report, None), "at_s,rule,value\n1.500000000000000001,ramp,0.5\n");
 }
 
 #[test]
 fn no_moment_is_an_empty_field() {
-    let report = Report {
-        at: Err("the report spans the plan"),
-        ..rates()
-    };
-    assert!(
-        csv(&report, None)
-            .lines()
-            .nth(1)
-            .expect("a row")
-            .starts_with(",mast,120,")
-    );
+    let report = Report { at: Err("the report spans the plan"), ..rates() };
+    assert!(csv(&report, None).lines().nth(1).expect("a row").starts_with(",mast,120,"));
 }
 
 #[test]
@@ -108,10 +79,7 @@ fn tables_are_chosen_by_name() {
     assert_eq!(report.table_named(None), Ok(0));
     assert_eq!(report.table_named(Some("engines")), Ok(1));
     let error = report.table_named(Some("node")).expect_err("no such table");
-    assert_eq!(
-        error.to_string(),
-        "no table `node`; there is `nodes`, `engines`"
-    );
+    assert_eq!(error.to_string(), "no table `node`; there is `nodes`, `engines`");
 }
 
 #[test]
@@ -133,11 +101,7 @@ fn many_rows_are_the_same_bytes_as_few_at_a_time() {
     let mut pieces = String::new();
     for start in (0..100_000).step_by(10_000) {
         let piece = csv(&many(start, 10_000), None);
-        pieces.push_str(if start == 0 {
-            &piece
-        } else {
-            piece.split_once('\n').expect("rows").1
-        });
+        pieces.push_str(if start == 0 { &piece } else { piece.split_once('\n').expect("rows").1 });
     }
     assert!(whole == pieces, "the rows differ");
 }

@@ -45,10 +45,7 @@ fn the_head_stands_in_its_order() {
         "\"rapidity\":0.000014327960134843,\"worst_error_s\":1.23456789e-11,",
         "\"first_loss_s\":null,\"first_loss_s_why\":\"every signal arrives\",\n\"nodes\":[\n{",
     );
-    assert!(
-        text[head.len()..].starts_with(&format!("{SHA}\",{moment}")),
-        "{text}"
-    );
+    assert!(text[head.len()..].starts_with(&format!("{SHA}\",{moment}")), "{text}");
     assert!(text.ends_with("}\n]}\n"), "{text}");
     assert_order(
         &text[text.find("\"nodes\"").expect("a table")..],
@@ -85,13 +82,7 @@ fn what_is_absent_is_null_with_its_reason_and_every_key_is_there() {
     assert_eq!(value["rapidity_why"], "a standing line has no launch frame");
     assert_order(
         &json(&report),
-        &[
-            "revision",
-            "revision_why",
-            "layout_sha256",
-            "at_s",
-            "at_s_why",
-        ],
+        &["revision", "revision_why", "layout_sha256", "at_s", "at_s_why"],
     );
     let rows = value["nodes"].as_array().expect("rows");
     assert_eq!(rows.len(), 5);
@@ -105,48 +96,31 @@ fn what_is_absent_is_null_with_its_reason_and_every_key_is_there() {
 #[test]
 fn numbers_that_are_not_finite_are_null() {
     let columns = vec![column("rate_minus_one", "rate", Measure::Ratio)];
-    let rows = vec![
-        vec![Cell::Number(f64::NAN)],
-        vec![Cell::Number(f64::NEG_INFINITY)],
-    ];
+    let rows = vec![vec![Cell::Number(f64::NAN)], vec![Cell::Number(f64::NEG_INFINITY)]];
     let text = json(&report("rates", vec![table("nodes", columns, rows, None)]));
     let value: Value = serde_json::from_str(&text).expect("JSON");
     assert!(value["nodes"][1]["rate_minus_one"].is_null());
-    assert_eq!(
-        value["nodes"][0]["rate_minus_one_why"],
-        "the value overflows"
-    );
+    assert_eq!(value["nodes"][0]["rate_minus_one_why"], "the value overflows");
 }
 
 #[test]
 fn names_and_exact_times_read_back() {
     let name = "a \"b\" \\ 標準 é\u{301}";
-    let columns = vec![
-        column("node", "node", Measure::Word),
-        column("at_s", "at", Measure::Time),
-    ];
+    let columns = vec![column("node", "node", Measure::Word), column("at_s", "at", Measure::Time)];
     let time = ArrayTime::from_attoseconds(99_999_999_999_000_000_000_000_000_001);
-    let rows = vec![
-        vec![text(name), Cell::Time(time)],
-        vec![text("x"), Cell::Integer(i64::MIN)],
-    ];
+    let rows = vec![vec![text(name), Cell::Time(time)], vec![text("x"), Cell::Integer(i64::MIN)]];
     let text = json(&report("rates", vec![table("nodes", columns, rows, None)]));
     let value: Value = serde_json::from_str(&text).expect("JSON");
     assert_eq!(value["nodes"][0]["node"], name);
-    assert!(
-        text.contains("\"at_s\":99999999999.000000000000000001}"),
-        "{text}"
-    );
+    assert!(text.contains("\"at_s\":99999999999.000000000000000001}"), "{text}");
     assert!(text.contains("\"at_s\":-9223372036854775808}"), "{text}");
 }
 
 #[test]
 fn a_report_without_rows_is_an_empty_array() {
-    let value: Value = serde_json::from_str(&json(&report(
-        "reach",
-        vec![table("passes", vec![], vec![], None)],
-    )))
-    .expect("JSON");
+    let value: Value =
+        serde_json::from_str(&json(&report("reach", vec![table("passes", vec![], vec![], None)])))
+            .expect("JSON");
     assert_eq!(value["passes"], Value::Array(Vec::new()));
 }
 
@@ -156,20 +130,11 @@ fn over_time_the_moment_leads_each_row() {
     let value: Value = serde_json::from_str(&text).expect("JSON");
     let top: Vec<&String> = value.as_object().expect("an object").keys().collect();
     for key in ["at_s", "reference_acceleration_m_s2", "rapidity"] {
-        assert!(
-            !top.iter().any(|known| *known == key),
-            "{key} stands in the rows"
-        );
+        assert!(!top.iter().any(|known| *known == key), "{key} stands in the rows");
     }
     assert_order(&text, &["layout_sha256", "scalars", "nodes", "engines"]);
-    let first_row = text
-        .lines()
-        .find(|line| line.contains("\"node\""))
-        .expect("a row");
-    assert_order(
-        first_row,
-        &["at_s", "reference_acceleration_m_s2", "rapidity", "node"],
-    );
+    let first_row = text.lines().find(|line| line.contains("\"node\"")).expect("a row");
+    assert_order(first_row, &["at_s", "reference_acceleration_m_s2", "rapidity", "node"]);
     let nodes = value["nodes"].as_array().expect("rows");
     assert_eq!(nodes.len(), 6);
     assert_eq!(nodes[3]["at_s"].as_f64(), Some(1.5));
@@ -205,24 +170,9 @@ fn many_rows_are_the_same_bytes_as_few_at_a_time() {
 fn a_scalar_may_be_of_any_kind() {
     let mut report = report("steer", vec![]);
     report.scalars = vec![
-        Scalar {
-            key: "words",
-            heading: "words",
-            measure: Measure::Count,
-            value: Cell::Integer(7),
-        },
-        Scalar {
-            key: "state",
-            heading: "state",
-            measure: Measure::Word,
-            value: text("kept"),
-        },
-        Scalar {
-            key: "loss_s",
-            heading: "loss",
-            measure: Measure::Time,
-            value: absent("never"),
-        },
+        Scalar { key: "words", heading: "words", measure: Measure::Count, value: Cell::Integer(7) },
+        Scalar { key: "state", heading: "state", measure: Measure::Word, value: text("kept") },
+        Scalar { key: "loss_s", heading: "loss", measure: Measure::Time, value: absent("never") },
     ];
     let text = json(&report);
     let end = ",\"words\":7,\"state\":\"kept\",\"loss_s\":null,\"loss_s_why\":\"never\"}\n";

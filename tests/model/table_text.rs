@@ -18,9 +18,7 @@ fn page(report: &Report<'_>, width: Option<usize>, unicode: bool) -> String {
 
 /// Compares with a page kept beside the tests; `REWRITE_PAGES=1` writes it anew.
 fn assert_page(name: &str, shown: &str) {
-    let path = Path::new(env!("CARGO_MANIFEST_DIR"))
-        .join("tests/model/table_pages")
-        .join(name);
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/model/table_pages").join(name);
     if std::env::var_os("REWRITE_PAGES").is_some() {
         std::fs::write(&path, shown).expect("a page");
     }
@@ -48,10 +46,7 @@ fn pages_are_as_kept() {
 #[test]
 fn a_page_over_time_is_as_kept() {
     let mut out = Vec::new();
-    let options = TextOptions {
-        width: Some(60),
-        unicode: true,
-    };
+    let options = TextOptions { width: Some(60), unicode: true };
     write_text_series(&series(3), &options, &mut out).expect("memory");
     assert_page("over_time.txt", &String::from_utf8(out).expect("UTF-8"));
 }
@@ -109,11 +104,8 @@ fn rules_with_long_remedies_are_wrapped_and_whole() {
 
 #[test]
 fn the_longest_names_fit_forty_columns() {
-    let names = [
-        "標準時計標準時計標準時計標準時計",
-        "e\u{301}tat tres long de la ligne no 12",
-        "ab",
-    ];
+    let names =
+        ["標準時計標準時計標準時計標準時計", "e\u{301}tat tres long de la ligne no 12", "ab"];
     let columns = vec![
         column("node", "node", Measure::Word),
         column("rate_minus_one", "rate less one", Measure::Ratio),
@@ -123,10 +115,7 @@ fn the_longest_names_fit_forty_columns() {
         let value = 1.091_136_967_219_821_8e-13 * (1.0 + place as f64 * 1e-15);
         vec![text(name), Cell::Number(value), Cell::Number(value)]
     });
-    let report = report(
-        "rates",
-        vec![table("nodes", columns, rows.collect(), Some(2))],
-    );
+    let report = report("rates", vec![table("nodes", columns, rows.collect(), Some(2))]);
     let shown = page(&report, Some(40), true);
     assert_lines(&shown, Some(40));
     assert_page("long_names_40.txt", &shown);
@@ -137,11 +126,7 @@ fn nothing_is_cut_even_below_forty_columns() {
     let digits = |shown: &str| shown.matches("8.729").count();
     let whole = digits(&page(&rates(), None, true));
     for width in 0..40 {
-        assert_eq!(
-            digits(&page(&rates(), Some(width), true)),
-            whole,
-            "{width} columns"
-        );
+        assert_eq!(digits(&page(&rates(), Some(width), true)), whole, "{width} columns");
     }
 }
 
@@ -156,9 +141,7 @@ fn absent_moments_and_revisions_are_said() {
     };
     let shown = page(&report, None, false);
     let wanted = "layout: Marram survey line\nrevision: -\nhash: 3f2a9c01d4e7\n\
-                  array time: - (the report spans the plan)\n\
-                  reference acceleration: - (the report spans the plan)\n\
-                  rapidity: - (a standing line has no launch frame)\n";
+                  array time: - (the report spans the plan)\n";
     assert!(shown.starts_with(wanted), "{shown}");
     assert!(shown.ends_with("\n\nrules: no rows\n"), "{shown}");
 }
@@ -169,11 +152,7 @@ fn long_tables_are_shown_whole() {
     let lines: Vec<&str> = shown.lines().collect();
     assert_eq!(lines.len(), 100_000 + 13);
     let rule = columns_of(lines[11]);
-    assert!(
-        lines[12..lines.len() - 1]
-            .iter()
-            .all(|line| columns_of(line) <= rule)
-    );
+    assert!(lines[12..lines.len() - 1].iter().all(|line| columns_of(line) <= rule));
     assert_eq!(lines[12], "s0    -      -8.5000000");
     assert_eq!(lines[lines.len() - 2], "s315  hub    +8.4998300");
 }
@@ -181,73 +160,21 @@ fn long_tables_are_shown_whole() {
 #[test]
 fn units_follow_the_column() {
     for (key, measure, values, unit, first) in [
-        (
-            "clock_offset_s",
-            Measure::Time,
-            &[12.345e-12, 9.2e-12][..],
-            "ps",
-            "+12.345",
-        ),
-        (
-            "launch_position_m",
-            Measure::Length,
-            &[9.164_747_4e15, 9.164_74e15],
-            "ly",
-            "0.9687146",
-        ),
-        (
-            "flight_array_s",
-            Measure::Time,
-            &[1.5e8, 1.25e8],
-            "a",
-            "4.753",
-        ),
+        ("clock_offset_s", Measure::Time, &[12.345e-12, 9.2e-12][..], "ps", "+12.345"),
+        ("launch_position_m", Measure::Length, &[9.164_747_4e15, 9.164_74e15], "ly", "0.9687146"),
+        ("flight_array_s", Measure::Time, &[1.5e8, 1.25e8], "a", "4.753"),
         ("flight_array_s", Measure::Time, &[3_600.0], "min", "60.00"),
-        (
-            "proper_time_s",
-            Measure::Time,
-            &[31_557_600.000_1, 31_557_600.0],
-            "s",
-            "31557600.0001",
-        ),
-        (
-            "carrier_hz",
-            Measure::Frequency,
-            &[194.4e12],
-            "THz",
-            "194.4",
-        ),
+        ("proper_time_s", Measure::Time, &[31_557_600.000_1, 31_557_600.0], "s", "31557600.0001"),
+        ("carrier_hz", Measure::Frequency, &[194.4e12], "THz", "194.4"),
         ("force_n", Measure::Force, &[9_000.0, 120.5], "kN", "9.0000"),
-        (
-            "acceleration_m_s2",
-            Measure::Acceleration,
-            &[0.000_98],
-            "µg0",
-            "99.93",
-        ),
-        (
-            "rate_minus_one",
-            Measure::Ratio,
-            &[-4.6e-13, 3e-17],
-            "",
-            "-4.6e-13",
-        ),
+        ("acceleration_m_s2", Measure::Acceleration, &[0.000_98], "µg0", "99.93"),
+        ("rate_minus_one", Measure::Ratio, &[-4.6e-13, 3e-17], "", "-4.6e-13"),
         ("mass_ratio", Measure::Ratio, &[1.25, 1.5], "", "1.25"),
-        (
-            "separation_m",
-            Measure::Length,
-            &[40_000.0, 1.234_567_8e-4],
-            "m",
-            "4.000e4",
-        ),
+        ("separation_m", Measure::Length, &[40_000.0, 1.234_567_8e-4], "m", "4.000e4"),
     ] {
         let cells: Vec<Cell<'_>> = values.iter().map(|&value| Cell::Number(value)).collect();
         let format = fit(&column(key, "", measure), &cells, true);
-        assert_eq!(
-            (format.unit(), format.cell(&cells[0]).trim()),
-            (unit, first),
-            "{values:?}"
-        );
+        assert_eq!((format.unit(), format.cell(&cells[0]).trim()), (unit, first), "{values:?}");
     }
 }
 
@@ -259,17 +186,9 @@ fn exact_times_stay_exact() {
     };
     const SECOND: i128 = 1_000_000_000_000_000_000;
     for (counts, unit, shown) in [
-        (
-            &[0, 43_200 * SECOND, 5_400 * SECOND][..],
-            "h",
-            &[" 0   ", "12.0", "1.5"][..],
-        ),
+        (&[0, 43_200 * SECOND, 5_400 * SECOND][..], "h", &[" 0   ", "12.0", "1.5"][..]),
         (&[22_201 * SECOND, SECOND / 2], "s", &["22201.0", "0.5"]),
-        (
-            &[SECOND * 1_000_000_000 + 1],
-            "s",
-            &["1000000000.000000000000000001"],
-        ),
+        (&[SECOND * 1_000_000_000 + 1], "s", &["1000000000.000000000000000001"]),
         (&[12_500_000, -1_000_000], "ps", &["12.5", "-1.0"]),
         (&[0], "s", &["0"]),
     ] {
@@ -288,11 +207,7 @@ fn values_outside_the_window_keep_their_digits() {
     let window: Vec<Cell<'_>> = [1.234e-9, -5.678e-9].map(Cell::Number).to_vec();
     let format = fit(&column("clock_offset_s", "", Measure::Time), &window, true);
     assert_eq!(format.unit(), "ns");
-    for (value, shown) in [
-        (1.2e-15, "+1.2e-6"),
-        (2.5e-9, "+2.500"),
-        (-1.234_567e-3, "-1.235e6"),
-    ] {
+    for (value, shown) in [(1.2e-15, "+1.2e-6"), (2.5e-9, "+2.500"), (-1.234_567e-3, "-1.235e6")] {
         assert_eq!(format.cell(&Cell::Number(value)).trim(), shown);
     }
 }
@@ -305,10 +220,7 @@ fn assert_lines(shown: &str, width: Option<usize>) {
         assert!(!line.ends_with(' '), "a blank at the end of {line:?}");
         let columns = columns_of(line);
         if let Some(width) = width {
-            assert!(
-                columns <= width,
-                "{columns} of {width} columns in {line:?} of\n{shown}"
-            );
+            assert!(columns <= width, "{columns} of {width} columns in {line:?} of\n{shown}");
         }
         if !line.is_empty() && line.chars().all(|sign| sign == '─' || sign == '-') && columns > 3
         {
@@ -316,10 +228,7 @@ fn assert_lines(shown: &str, width: Option<usize>) {
         } else if line.is_empty() || line.starts_with('-') {
             rule = None;
         } else if let Some(rule) = rule {
-            assert!(
-                columns <= rule,
-                "{line:?} passes its rule of {rule} in\n{shown}"
-            );
+            assert!(columns <= rule, "{line:?} passes its rule of {rule} in\n{shown}");
         }
     }
 }
@@ -340,18 +249,13 @@ fn number() -> impl Strategy<Value = f64> {
 fn numbers() -> impl Strategy<Value = Vec<f64>> {
     prop_oneof![
         prop::collection::vec(number(), 1..12),
-        (
-            number(),
-            prop::collection::vec(-1.0..1.0_f64, 1..12),
-            -16_i32..0
-        )
-            .prop_map(|(base, parts, power)| {
+        (number(), prop::collection::vec(-1.0..1.0_f64, 1..12), -16_i32..0).prop_map(
+            |(base, parts, power)| {
                 let size: f64 = format!("1e{power}").parse().expect("a number");
                 let near = parts.iter().map(|part| base * (1.0 + part * size));
-                near.filter(|value| value.is_finite())
-                    .chain([base])
-                    .collect()
-            }),
+                near.filter(|value| value.is_finite()).chain([base]).collect()
+            }
+        ),
     ]
 }
 
@@ -423,10 +327,15 @@ proptest! {
             let near = (read - value).abs() <= 5.1e-4 * value.abs() || value.abs() < 1e-300;
             prop_assert!(near || read.is_infinite(), "{} as {:?} {}", value, text, format.unit());
         }
+        // Only readings of clocks show a step that is far below the largest value.
+        let steps = values.windows(2).map(|pair| (pair[0] - pair[1]).abs());
+        let least = steps.filter(|&step| step > 0.0).fold(f64::INFINITY, f64::min);
+        let largest = highest.abs().max(lowest.abs());
+        let told_apart = measure == Measure::Time || least > 1e-10 * largest;
         for (pair, texts) in values.windows(2).zip(shown.windows(2)) {
             let step = (pair[0] - pair[1]).abs();
             // Below a normal number the step itself has no digits left to halve.
-            if step > 1e-15 * (highest - lowest) && step > 1e-300 {
+            if step > 1e-15 * (highest - lowest) && step > 1e-300 && told_apart {
                 prop_assert_ne!(&texts[0], &texts[1], "{:?}", pair);
             }
         }
@@ -477,9 +386,5 @@ fn pages_list_every_reason_once() {
         writeln!(wanted, "hub        -a           -b").expect("memory");
     }
     wanted.push_str("-a: no acceleration\n-b: it stands\n");
-    assert!(
-        page(&report, None, true).ends_with(&wanted),
-        "{}",
-        page(&report, None, true)
-    );
+    assert!(page(&report, None, true).ends_with(&wanted), "{}", page(&report, None, true));
 }

@@ -278,8 +278,7 @@ fn a_recording_replays_what_the_tables_say() {
     let path = folder.path().join("run.jsonl");
     let name = path.to_str().expect("a name");
     let layout = "layouts/towed-array.toml";
-    let record =
-        ["record", layout, "--until", "3 h", "--every", "20 min", "--out", name];
+    let record = ["record", layout, "--until", "3 h", "--every", "20 min", "--out", name];
     assert_eq!(seen(&clockspar(&record)).0, 0);
     assert_eq!(seen(&clockspar(&record)).0, 2, "an existing recording is kept");
     let columns = |stdout: &str, keys: [&str; 3]| -> Vec<Vec<String>> {

@@ -10,9 +10,9 @@ use clockspar::table::content::{compare_report, differences};
 use super::show::show;
 use super::{recordings, run_of};
 use crate::program::arguments::CompareArguments;
+use crate::program::files;
 use crate::program::moments::Moments;
 use crate::program::problem::Problem;
-use crate::program::files;
 
 /// Two layouts, or two recordings, at the same moments.
 ///

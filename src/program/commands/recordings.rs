@@ -23,9 +23,7 @@ use crate::program::arguments::{
 };
 use crate::program::moments::{self, Moments};
 use crate::program::problem::{Problem, STATUS_RULE};
-use crate::program::recording_file::{
-    CreateFault, RecordingFile, RecordingSource, open_recording,
-};
+use crate::program::recording_file::{CreateFault, RecordingFile, RecordingSource, open_recording};
 use crate::program::terminal::die_by;
 use crate::program::{desk, files, message, output};
 
@@ -58,8 +56,8 @@ pub fn record(arguments: &RecordArguments) -> Result<u8, Problem> {
     let failed = |error: RecordFault| failed_record(&shown, &error);
     let mut recorder = Recorder::open(file, &opening).map_err(|fault| failed(fault.into()))?;
     let mut may_go_on = || interrupted.load(Ordering::Relaxed) == 0;
-    let ended = recording::record(&run, &schedule, &mut recorder, None, &mut may_go_on)
-        .map_err(failed)?;
+    let ended =
+        recording::record(&run, &schedule, &mut recorder, None, &mut may_go_on).map_err(failed)?;
     let (frames, events) = (recorder.writer().frames(), recorder.writer().events());
     recorder.close().map_err(|fault| failed(fault.into()))?;
     if ended == Ended::Stopped {
@@ -198,7 +196,8 @@ fn replay_table(
     if !matches!(moments, Moments::Listed(_)) {
         let mut found = Vec::new();
         for at in moments.iter() {
-            let frame = reader.frame(Seek::AtOrBefore, at).map_err(|fault| unread(&shown, &fault))?;
+            let frame =
+                reader.frame(Seek::AtOrBefore, at).map_err(|fault| unread(&shown, &fault))?;
             let frame = frame.ok_or_else(|| {
                 Problem::new(
                     format_args!("{shown}: no frame at or before {at} s"),
@@ -260,10 +259,10 @@ fn frame_with_events(
         reading_s: None,
     });
     let before = reader.frame(Seek::Before, at).ok().flatten();
-    let since = before.map_or(
-        ArrayTime::from_attoseconds(-ArrayTime::LIMIT.attoseconds()),
-        |before| ArrayTime::from_attoseconds(before.at.attoseconds() + 1),
-    );
+    let since = before
+        .map_or(ArrayTime::from_attoseconds(-ArrayTime::LIMIT.attoseconds()), |before| {
+            ArrayTime::from_attoseconds(before.at.attoseconds() + 1)
+        });
     let events = reader
         .events_between(since, at)
         .map(|events| events.filter_map(Result::ok).collect())

@@ -8,7 +8,7 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
-    Judgement, JudgedOver, RuleState, check_report, judge, offsets_report, rates_report,
+    JudgedOver, Judgement, RuleState, check_report, judge, offsets_report, rates_report,
 };
 
 use super::show::show;

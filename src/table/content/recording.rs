@@ -177,11 +177,7 @@ fn findings_table<'a>(findings: Vec<Finding>) -> Table<'a> {
     }
 }
 
-fn head<'a>(
-    command: &'static str,
-    opening: &'a Opening,
-    layout: Option<&'a Layout>,
-) -> Report<'a> {
+fn head<'a>(command: &'static str, opening: &'a Opening, layout: Option<&'a Layout>) -> Report<'a> {
     const WHOLE: &str = "it is about the whole recording";
     Report {
         command,
