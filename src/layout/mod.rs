@@ -1,7 +1,10 @@
 //! Layout files: TOML text to what was written, to a checked [`Layout`], with every
 //! fault of a file collected at once.
 
+pub mod date;
 pub mod fault;
+pub mod names;
+mod nearest;
 pub mod quantity;
 mod read;
 mod written;
@@ -10,7 +13,10 @@ use crate::model::array_time::ArrayTime;
 use crate::model::plan::Plan;
 
 pub use fault::{Fault, Faults};
-pub use read::{Source, read};
+pub use read::{
+    FARTHEST_POSITION_M, LARGEST_LAYOUT_BYTES, LARGEST_TABLE_BYTES, MOST_NODES, Source, SourceFile,
+    read, sha256,
+};
 
 /// A checked layout: every name unique, every reference resolved, rows fore to aft.
 #[derive(Clone, Debug)]
@@ -47,6 +53,8 @@ pub struct Layout {
     pub limits: Vec<Limit>,
     /// Notes, in the order of the file.
     pub notes: Vec<Note>,
+    /// Prefixes of the series placed by equal shift at the design acceleration.
+    pub equal_shift: Vec<String>,
     /// The exact text the layout was read from, and the files it names.
     pub source: Source,
 }

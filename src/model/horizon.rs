@@ -82,14 +82,24 @@ pub fn reached(plan: &Plan, extremes: &Extremes, position_m: f64) -> Option<Hori
         return None;
     }
     let (phase, at_s) = first_zero(plan, position_m)?;
-    Some(HorizonReached {
-        phase,
-        at_s,
+    let offered = partners(extremes.worst_for(position_m), position_m);
+    Some(HorizonReached { phase, at_s, ..offered })
+}
+
+/// What a node beyond the horizon at one acceleration is offered instead.
+#[must_use]
+pub fn partners(worst: Extreme, position_m: f64) -> HorizonReached {
+    let acceleration = worst.acceleration_m_s2;
+    HorizonReached {
+        phase: worst.phase,
+        at_s: worst.at.seconds(),
         largest_acceleration_m_s2: largest_partner(position_m, |value| {
             is_realisable(Dd::new(value), position_m)
         }),
-        nearest_position_m: largest_partner(worst.to_f64(), |value| is_realisable(worst, value)),
-    })
+        nearest_position_m: largest_partner(acceleration.to_f64(), |value| {
+            is_realisable(acceleration, value)
+        }),
+    }
 }
 
 /// The double of largest size whose product with `factor` stays above `−c²`.

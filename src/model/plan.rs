@@ -4,7 +4,7 @@
 use std::fmt;
 
 use super::array_time::ArrayTime;
-use super::constants::SPEED_OF_LIGHT_M_S;
+use super::constants::{INVERSE_C_S_M, SPEED_OF_LIGHT_M_S};
 use super::dd::{Dd, RunningSum, Wide};
 use super::motion::{self, Launch};
 
@@ -231,10 +231,30 @@ pub struct Moment {
     /// Proper acceleration `α` of the reference node, m/s², + towards the fore end.
     /// At a boundary the later phase counts.
     pub acceleration_m_s2: Dd,
+    /// Velocity gain `∫ α dτ = c φ` since array time zero, m/s.
+    pub velocity_gain_m_s: Dd,
     /// Rapidity `φ = ∫ α dτ / c` gained since array time zero.
     pub rapidity: Dd,
     /// `Φ = ∫ |α| dτ / c`.
     pub total_rapidity: f64,
+}
+
+impl Moment {
+    /// The moment of an acceleration that has always been held and always will be: gravity
+    /// under a standing line. The steps are those of a hold, so the bits agree with one.
+    #[must_use]
+    pub fn held_always(at: ArrayTime, acceleration_m_s2: f64) -> Moment {
+        let elapsed = Dd::from_i128(at.attoseconds());
+        let gain = Wide::from(elapsed).times(Dd::new(acceleration_m_s2)).over(Dd::new(1.0e18));
+        Moment {
+            at,
+            phase: None,
+            acceleration_m_s2: Dd::new(acceleration_m_s2),
+            velocity_gain_m_s: gain.to_dd(),
+            rapidity: rapidity_of(gain),
+            total_rapidity: rapidity_of(gain).abs().to_f64(),
+        }
+    }
 }
 
 impl Plan {
@@ -307,8 +327,14 @@ impl Plan {
                 (Dd::ZERO, reached.velocity_gain, reached.velocity_spent)
             }
         };
-        let total_rapidity = (spent / SPEED_OF_LIGHT_M_S).to_f64();
-        Moment { at, phase, acceleration_m_s2, rapidity: rapidity_of(gain), total_rapidity }
+        Moment {
+            at,
+            phase,
+            acceleration_m_s2,
+            velocity_gain_m_s: gain.to_dd(),
+            rapidity: rapidity_of(gain),
+            total_rapidity: (spent / SPEED_OF_LIGHT_M_S).to_f64(),
+        }
     }
 
     /// The reference node's event in the launch frame at a moment: launch time and
@@ -374,7 +400,7 @@ impl Plan {
 
 /// `φ` of a velocity gain.
 fn rapidity_of(velocity_gain: Wide) -> Dd {
-    velocity_gain.to_dd() / SPEED_OF_LIGHT_M_S
+    velocity_gain.to_dd() * INVERSE_C_S_M
 }
 
 fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), PlanFault> {

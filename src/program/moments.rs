@@ -1,6 +1,9 @@
 //! Moments as people write them: durations, `end`, dates.
 
 use clockspar::layout::quantity::{self, QuantityFault};
+use std::sync::Arc;
+
+use clockspar::layout::date::parse_moment;
 use clockspar::layout::{Course, Layout};
 use clockspar::model::array_time::ArrayTime;
 
@@ -8,7 +11,7 @@ use super::arguments::MomentArguments;
 use super::problem::Problem;
 
 /// The moments a table command is asked for.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, PartialEq, Eq)]
 pub enum Moments {
     /// One moment.
     One(ArrayTime),
@@ -21,6 +24,8 @@ pub enum Moments {
         /// Step, above zero.
         every: ArrayTime,
     },
+    /// Moments that were found, in order; may be none.
+    Listed(Arc<[ArrayTime]>),
 }
 
 impl Moments {
@@ -42,18 +47,47 @@ impl Moments {
         every_moment(from, until, step("--every", every)?)
     }
 
+    /// How many moments there are.
+    pub fn count(&self) -> usize {
+        match self {
+            Moments::One(_) => 1,
+            Moments::Listed(moments) => moments.len(),
+            Moments::Every { from, until, every } => {
+                let steps = (until.attoseconds() - from.attoseconds()) / every.attoseconds();
+                usize::try_from(steps).unwrap_or(usize::MAX).saturating_add(1)
+            }
+        }
+    }
+
+    /// A moment, by its number from 0.
+    pub fn nth(&self, index: usize) -> ArrayTime {
+        match self {
+            Moments::One(at) => *at,
+            Moments::Listed(moments) => moments[index],
+            Moments::Every { from, every, .. } => {
+                from.stepped(*every, index as i128).unwrap_or(ArrayTime::LIMIT)
+            }
+        }
+    }
+
     /// The moments, in order.
-    pub fn iter(self) -> impl Iterator<Item = ArrayTime> {
-        let (from, until, every) = match self {
-            Moments::One(at) => (at, at, ArrayTime::from_seconds(1)),
-            Moments::Every { from, until, every } => (from, until, every),
-        };
-        (0..).map_while(move |count| from.stepped(every, count).filter(|&at| at <= until))
+    pub fn iter(&self) -> impl Iterator<Item = ArrayTime> + '_ {
+        (0..self.count()).map(move |index| self.nth(index))
+    }
+}
+
+impl From<Vec<ArrayTime>> for Moments {
+    fn from(moments: Vec<ArrayTime>) -> Moments {
+        Moments::Listed(moments.into())
     }
 }
 
 /// A range of moments, checked.
-pub fn every_moment(from: ArrayTime, until: ArrayTime, every: ArrayTime) -> Result<Moments, Problem> {
+pub fn every_moment(
+    from: ArrayTime,
+    until: ArrayTime,
+    every: ArrayTime,
+) -> Result<Moments, Problem> {
     if until < from {
         return Err(Problem::new(
             format_args!("the last moment, {until} s, lies before the first, {from} s"),
@@ -66,50 +100,13 @@ pub fn every_moment(from: ArrayTime, until: ArrayTime, every: ArrayTime) -> Resu
 
 /// A step, above zero.
 pub fn step(option: &str, text: &str) -> Result<ArrayTime, Problem> {
-    let step = quantity::parse_duration(text).map_err(|fault| told(option, text, &fault))?;
-    if step <= ArrayTime::ZERO {
-        return Err(Problem::new(
-            format_args!("{option} {text}: a step of {step} s"),
-            "a step is longer than zero",
-            "give a duration such as `10 min`",
-        ));
-    }
-    Ok(step)
+    quantity::parse_length_of_time(text).map_err(|fault| told(option, text, &fault))
 }
 
 /// A moment: a duration, `end`, or a date when the layout has an epoch.
 pub fn moment(option: &str, text: &str, layout: &Layout) -> Result<ArrayTime, Problem> {
-    let text = text.trim();
-    if text == "end" {
-        return Ok(plan_end(layout));
-    }
-    if !looks_like_date(text) {
-        return quantity::parse_duration(text).map_err(|fault| told(option, text, &fault));
-    }
-    let Some(epoch) = &layout.epoch else {
-        return Err(Problem::new(
-            format_args!("{option} {text}: a date, but the layout states no epoch"),
-            "a date is a moment of array time only through the date of array time zero",
-            "give a duration since the start, or add `epoch = \"…\"` to the layout",
-        ));
-    };
-    let date = quantity::parse_date(text).map_err(|fault| told(option, text, &fault))?;
-    date.tai_since_2000.checked_sub(epoch.tai_since_2000).ok_or_else(|| {
-        Problem::new(
-            format_args!("{option} {text}: more than 1e11 s from the epoch"),
-            "array time is within ±1e11 s",
-            "give a date nearer to the epoch",
-        )
-    })
-}
-
-/// A date has its year, month and day before anything else.
-fn looks_like_date(text: &str) -> bool {
-    let mut parts = text.splitn(3, '-');
-    let is_number = |part: Option<&str>| {
-        part.is_some_and(|part| !part.is_empty() && part.bytes().all(|byte| byte.is_ascii_digit()))
-    };
-    is_number(parts.next()) && is_number(parts.next()) && parts.next().is_some()
+    parse_moment(text, layout.epoch.as_ref(), plan_end(layout))
+        .map_err(|fault| told(option, text, &fault))
 }
 
 /// The end of the plan; a standing line has none, so a day.
@@ -123,14 +120,12 @@ fn plan_end(layout: &Layout) -> ArrayTime {
 /// The middle of the first hold; no hold: 0; a standing line: 1 d.
 pub fn default_moment(layout: &Layout) -> ArrayTime {
     match &layout.course {
-        Course::Thrust(plan) => plan
-            .phases()
-            .iter()
-            .find(|phase| phase.is_hold())
-            .map_or(ArrayTime::ZERO, |hold| {
+        Course::Thrust(plan) => {
+            plan.phases().iter().find(|phase| phase.is_hold()).map_or(ArrayTime::ZERO, |hold| {
                 let (start, end) = (hold.start.attoseconds(), hold.end.attoseconds());
                 ArrayTime::from_attoseconds(start + (end - start) / 2)
-            }),
+            })
+        }
         Course::Standing(_) => ArrayTime::from_seconds(86_400),
     }
 }

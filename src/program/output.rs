@@ -6,6 +6,7 @@ use std::path::{Path, PathBuf};
 use tempfile::NamedTempFile;
 
 use super::problem::Problem;
+use super::terminal::{GlyphChoice, Glyphs};
 
 /// The place results are written to.
 pub enum Output {
@@ -103,4 +104,11 @@ fn set_ordinary_mode(file: &std::fs::File) -> io::Result<()> {
     // The umask cannot be read without being set, so the mode follows the folder-neutral
     // common practice of owner read-write and group and others read.
     file.set_permissions(std::fs::Permissions::from_mode(0o644))
+}
+
+/// Whether the locale lets text have signs outside ASCII.
+pub fn locale_is_unicode() -> bool {
+    let variable =
+        |name: &str| std::env::var_os(name).map(|value| value.to_string_lossy().into_owned());
+    !Glyphs::choose(GlyphChoice::Auto, &variable).ascii_only
 }

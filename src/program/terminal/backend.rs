@@ -28,12 +28,8 @@ const CLEAR: &[u8; 4] = b"\x1b[2J";
 ///
 /// Italic, blinking, hidden and struck text is drawn plain: some terminals show
 /// italic as reversed, which is the mark of the selected row here.
-const ATTRIBUTES: [(Modifier, u8); 4] = [
-    (Modifier::BOLD, 1),
-    (Modifier::DIM, 2),
-    (Modifier::UNDERLINED, 4),
-    (Modifier::REVERSED, 7),
-];
+const ATTRIBUTES: [(Modifier, u8); 4] =
+    [(Modifier::BOLD, 1), (Modifier::DIM, 2), (Modifier::UNDERLINED, 4), (Modifier::REVERSED, 7)];
 
 /// What the terminal writes text with at the moment.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -164,9 +160,8 @@ impl<W: Write> ScreenBackend<W> {
     }
 
     fn pen_of(&self, cell: &Cell) -> Pen {
-        let drawn = ATTRIBUTES
-            .iter()
-            .fold(Modifier::empty(), |all, (attribute, _)| all | *attribute);
+        let drawn =
+            ATTRIBUTES.iter().fold(Modifier::empty(), |all, (attribute, _)| all | *attribute);
         Pen {
             text: Paint::of(cell.fg, self.depth),
             background: Paint::of(cell.bg, self.depth),
@@ -200,10 +195,7 @@ impl<W: Write> Backend for ScreenBackend<W> {
             self.push_symbol(cell.symbol());
             // After a wide cell the next one is not at x + 1, so it gets a move of
             // its own: terminals do not agree on which characters are wide.
-            next = Some(Position {
-                x: x.saturating_add(1),
-                y,
-            });
+            next = Some(Position { x: x.saturating_add(1), y });
         }
         if pen != Pen::default() {
             self.frame.extend_from_slice(PLAIN);
@@ -263,10 +255,7 @@ impl<W: Write> Backend for ScreenBackend<W> {
     }
 
     fn window_size(&mut self) -> io::Result<WindowSize> {
-        Ok(WindowSize {
-            columns_rows: (self.measure)(),
-            pixels: Size::ZERO,
-        })
+        Ok(WindowSize { columns_rows: (self.measure)(), pixels: Size::ZERO })
     }
 
     /// Sends the frame, if it differs from the one before.
@@ -298,20 +287,12 @@ mod tests {
     use ratatui::text::Span;
 
     fn five_by_two() -> Size {
-        Size {
-            width: 5,
-            height: 2,
-        }
+        Size { width: 5, height: 2 }
     }
 
     fn screen(depth: Depth, ascii_only: bool) -> Terminal<ScreenBackend<Vec<u8>>> {
-        Terminal::new(ScreenBackend::new(
-            Vec::new(),
-            five_by_two,
-            depth,
-            ascii_only,
-        ))
-        .expect("a screen in memory")
+        Terminal::new(ScreenBackend::new(Vec::new(), five_by_two, depth, ascii_only))
+            .expect("a screen in memory")
     }
 
     /// Draws one styled text at the origin and gives the bytes this took.
@@ -338,15 +319,9 @@ mod tests {
     fn a_frame_is_bracketed_and_an_unchanged_one_sends_nothing() {
         let mut terminal = screen(Depth::Mono, false);
         let style = Style::new();
-        assert_eq!(
-            sent(&mut terminal, "ab", style, None),
-            "^[?2026h^[1Hab^[?2026l"
-        );
+        assert_eq!(sent(&mut terminal, "ab", style, None), "^[?2026h^[1Hab^[?2026l");
         assert_eq!(sent(&mut terminal, "ab", style, None), "");
-        assert_eq!(
-            sent(&mut terminal, "ax", style, None),
-            "^[?2026h^[1;2Hx^[?2026l"
-        );
+        assert_eq!(sent(&mut terminal, "ax", style, None), "^[?2026h^[1;2Hx^[?2026l");
         assert_eq!(terminal.backend().frames(), 2);
         assert_eq!(terminal.backend().bytes(), (22 + 23) as u64);
     }
@@ -364,10 +339,7 @@ mod tests {
             sent(&mut terminal, "ab", style, Some((3, 1))),
             "^[?2026h^[?25l^[2;4H^[?25h^[?2026l"
         );
-        assert_eq!(
-            sent(&mut terminal, "ab", style, None),
-            "^[?2026h^[?25l^[?2026l"
-        );
+        assert_eq!(sent(&mut terminal, "ab", style, None), "^[?2026h^[?25l^[?2026l");
         assert_eq!(sent(&mut terminal, "ab", style, None), "");
     }
 
@@ -375,18 +347,10 @@ mod tests {
     fn sixteen_colours_use_short_codes_and_no_underline_colour() {
         let mut terminal = screen(Depth::Sixteen, false);
         let style = Style::new().fg(Color::LightRed).bg(Color::Blue).bold();
-        assert_eq!(
-            sent(&mut terminal, "a", style, None),
-            "^[?2026h^[1H^[1;91;44ma^[0m^[?2026l"
-        );
+        assert_eq!(sent(&mut terminal, "a", style, None), "^[?2026h^[1H^[1;91;44ma^[0m^[?2026l");
         let mut palette = screen(Depth::Palette, false);
         assert_eq!(
-            sent(
-                &mut palette,
-                "a",
-                Style::new().fg(Color::Indexed(200)),
-                None
-            ),
+            sent(&mut palette, "a", Style::new().fg(Color::Indexed(200)), None),
             "^[?2026h^[1H^[38;5;200ma^[0m^[?2026l"
         );
     }
@@ -403,10 +367,7 @@ mod tests {
             .italic()
             .slow_blink()
             .reversed();
-        assert_eq!(
-            sent(&mut terminal, "a", style, None),
-            "^[?2026h^[1H^[1;2;4;7ma^[0m^[?2026l"
-        );
+        assert_eq!(sent(&mut terminal, "a", style, None), "^[?2026h^[1H^[1;2;4;7ma^[0m^[?2026l");
     }
 
     #[test]
@@ -422,10 +383,7 @@ mod tests {
             })
             .expect("memory takes every byte");
         let bytes = String::from_utf8(terminal.backend().sink.clone()).expect("UTF-8");
-        assert_eq!(
-            bytes.replace('\x1b', "^"),
-            "^[?2026h^[1H^[1;31ma^[0;31mb^[7;32mc^[0md^[?2026l"
-        );
+        assert_eq!(bytes.replace('\x1b', "^"), "^[?2026h^[1H^[1;31ma^[0;31mb^[7;32mc^[0md^[?2026l");
     }
 
     #[test]
@@ -434,20 +392,17 @@ mod tests {
         terminal
             .draw(|frame| {
                 frame.buffer_mut()[(0, 0)].set_symbol("\x1b]0;x\x07");
-                frame.buffer_mut()[(1, 0)].set_symbol("\u{9b}");
+                frame.buffer_mut()[(4, 1)].set_symbol("\u{9b}");
             })
             .expect("memory takes every byte");
         let bytes = String::from_utf8(terminal.backend().sink.clone()).expect("UTF-8");
-        assert_eq!(bytes.replace('\x1b', "^"), "^[?2026h^[1H??^[?2026l");
+        assert_eq!(bytes.replace('\x1b', "^"), "^[?2026h^[1H?^[2;5H?^[?2026l");
     }
 
     #[test]
     fn a_terminal_without_unicode_gets_only_ascii() {
         let mut terminal = screen(Depth::Mono, true);
-        assert_eq!(
-            sent(&mut terminal, "αb犬", Style::new(), None),
-            "^[?2026h^[1H?b??^[?2026l"
-        );
+        assert_eq!(sent(&mut terminal, "αb犬", Style::new(), None), "^[?2026h^[1H?b??^[?2026l");
     }
 
     #[test]
@@ -455,10 +410,7 @@ mod tests {
         let mut terminal = screen(Depth::Mono, false);
         sent(&mut terminal, "ab", Style::new(), None);
         terminal.resize(Rect::new(0, 0, 5, 2)).expect("memory");
-        assert_eq!(
-            sent(&mut terminal, "ab", Style::new(), None),
-            "^[?2026h^[2J^[1Hab^[?2026l"
-        );
+        assert_eq!(sent(&mut terminal, "ab", Style::new(), None), "^[?2026h^[2J^[1Hab^[?2026l");
         // A narrower area makes the drawing library clear twice.
         terminal.resize(Rect::new(0, 0, 3, 2)).expect("memory");
         terminal.backend_mut().flush().expect("memory");
@@ -497,9 +449,7 @@ mod tests {
         let backend = ScreenBackend::new(LostLine(0), five_by_two, Depth::Mono, false);
         let mut terminal = Terminal::new(backend).expect("a screen in memory");
         let draw = |terminal: &mut Terminal<ScreenBackend<LostLine>>, text: &'static str| {
-            terminal
-                .draw(|frame| frame.render_widget(text, frame.area()))
-                .map(|_| ())
+            terminal.draw(|frame| frame.render_widget(text, frame.area())).map(|_| ())
         };
         draw(&mut terminal, "one").expect("the line still holds");
         assert_eq!(terminal.backend().sink.0, 1);

@@ -201,9 +201,7 @@ fn entry_rgb(index: u8) -> [u8; 3] {
 fn nearest(wanted: [u8; 3], first: u8, last: u8) -> u8 {
     let distance = |index: &u8| -> u32 {
         let entry = entry_rgb(*index);
-        (0..3)
-            .map(|part| u32::from(entry[part].abs_diff(wanted[part])).pow(2))
-            .sum()
+        (0..3).map(|part| u32::from(entry[part].abs_diff(wanted[part])).pow(2)).sum()
     };
     (first..=last).min_by_key(distance).unwrap_or(first)
 }
@@ -214,10 +212,7 @@ mod tests {
 
     fn decided(choice: ColourChoice, is_terminal: bool, variables: &[(&str, &str)]) -> Depth {
         depth(choice, is_terminal, &|name| {
-            variables
-                .iter()
-                .find(|(known, _)| *known == name)
-                .map(|(_, value)| (*value).to_owned())
+            variables.iter().find(|(known, _)| *known == name).map(|(_, value)| (*value).to_owned())
         })
     }
 
@@ -229,23 +224,14 @@ mod tests {
         let force = ("CLICOLOR_FORCE", "1");
         assert_eq!(decided(Auto, true, &[xterm]), Depth::Palette);
         assert_eq!(decided(Auto, true, &[xterm, no]), Depth::Mono);
-        assert_eq!(
-            decided(Auto, true, &[xterm, ("NO_COLOR", "")]),
-            Depth::Palette
-        );
+        assert_eq!(decided(Auto, true, &[xterm, ("NO_COLOR", "")]), Depth::Palette);
         assert_eq!(decided(Auto, true, &[xterm, no, force]), Depth::Mono);
         assert_eq!(decided(Always, true, &[xterm, no]), Depth::Palette);
         assert_eq!(decided(Never, true, &[xterm, force]), Depth::Mono);
         assert_eq!(decided(Auto, false, &[xterm]), Depth::Mono);
         assert_eq!(decided(Auto, false, &[xterm, force]), Depth::Palette);
-        assert_eq!(
-            decided(Auto, false, &[xterm, ("CLICOLOR_FORCE", "0")]),
-            Depth::Mono
-        );
-        assert_eq!(
-            decided(Auto, true, &[("TERM", "vt220"), force]),
-            Depth::Sixteen
-        );
+        assert_eq!(decided(Auto, false, &[xterm, ("CLICOLOR_FORCE", "0")]), Depth::Mono);
+        assert_eq!(decided(Auto, true, &[("TERM", "vt220"), force]), Depth::Sixteen);
     }
 
     #[test]
@@ -272,10 +258,7 @@ mod tests {
             );
         }
         let truecolor = [("TERM", "xterm"), ("COLORTERM", "truecolor")];
-        assert_eq!(
-            decided(ColourChoice::Auto, true, &truecolor),
-            Depth::Palette
-        );
+        assert_eq!(decided(ColourChoice::Auto, true, &truecolor), Depth::Palette);
     }
 
     #[test]
@@ -284,10 +267,7 @@ mod tests {
         assert_eq!(sixteen(Color::Indexed(196)), Paint::Named(9));
         assert_eq!(sixteen(Color::Rgb(0, 0, 0)), Paint::Named(0));
         assert_eq!(sixteen(Color::Indexed(7)), Paint::Named(7));
-        assert_eq!(
-            Paint::of(Color::Rgb(255, 0, 0), Depth::Palette),
-            Paint::Entry(196)
-        );
+        assert_eq!(Paint::of(Color::Rgb(255, 0, 0), Depth::Palette), Paint::Entry(196));
         assert_eq!(Paint::of(Color::Red, Depth::Mono), Paint::Own);
     }
 

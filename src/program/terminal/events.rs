@@ -3,21 +3,27 @@
 use std::sync::Arc;
 use std::sync::atomic::{AtomicBool, Ordering};
 use std::sync::mpsc::Sender;
-use std::thread;
-use std::time::Duration;
 
-use ratatui::crossterm::event::{
-    self, Event, KeyCode, KeyEvent, KeyEventKind, KeyEventState, KeyModifiers,
-};
-use rustix::process::{Signal, kill_current_process_group};
+use ratatui::crossterm::event::{KeyCode, KeyEvent, KeyModifiers};
+use rustix::event::{PollFd, PollFlags, Timespec, poll};
+use rustix::io::Errno;
+use rustix::stdio::stdin;
 
-use super::guard;
-use super::signals::Ended;
+use super::keys::{KeyParser, Typed};
+use super::signals::{self, Ended};
+
+/// How long a lone Esc waits for a sequence to follow it.
+const SEQUENCE_PATIENCE: Timespec = Timespec { tv_sec: 0, tv_nsec: 50_000_000 };
+/// How long a paste may stand still before what has come of it is taken for all.
+const PASTE_PATIENCE: Timespec = Timespec { tv_sec: 5, tv_nsec: 0 };
+/// How often a line is looked at that does not report its own loss.
+const LINE_CHECK: Timespec = Timespec { tv_sec: 5, tv_nsec: 0 };
 
 /// Everything that can reach the desk from outside.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub enum Incoming {
-    /// A key was pressed, or is being held.
+    /// A key was pressed, or is being held. Ctrl-C comes as a key; Ctrl-Z does not
+    /// come, because it stops the program.
     Key(KeyEvent),
     /// Text was pasted; it may hold line ends and control characters.
     Paste(String),
@@ -36,8 +42,10 @@ pub enum Incoming {
 pub(super) enum Report {
     /// For the desk.
     Told(Incoming),
-    /// Ctrl-Z, or SIGTSTP from outside.
-    StopAsked,
+    /// The key Ctrl-Z.
+    StopKey,
+    /// SIGTSTP.
+    StopSignal,
     /// SIGCONT.
     Continued,
 }
@@ -55,10 +63,7 @@ pub struct Waker {
 
 impl Waker {
     pub(super) fn new(sender: Sender<Report>) -> Self {
-        Waker {
-            sender,
-            pending: Arc::new(AtomicBool::new(false)),
-        }
+        Waker { sender, pending: Arc::new(AtomicBool::new(false)) }
     }
 
     /// Makes the main thread receive [`Incoming::Woken`].
@@ -74,65 +79,50 @@ impl Waker {
     }
 }
 
-/// Reads keys for ever; blocks while there are none.
+/// Reads keys until the terminal is lost; blocks while there are none.
+///
+/// A terminal that does not control the program, as under some ways of becoming
+/// another user, sends no SIGHUP when it goes, so this thread looks out for that too.
 pub(super) fn read_keys(sender: &Sender<Report>) {
-    let mut failures = 0;
+    let (mut parser, mut typed) = (KeyParser::default(), Vec::new());
+    let mut buffer = [0; 4096];
     loop {
-        match event::read() {
-            Ok(event) => {
-                failures = 0;
-                if let Some(report) = understood(event)
-                    && sender.send(report).is_err()
-                {
-                    return;
-                }
-            }
-            // The size may fail to be read while the line drops; a lost line has its
-            // own watch, so only a failure that lasts is taken to be one.
-            Err(_) if failures < 20 => {
-                failures += 1;
-                thread::sleep(Duration::from_millis(50));
-            }
-            Err(_) => {
-                let _ = sender.send(Report::Told(Incoming::Ended(Ended::TerminalLost)));
-                return;
-            }
+        let patience = if parser.is_in_sequence() {
+            &SEQUENCE_PATIENCE
+        } else if parser.is_in_paste() {
+            &PASTE_PATIENCE
+        } else {
+            &LINE_CHECK
+        };
+        let input = stdin();
+        let mut waited = [PollFd::new(&input, PollFlags::IN)];
+        match poll(&mut waited, Some(patience)) {
+            Ok(0) => parser.give_up(&mut typed),
+            // Reading from a terminal that is gone gives an error or nothing.
+            Ok(_) => match rustix::io::read(input, &mut buffer) {
+                Ok(count @ 1..) => parser.feed(&buffer[..count], &mut typed),
+                Err(Errno::INTR | Errno::AGAIN) => {}
+                Ok(0) | Err(_) => break,
+            },
+            Err(Errno::INTR) => {}
+            Err(_) => break,
+        }
+        for input in typed.drain(..) {
+            let _ = sender.send(understood(input));
         }
     }
+    let _ = sender.send(Report::Told(Incoming::Ended(Ended::TerminalLost)));
+    signals::force_end_of_lost_terminal();
 }
 
-/// The report that an event gives rise to, if any.
-fn understood(event: Event) -> Option<Report> {
-    let incoming = match event {
-        Event::Key(key) if key.kind == KeyEventKind::Release => return None,
-        Event::Key(key) if is_ctrl_z(&key) => return stop_asked_by_key(),
-        Event::Key(key) => Incoming::Key(key),
-        Event::Paste(text) => Incoming::Paste(text),
-        Event::Resize(..) => Incoming::Resized,
-        Event::FocusGained | Event::FocusLost | Event::Mouse(_) => return None,
-    };
-    Some(Report::Told(incoming))
-}
-
-fn is_ctrl_z(key: &KeyEvent) -> bool {
-    *key == KeyEvent {
-        code: KeyCode::Char('z'),
-        modifiers: KeyModifiers::CONTROL,
-        kind: key.kind,
-        state: KeyEventState::NONE,
-    }
-}
-
-/// Does what the terminal does for Ctrl-Z when it is not in raw mode.
-///
-/// The whole foreground group gets the signal, so that a wrapper the program was
-/// started from stops as well and the shell comes back. Our own copy arrives at the
-/// signal thread like one from outside.
-fn stop_asked_by_key() -> Option<Report> {
-    if guard::is_foreground_group() && kill_current_process_group(Signal::TSTP).is_ok() {
-        None
-    } else {
-        Some(Report::StopAsked)
+/// The report that a key or a paste gives rise to.
+fn understood(typed: Typed) -> Report {
+    match typed {
+        Typed::Key(key) if key == KeyEvent::new(KeyCode::Char('z'), KeyModifiers::CONTROL) => {
+            Report::StopKey
+        }
+        Typed::Key(key) => Report::Told(Incoming::Key(key)),
+        Typed::Paste(text) => Report::Told(Incoming::Paste(text)),
     }
 }
 
@@ -140,17 +130,6 @@ fn stop_asked_by_key() -> Option<Report> {
 mod tests {
     use super::*;
     use std::sync::mpsc::channel;
-
-    #[test]
-    fn releases_and_pointer_events_are_not_news() {
-        let mut key = KeyEvent::new(KeyCode::Char('a'), KeyModifiers::NONE);
-        assert!(understood(Event::Key(key)).is_some());
-        key.kind = KeyEventKind::Repeat;
-        assert!(understood(Event::Key(key)).is_some());
-        key.kind = KeyEventKind::Release;
-        assert!(understood(Event::Key(key)).is_none());
-        assert!(understood(Event::FocusLost).is_none());
-    }
 
     #[test]
     fn many_wakes_are_one_message_until_it_has_been_seen() {

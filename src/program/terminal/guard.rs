@@ -127,7 +127,7 @@ fn restore_modes() {
 /// A process that was stopped from outside and is then ended by a signal must not
 /// touch the terminal: the shell has it, and changing its modes would stop the
 /// process once more instead of ending it.
-fn is_in_background() -> bool {
+pub(super) fn is_in_background() -> bool {
     tcgetpgrp(stdin()).is_ok_and(|foreground| foreground != getpgrp())
 }
 

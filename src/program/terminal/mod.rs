@@ -3,34 +3,39 @@
 //! # How it holds together
 //!
 //! * The main thread owns the [`Terminal`] and is the only one that draws.
-//! * A thread reads keys, a thread hears signals, a thread notices a lost line; all
-//!   three send into one channel, from which [`Terminal::recv`] takes.
-//! * At rest nothing runs: every thread is blocked, and no byte is sent.
+//! * A thread reads keys and notices a lost line, another hears signals; both send
+//!   into one channel, from which [`Terminal::recv`] takes.
+//! * At rest no byte is sent and the main thread sleeps; the thread that reads keys
+//!   looks every five seconds whether the line still stands.
 //! * The terminal is never asked a question, because the answer would come as keys.
 //! * A frame that changed is one write; a frame that did not change is none.
 //!
 //! # Ways to end
 //!
-//! The desk returns why it ended, its caller closes the files, and [`Ended::finish`]
-//! then ends the program as the reason demands. When the main thread is too busy to
-//! do so within about a second of a signal, the terminal is given back and the
-//! program dies by the signal all the same.
+//! The desk returns why it ended, its caller drops the [`Terminal`] and closes the
+//! files, and [`Ended::finish`] then ends the program as the reason demands. When the
+//! main thread is too busy to drop the terminal within about a second of a signal, the
+//! terminal is given back and the program dies by the signal all the same; once it
+//! has dropped the terminal, it has ten seconds for the files.
 
 mod backend;
 mod colour;
 mod events;
 mod glyphs;
 mod guard;
+mod keys;
 mod pace;
 mod signals;
 mod usable;
 
 use std::io::{self, IsTerminal};
 use std::sync::mpsc::{Receiver, Sender, channel};
+use std::thread;
 use std::time::{Duration, Instant};
 
 use ratatui::Frame;
 use ratatui::layout::{Rect, Size};
+use rustix::process::{Signal, kill_current_process_group};
 use signal_hook::consts::SIGSTOP;
 use signal_hook::low_level;
 
@@ -38,7 +43,7 @@ pub use colour::{ColourChoice, Depth};
 pub use events::{Incoming, Waker};
 pub use glyphs::{ASCII, GlyphChoice, Glyphs, UNICODE};
 pub use pace::FramePace;
-pub use ratatui::crossterm::event::{KeyCode, KeyEvent, KeyEventKind, KeyModifiers};
+pub use ratatui::crossterm::event::{KeyCode, KeyEvent, KeyModifiers};
 pub use signals::{Ended, die_by};
 pub use usable::{Unusable, is_usable};
 
@@ -83,9 +88,8 @@ impl Terminal {
     }
 
     fn set_up(options: Options) -> io::Result<Terminal> {
-        let variable = |name: &str| {
-            std::env::var_os(name).map(|value| value.to_string_lossy().into_owned())
-        };
+        let variable =
+            |name: &str| std::env::var_os(name).map(|value| value.to_string_lossy().into_owned());
         let depth = colour::depth(options.colour, io::stdout().is_terminal(), &variable);
         let glyphs = Glyphs::choose(options.glyphs, &variable);
         let backend = ScreenBackend::new(Screen, guard::size, depth, glyphs.ascii_only);
@@ -98,13 +102,7 @@ impl Terminal {
         guard::enter()?;
         let keys = sender.clone();
         signals::spawn("keys", move || events::read_keys(&keys))?;
-        Ok(Terminal {
-            drawing,
-            reports,
-            waker: Waker::new(sender),
-            glyphs,
-            depth,
-        })
+        Ok(Terminal { drawing, reports, waker: Waker::new(sender), glyphs, depth })
     }
 
     /// Draws a frame and sends what differs from the one before, in one write.
@@ -153,14 +151,28 @@ impl Terminal {
                 }
                 Some(incoming)
             }
-            Report::StopAsked => {
+            // What the terminal does for Ctrl-Z when it is not in raw mode: the whole
+            // foreground group gets the signal, so that a wrapper the program was
+            // started from stops too and the shell comes back. The terminal is given
+            // back before, while it is still ours. Our own copy of the signal then
+            // stops us.
+            Report::StopKey => {
                 guard::leave();
-                // SIGSTOP, because SIGTSTP would be dropped in an orphaned group.
-                let _ = low_level::raise(SIGSTOP);
+                if !guard::is_foreground_group()
+                    || kill_current_process_group(Signal::TSTP).is_err()
+                {
+                    stop();
+                }
                 None
             }
-            // This follows every stop, the one above and one from outside, which
+            Report::StopSignal => {
+                guard::leave();
+                stop();
+                None
+            }
+            // This follows every stop, the ones above and one from outside, which
             // leaves no time to give the terminal back.
+            Report::Continued if !may_enter() => None,
             Report::Continued => match guard::enter().and_then(|()| self.repaint()) {
                 Ok(()) => Some(Incoming::Resumed),
                 Err(_) => Some(Incoming::Ended(Ended::TerminalLost)),
@@ -199,6 +211,32 @@ impl Terminal {
     pub fn frames(&self) -> u64 {
         self.drawing.backend().frames()
     }
+}
+
+/// Whether the terminal may be taken over after the program has been continued.
+///
+/// In the background it may not. A shell continues a program there because of `bg`,
+/// or to let it die of a signal that it has already sent. The first cannot be
+/// granted, and the group stops again as if it had used the terminal; the second has
+/// to be heard first.
+fn may_enter() -> bool {
+    if guard::is_in_background() {
+        thread::sleep(Duration::from_millis(50));
+    }
+    if signals::is_ending() {
+        return false;
+    }
+    let in_background = guard::is_in_background();
+    if in_background {
+        let _ = kill_current_process_group(Signal::TTOU);
+    }
+    !in_background
+}
+
+/// Stops the program until it is continued.
+fn stop() {
+    // SIGTSTP would be dropped in a group that no shell looks after.
+    let _ = low_level::raise(SIGSTOP);
 }
 
 impl Drop for Terminal {

@@ -12,17 +12,13 @@ pub struct FramePace {
 impl FramePace {
     /// At most this many frames a second, at least one.
     pub fn per_second(frames: u32) -> Self {
-        FramePace {
-            apart: Duration::from_secs(1) / frames.max(1),
-            last: None,
-        }
+        FramePace { apart: Duration::from_secs(1) / frames.max(1), last: None }
     }
 
     /// How long the next frame must still wait; zero when it may be drawn.
     pub fn wait(&self, now: Instant) -> Duration {
         self.last.map_or(Duration::ZERO, |last| {
-            self.apart
-                .saturating_sub(now.saturating_duration_since(last))
+            self.apart.saturating_sub(now.saturating_duration_since(last))
         })
     }
 

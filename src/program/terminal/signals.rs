@@ -1,4 +1,4 @@
-//! The threads that hear of signals and of a lost line, and the ways to end.
+//! The thread that hears signals, and the ways to end.
 //!
 //! Signals have a thread of their own. A flag that the main loop looks at would not
 //! do: reading keys from a line that has dropped may never return.
@@ -10,9 +10,7 @@ use std::sync::mpsc::Sender;
 use std::thread;
 use std::time::{Duration, Instant};
 
-use rustix::event::{PollFd, PollFlags, Timespec, poll};
-use rustix::stdio::stdin;
-use signal_hook::consts::{SIGCONT, SIGHUP, SIGINT, SIGQUIT, SIGTERM, SIGTSTP};
+use signal_hook::consts::{SIGCONT, SIGHUP, SIGINT, SIGQUIT, SIGTERM, SIGTSTP, SIGWINCH};
 use signal_hook::iterator::Signals;
 use signal_hook::low_level;
 
@@ -27,16 +25,13 @@ const TO_CLOSE: Duration = Duration::from_secs(10);
 /// A second signal ends the program at once, unless it comes sooner than this: one
 /// wish to end often reaches a program twice, by its group and by itself.
 const INSISTENCE: Duration = Duration::from_millis(250);
-/// How often a line is looked at that does not report its own loss.
-const LINE_CHECK: Timespec = Timespec {
-    tv_sec: 5,
-    tv_nsec: 0,
-};
 
 /// Whether the desk is open, stopped or not.
 static OPEN: AtomicBool = AtomicBool::new(false);
 /// Whether the desk has been open and has ended.
 static CLOSING: AtomicBool = AtomicBool::new(false);
+/// Whether a signal to end has been heard.
+static ENDING: AtomicBool = AtomicBool::new(false);
 
 /// Why the desk ended.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -78,6 +73,10 @@ pub(super) fn is_open() -> bool {
     OPEN.load(Ordering::SeqCst)
 }
 
+pub(super) fn is_ending() -> bool {
+    ENDING.load(Ordering::SeqCst)
+}
+
 /// Notes that the desk is open; false when it is or was open already.
 pub(super) fn note_open() -> bool {
     !CLOSING.load(Ordering::SeqCst) && !OPEN.swap(true, Ordering::SeqCst)
@@ -89,20 +88,15 @@ pub(super) fn note_closing() {
     OPEN.store(false, Ordering::SeqCst);
 }
 
-/// Starts the threads that hear of signals and of a lost line.
+/// Starts the thread that hears signals.
 pub(super) fn start(sender: &Sender<Report>) -> io::Result<()> {
-    let signals = Signals::new([SIGTERM, SIGHUP, SIGINT, SIGQUIT, SIGTSTP, SIGCONT])?;
+    let signals = Signals::new([SIGTERM, SIGHUP, SIGINT, SIGQUIT, SIGTSTP, SIGCONT, SIGWINCH])?;
     let heard = sender.clone();
-    spawn("signals", move || hear_signals(signals, &heard))?;
-    let lost = sender.clone();
-    spawn("line", move || watch_line(&lost))
+    spawn("signals", move || hear_signals(signals, &heard))
 }
 
 pub(super) fn spawn(name: &str, body: impl FnOnce() + Send + 'static) -> io::Result<()> {
-    thread::Builder::new()
-        .name(name.to_owned())
-        .spawn(body)
-        .map(|_| ())
+    thread::Builder::new().name(name.to_owned()).spawn(body).map(|_| ())
 }
 
 /// Passes signals on to the main thread, and ends the program when it does not act.
@@ -110,10 +104,12 @@ fn hear_signals(mut signals: Signals, sender: &Sender<Report>) {
     let mut first_wish: Option<Instant> = None;
     for signal in signals.forever() {
         match (signal, first_wish) {
-            (SIGTSTP, _) => drop(sender.send(Report::StopAsked)),
+            (SIGTSTP, _) => drop(sender.send(Report::StopSignal)),
             (SIGCONT, _) => drop(sender.send(Report::Continued)),
+            (SIGWINCH, _) => drop(sender.send(Report::Told(Incoming::Resized))),
             (_, None) => {
                 first_wish = Some(Instant::now());
+                ENDING.store(true, Ordering::SeqCst);
                 let ended = Report::Told(Incoming::Ended(Ended::Signal(signal)));
                 // When the desk has ended nobody hears this, but closing the files
                 // still gets its time.
@@ -130,20 +126,8 @@ fn hear_signals(mut signals: Signals, sender: &Sender<Report>) {
     }
 }
 
-/// Waits until the other end of the terminal is gone, then says so.
-///
-/// No SIGHUP comes when the terminal is not the controlling one, as under some ways
-/// of becoming another user. Asking for no event at all, `poll` still reports the
-/// loss, and nothing wakes up while somebody types.
-fn watch_line(sender: &Sender<Report>) {
-    loop {
-        let input = stdin();
-        let mut watched = [PollFd::new(&input, PollFlags::empty())];
-        if poll(&mut watched, Some(&LINE_CHECK)).is_ok_and(|ready| ready > 0) {
-            break;
-        }
-    }
-    let _ = sender.send(Report::Told(Incoming::Ended(Ended::TerminalLost)));
+/// Ends the program when the main thread does not act on the loss of the terminal.
+pub(super) fn force_end_of_lost_terminal() {
     force_after_grace(|| die_by_force(SIGHUP));
 }
 

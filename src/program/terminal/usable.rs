@@ -16,22 +16,17 @@ impl Unusable {
     }
 
     /// What the desk needs.
-    pub const RULE: &str =
-        "standard input and standard output are a terminal, and TERM names one that can place its cursor";
+    pub const RULE: &str = "standard input and standard output are a terminal, and TERM names one that can place its cursor";
 
     /// What to do instead.
     pub const REMEDY: &str = "use `clockspar rates` for the same numbers as text";
 
     pub(super) fn because_of(error: &io::Error) -> Self {
-        Unusable {
-            what: format!("the terminal could not be set up: {error}"),
-        }
+        Unusable { what: format!("the terminal could not be set up: {error}") }
     }
 
     pub(super) fn opened_before() -> Self {
-        Unusable {
-            what: "the desk has been opened before in this program".to_owned(),
-        }
+        Unusable { what: "the desk has been opened before in this program".to_owned() }
     }
 }
 
@@ -50,9 +45,7 @@ pub fn is_usable() -> Result<(), Unusable> {
     judge(
         io::stdin().is_terminal(),
         io::stdout().is_terminal(),
-        std::env::var_os("TERM")
-            .map(|term| term.to_string_lossy().into_owned())
-            .as_deref(),
+        std::env::var_os("TERM").map(|term| term.to_string_lossy().into_owned()).as_deref(),
     )
 }
 
@@ -66,9 +59,7 @@ fn judge(input: bool, output: bool, term: Option<&str>) -> Result<(), Unusable> 
         }
         (true, true, Some(_)) => return Ok(()),
     };
-    Err(Unusable {
-        what: what.to_owned(),
-    })
+    Err(Unusable { what: what.to_owned() })
 }
 
 #[cfg(test)]

@@ -1,0 +1,158 @@
+//! The rows of a line: nodes fore to aft, found by name.
+
+use std::collections::HashMap;
+
+use super::nodes::{Gathered, Place};
+use super::{Named, named};
+use crate::layout::Node;
+use crate::layout::fault::{Collector, Spot};
+use crate::layout::nearest::nearest;
+use crate::layout::quantity::short;
+use crate::layout::written::Written;
+
+/// Lines up to this many nodes are searched for the name that was meant.
+const SEARCHED_FOR_NAMES: usize = 20_000;
+
+/// The nodes of a line, fore to aft, with an index of their names.
+pub(super) struct Rows {
+    pub(super) nodes: Vec<Node>,
+    pub(super) reference: usize,
+    by_name: HashMap<String, u32>,
+    /// Whether a name that is not found may be one of a faulty node; it is then not
+    /// reported.
+    hides_nodes: bool,
+}
+
+impl Rows {
+    /// Puts the nodes in order; `None` when there is no line without a reference.
+    pub(super) fn arrange(
+        gathered: Gathered,
+        written: &Written,
+        faults: &mut Collector,
+    ) -> Option<Rows> {
+        let Gathered { mut nodes, places, default_reference, hides_nodes } = gathered;
+        let mut by_name = HashMap::with_capacity(nodes.len());
+        for (index, node) in nodes.iter().enumerate() {
+            let index = u32::try_from(index).ok()?;
+            if let Some(first) = by_name.insert(node.name.clone(), index) {
+                by_name.insert(node.name.clone(), first);
+                let rule = format!("names are unique; `{}` names two nodes", node.name);
+                let remedy = places[index as usize].remedy_for_same_name(&places[first as usize]);
+                faults.fault(places[index as usize].spot, rule, remedy);
+            }
+        }
+        let mut rows = Rows { nodes: Vec::new(), reference: 0, by_name, hides_nodes };
+        let reference = match named(&written.reference) {
+            Some(name) => rows.find(name, &nodes, faults),
+            None if written.reference.is_absent() => default_reference,
+            None => None,
+        };
+        // Only a known reference tells which node may go without a position.
+        if let Some(reference) = reference {
+            for (index, (node, place)) in nodes.iter().zip(&places).enumerate() {
+                judge_position(node, place, index == reference, faults);
+            }
+        }
+        let reference = reference?;
+        let order = order(&nodes);
+        if let Some(order) = order {
+            let mut row_of = vec![0_u32; nodes.len()];
+            for (row, index) in order.iter().enumerate() {
+                row_of[*index as usize] = u32::try_from(row).ok()?;
+            }
+            let mut taken: Vec<Option<Node>> = nodes.into_iter().map(Some).collect();
+            nodes = order.iter().filter_map(|index| taken[*index as usize].take()).collect();
+            for index in rows.by_name.values_mut() {
+                *index = row_of[*index as usize];
+            }
+            rows.reference = row_of[reference] as usize;
+        } else {
+            rows.reference = reference;
+        }
+        rows.nodes = nodes;
+        Some(rows)
+    }
+
+    /// The row of a name; a name that is not there is a fault.
+    pub(super) fn row(&self, name: Named<'_>, faults: &mut Collector) -> Option<usize> {
+        self.find(name, &self.nodes, faults)
+    }
+
+    fn find(
+        &self,
+        (name, spot): Named<'_>,
+        nodes: &[Node],
+        faults: &mut Collector,
+    ) -> Option<usize> {
+        if let Some(row) = self.by_name.get(name) {
+            return Some(*row as usize);
+        }
+        if !self.hides_nodes {
+            let searched = if nodes.len() <= SEARCHED_FOR_NAMES { nodes } else { &[] };
+            let names = searched.iter().map(|node| node.name.as_str());
+            not_found("node", name, spot, names, faults);
+        }
+        None
+    }
+
+    /// The rows of a pair.
+    pub(super) fn pair(
+        &self,
+        pair: &[(String, Spot); 2],
+        faults: &mut Collector,
+    ) -> Option<[usize; 2]> {
+        let [first, second] = pair;
+        let first = self.row((&first.0, first.1), faults);
+        let second = self.row((&second.0, second.1), faults);
+        Some([first?, second?])
+    }
+}
+
+/// Every node but the reference states its position; the reference stands at 0.
+fn judge_position(node: &Node, place: &Place, is_reference: bool, faults: &mut Collector) {
+    if !is_reference {
+        if place.has_no_position {
+            let rule = format!("`{}` states its position", node.name);
+            faults.fault(place.spot, rule, place.remedy_for_no_position());
+        }
+        return;
+    }
+    if let Some(spot) = place.position
+        && node.position_m != 0.0
+    {
+        let rule = format!(
+            "the reference stands at position 0; `{}` is given {} m",
+            node.name, node.position_m
+        );
+        let remedy = format!("count all positions from `{}`, or name another reference", node.name);
+        faults.fault(spot, rule, remedy);
+    }
+}
+
+/// The rows fore to aft as indices, ties in the order given; `None` when they stand in
+/// that order already.
+fn order(nodes: &[Node]) -> Option<Vec<u32>> {
+    if nodes.windows(2).all(|pair| pair[0].position_m >= pair[1].position_m) {
+        return None;
+    }
+    let mut order: Vec<u32> = (0..).take(nodes.len()).collect();
+    order.sort_by(|a, b| nodes[*b as usize].position_m.total_cmp(&nodes[*a as usize].position_m));
+    Some(order)
+}
+
+/// Notes that a name is not there, with the one that was meant.
+pub(super) fn not_found<'n>(
+    what: &str,
+    name: &str,
+    spot: Spot,
+    all: impl Iterator<Item = &'n str>,
+    faults: &mut Collector,
+) {
+    let all: Vec<&str> = all.collect();
+    let remedy = match nearest(name, all.iter().copied()) {
+        Some(meant) => format!("write `{meant}`"),
+        None if all.is_empty() || all.len() > 8 => format!("write the name of a {what}"),
+        None => format!("write one of {}", all.join(", ")),
+    };
+    faults.fault(spot, format!("no {what} is called `{}`", short(name)), remedy);
+}

@@ -1,0 +1,258 @@
+//! Positions from a table.
+
+use std::collections::HashMap;
+
+use super::csv::{Row, Rows};
+use super::{FARTHEST_POSITION_M, MOST_NODES};
+use crate::layout::fault::{Collector, Spot};
+use crate::layout::names;
+use crate::layout::nearest::nearest;
+use crate::layout::quantity::{self, Dimension, short};
+use crate::layout::written::{Field, NodeKey, NodeValues, WrittenNode, set_from_text, set_number};
+
+/// A column of a survey.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+enum Column {
+    Name,
+    /// In metres, a bare number.
+    PositionM,
+    /// In metres, a bare number.
+    UPositionM,
+    /// As in a layout, with a unit.
+    Position,
+    Key(NodeKey),
+}
+
+/// Reads a survey: it adds to the nodes already listed, and returns the new ones.
+///
+/// A row states what it has a value for; an empty field states nothing. What a node
+/// states in the layout, the survey does not state again.
+pub(super) fn read(
+    file: u32,
+    text: &str,
+    listed: &mut [WrittenNode],
+    faults: &mut Collector,
+) -> Vec<WrittenNode> {
+    let mut rows = Rows::new(file, text);
+    let Some(columns) = rows.next(faults).map(|header| read_header(header, faults)) else {
+        faults.fault(
+            Spot::new(file, 0..0),
+            "a survey begins with a header line",
+            "begin with `name,position_m,u_position_m`",
+        );
+        return Vec::new();
+    };
+    let Some(columns) = columns else {
+        return Vec::new();
+    };
+    let by_name: HashMap<String, usize> = listed
+        .iter()
+        .enumerate()
+        .filter_map(|(index, node)| Some((node.name.value()?.clone(), index)))
+        .collect();
+    let mut surveyed = vec![false; listed.len()];
+    let mut new = Vec::new();
+    while let Some(row) = rows.next(faults) {
+        if !row.is_as_wide_as(columns.len(), faults) {
+            continue;
+        }
+        let Some(node) = read_row(row, &columns, faults) else {
+            continue;
+        };
+        let known = node.name.value().and_then(|name| by_name.get(name)).copied();
+        match known {
+            None if new.len() == MOST_NODES => {
+                faults.fault(
+                    row.whole(),
+                    format!("a line has at most {MOST_NODES} nodes"),
+                    "divide the line",
+                );
+                break;
+            }
+            None => new.push(node),
+            Some(index) if surveyed[index] => faults.fault(
+                row.whole(),
+                format!("a survey has one row a node; `{}` has two", row_name(&node)),
+                "take one of the two away",
+            ),
+            Some(index) => {
+                surveyed[index] = true;
+                join(&mut listed[index], node, row, &columns, faults);
+            }
+        }
+    }
+    new
+}
+
+fn row_name(node: &WrittenNode) -> &str {
+    node.name.value().map_or("", String::as_str)
+}
+
+fn read_header(header: Row<'_, '_>, faults: &mut Collector) -> Option<Vec<Column>> {
+    let mut columns = Vec::with_capacity(header.len());
+    let before = faults.total();
+    for index in 0..header.len() {
+        let word = header.field(index);
+        let key = NodeKey::ALL.iter().find(|(name, _)| *name == word).map(|(_, key)| *key);
+        let column = match &*word {
+            "name" => Some(Column::Name),
+            "position_m" => Some(Column::PositionM),
+            "u_position_m" => Some(Column::UPositionM),
+            "position" => Some(Column::Position),
+            _ => key.map(Column::Key),
+        };
+        let Some(column) = column else {
+            let known = ["name", "position_m", "u_position_m", "position"];
+            let words = known.into_iter().chain(NodeKey::ALL.iter().map(|(name, _)| *name));
+            let remedy = match nearest(&word, words) {
+                Some(meant) => format!("write `{meant}`"),
+                None => "the columns are name, position_m, u_position_m and the keys of [[node]]"
+                    .to_owned(),
+            };
+            let rule = format!("`{}` is not a column of a survey", short(&word));
+            faults.fault(header.spot(index), rule, remedy);
+            continue;
+        };
+        if columns.iter().any(|other| same_quantity(*other, column)) {
+            let rule = format!("a survey states each quantity once; `{word}` is stated before");
+            faults.fault(header.spot(index), rule, "take one of the two columns away");
+        }
+        columns.push(column);
+    }
+    if !columns.contains(&Column::Name) && faults.total() == before {
+        faults.fault(header.whole(), "a survey has a column `name`", "add it to the header");
+    }
+    (faults.total() == before).then_some(columns)
+}
+
+/// Whether two columns state one quantity.
+fn same_quantity(a: Column, b: Column) -> bool {
+    let plain = |column| match column {
+        Column::PositionM => Column::Position,
+        Column::UPositionM => Column::Key(NodeKey::UPosition),
+        other => other,
+    };
+    plain(a) == plain(b)
+}
+
+fn read_row(row: Row<'_, '_>, columns: &[Column], faults: &mut Collector) -> Option<WrittenNode> {
+    let mut node = WrittenNode {
+        spot: row.whole(),
+        name: Field::Absent,
+        position_m: Field::Absent,
+        values: NodeValues::default(),
+    };
+    for (index, column) in columns.iter().enumerate() {
+        let text = row.field(index);
+        let spot = row.spot(index);
+        match column {
+            Column::Name => {
+                if let Err((rule, remedy)) = names::check_name(&text) {
+                    faults.fault(spot, rule, remedy);
+                    return None;
+                }
+                node.name = Field::Stated(text.into_owned(), spot);
+            }
+            _ if text.is_empty() => {}
+            Column::PositionM => node.position_m = metres(&text, spot, "position_m", faults),
+            Column::UPositionM => {
+                if let Field::Stated(value, _) = metres(&text, spot, "u_position_m", faults)
+                    && let Err((rule, remedy)) =
+                        set_number(&mut node.values, NodeKey::UPosition, value)
+                {
+                    faults.fault(spot, rule, remedy);
+                }
+            }
+            Column::Position => match quantity::parse(&text, Dimension::Length) {
+                Ok(value) => node.position_m = near_enough(value, spot, faults),
+                Err(fault) => {
+                    node.position_m = Field::Faulty;
+                    faults.fault(spot, fault.rule, fault.remedy);
+                }
+            },
+            Column::Key(key) => set(&mut node.values, *key, &text, spot, faults),
+        }
+    }
+    let lonely = [
+        (NodeKey::UPosition, [NodeKey::DofPosition, NodeKey::ShapePosition]),
+        (NodeKey::UBias, [NodeKey::DofBias, NodeKey::ShapeBias]),
+    ];
+    for (key, beside) in lonely {
+        if !node.values.states(key) && beside.iter().any(|key| node.values.states(*key)) {
+            faults.fault(
+                row.whole(),
+                "degrees of freedom and a shape stand beside an uncertainty",
+                "give the uncertainty, or leave both out",
+            );
+        }
+    }
+    Some(node)
+}
+
+fn set(values: &mut NodeValues, key: NodeKey, text: &str, spot: Spot, faults: &mut Collector) {
+    if let Err(fault) = set_from_text(values, key, text, spot) {
+        faults.fault(spot, fault.rule, fault.remedy);
+    }
+}
+
+/// A bare number of metres.
+fn metres(text: &str, spot: Spot, column: &str, faults: &mut Collector) -> Field<f64> {
+    match quantity::plain(text) {
+        Some(value) => near_enough(value, spot, faults),
+        None => {
+            let rule = format!("the column `{column}` holds bare numbers, in metres");
+            let remedy = match quantity::parse(text, Dimension::Length) {
+                Ok(value) => format!("write `{value}`"),
+                Err(_) => "write for example `-5000.25`".to_owned(),
+            };
+            faults.fault(spot, rule, remedy);
+            Field::Faulty
+        }
+    }
+}
+
+fn near_enough(value: f64, spot: Spot, faults: &mut Collector) -> Field<f64> {
+    if value.abs() <= FARTHEST_POSITION_M {
+        return Field::Stated(value, spot);
+    }
+    let rule = "a position is at most 1e19 m, about 1057 ly, either sign";
+    faults.fault(spot, rule, "write a nearer position");
+    Field::Faulty
+}
+
+/// Adds a row of the survey to a node the layout lists.
+fn join(
+    node: &mut WrittenNode,
+    row: WrittenNode,
+    place: Row<'_, '_>,
+    columns: &[Column],
+    faults: &mut Collector,
+) {
+    let name = row_name(&row).to_owned();
+    for (index, column) in columns.iter().enumerate() {
+        let (twice, word) = match column {
+            Column::Name => continue,
+            Column::PositionM | Column::Position => {
+                (!row.position_m.is_absent() && !node.position_m.is_absent(), "position")
+            }
+            Column::UPositionM => (both(node, &row, NodeKey::UPosition), "u_position"),
+            Column::Key(key) => {
+                let word = NodeKey::ALL.iter().find(|(_, other)| other == key);
+                (both(node, &row, *key), word.map_or("", |(word, _)| word))
+            }
+        };
+        if twice {
+            let rule =
+                format!("each value is stated once; `{name}` has its `{word}` in the layout");
+            faults.fault(place.spot(index), rule, "leave this field empty, or take the key away");
+        }
+    }
+    if !row.position_m.is_absent() {
+        node.position_m = row.position_m;
+    }
+    node.values.add(row.values);
+}
+
+fn both(node: &WrittenNode, row: &WrittenNode, key: NodeKey) -> bool {
+    node.values.states(key) && row.values.states(key)
+}
