@@ -3,8 +3,10 @@
 #![allow(clippy::disallowed_methods)]
 
 mod identities;
+mod layout_random;
 mod layout_read;
 mod layout_refused;
+mod layout_units;
 mod pinned;
 mod published;
 mod recording;
