@@ -231,8 +231,10 @@ fn summary(desk: &Desk) -> String {
     for made in &desk.made {
         let state = if made.is_whole { "closed" } else { "cut: it has no closing line" };
         lines.push(format!(
-            "recorded {}: {} frames, {} events, {state}",
-            made.path, made.frames, made.events
+            "recorded {}: {}, {}, {state}",
+            made.path,
+            words::count(made.frames, "frame"),
+            words::count(made.events, "event")
         ));
     }
     lines.join("\n")

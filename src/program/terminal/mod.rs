@@ -41,7 +41,9 @@ use signal_hook::low_level;
 
 pub use colour::{ColourChoice, Depth};
 pub use events::{Incoming, Waker};
-pub use glyphs::{ASCII, GlyphChoice, Glyphs, UNICODE};
+#[cfg(test)]
+pub use glyphs::{ASCII, UNICODE};
+pub use glyphs::{GlyphChoice, Glyphs};
 pub use pace::FramePace;
 pub use ratatui::crossterm::event::{KeyCode, KeyEvent, KeyModifiers};
 pub use signals::{Ended, die_by};
