@@ -72,7 +72,7 @@ fn values_worked_by_hand() {
         ("8.64 /d", Dimension::PerTime, 1e-4),
         ("31.5576 /a", Dimension::PerTime, 1e-6),
         ("429.228 THz", Dimension::Frequency, 429_228e9),
-        ("\u{b5}".repeat(1).as_str(), Dimension::Length, f64::NAN),
+        ("\u{b5}", Dimension::Length, f64::NAN),
         ("5 \u{b5}m", Dimension::Length, 5e-6),
         ("5\u{3bc}s", Dimension::Time, 5e-6),
         ("  7 \u{a0}mm ", Dimension::Length, 7e-3),

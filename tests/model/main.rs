@@ -3,6 +3,8 @@
 #![allow(clippy::disallowed_methods)]
 // Published digits are kept as they are printed.
 #![allow(clippy::excessive_precision)]
+// Distributions of errors are shown with `--nocapture`.
+#![allow(clippy::print_stdout)]
 
 mod identities;
 mod layout_random;
