@@ -1,1 +1,23 @@
-fn main() {}
+//! The program `clockspar`: exit status, and the one place that prints errors.
+#![warn(missing_docs)]
+
+mod program;
+
+use std::process::ExitCode;
+
+use clap::Parser;
+
+use program::arguments::Arguments;
+
+fn main() -> ExitCode {
+    let arguments = Arguments::parse();
+    match program::commands::run(arguments) {
+        Ok(status) => ExitCode::from(status),
+        Err(problem) => {
+            if !problem.text.is_empty() {
+                program::message(&problem.text);
+            }
+            ExitCode::from(problem.status)
+        }
+    }
+}

@@ -4,7 +4,7 @@
 use std::fmt;
 
 use super::array_time::ArrayTime;
-use super::constants::SPEED_OF_LIGHT_M_S;
+use super::constants::{INVERSE_C_S_M, SPEED_OF_LIGHT_M_S};
 use super::dd::{Dd, RunningSum, Wide};
 use super::motion::{self, Launch};
 
@@ -64,6 +64,13 @@ impl Phase {
         }
         let gone = at.attoseconds() - origin.attoseconds();
         let left = length.attoseconds() - gone;
+        // The ends themselves are exact: the sign of a rate is decided there.
+        if gone == 0 {
+            return Dd::new(from_m_s2);
+        }
+        if left == 0 {
+            return Dd::new(to_m_s2);
+        }
         weighted(from_m_s2, left, to_m_s2, gone).to_dd() / Dd::from_i128(length.attoseconds())
     }
 
@@ -224,10 +231,30 @@ pub struct Moment {
     /// Proper acceleration `α` of the reference node, m/s², + towards the fore end.
     /// At a boundary the later phase counts.
     pub acceleration_m_s2: Dd,
+    /// Velocity gain `∫ α dτ = c φ` since array time zero, m/s.
+    pub velocity_gain_m_s: Dd,
     /// Rapidity `φ = ∫ α dτ / c` gained since array time zero.
     pub rapidity: Dd,
     /// `Φ = ∫ |α| dτ / c`.
     pub total_rapidity: f64,
+}
+
+impl Moment {
+    /// The moment of an acceleration that has always been held and always will be: gravity
+    /// under a standing line. The steps are those of a hold, so the bits agree with one.
+    #[must_use]
+    pub fn held_always(at: ArrayTime, acceleration_m_s2: f64) -> Moment {
+        let elapsed = Dd::from_i128(at.attoseconds());
+        let gain = Wide::from(elapsed).times(Dd::new(acceleration_m_s2)).over(Dd::new(1.0e18));
+        Moment {
+            at,
+            phase: None,
+            acceleration_m_s2: Dd::new(acceleration_m_s2),
+            velocity_gain_m_s: gain.to_dd(),
+            rapidity: rapidity_of(gain),
+            total_rapidity: rapidity_of(gain).abs().to_f64(),
+        }
+    }
 }
 
 impl Plan {
@@ -300,8 +327,14 @@ impl Plan {
                 (Dd::ZERO, reached.velocity_gain, reached.velocity_spent)
             }
         };
-        let total_rapidity = (spent / SPEED_OF_LIGHT_M_S).to_f64();
-        Moment { at, phase, acceleration_m_s2, rapidity: rapidity_of(gain), total_rapidity }
+        Moment {
+            at,
+            phase,
+            acceleration_m_s2,
+            velocity_gain_m_s: gain.to_dd(),
+            rapidity: rapidity_of(gain),
+            total_rapidity: (spent / SPEED_OF_LIGHT_M_S).to_f64(),
+        }
     }
 
     /// The reference node's event in the launch frame at a moment: launch time and
@@ -367,7 +400,7 @@ impl Plan {
 
 /// `φ` of a velocity gain.
 fn rapidity_of(velocity_gain: Wide) -> Dd {
-    velocity_gain.to_dd() / SPEED_OF_LIGHT_M_S
+    velocity_gain.to_dd() * INVERSE_C_S_M
 }
 
 fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), PlanFault> {
@@ -381,8 +414,7 @@ fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), P
         return Err(PlanFault::TooLong { phase: index });
     }
     for acceleration_m_s2 in [phase.line.from_m_s2, phase.line.to_m_s2] {
-        // A comparison that a NaN fails.
-        if !(acceleration_m_s2.abs() <= LARGEST_ACCELERATION_M_S2) {
+        if acceleration_m_s2.is_nan() || acceleration_m_s2.abs() > LARGEST_ACCELERATION_M_S2 {
             return Err(PlanFault::TooStrong { phase: index, acceleration_m_s2 });
         }
     }
@@ -391,10 +423,8 @@ fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), P
 
 /// The rapidity is extreme at the ends of a phase and where a ramp passes through zero.
 fn check_rapidity(index: usize, phase: &Phase, start: Dd, end: Dd) -> Result<(), PlanFault> {
-    let turning = (!phase.is_hold())
-        .then(|| phase.moment_of(Dd::ZERO))
-        .flatten()
-        .map_or(start, |after| {
+    let turning =
+        (!phase.is_hold()).then(|| phase.moment_of(Dd::ZERO)).flatten().map_or(start, |after| {
             let first = phase.acceleration(phase.start);
             start + first * after / (2.0 * SPEED_OF_LIGHT_M_S)
         });

@@ -1,0 +1,213 @@
+//! The command line.
+
+use std::path::PathBuf;
+
+use clap::{Args, Parser, Subcommand, ValueEnum};
+
+/// Predicts, steps, records and replays the clocks of a line that keeps its length
+/// while it accelerates.
+///
+/// Without a command: opens the desk on a built-in layout, or prints that layout's
+/// rates when standard output is no terminal.
+#[derive(Debug, Parser)]
+#[command(name = "clockspar", version, disable_help_subcommand = true)]
+pub struct Arguments {
+    /// What to do.
+    #[command(subcommand)]
+    pub command: Option<Command>,
+    /// How the desk looks.
+    #[command(flatten)]
+    pub look: Look,
+}
+
+/// The commands.
+#[derive(Debug, Subcommand)]
+pub enum Command {
+    /// The interactive front end: step array time, tables, what-if, record
+    Desk(DeskArguments),
+    /// Every rule the layout must meet, with margins
+    Check(TableArguments),
+    /// Per node: position, horizon, felt acceleration, rate, redshift, clock offset, event
+    Rates(TableArguments),
+    /// Clock offsets against the reference, or of every ordered pair
+    Offsets(OffsetsArguments),
+    /// Two layouts or recordings: rows of differences
+    Compare(CompareArguments),
+    /// A run to a recording, without a terminal
+    Record(RecordArguments),
+    /// A recording in the desk, or as a table when there is no terminal
+    Replay(ReplayArguments),
+    /// Recomputes a recording and says whether every number still holds
+    Verify(VerifyArguments),
+}
+
+/// Arguments of the desk.
+#[derive(Debug, Args)]
+pub struct DeskArguments {
+    /// Layout file, or `-` for standard input
+    pub layout: PathBuf,
+    /// How it looks.
+    #[command(flatten)]
+    pub look: Look,
+}
+
+/// How the desk looks.
+#[derive(Clone, Debug, Default, Args)]
+pub struct Look {
+    /// Colour: by the environment, always, or never
+    #[arg(long, value_enum, value_name = "WHEN", alias = "color")]
+    pub colour: Option<When>,
+    /// Draw with ASCII characters only
+    #[arg(long, conflicts_with = "unicode")]
+    pub ascii: bool,
+    /// Draw with Unicode characters whatever the locale says
+    #[arg(long)]
+    pub unicode: bool,
+}
+
+/// When to use colour.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum When {
+    /// As `NO_COLOR`, `CLICOLOR_FORCE` and the terminal say.
+    Auto,
+    /// Always.
+    Always,
+    /// Never.
+    Never,
+}
+
+/// Forms of a table.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, ValueEnum)]
+pub enum Form {
+    /// For people.
+    Text,
+    /// RFC 4180.
+    Csv,
+    /// One object.
+    Json,
+}
+
+/// Which moments of array time to show.
+#[derive(Clone, Debug, Default, Args)]
+pub struct MomentArguments {
+    /// Moment: a duration, `end`, or a date when the layout has an epoch
+    /// [default: the middle of the first hold]
+    #[arg(long, value_name = "MOMENT", allow_hyphen_values = true, conflicts_with_all = ["from", "until", "every"])]
+    pub at: Option<String>,
+    /// First moment of a table over time [default: 0]
+    #[arg(long, value_name = "MOMENT", allow_hyphen_values = true, requires = "every")]
+    pub from: Option<String>,
+    /// Last moment of a table over time [default: end]
+    #[arg(long, value_name = "MOMENT", allow_hyphen_values = true, requires = "every")]
+    pub until: Option<String>,
+    /// Step of a table over time
+    #[arg(long, value_name = "TIME", allow_hyphen_values = true)]
+    pub every: Option<String>,
+    /// Print the table over time at wall-clock pace
+    #[arg(long, requires = "every")]
+    pub paced: bool,
+}
+
+/// Where and how a table is written.
+#[derive(Clone, Debug, Default, Args)]
+pub struct OutputArguments {
+    /// Form of the table
+    #[arg(long = "as", value_enum, value_name = "FORM")]
+    pub form: Option<Form>,
+    /// Write to this file, whole or not at all
+    #[arg(long, value_name = "FILE")]
+    pub out: Option<PathBuf>,
+    /// Write over an existing file
+    #[arg(long)]
+    pub replace: bool,
+    /// Which table, where a command has several
+    #[arg(long, value_name = "NAME")]
+    pub table: Option<String>,
+}
+
+/// Arguments of a table command.
+#[derive(Clone, Debug, Args)]
+pub struct TableArguments {
+    /// Layout file, or `-` for standard input
+    pub layout: PathBuf,
+    /// Which moments.
+    #[command(flatten)]
+    pub moments: MomentArguments,
+    /// Where and how.
+    #[command(flatten)]
+    pub output: OutputArguments,
+}
+
+/// Arguments of `offsets`.
+#[derive(Clone, Debug, Args)]
+pub struct OffsetsArguments {
+    /// As for every table.
+    #[command(flatten)]
+    pub table: TableArguments,
+    /// Add the table of every ordered pair
+    #[arg(long)]
+    pub pairs: bool,
+}
+
+/// Arguments of `compare`.
+#[derive(Clone, Debug, Args)]
+pub struct CompareArguments {
+    /// First layout or recording
+    pub a: PathBuf,
+    /// Second, of the same kind
+    pub b: PathBuf,
+    /// Which moments.
+    #[command(flatten)]
+    pub moments: MomentArguments,
+    /// Where and how.
+    #[command(flatten)]
+    pub output: OutputArguments,
+}
+
+/// Arguments of `record`.
+#[derive(Clone, Debug, Args)]
+pub struct RecordArguments {
+    /// Layout file, or `-` for standard input
+    pub layout: PathBuf,
+    /// First moment
+    #[arg(long, value_name = "MOMENT", allow_hyphen_values = true)]
+    pub from: Option<String>,
+    /// Last moment
+    #[arg(long, value_name = "MOMENT", allow_hyphen_values = true)]
+    pub until: String,
+    /// Step between frames
+    #[arg(long, value_name = "TIME", allow_hyphen_values = true)]
+    pub every: String,
+    /// Recording file to write
+    #[arg(long, value_name = "FILE")]
+    pub out: PathBuf,
+    /// Write over an existing file
+    #[arg(long)]
+    pub replace: bool,
+}
+
+/// Arguments of `replay`.
+#[derive(Clone, Debug, Args)]
+pub struct ReplayArguments {
+    /// Recording file
+    pub file: PathBuf,
+    /// Which moments.
+    #[command(flatten)]
+    pub moments: MomentArguments,
+    /// Where and how; any of them chooses the table instead of the desk.
+    #[command(flatten)]
+    pub output: OutputArguments,
+    /// How the desk looks.
+    #[command(flatten)]
+    pub look: Look,
+}
+
+/// Arguments of `verify`.
+#[derive(Clone, Debug, Args)]
+pub struct VerifyArguments {
+    /// Recording file
+    pub file: PathBuf,
+    /// Where and how.
+    #[command(flatten)]
+    pub output: OutputArguments,
+}

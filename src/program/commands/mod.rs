@@ -1,0 +1,70 @@
+//! One function a command.
+
+mod compare;
+mod recordings;
+mod show;
+mod tables;
+
+use std::sync::Arc;
+
+use clockspar::layout::Layout;
+use clockspar::run::Run;
+use clockspar::table::content::{JudgedOver, RuleState, judge};
+
+use super::arguments::{Arguments, Command};
+use super::problem::{Problem, STATUS_RULE};
+use super::{desk, files, message};
+
+/// Runs the command; the result is the exit status.
+pub fn run(arguments: Arguments) -> Result<u8, Problem> {
+    match arguments.command {
+        None => built_in(&arguments.look),
+        Some(Command::Desk(arguments)) => {
+            desk::run(files::load(&arguments.layout)?, &arguments.look)
+        }
+        Some(Command::Check(arguments)) => tables::check(&arguments),
+        Some(Command::Rates(arguments)) => tables::rates(&arguments),
+        Some(Command::Offsets(arguments)) => tables::offsets(&arguments),
+        Some(Command::Compare(arguments)) => compare::compare(&arguments),
+        Some(Command::Record(arguments)) => recordings::record(&arguments),
+        Some(Command::Replay(arguments)) => recordings::replay(&arguments),
+        Some(Command::Verify(arguments)) => recordings::verify(&arguments),
+    }
+}
+
+/// Without a command: the desk, or a table when there is no terminal to draw on.
+fn built_in(look: &super::arguments::Look) -> Result<u8, Problem> {
+    use std::io::IsTerminal;
+    let layout = files::built_in()?;
+    if std::io::stdout().is_terminal() {
+        return desk::run(layout, look);
+    }
+    tables::print_rates(layout)
+}
+
+/// The run of a layout; one in which a node reaches the horizon is refused, because its
+/// numbers do not exist.
+fn run_of(layout: Layout, file: &str) -> Result<Run, Problem> {
+    Run::new(Arc::new(layout)).map_err(|fault| {
+        Problem::new(format_args!("{file}: {fault}"), fault.rule(), fault.remedy())
+    })
+}
+
+/// One line of warning when a layout breaks a rule the command does not show.
+fn warn_of_broken_rules(layout: &Layout, file: &str) {
+    let judgements = judge(layout, JudgedOver::Plan);
+    let mut broken = judgements.iter().filter(|judgement| judgement.state == RuleState::Broken);
+    let Some(first) = broken.next() else { return };
+    let others = broken.count();
+    let more = if others == 0 { String::new() } else { format!(" and {others} more") };
+    message(&format!(
+        "warning: {file} breaks the rule `{}` for node `{}`{more}; see `clockspar check`",
+        first.rule.word(),
+        layout.nodes[first.node].name
+    ));
+}
+
+/// The status of a layout that breaks a rule.
+fn status_of(broken: bool) -> u8 {
+    if broken { STATUS_RULE } else { 0 }
+}

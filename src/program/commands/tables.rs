@@ -1,0 +1,94 @@
+//! The table commands on a layout.
+
+use std::path::Path;
+use std::sync::Arc;
+
+use clockspar::layout::Layout;
+use clockspar::model::array_time::ArrayTime;
+use clockspar::run::{Run, State};
+use clockspar::table::Report;
+use clockspar::table::content::{
+    JudgedOver, Judgement, RuleState, check_report, judge, offsets_report, rates_report,
+};
+
+use super::show::show;
+use super::{run_of, status_of, warn_of_broken_rules};
+use crate::program::arguments::{
+    MomentArguments, OffsetsArguments, OutputArguments, TableArguments,
+};
+use crate::program::files;
+use crate::program::moments::Moments;
+use crate::program::problem::Problem;
+
+/// `clockspar rates`.
+pub fn rates(arguments: &TableArguments) -> Result<u8, Problem> {
+    table_of_run(&arguments.layout, &arguments.moments, &arguments.output, rates_report)
+}
+
+/// `clockspar offsets`.
+pub fn offsets(arguments: &OffsetsArguments) -> Result<u8, Problem> {
+    let (table, pairs) = (&arguments.table, arguments.pairs);
+    table_of_run(&table.layout, &table.moments, &table.output, move |state| {
+        offsets_report(state, pairs)
+    })
+}
+
+/// The rates of the built-in layout, when there is no terminal to open the desk on.
+pub fn print_rates(layout: Layout) -> Result<u8, Problem> {
+    let run = run_of(layout, files::BUILT_IN_NAME)?;
+    show_run(&run, &MomentArguments::default(), &OutputArguments::default(), rates_report)
+}
+
+/// Reads a layout, refuses one that cannot be flown, warns of broken rules, and shows.
+fn table_of_run(
+    path: &Path,
+    moments: &MomentArguments,
+    output: &OutputArguments,
+    report: impl for<'a> Fn(State<'a>) -> Report<'a>,
+) -> Result<u8, Problem> {
+    let layout = files::load(path)?;
+    let name = files::shown_name(path);
+    let run = run_of(layout, &name)?;
+    warn_of_broken_rules(run.layout(), &name);
+    show_run(&run, moments, output, report)
+}
+
+fn show_run(
+    run: &Run,
+    moments: &MomentArguments,
+    output: &OutputArguments,
+    report: impl for<'a> Fn(State<'a>) -> Report<'a>,
+) -> Result<u8, Problem> {
+    let asked = Moments::of(moments, run.layout())?;
+    show(&asked, moments.paced, output, &|at| report(state_at(run, at)))?;
+    Ok(0)
+}
+
+/// The line at a moment that has been checked to lie in the domain.
+fn state_at(run: &Run, at: ArrayTime) -> State<'_> {
+    run.state_at(at).unwrap_or_else(|_| unreachable!("moments are parsed within the domain"))
+}
+
+/// `clockspar check`: over the whole plan, or at the moments asked for.
+pub fn check(arguments: &TableArguments) -> Result<u8, Problem> {
+    let layout = Arc::new(files::load(&arguments.layout)?);
+    let asked = arguments.moments.at.is_some() || arguments.moments.every.is_some();
+    if !asked {
+        let judgements = judge(&layout, JudgedOver::Plan);
+        let report = |_| check_report(&layout, JudgedOver::Plan, judgements.clone().into());
+        show(&Moments::One(ArrayTime::ZERO), false, &arguments.output, &report)?;
+        return Ok(status_of(is_broken(&judgements)));
+    }
+    let moments = Moments::of(&arguments.moments, &layout)?;
+    let report = |at| {
+        let span = JudgedOver::Moment(at);
+        check_report(&layout, span, judge(&layout, span).into())
+    };
+    show(&moments, arguments.moments.paced, &arguments.output, &report)?;
+    let broken = moments.iter().any(|at| is_broken(&judge(&layout, JudgedOver::Moment(at))));
+    Ok(status_of(broken))
+}
+
+fn is_broken(judgements: &[Judgement]) -> bool {
+    judgements.iter().any(|judgement| judgement.state == RuleState::Broken)
+}

@@ -1,0 +1,90 @@
+//! Reading layouts and recordings from files and standard input.
+
+use std::fs::File;
+use std::io::{self, Read};
+use std::path::Path;
+
+use clockspar::layout::{self, Layout};
+
+use super::problem::Problem;
+
+/// The layout that opens when none is named.
+pub const BUILT_IN_NAME: &str = "built-in layout";
+
+/// Its text; the same file stands in `layouts/`.
+pub const BUILT_IN_TEXT: &str = include_str!("../../layouts/towed-array.toml");
+
+/// Largest input that is read into memory whole, bytes.
+const LARGEST_INPUT: u64 = 256 << 20;
+
+/// The built-in layout.
+pub fn built_in() -> Result<Layout, Problem> {
+    let none = |_: &str| Err("the built-in layout names no file".to_owned());
+    layout::read(BUILT_IN_NAME, BUILT_IN_TEXT, &none).map_err(Problem::told)
+}
+
+/// Reads a layout from a file, or from standard input for `-`.
+pub fn load(path: &Path) -> Result<Layout, Problem> {
+    if path == Path::new("-") {
+        let text = read_bounded(io::stdin().lock(), "standard input")?;
+        return read_layout("standard input", &text, Path::new("."));
+    }
+    let name = shown_name(path);
+    let file = File::open(path).map_err(|error| unreadable(&name, &error))?;
+    let text = read_bounded(file, &name)?;
+    read_layout(&name, &text, path.parent().unwrap_or(Path::new(".")))
+}
+
+/// Whether a file begins as recordings do.
+pub fn looks_like_recording(path: &Path) -> bool {
+    const BEGINNING: &[u8] = b"{\"opening\":\"clockspar.recording/";
+    let mut begun = [0; BEGINNING.len()];
+    File::open(path).and_then(|mut file| file.read_exact(&mut begun)).is_ok() && begun == BEGINNING
+}
+
+/// How a path is named in messages.
+pub fn shown_name(path: &Path) -> String {
+    if path == Path::new("-") { "standard input".to_owned() } else { path.display().to_string() }
+}
+
+fn read_layout(name: &str, text: &str, folder: &Path) -> Result<Layout, Problem> {
+    let companion = |file: &str| {
+        let path = folder.join(file);
+        let opened = File::open(&path).map_err(|error| error.to_string())?;
+        read_bounded(opened, file).map_err(|problem| problem.text)
+    };
+    layout::read(name, text, &companion).map_err(Problem::told)
+}
+
+/// Reads a whole text, refusing one that is too long before it fills the memory.
+fn read_bounded(source: impl Read, name: &str) -> Result<String, Problem> {
+    let mut bytes = Vec::new();
+    source
+        .take(LARGEST_INPUT + 1)
+        .read_to_end(&mut bytes)
+        .map_err(|error| unreadable(name, &error))?;
+    if bytes.len() as u64 > LARGEST_INPUT {
+        return Err(Problem::new(
+            format_args!("{name} is longer than {LARGEST_INPUT} bytes"),
+            "an input that is read whole has at most 256 MiB",
+            "put nodes or histories into a table named by the layout, or make it shorter",
+        ));
+    }
+    String::from_utf8(bytes).map_err(|error| {
+        let at = error.utf8_error().valid_up_to();
+        let line = error.as_bytes()[..at].iter().filter(|&&byte| byte == b'\n').count() + 1;
+        Problem::new(
+            format_args!("{name}, line {line}: the bytes after byte {at} are not UTF-8"),
+            "text is UTF-8",
+            "save the file as UTF-8",
+        )
+    })
+}
+
+fn unreadable(name: &str, error: &io::Error) -> Problem {
+    Problem::new(
+        format_args!("{name} cannot be read: {error}"),
+        "the file exists and may be read",
+        "check the name and the permissions",
+    )
+}

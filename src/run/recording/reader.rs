@@ -1,0 +1,403 @@
+//! Opening a recording and finding moments in it.
+//!
+//! Opening reads the first line and the last one. A moment is found by bisecting the
+//! bytes: from any byte the line around it is found, and its moment says on which side to
+//! go on. Neither memory nor the number of lines read grows with the recording.
+
+use std::io;
+
+use crate::layout::{self, Faults, Layout};
+use crate::model::array_time::ArrayTime;
+
+use super::decode::{self, Kind};
+use super::lines::{Events, Lines, damaged, parse};
+use super::window::{ReadAt, Window, line_start, read_full};
+use super::{
+    Condition, Cut, FORMAT, Frame, LONGEST_NOTE, Line, Missing, OpenFault, Opening, ReadFault,
+};
+
+/// The longest opening line that is read, in bytes: it is held in memory.
+const LONGEST_OPENING: usize = 1 << 30;
+
+/// A recording opened for reading. It may still be growing: see [`Reader::refresh`].
+#[derive(Debug)]
+pub struct Reader<R> {
+    source: R,
+    opening: Opening,
+    data_start: u64,
+    data_end: u64,
+    size: u64,
+    condition: Condition,
+}
+
+/// Which frame is meant by a moment.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Seek {
+    /// The last one before the moment.
+    Before,
+    /// The one at the moment, else the last one before it.
+    AtOrBefore,
+    /// The one at the moment, else the first one after it.
+    AtOrAfter,
+    /// The first one after the moment.
+    After,
+}
+
+impl<R: ReadAt> Reader<R> {
+    /// Opens a recording.
+    ///
+    /// # Errors
+    ///
+    /// A first line that cannot be read, or is of a newer format.
+    pub fn open(source: R) -> Result<Reader<R>, OpenFault> {
+        let size = source.size()?;
+        let (opening, data_start) = read_opening(&source, size)?;
+        let condition = Condition::Cut(Cut { at_byte: data_start, missing: Missing::Closing });
+        let mut reader =
+            Reader { source, opening, data_start, data_end: data_start, size: 0, condition };
+        reader.refresh()?;
+        Ok(reader)
+    }
+
+    /// Looks again where a recording that is still being written ends; says whether that
+    /// has changed.
+    ///
+    /// # Errors
+    ///
+    /// When the bytes cannot be read.
+    pub fn refresh(&mut self) -> io::Result<bool> {
+        let size = self.source.size()?;
+        if size == self.size {
+            return Ok(false);
+        }
+        let before = self.data_end;
+        let (data_end, condition) = self.find_end(size)?;
+        let is_changed = before != data_end || condition != self.condition;
+        self.size = size;
+        self.data_end = data_end;
+        self.condition = condition;
+        Ok(is_changed)
+    }
+
+    /// The first line.
+    #[must_use]
+    pub fn opening(&self) -> &Opening {
+        &self.opening
+    }
+
+    /// Whether the recording has its end, as far as opening it tells: [`Condition::Whole`]
+    /// or [`Condition::Cut`]. Damage before the end is found by reading.
+    #[must_use]
+    pub fn condition(&self) -> &Condition {
+        &self.condition
+    }
+
+    /// What the recording is read from.
+    #[must_use]
+    pub fn source(&self) -> &R {
+        &self.source
+    }
+
+    /// Reads the layout in the recording.
+    ///
+    /// # Errors
+    ///
+    /// The faults of its text.
+    pub fn layout(&self) -> Result<Layout, Faults> {
+        self.opening.read_layout()
+    }
+
+    /// All frames and events, from the first one on.
+    #[must_use]
+    pub fn lines(&self) -> Lines<'_, R> {
+        Lines::new(self, self.data_start)
+    }
+
+    /// Frames and events from the first one at or after a moment on.
+    ///
+    /// # Errors
+    ///
+    /// When the bytes cannot be read.
+    pub fn lines_from(&self, at: ArrayTime) -> io::Result<Lines<'_, R>> {
+        Ok(Lines::new(self, self.first_line_where(|moment| moment >= at)?))
+    }
+
+    /// All events up to a moment, from the first line on. Frames are passed over, but
+    /// their bytes are looked at for the line ends.
+    ///
+    /// # Errors
+    ///
+    /// When the bytes cannot be read.
+    pub fn events_until(&self, until: ArrayTime) -> io::Result<Events<'_, R>> {
+        if self.has_no_event() {
+            return Ok(Events::new(self, self.data_end, self.data_end));
+        }
+        let end = self.first_line_where(|moment| moment > until)?;
+        Ok(Events::new(self, self.data_start, end))
+    }
+
+    /// The events of `[from, until]`.
+    ///
+    /// # Errors
+    ///
+    /// When the bytes cannot be read.
+    pub fn events_between(&self, from: ArrayTime, until: ArrayTime) -> io::Result<Events<'_, R>> {
+        if self.has_no_event() {
+            return Ok(Events::new(self, self.data_end, self.data_end));
+        }
+        let start = self.first_line_where(|moment| moment >= from)?;
+        let end = self.first_line_where(|moment| moment > until)?;
+        Ok(Events::new(self, start, end.max(start)))
+    }
+
+    /// Whether the closing line says that there is no event to look for.
+    fn has_no_event(&self) -> bool {
+        matches!(&self.condition, Condition::Whole(closing) if closing.events == 0)
+    }
+
+    /// The frame a moment means; `None` when there is none on that side.
+    ///
+    /// # Errors
+    ///
+    /// A damaged line in its place, or bytes that cannot be read.
+    pub fn frame(&self, seek: Seek, at: ArrayTime) -> Result<Option<Frame>, ReadFault> {
+        match seek {
+            Seek::Before => self.frame_up_to(self.first_line_where(|moment| moment >= at)?, None),
+            Seek::AtOrBefore => {
+                self.frame_up_to(self.first_line_where(|moment| moment > at)?, Some(at))
+            }
+            Seek::AtOrAfter => {
+                self.frame_from(self.first_line_where(|moment| moment >= at)?, Some(at))
+            }
+            Seek::After => self.frame_from(self.first_line_where(|moment| moment > at)?, None),
+        }
+    }
+
+    /// The first frame.
+    ///
+    /// # Errors
+    ///
+    /// A damaged line in its place, or bytes that cannot be read.
+    pub fn first_frame(&self) -> Result<Option<Frame>, ReadFault> {
+        self.frame_from(self.data_start, None)
+    }
+
+    /// The last frame.
+    ///
+    /// # Errors
+    ///
+    /// A damaged line in its place, or bytes that cannot be read.
+    pub fn last_frame(&self) -> Result<Option<Frame>, ReadFault> {
+        self.frame_before(self.data_end)
+    }
+
+    /// The moment of the last frame or event; `None` when there is none, or its line is
+    /// damaged.
+    ///
+    /// # Errors
+    ///
+    /// When the bytes cannot be read.
+    pub fn last_moment(&self) -> io::Result<Option<ArrayTime>> {
+        if self.data_end <= self.data_start {
+            return Ok(None);
+        }
+        let start = line_start(&self.source, self.data_start, self.data_end - 1)?;
+        let mut window = Window::new(&self.source);
+        let found = window.line(start, self.data_end, self.longest_line())?;
+        let body = found.held.and_then(|range| decode::body(window.held(range)).ok());
+        Ok(body.and_then(|body| decode::moment(body).ok()))
+    }
+
+    /// Where the lines after the opening begin.
+    pub(super) fn data_start(&self) -> u64 {
+        self.data_start
+    }
+
+    /// The byte after the last whole line that is not the closing.
+    pub(super) fn data_end(&self) -> u64 {
+        self.data_end
+    }
+
+    /// The longest line after the opening that can be one: a frame of doubles of 24
+    /// characters, or a note.
+    pub(super) fn longest_line(&self) -> usize {
+        let columns = if self.opening.has_readings { 3 } else { 2 };
+        let frame = 1024 + 32 * columns * self.opening.nodes.len();
+        // The six bytes of an escape for every byte of text; a note of the layout is in
+        // the opening, escaped at least as long.
+        let note = 1024 + 6 * LONGEST_NOTE.max(self.opening.layout_text.len());
+        frame.max(note)
+    }
+
+    /// Where whole lines end, and whether a closing line follows there.
+    fn find_end(&self, size: u64) -> io::Result<(u64, Condition)> {
+        let cut = |at_byte, missing| (at_byte, Condition::Cut(Cut { at_byte, missing }));
+        if size <= self.data_start {
+            return Ok(cut(self.data_start, Missing::Closing));
+        }
+        let mut last = [0];
+        read_full(&self.source, size - 1, &mut last)?;
+        if last != *b"\n" {
+            let start = line_start(&self.source, self.data_start, size)?;
+            return Ok(cut(start, Missing::LineEnd(size - start)));
+        }
+        let start = line_start(&self.source, self.data_start, size - 1)?;
+        let mut window = Window::new(&self.source);
+        let found = window.line(start, size, self.longest_line())?;
+        let body = found.held.map(|range| decode::body(window.held(range)));
+        let Some(Ok(body)) = body else {
+            return Ok(cut(start, Missing::GoodCrc(size - start)));
+        };
+        if Kind::of(body) == Some(Kind::Closing)
+            && let Ok(closing) = decode::closing(body)
+        {
+            return Ok((start, Condition::Whole(closing)));
+        }
+        Ok(cut(size, Missing::Closing))
+    }
+
+    /// The first frame from a byte on. A damaged line before it may have been that frame,
+    /// unless the frame is just the one that was wanted.
+    fn frame_from(
+        &self,
+        offset: u64,
+        wanted: Option<ArrayTime>,
+    ) -> Result<Option<Frame>, ReadFault> {
+        let mut damaged = None;
+        for line in Lines::new(self, offset) {
+            match line {
+                Ok(Line::Event(_)) => {}
+                Ok(Line::Frame(frame)) if damaged.is_none() || wanted == Some(frame.at) => {
+                    return Ok(Some(frame));
+                }
+                Ok(Line::Frame(_)) => break,
+                Err(ReadFault::Io(error)) => return Err(error.into()),
+                Err(ReadFault::Damaged(damage)) => {
+                    damaged.get_or_insert(damage);
+                }
+            }
+        }
+        damaged.map_or(Ok(None), |damage| Err(ReadFault::Damaged(damage)))
+    }
+
+    /// The last frame before a byte. A damaged line at that byte may have been that frame,
+    /// unless the frame is just the one that was wanted.
+    fn frame_up_to(
+        &self,
+        offset: u64,
+        wanted: Option<ArrayTime>,
+    ) -> Result<Option<Frame>, ReadFault> {
+        let frame = self.frame_before(offset)?;
+        if wanted.is_none() || frame.as_ref().map(|frame| frame.at) != wanted {
+            Lines::new(self, offset).next().transpose()?;
+        }
+        Ok(frame)
+    }
+
+    fn frame_before(&self, offset: u64) -> Result<Option<Frame>, ReadFault> {
+        let mut window = Window::new(&self.source);
+        let mut end = offset;
+        while end > self.data_start {
+            let start = line_start(&self.source, self.data_start, end - 1)?;
+            let head = window.head(start, end, Kind::PREFIX)?;
+            if Kind::of(head) != Some(Kind::Event) {
+                let found = window.line(start, end, self.longest_line())?;
+                let parsed = match found.held {
+                    Some(range) => parse(window.held(range), self),
+                    None => Err("it is longer than a line can be".to_owned()),
+                };
+                match parsed {
+                    Ok(Line::Frame(frame)) => return Ok(Some(frame)),
+                    Ok(Line::Event(_)) => {}
+                    Err(what) => return Err(damaged(&self.source, None, start, what)),
+                }
+            }
+            end = start;
+        }
+        Ok(None)
+    }
+
+    /// The first byte of the first line whose moment is past some bound, by bisection; the
+    /// end of the lines when there is none. `is_past` holds for every moment after one for
+    /// which it holds.
+    ///
+    /// A damaged line has no moment that could be trusted: it goes with the next good line,
+    /// so that whoever reads on from there meets it.
+    fn first_line_where(&self, is_past: impl Fn(ArrayTime) -> bool) -> io::Result<u64> {
+        let mut window = Window::new(&self.source);
+        let (mut low, mut high) = (self.data_start, self.data_end);
+        while low < high {
+            let start = line_start(&self.source, low, low + (high - low) / 2)?;
+            let mut next = start;
+            let mut moment = None;
+            while moment.is_none() && next < high {
+                let found = window.line(next, high, self.longest_line())?;
+                next = found.end;
+                let body = found.held.and_then(|range| decode::body(window.held(range)).ok());
+                moment = body.and_then(|body| decode::moment(body).ok());
+            }
+            match moment {
+                Some(moment) if !is_past(moment) => low = next,
+                _ => high = start,
+            }
+        }
+        Ok(high)
+    }
+}
+
+impl Opening {
+    /// Reads the layout in the recording.
+    ///
+    /// # Errors
+    ///
+    /// The faults of its text.
+    pub fn read_layout(&self) -> Result<Layout, Faults> {
+        let file = |name: &str| {
+            let found = self.files.iter().find(|file| file.name == name);
+            let text = found.map(|file| file.text.clone());
+            text.ok_or_else(|| "it is not in the recording".to_owned())
+        };
+        layout::read("layout in the recording", &self.layout_text, &file)
+    }
+}
+
+/// The opening and the byte after it.
+fn read_opening<R: ReadAt>(source: &R, size: u64) -> Result<(Opening, u64), OpenFault> {
+    let no_opening = |what: &str| OpenFault::NoOpening { what: what.to_owned() };
+    if size == 0 {
+        return Err(no_opening("it is empty"));
+    }
+    let mut window = Window::new(source);
+    // Looked at first, so that a large file of another kind is not read as one line.
+    let head = window.head(0, size, 64)?;
+    match decode::claimed_format(head) {
+        Some(format) if format == FORMAT => {}
+        Some(format) if is_newer(&format) => return Err(OpenFault::Newer { format }),
+        _ => return Err(no_opening("the first line is not one")),
+    }
+    let found = window.line(0, size, LONGEST_OPENING)?;
+    let Some(range) = found.held else {
+        return Err(no_opening("the first line has no end"));
+    };
+    let line = window.held(range);
+    let body = decode::body(line).map_err(|what| OpenFault::NoOpening { what })?;
+    let opening = decode::opening(body)
+        .map_err(|malformed| OpenFault::NoOpening { what: malformed.text() })?;
+    Ok((opening, found.end))
+}
+
+/// Whether a format is a later one of this kind.
+fn is_newer(format: &str) -> bool {
+    let Some((kind, version)) = FORMAT.rsplit_once('/') else {
+        return false;
+    };
+    let Some((found_kind, found_version)) = format.rsplit_once('/') else {
+        return false;
+    };
+    let is_number = !found_version.is_empty()
+        && found_version.len() < 10
+        && found_version.bytes().all(|byte| byte.is_ascii_digit());
+    kind == found_kind
+        && is_number
+        && found_version.parse::<u32>().ok() > version.parse::<u32>().ok()
+}

@@ -1,0 +1,306 @@
+//! A table as text: every column in one form, split into blocks where it is too wide.
+
+use std::io::{self, Write};
+use std::ops::Range;
+
+use super::format::ColumnFormat;
+use super::scan::ColumnScan;
+use super::stream::{threads_for, write_rows};
+use super::text::TextOptions;
+use super::width::{columns_of, push_blanks, push_left, push_right, wrapped};
+use super::{Cell, Measure, NOT_FINITE, Table};
+
+/// Blanks between columns.
+const GAP: usize = 2;
+/// Columns in front of each row for the mark of the reference.
+const MARK: usize = 2;
+/// Reasons that get a letter of their own.
+const MOST_REASONS: usize = 26;
+/// The least a column of words is narrowed to.
+const LEAST_WORDS: usize = 4;
+
+/// Writes a table with its title, its columns in as many blocks as the width asks for, and
+/// the reasons of what is absent.
+pub(super) fn write_table(
+    table: &Table<'_>,
+    options: &TextOptions,
+    titled: bool,
+    out: &mut dyn Write,
+) -> io::Result<()> {
+    let mut text = String::new();
+    if table.rows == 0 {
+        options.push_lines(&mut text, &format!("{}: no rows", table.name));
+        return out.write_all(text.as_bytes());
+    }
+    if titled {
+        let order = if table.marked.is_some() { ", fore to aft, * the reference" } else { "" };
+        options.push_lines(&mut text, &format!("{}{order}", table.name));
+    }
+    let (formats, reasons) = scan(table, options.unicode);
+    let margin = if table.marked.is_some() { MARK } else { 0 };
+    let blocks = blocks(table, &formats, margin, *options);
+    for (place, block) in blocks.iter().enumerate() {
+        if place > 0 {
+            text.push('\n');
+        }
+        push_heading(&mut text, block, margin, *options);
+        out.write_all(text.as_bytes())?;
+        text.clear();
+        write_rows(table.rows, threads_for(table.rows), out, |range, buffer| {
+            push_rows(table, block, &reasons, range, buffer);
+        })?;
+    }
+    for (place, reason) in reasons.texts.iter().enumerate() {
+        options.push_lines(&mut text, &format!("-{}: {reason}", reasons.mark_at(place)));
+    }
+    if reasons.more {
+        options.push_lines(&mut text, "-: other reasons, which the JSON form gives row by row");
+    }
+    out.write_all(text.as_bytes())
+}
+
+/// Distinct reasons of absent cells, in the order in which they are met.
+struct Reasons {
+    texts: Vec<String>,
+    /// There are others, for which no letter is left.
+    more: bool,
+}
+
+impl Reasons {
+    fn see(&mut self, why: &str) {
+        if self.more || self.texts.iter().any(|known| known == why) {
+            return;
+        }
+        if self.texts.len() == MOST_REASONS {
+            self.more = true;
+        } else {
+            self.texts.push(why.to_owned());
+        }
+    }
+
+    /// The letter of a reason; none where there is only one reason.
+    fn mark_at(&self, place: usize) -> &'static str {
+        const LETTERS: &str = "abcdefghijklmnopqrstuvwxyz";
+        if self.texts.len() < 2 { "" } else { &LETTERS[place..=place] }
+    }
+
+    fn mark_of(&self, cell: &Cell<'_>) -> &'static str {
+        let why = match cell {
+            Cell::Absent(why) => why,
+            Cell::Number(value) if !value.is_finite() => NOT_FINITE,
+            _ => return "",
+        };
+        self.texts.iter().position(|known| known == why).map_or("", |place| self.mark_at(place))
+    }
+}
+
+/// The first pass over the rows.
+fn scan(table: &Table<'_>, unicode: bool) -> (Vec<ColumnFormat>, Reasons) {
+    let mut scans: Vec<ColumnScan> = table.columns.iter().map(ColumnScan::new).collect();
+    let mut absent = vec![false; scans.len()];
+    let mut reasons = Reasons { texts: Vec::new(), more: false };
+    let mut cells = Vec::with_capacity(scans.len());
+    for row in 0..table.rows {
+        cells.clear();
+        (table.fill)(row, &mut cells);
+        debug_assert_eq!(cells.len(), scans.len(), "row {row} of `{}`", table.name);
+        for ((scan, cell), absent) in scans.iter_mut().zip(&cells).zip(&mut absent) {
+            scan.see(cell);
+            let why = match cell {
+                Cell::Absent(why) => why,
+                Cell::Number(value) if !value.is_finite() => NOT_FINITE,
+                _ => continue,
+            };
+            *absent = true;
+            reasons.see(why);
+        }
+    }
+    let mut formats: Vec<ColumnFormat> = scans.iter().map(|scan| scan.format(unicode)).collect();
+    let mark = columns_of(reasons.mark_at(0));
+    for (format, _) in formats.iter_mut().zip(absent).filter(|(_, absent)| *absent) {
+        format.width = format.width.max(1 + mark);
+    }
+    (formats, reasons)
+}
+
+/// A column as it stands in a block.
+#[derive(Clone)]
+struct Shown<'t> {
+    index: usize,
+    format: &'t ColumnFormat,
+    heading: Vec<String>,
+    width: usize,
+    /// Cells may be longer than the width and are wrapped.
+    narrowed: bool,
+}
+
+impl<'t> Shown<'t> {
+    fn new(
+        table: &Table<'_>,
+        index: usize,
+        format: &'t ColumnFormat,
+        options: TextOptions,
+    ) -> Self {
+        let heading = options.signs(table.columns[index].heading);
+        let least = format.width.max(columns_of(format.unit()));
+        // A heading is wrapped to what the cells need, but never within a word.
+        let longest = heading.split(' ').map(columns_of).max().unwrap_or(0);
+        let heading = wrapped(&heading, options.width.map(|_| least.max(longest)));
+        let widest = heading.iter().map(|line| columns_of(line)).max().unwrap_or(0);
+        Shown { index, format, heading, width: least.max(widest), narrowed: false }
+    }
+
+    fn narrow(&mut self, width: usize) {
+        let width = width.max(LEAST_WORDS);
+        if self.width > width {
+            self.width = width;
+            self.narrowed = true;
+            self.heading = wrapped(&self.heading.join(" "), Some(width));
+        }
+    }
+}
+
+/// Columns that stand side by side; the first of them name the row in every block.
+fn blocks<'t>(
+    table: &Table<'_>,
+    formats: &'t [ColumnFormat],
+    margin: usize,
+    options: TextOptions,
+) -> Vec<Vec<Shown<'t>>> {
+    let mut columns: Vec<Shown<'t>> = formats
+        .iter()
+        .enumerate()
+        .map(|(index, format)| Shown::new(table, index, format, options))
+        .collect();
+    let taken = |columns: &[Shown<'_>]| {
+        columns.iter().map(|column| column.width + GAP).sum::<usize>().saturating_sub(GAP)
+    };
+    let Some(width) = options.width else {
+        return vec![columns];
+    };
+    let room = width.saturating_sub(margin);
+    if taken(&columns) <= room {
+        return vec![columns];
+    }
+    let words = |column: &Shown<'_>| table.columns[column.index].measure == Measure::Word;
+    // Only words can be narrowed: what is left must hold the widest number.
+    let widest = |columns: &[Shown<'_>]| {
+        let numbers = columns.iter().filter(|column| !words(column));
+        numbers.map(|column| column.width).max().unwrap_or(LEAST_WORDS)
+    };
+    let mut names = columns.iter().take_while(|column| words(column)).count().max(1);
+    if taken(&columns[..names]) + GAP + widest(&columns[names..]) > room {
+        names = 1;
+    }
+    let rest = widest(&columns[1..]) + GAP;
+    if words(&columns[0]) {
+        columns[0].narrow(room.saturating_sub(rest));
+    }
+    let data = columns.split_off(names);
+    let left = room.saturating_sub(taken(&columns));
+    let mut blocks = Vec::new();
+    let mut block = columns.clone();
+    for mut column in data {
+        if words(&column) {
+            column.narrow(left.saturating_sub(GAP));
+        }
+        if block.len() > names && taken(&block) + GAP + column.width > room {
+            blocks.push(std::mem::replace(&mut block, columns.clone()));
+        }
+        block.push(column);
+    }
+    blocks.push(block);
+    blocks
+}
+
+fn push_heading(text: &mut String, block: &[Shown<'_>], margin: usize, options: TextOptions) {
+    let height = block.iter().map(|column| column.heading.len()).max().unwrap_or(0);
+    for line in 0..height {
+        push_line(text, margin, block, |column| {
+            // Headings stand on the line of the units, so short ones leave the top free.
+            let above = height - column.heading.len();
+            line.checked_sub(above).map_or("", |line| column.heading[line].as_str())
+        });
+    }
+    if block.iter().any(|column| !column.format.unit().is_empty()) {
+        push_line(text, margin, block, |column| column.format.unit());
+    }
+    let width = block.iter().map(|column| column.width + GAP).sum::<usize>() - GAP + margin;
+    text.extend(std::iter::repeat_n(if options.unicode { '─' } else { '-' }, width));
+    text.push('\n');
+}
+
+fn push_line<'c>(
+    text: &mut String,
+    margin: usize,
+    block: &'c [Shown<'_>],
+    part: impl Fn(&'c Shown<'_>) -> &'c str,
+) {
+    push_blanks(text, margin);
+    for (place, column) in block.iter().enumerate() {
+        push_blanks(text, if place > 0 { GAP } else { 0 });
+        if column.format.is_left() {
+            push_left(text, part(column), column.width);
+        } else {
+            push_right(text, part(column), column.width);
+        }
+    }
+    end_line(text);
+}
+
+/// Ends a line without blanks at its end.
+fn end_line(text: &mut String) {
+    text.truncate(text.trim_end_matches(' ').len());
+    text.push('\n');
+}
+
+/// The second pass over some rows.
+fn push_rows(
+    table: &Table<'_>,
+    block: &[Shown<'_>],
+    reasons: &Reasons,
+    range: Range<usize>,
+    out: &mut Vec<u8>,
+) {
+    let mut cells = Vec::with_capacity(table.columns.len());
+    let mut text = String::new();
+    for row in range {
+        cells.clear();
+        (table.fill)(row, &mut cells);
+        text.clear();
+        let mark = match table.marked {
+            Some(marked) if marked == row => "* ",
+            Some(_) => "  ",
+            None => "",
+        };
+        // Only narrowed columns take more than a line.
+        let wrapped: Vec<Vec<String>> = block
+            .iter()
+            .filter(|column| column.narrowed)
+            .map(|column| {
+                let cell = &cells[column.index];
+                wrapped(&column.format.value(cell, reasons.mark_of(cell)), Some(column.width))
+            })
+            .collect();
+        let height = wrapped.iter().map(Vec::len).max().unwrap_or(1);
+        for line in 0..height {
+            text.push_str(if line == 0 { mark } else { &"  "[..mark.len()] });
+            let mut narrowed = wrapped.iter();
+            for (place, column) in block.iter().enumerate() {
+                push_blanks(&mut text, if place > 0 { GAP } else { 0 });
+                let cell = &cells[column.index];
+                if column.narrowed {
+                    let lines = narrowed.next().map_or(&[][..], Vec::as_slice);
+                    push_left(&mut text, lines.get(line).map_or("", String::as_str), column.width);
+                } else if line == 0 {
+                    column.format.push(&mut text, cell, reasons.mark_of(cell), column.width);
+                } else {
+                    push_blanks(&mut text, column.width);
+                }
+            }
+            end_line(&mut text);
+        }
+        debug_assert!(!text.chars().any(|sign| sign != '\n' && sign.is_control()), "{text:?}");
+        out.extend_from_slice(text.as_bytes());
+    }
+}

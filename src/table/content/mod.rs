@@ -1,0 +1,78 @@
+//! What each table holds: the rows of a command as functions of the line at a moment.
+
+mod check;
+mod compare;
+mod offsets;
+mod rates;
+mod recording;
+
+use crate::layout::Layout;
+use crate::model::dd::Dd;
+use crate::model::rates::Instant;
+use crate::run::{Aboard, State};
+
+use super::{Cell, Column, Measure, Report};
+
+pub use check::{JudgedOver, Judgement, Rule, RuleState, check_report, judge};
+pub use compare::{Difference, compare_report, differences};
+pub use offsets::offsets_report;
+pub use rates::rates_report;
+pub use recording::{detail, events_table, replay_report, verify_report};
+
+/// Why a released node has no number.
+pub const RELEASED: &str = "released: the node no longer belongs to the line";
+const NO_RAPIDITY: &str = "a line that stands in gravity gains no rapidity";
+const STANDING: &str = "a line that stands in gravity has no launch frame";
+const OVERFLOW: &str = "exceeds the largest double";
+
+/// A column of a table.
+const fn column(key: &'static str, heading: &'static str, measure: Measure) -> Column {
+    Column { key, heading, measure }
+}
+
+/// The head of a report on the line at a moment, without tables.
+fn head<'a>(state: &State<'a>, command: &'static str) -> Report<'a> {
+    let layout: &'a Layout = state.run().layout();
+    Report {
+        command,
+        schema_version: 1,
+        layout: &layout.name,
+        revision: layout.revision.as_deref(),
+        layout_sha256: &layout.source.sha256,
+        at: Ok(state.at()),
+        reference_acceleration_m_s2: Ok(state.reference_acceleration_m_s2()),
+        rapidity: state.rapidity().ok_or(NO_RAPIDITY),
+        scalars: Vec::new(),
+        tables: Vec::new(),
+        remarks: Vec::new(),
+    }
+}
+
+/// A number, or its absence when it overflows.
+fn number(value: Dd) -> Cell<'static> {
+    Cell::finite(value.to_f64(), OVERFLOW)
+}
+
+/// Reading less array time of the real clock of a node, s.
+///
+/// With own proper time `s`: `reading − τ = (s − τ) + x₀ + b s + D s²/2 + k ∫ a ds`, where
+/// `x₀` is the reading at the start, `b` the known bias, `D` the known drift and `k` the
+/// acceleration sensitivity. Under thrust `∫ a ds = ∫ α dτ = c φ`, for every node the same,
+/// because the local clock and the local acceleration differ by the same factor `N`.
+fn predicted_reading_s(layout: &Layout, instant: &Instant, row: usize, aboard: &Aboard) -> Dd {
+    let node = &layout.nodes[row];
+    let own = instant.moment.at.seconds() + aboard.clock_offset_s;
+    let mut reading = aboard.clock_offset_s + node.reading_at_start_s + own * node.bias;
+    if let Some(clock) = node.clock.map(|clock| &layout.clocks[clock]) {
+        reading = reading + own * own * (0.5 * clock.drift_per_s);
+        if clock.acceleration_sensitivity != 0.0 {
+            let felt = if instant.gradient_per_s2 == 0.0 {
+                instant.moment.velocity_gain_m_s
+            } else {
+                instant.felt_acceleration_m_s2(Dd::new(aboard.position_m)) * own
+            };
+            reading = reading + felt * clock.acceleration_sensitivity;
+        }
+    }
+    reading
+}
