@@ -4,6 +4,8 @@ pub mod array_time;
 pub mod constants;
 pub mod dd;
 pub mod horizon;
+pub mod links;
 pub mod motion;
 pub mod plan;
 pub mod rates;
+pub mod reach;
