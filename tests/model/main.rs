@@ -6,6 +6,7 @@
 // Distributions of errors are shown with `--nocapture`.
 #![allow(clippy::print_stdout)]
 
+mod demo_recordings;
 mod identities;
 mod layout_random;
 mod layout_read;
