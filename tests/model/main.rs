@@ -3,6 +3,9 @@
 mod identities;
 mod layout_read;
 mod layout_refused;
+mod loads_identities;
+mod loads_published;
+mod loads_reference;
 mod pinned;
 mod published;
 mod reference;
