@@ -138,7 +138,14 @@ mod tests {
 
     #[test]
     fn nearest_finds_every_count() {
-        for count in [0, 1, -1, 999_999_999_999_999_999, 1_000_000_000_000_000_001, 123_456_789_012_345_678_901_234_567] {
+        for count in [
+            0,
+            1,
+            -1,
+            999_999_999_999_999_999,
+            1_000_000_000_000_000_001,
+            123_456_789_012_345_678_901_234_567,
+        ] {
             let time = ArrayTime::from_attoseconds(count);
             assert_eq!(ArrayTime::nearest(time.seconds()), Some(time));
         }

@@ -29,11 +29,8 @@ pub struct Launch {
 /// of the value.
 #[must_use]
 pub fn cosh_sinh(rapidity: Dd) -> (f64, f64) {
-    let (size, low) = if rapidity.hi < 0.0 {
-        (-rapidity.hi, -rapidity.lo)
-    } else {
-        (rapidity.hi, rapidity.lo)
-    };
+    let (size, low) =
+        if rapidity.hi < 0.0 { (-rapidity.hi, -rapidity.lo) } else { (rapidity.hi, rapidity.lo) };
     let (cosh, sinh) = if size < 22.0 {
         (libm::cosh(size), libm::sinh(size))
     } else {
@@ -76,8 +73,7 @@ pub fn launch_gain(phase: &Phase, start_rapidity: Dd, until: ArrayTime) -> Launc
         return Launch { time_s: length * cosh, position_m: length * sinh * SPEED_OF_LIGHT_M_S };
     }
     let last = phase.acceleration(until);
-    let swing =
-        first.hi.abs().max(last.hi.abs()) * elapsed.hi / SPEED_OF_LIGHT_M_S;
+    let swing = first.hi.abs().max(last.hi.abs()) * elapsed.hi / SPEED_OF_LIGHT_M_S;
     let pieces = swing.ceil().max(1.0);
     let (nodes, weights): (&[f64], &[f64]) =
         if swing < 3e-7 { (&NODES_3, &WEIGHTS_3) } else { (&NODES_10, &WEIGHTS_10) };
@@ -110,6 +106,28 @@ const NODES_3: [f64; 3] = [0.11270166537925831, 0.5, 0.8872983346207417];
 /// Their weights.
 const WEIGHTS_3: [f64; 3] = [0.2777777777777778, 0.4444444444444444, 0.2777777777777778];
 /// Gauss–Legendre nodes on [0, 1], 10 points (roots of P_10, DLMF section 3.5(v)).
-pub(super) const NODES_10: [f64; 10] = [0.01304673574141414, 0.06746831665550775, 0.1602952158504878, 0.2833023029353764, 0.4255628305091844, 0.5744371694908156, 0.7166976970646236, 0.8397047841495122, 0.9325316833444922, 0.9869532642585859];
+pub(super) const NODES_10: [f64; 10] = [
+    0.01304673574141414,
+    0.06746831665550775,
+    0.1602952158504878,
+    0.2833023029353764,
+    0.4255628305091844,
+    0.5744371694908156,
+    0.7166976970646236,
+    0.8397047841495122,
+    0.9325316833444922,
+    0.9869532642585859,
+];
 /// Their weights.
-pub(super) const WEIGHTS_10: [f64; 10] = [0.03333567215434407, 0.0747256745752903, 0.10954318125799102, 0.13463335965499817, 0.14776211235737644, 0.14776211235737644, 0.13463335965499817, 0.10954318125799102, 0.0747256745752903, 0.03333567215434407];
+pub(super) const WEIGHTS_10: [f64; 10] = [
+    0.03333567215434407,
+    0.0747256745752903,
+    0.10954318125799102,
+    0.13463335965499817,
+    0.14776211235737644,
+    0.14776211235737644,
+    0.13463335965499817,
+    0.10954318125799102,
+    0.0747256745752903,
+    0.03333567215434407,
+];

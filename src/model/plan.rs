@@ -4,7 +4,7 @@
 use std::fmt;
 
 use super::array_time::ArrayTime;
-use super::constants::SPEED_OF_LIGHT_M_S;
+use super::constants::{INVERSE_C_S_M, SPEED_OF_LIGHT_M_S};
 use super::dd::{Dd, RunningSum, Wide};
 use super::motion::{self, Launch};
 
@@ -412,7 +412,7 @@ impl Plan {
 
 /// `φ` of a velocity gain.
 fn rapidity_of(velocity_gain: Wide) -> Dd {
-    velocity_gain.to_dd() / SPEED_OF_LIGHT_M_S
+    velocity_gain.to_dd() * INVERSE_C_S_M
 }
 
 fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), PlanFault> {
@@ -435,10 +435,8 @@ fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), P
 
 /// The rapidity is extreme at the ends of a phase and where a ramp passes through zero.
 fn check_rapidity(index: usize, phase: &Phase, start: Dd, end: Dd) -> Result<(), PlanFault> {
-    let turning = (!phase.is_hold())
-        .then(|| phase.moment_of(Dd::ZERO))
-        .flatten()
-        .map_or(start, |after| {
+    let turning =
+        (!phase.is_hold()).then(|| phase.moment_of(Dd::ZERO)).flatten().map_or(start, |after| {
             let first = phase.acceleration(phase.start);
             start + first * after / (2.0 * SPEED_OF_LIGHT_M_S)
         });

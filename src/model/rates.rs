@@ -19,7 +19,7 @@
 //! `N − 1 = (g h − Γ h²/2)/c²`, `α_h = (g − Γ h)/N` and `τ_h − τ = (N − 1) τ`; with
 //! `Γ = 0` the bits are those of a held thrust.
 
-use super::constants::{C2_M2_S2, SPEED_OF_LIGHT_M_S};
+use super::constants::{C2_M2_S2, INVERSE_C_S_M, INVERSE_C2_S2_M2};
 use super::dd::{Dd, Wide};
 use super::motion::{LAUNCH_SCALE, Launch, cosh_sinh};
 use super::plan::Moment;
@@ -39,10 +39,10 @@ impl Instant {
     pub fn rate_minus_one(&self, position_m: Dd) -> Dd {
         let potential = self.moment.acceleration_m_s2 * position_m;
         if self.gradient_per_s2 == 0.0 {
-            return potential / C2_M2_S2;
+            return potential * INVERSE_C2_S2_M2;
         }
         let bend = position_m * position_m * (0.5 * self.gradient_per_s2);
-        (potential - bend) / C2_M2_S2
+        (potential - bend) * INVERSE_C2_S2_M2
     }
 
     /// `N` at a position.
@@ -82,7 +82,7 @@ impl Instant {
     #[must_use]
     pub fn clock_offset_s(&self, position_m: Dd) -> Dd {
         if self.gradient_per_s2 == 0.0 {
-            return position_m * self.moment.rapidity / SPEED_OF_LIGHT_M_S;
+            return position_m * self.moment.rapidity * INVERSE_C_S_M;
         }
         self.rate_minus_one(position_m) * self.moment.at.seconds()
     }
@@ -97,7 +97,7 @@ impl Instant {
         if self.gradient_per_s2 != 0.0 {
             drive = drive - apart * (to_m + from_m) * (0.5 * self.gradient_per_s2);
         }
-        drive / (C2_M2_S2 * self.rate(from_m))
+        drive * INVERSE_C2_S2_M2 / self.rate(from_m)
     }
 
     /// Difference of two clock offsets, to − from, of nodes that have stood still, s.
@@ -139,7 +139,7 @@ impl LaunchFrame {
     /// `t + |h sinh φ|/c`. `None` above the largest double.
     #[must_use]
     pub fn time_s(&self, position_m: Dd) -> Option<f64> {
-        let own = position_m * (self.sinh * LAUNCH_SCALE) / SPEED_OF_LIGHT_M_S;
+        let own = position_m * (self.sinh * LAUNCH_SCALE) * INVERSE_C_S_M;
         finite((self.reference.time_s + own).to_f64() / LAUNCH_SCALE)
     }
 

@@ -35,6 +35,13 @@ pub fn load(path: &Path) -> Result<Layout, Problem> {
     read_layout(&name, &text, path.parent().unwrap_or(Path::new(".")))
 }
 
+/// Whether a file begins as recordings do.
+pub fn looks_like_recording(path: &Path) -> bool {
+    const BEGINNING: &[u8] = b"{\"opening\":\"clockspar.recording/";
+    let mut begun = [0; BEGINNING.len()];
+    File::open(path).and_then(|mut file| file.read_exact(&mut begun)).is_ok() && begun == BEGINNING
+}
+
 /// How a path is named in messages.
 pub fn shown_name(path: &Path) -> String {
     if path == Path::new("-") { "standard input".to_owned() } else { path.display().to_string() }

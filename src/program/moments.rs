@@ -1,6 +1,8 @@
 //! Moments as people write them: durations, `end`, dates.
 
 use clockspar::layout::quantity::{self, QuantityFault};
+use std::sync::Arc;
+
 use clockspar::layout::date::parse_moment;
 use clockspar::layout::{Course, Layout};
 use clockspar::model::array_time::ArrayTime;
@@ -9,7 +11,7 @@ use super::arguments::MomentArguments;
 use super::problem::Problem;
 
 /// The moments a table command is asked for.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Debug, PartialEq, Eq)]
 pub enum Moments {
     /// One moment.
     One(ArrayTime),
@@ -22,6 +24,8 @@ pub enum Moments {
         /// Step, above zero.
         every: ArrayTime,
     },
+    /// Moments that were found, in order; may be none.
+    Listed(Arc<[ArrayTime]>),
 }
 
 impl Moments {
@@ -44,9 +48,10 @@ impl Moments {
     }
 
     /// How many moments there are.
-    pub fn count(self) -> usize {
+    pub fn count(&self) -> usize {
         match self {
             Moments::One(_) => 1,
+            Moments::Listed(moments) => moments.len(),
             Moments::Every { from, until, every } => {
                 let steps = (until.attoseconds() - from.attoseconds()) / every.attoseconds();
                 usize::try_from(steps).unwrap_or(usize::MAX).saturating_add(1)
@@ -55,23 +60,34 @@ impl Moments {
     }
 
     /// A moment, by its number from 0.
-    pub fn nth(self, index: usize) -> ArrayTime {
+    pub fn nth(&self, index: usize) -> ArrayTime {
         match self {
-            Moments::One(at) => at,
+            Moments::One(at) => *at,
+            Moments::Listed(moments) => moments[index],
             Moments::Every { from, every, .. } => {
-                from.stepped(every, index as i128).unwrap_or(ArrayTime::LIMIT)
+                from.stepped(*every, index as i128).unwrap_or(ArrayTime::LIMIT)
             }
         }
     }
 
     /// The moments, in order.
-    pub fn iter(self) -> impl Iterator<Item = ArrayTime> {
+    pub fn iter(&self) -> impl Iterator<Item = ArrayTime> + '_ {
         (0..self.count()).map(move |index| self.nth(index))
     }
 }
 
+impl From<Vec<ArrayTime>> for Moments {
+    fn from(moments: Vec<ArrayTime>) -> Moments {
+        Moments::Listed(moments.into())
+    }
+}
+
 /// A range of moments, checked.
-pub fn every_moment(from: ArrayTime, until: ArrayTime, every: ArrayTime) -> Result<Moments, Problem> {
+pub fn every_moment(
+    from: ArrayTime,
+    until: ArrayTime,
+    every: ArrayTime,
+) -> Result<Moments, Problem> {
     if until < from {
         return Err(Problem::new(
             format_args!("the last moment, {until} s, lies before the first, {from} s"),
@@ -104,14 +120,12 @@ fn plan_end(layout: &Layout) -> ArrayTime {
 /// The middle of the first hold; no hold: 0; a standing line: 1 d.
 pub fn default_moment(layout: &Layout) -> ArrayTime {
     match &layout.course {
-        Course::Thrust(plan) => plan
-            .phases()
-            .iter()
-            .find(|phase| phase.is_hold())
-            .map_or(ArrayTime::ZERO, |hold| {
+        Course::Thrust(plan) => {
+            plan.phases().iter().find(|phase| phase.is_hold()).map_or(ArrayTime::ZERO, |hold| {
                 let (start, end) = (hold.start.attoseconds(), hold.end.attoseconds());
                 ArrayTime::from_attoseconds(start + (end - start) / 2)
-            }),
+            })
+        }
         Course::Standing(_) => ArrayTime::from_seconds(86_400),
     }
 }

@@ -20,7 +20,11 @@ pub struct Problem {
 
 impl Problem {
     /// A problem told as what happened, the rule, and the remedy.
-    pub fn new(what: impl fmt::Display, rule: impl fmt::Display, remedy: impl fmt::Display) -> Problem {
+    pub fn new(
+        what: impl fmt::Display,
+        rule: impl fmt::Display,
+        remedy: impl fmt::Display,
+    ) -> Problem {
         Problem { status: STATUS_INPUT, text: format!("{what}\nrule: {rule}\nremedy: {remedy}") }
     }
 

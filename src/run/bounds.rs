@@ -4,7 +4,7 @@ use crate::layout::Course;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::C2_M2_S2;
 use crate::model::dd::Dd;
-use crate::model::horizon::{self, Extremes};
+use crate::model::horizon::{self, Extreme};
 use crate::model::plan::{Phase, Plan};
 use crate::model::rates::is_realisable;
 
@@ -34,19 +34,22 @@ impl Run {
     ) -> Result<(), RunFault> {
         let reached = match plan {
             Some(plan) => first_unrealisable(plan, from, position_m),
-            None => self.check_standing(row, position_m)?.map(|gravity| (from, Dd::new(gravity))),
+            None => {
+                let gravity = self.check_standing(row, position_m)?;
+                gravity.map(|gravity| (None, from, Dd::new(gravity)))
+            }
         };
-        let Some((at, acceleration_m_s2)) = reached else {
+        let Some((phase, at, acceleration_m_s2)) = reached else {
             return Ok(());
         };
-        let (largest_acceleration_m_s2, nearest_position_m) =
-            advice(acceleration_m_s2, position_m);
+        let offered = horizon::partners(Extreme { acceleration_m_s2, phase: 0, at }, position_m);
         Err(RunFault::Horizon(Box::new(HorizonFault {
             name: self.layout.nodes[row].name.clone(),
             position_m,
+            phase,
             at,
-            largest_acceleration_m_s2,
-            nearest_position_m,
+            largest_acceleration_m_s2: offered.largest_acceleration_m_s2,
+            nearest_position_m: offered.nearest_position_m,
             moved,
         })))
     }
@@ -96,16 +99,19 @@ impl Run {
     }
 }
 
-/// The first moment from `from` on at which `N` of a position is not above zero, and the
-/// acceleration that brings it farthest below.
-fn first_unrealisable(plan: &Plan, from: ArrayTime, position_m: f64) -> Option<(ArrayTime, Dd)> {
+/// The first moment from `from` on at which `N` of a position is not above zero, with the
+/// index of its phase, and the acceleration that brings it farthest below.
+fn first_unrealisable(
+    plan: &Plan,
+    from: ArrayTime,
+    position_m: f64,
+) -> Option<(Option<usize>, ArrayTime, Dd)> {
     // The acceleration whose product with the position is lowest.
     let is_worse = |one: Dd, other: Dd| if position_m > 0.0 { one < other } else { one > other };
     let first = plan.phases().partition_point(|phase| phase.end <= from);
     let left = &plan.phases()[first..];
-    let ends = |phase: &Phase| {
-        [phase.acceleration(phase.start.max(from)), phase.acceleration(phase.end)]
-    };
+    let ends =
+        |phase: &Phase| [phase.acceleration(phase.start.max(from)), phase.acceleration(phase.end)];
     let worst = left
         .iter()
         .flat_map(ends)
@@ -113,9 +119,10 @@ fn first_unrealisable(plan: &Plan, from: ArrayTime, position_m: f64) -> Option<(
     if is_realisable(worst, position_m) {
         return None;
     }
-    let phase = left.iter().find(|phase| {
+    let index = left.iter().position(|phase| {
         ends(phase).into_iter().any(|acceleration| !is_realisable(acceleration, position_m))
     })?;
+    let phase = &left[index];
     let start = phase.start.max(from);
     let at = if is_realisable(phase.acceleration(start), position_m) {
         let limit = -C2_M2_S2 / Dd::new(position_m);
@@ -127,23 +134,5 @@ fn first_unrealisable(plan: &Plan, from: ArrayTime, position_m: f64) -> Option<(
     } else {
         start
     };
-    Some((at, worst))
-}
-
-/// The largest acceleration a position stands and the nearest position an acceleration
-/// allows, each rounded so that it is itself allowed.
-fn advice(acceleration_m_s2: Dd, position_m: f64) -> (f64, f64) {
-    // The question is that of a plan which holds nothing but this acceleration.
-    let instant = ArrayTime::from_attoseconds(1);
-    let ask = |held: f64| {
-        let plan = Plan::new(vec![Phase::whole(ArrayTime::ZERO, instant, held, held)]).ok()?;
-        horizon::reached(&plan, &Extremes::of(&plan)?, position_m)
-    };
-    let nearest = acceleration_m_s2.to_f64();
-    // Inside a ramp the acceleration need not be a double; the one just above in size is
-    // then the one to ask for.
-    let above = if nearest > 0.0 { nearest.next_up() } else { nearest.next_down() };
-    ask(nearest).or_else(|| ask(above)).map_or((0.0, 0.0), |reached| {
-        (reached.largest_acceleration_m_s2, reached.nearest_position_m)
-    })
+    Some((Some(first + index), at, worst))
 }

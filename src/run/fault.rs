@@ -2,11 +2,9 @@
 
 use std::fmt;
 
+use crate::layout::FARTHEST_POSITION_M;
 use crate::model::array_time::ArrayTime;
 use crate::model::plan::{LARGEST_ACCELERATION_M_S2, LARGEST_RAPIDITY};
-
-/// Largest distance of a node from the reference node, m: the domain of the model.
-pub const LARGEST_POSITION_M: f64 = 1.0e19;
 
 /// Why a run refuses a change or a moment. The run stays as it was.
 #[derive(Clone, Debug, PartialEq)]
@@ -105,6 +103,8 @@ pub enum RunFault {
         /// The most bytes it may have.
         most: usize,
     },
+    /// A note with marks that could act on a terminal.
+    UnsafeNote,
 }
 
 /// The particulars of a node that would reach the horizon.
@@ -114,6 +114,8 @@ pub struct HorizonFault {
     pub name: String,
     /// The position it would have, m.
     pub position_m: f64,
+    /// Index of the phase, from 0, in which its rate would reach zero; `None` when it stands.
+    pub phase: Option<usize>,
     /// When its rate would reach zero, to the nearest attosecond.
     pub at: ArrayTime,
     /// The largest acceleration of the reference node, in that direction, that the node
@@ -160,10 +162,11 @@ impl RunFault {
                 format!("a position of {} m is outside the line", number(*position_m))
             }
             RunFault::Horizon(fault) => format!(
-                "`{}` at {} m would reach the horizon at {} s",
+                "`{}` at {} m would reach the horizon{} at {} s",
                 fault.name,
                 number(fault.position_m),
-                fault.at
+                fault.phase.map_or(String::new(), |phase| format!(" in phase {}", phase + 1)),
+                nine_digits(fault.at)
             ),
             RunFault::GravityTurned { name, .. } => {
                 format!("the gradient would turn gravity round at `{name}`")
@@ -176,6 +179,7 @@ impl RunFault {
                 if *failed { "has already failed" } else { "is not failed" }
             ),
             RunFault::LongNote { .. } => "the note is too long".to_owned(),
+            RunFault::UnsafeNote => "the note has marks that cannot be seen".to_owned(),
         }
     }
 
@@ -204,7 +208,7 @@ impl RunFault {
             RunFault::Released { .. } => "a released node is no longer part of the line".to_owned(),
             RunFault::OutsideLine { .. } => format!(
                 "a position is at most {} m from the reference node",
-                number(LARGEST_POSITION_M)
+                number(FARTHEST_POSITION_M)
             ),
             RunFault::Horizon(_) => {
                 "the rate of every node is above zero at every moment".to_owned()
@@ -221,6 +225,9 @@ impl RunFault {
                 "only a failed link can be mended".to_owned()
             }
             RunFault::LongNote { most } => format!("a note has at most {most} bytes"),
+            RunFault::UnsafeNote => {
+                "a note is one line without control, invisible or bidirectional marks".to_owned()
+            }
         }
     }
 
@@ -264,20 +271,30 @@ impl RunFault {
             RunFault::LinkUnchanged { failed: true, .. } => "mend it first".to_owned(),
             RunFault::LinkUnchanged { failed: false, .. } => "nothing to do".to_owned(),
             RunFault::LongNote { .. } => "a shorter note".to_owned(),
+            RunFault::UnsafeNote => "type it again with visible characters only".to_owned(),
         }
     }
 }
 
 impl fmt::Display for RunFault {
+    /// What is wrong; the rule and the remedy are for the caller to place.
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        write!(f, "{} (rule: {}; remedy: {})", self.what(), self.rule(), self.remedy())
+        f.write_str(&self.what())
     }
 }
 
 impl std::error::Error for RunFault {}
 
+/// A computed moment in seconds, to nine digits: its last attosecond tells nobody more.
+fn nine_digits(at: ArrayTime) -> String {
+    let rounded = format!("{:.8e}", at.to_f64());
+    rounded.parse().map_or(rounded, number)
+}
+
 /// The shortest decimal that reads back to the same double, so that a figure given as a
 /// remedy is accepted when it is typed in.
 fn number(value: f64) -> String {
-    zmij::Buffer::new().format(value).to_owned()
+    let mut digits = zmij::Buffer::new();
+    let text = digits.format(value);
+    text.strip_suffix(".0").unwrap_or(text).to_owned()
 }

@@ -18,15 +18,15 @@ mod thrust;
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
-use crate::layout::{Course, Layout};
+use crate::layout::names::is_unsafe;
+use crate::layout::{Course, FARTHEST_POSITION_M, Layout};
 use crate::model::array_time::ArrayTime;
-use crate::model::dd::{Dd, Wide};
+use crate::model::dd::Dd;
 use crate::model::plan::{Moment, Plan};
 use crate::model::rates::Instant;
-use crate::model::constants::SPEED_OF_LIGHT_M_S;
 
 pub use event::{Event, EventKind};
-pub use fault::{HorizonFault, LARGEST_POSITION_M, RunFault};
+pub use fault::{HorizonFault, RunFault};
 pub use place::Place;
 pub use state::{Aboard, NodeState, State};
 
@@ -34,6 +34,9 @@ pub use state::{Aboard, NodeState, State};
 #[derive(Clone, Debug)]
 pub struct Run {
     layout: Arc<Layout>,
+    /// The positions of the layout, m, side by side: what every table of a large line
+    /// goes through.
+    positions_m: Arc<[f64]>,
     events: Vec<Event>,
     /// The plan as it is being flown; `None` as long as it is the one filed.
     changed_plan: Option<Plan>,
@@ -79,6 +82,7 @@ impl Run {
     /// round: such a line cannot be flown at all.
     pub fn new(layout: Arc<Layout>) -> Result<Run, RunFault> {
         let run = Run {
+            positions_m: layout.nodes.iter().map(|node| node.position_m).collect(),
             layout,
             events: Vec::new(),
             changed_plan: None,
@@ -152,8 +156,14 @@ impl Run {
     /// What moves or holds the line at a moment up to [`Run::last_moment`].
     #[must_use]
     pub fn instant_at(&self, at: ArrayTime) -> Instant {
-        let Some(plan) = self.plan() else {
-            return self.standing_instant(at);
+        let plan = match (&self.changed_plan, &self.layout.course) {
+            (Some(plan), _) | (None, Course::Thrust(plan)) => plan,
+            (None, Course::Standing(standing)) => {
+                return Instant {
+                    moment: Moment::held_always(at, standing.gravity_m_s2),
+                    gradient_per_s2: standing.gradient_per_s2,
+                };
+            }
         };
         let mut moment = plan.moment(at);
         if let Some(hold) = self.open_hold
@@ -164,25 +174,6 @@ impl Run {
             moment.acceleration_m_s2 = Dd::new(hold.acceleration_m_s2);
         }
         Instant { moment, gradient_per_s2: 0.0 }
-    }
-
-    /// Constant gravity seen as a hold that has no beginning and no limit of rapidity, by
-    /// the very operations of a held phase, so that the bits are those of a held thrust.
-    fn standing_instant(&self, at: ArrayTime) -> Instant {
-        let Course::Standing(standing) = &self.layout.course else {
-            unreachable!("a line without a plan stands");
-        };
-        let gravity = Dd::new(standing.gravity_m_s2);
-        let gain = Wide::from(Dd::from_i128(at.attoseconds())).times(gravity).over(Dd::new(1.0e18));
-        let rapidity = (Wide::ZERO + gain).to_dd() / SPEED_OF_LIGHT_M_S;
-        let moment = Moment {
-            at,
-            phase: None,
-            acceleration_m_s2: gravity,
-            rapidity,
-            total_rapidity: rapidity.abs().to_f64(),
-        };
-        Instant { moment, gradient_per_s2: standing.gradient_per_s2 }
     }
 
     /// Applies the next event.
@@ -230,18 +221,19 @@ impl Run {
         Ok(Some(last))
     }
 
-    /// The notes of the layout and the events of the run up to a moment, in order of time;
-    /// at one moment the notes come first. This is what a recording holds beside frames.
+    /// The notes of the layout and the events of the run after one moment and up to
+    /// another, in order of time; at one moment the notes come first. This is what a
+    /// recording holds beside frames.
     #[must_use]
-    pub fn journal(&self, until: ArrayTime) -> Vec<Event> {
-        let notes = self.layout.notes.iter().map(|note| Event {
-            at: note.at,
-            kind: EventKind::Note { text: note.text.clone() },
-        });
-        let mut entries: Vec<Event> = notes
-            .chain(self.events.iter().cloned())
-            .filter(|entry| entry.at <= until)
-            .collect();
+    pub fn journal(&self, after: Option<ArrayTime>, until: ArrayTime) -> Vec<Event> {
+        let notes = self
+            .layout
+            .notes
+            .iter()
+            .map(|note| Event { at: note.at, kind: EventKind::Note { text: note.text.clone() } });
+        let is_due = |at: ArrayTime| at <= until && after.is_none_or(|after| at > after);
+        let events = self.events.iter().filter(|event| is_due(event.at)).cloned();
+        let mut entries: Vec<Event> = notes.filter(|note| is_due(note.at)).chain(events).collect();
         entries.sort_by_key(|entry| entry.at);
         entries
     }
@@ -285,7 +277,7 @@ impl Run {
         let row = self.changeable_row(name)?;
         // A position of −0 is 0, as in a layout; NaN fails the comparison.
         let position_m = position_m + 0.0;
-        if position_m.is_nan() || position_m.abs() > LARGEST_POSITION_M {
+        if position_m.is_nan() || position_m.abs() > FARTHEST_POSITION_M {
             return Err(RunFault::OutsideLine { position_m });
         }
         self.check_position(self.plan(), at, row, position_m, true)?;
@@ -344,7 +336,10 @@ impl Run {
     /// the layout always passes.
     fn check_note(&self, text: &str) -> Result<(), RunFault> {
         let most = recording::LONGEST_NOTE.max(self.layout.source.text.len());
-        if text.len() > most { Err(RunFault::LongNote { most }) } else { Ok(()) }
+        if text.len() > most {
+            return Err(RunFault::LongNote { most });
+        }
+        if text.chars().any(is_unsafe) { Err(RunFault::UnsafeNote) } else { Ok(()) }
     }
 }
 

@@ -109,6 +109,13 @@ impl<'a> State<'a> {
         self.run.layout.nodes.len()
     }
 
+    /// Whether a node has been moved or released up to the moment, or will be later: its
+    /// offset is then not that of a node that has always stood where it stands.
+    #[must_use]
+    pub fn is_changed(&self, row: usize) -> bool {
+        self.changed.binary_search_by_key(&row, |(row, _)| *row).is_ok()
+    }
+
     /// One node, by its row.
     #[must_use]
     pub fn node(&self, row: usize) -> NodeState {
@@ -116,13 +123,6 @@ impl<'a> State<'a> {
             Ok(index) => self.changed[index].1,
             Err(_) => self.unchanged(row),
         }
-    }
-
-    /// Whether a node has been moved or released at any time of the run: its clock offset
-    /// is then not that of its position alone.
-    #[must_use]
-    pub fn is_changed(&self, row: usize) -> bool {
-        self.changed.binary_search_by_key(&row, |(row, _)| *row).is_ok()
     }
 
     /// All nodes, in the order of their rows.
@@ -135,7 +135,7 @@ impl<'a> State<'a> {
     }
 
     fn unchanged(&self, row: usize) -> NodeState {
-        let position_m = self.run.layout.nodes[row].position_m;
+        let position_m = self.run.positions_m[row];
         NodeState::Aboard(Aboard {
             position_m,
             rate_minus_one: self.instant.rate_minus_one(Dd::new(position_m)),

@@ -33,11 +33,7 @@ pub(super) fn write_table(
         return out.write_all(text.as_bytes());
     }
     if titled {
-        let order = if table.marked.is_some() {
-            ", fore to aft, * the reference"
-        } else {
-            ""
-        };
+        let order = if table.marked.is_some() { ", fore to aft, * the reference" } else { "" };
         options.push_lines(&mut text, &format!("{}{order}", table.name));
     }
     let (formats, reasons) = scan(table, options.unicode);
@@ -58,10 +54,7 @@ pub(super) fn write_table(
         options.push_lines(&mut text, &format!("-{}: {reason}", reasons.mark_at(place)));
     }
     if reasons.more {
-        options.push_lines(
-            &mut text,
-            "-: other reasons, which the JSON form gives row by row",
-        );
+        options.push_lines(&mut text, "-: other reasons, which the JSON form gives row by row");
     }
     out.write_all(text.as_bytes())
 }
@@ -88,11 +81,7 @@ impl Reasons {
     /// The letter of a reason; none where there is only one reason.
     fn mark_at(&self, place: usize) -> &'static str {
         const LETTERS: &str = "abcdefghijklmnopqrstuvwxyz";
-        if self.texts.len() < 2 {
-            ""
-        } else {
-            &LETTERS[place..=place]
-        }
+        if self.texts.len() < 2 { "" } else { &LETTERS[place..=place] }
     }
 
     fn mark_of(&self, cell: &Cell<'_>) -> &'static str {
@@ -101,10 +90,7 @@ impl Reasons {
             Cell::Number(value) if !value.is_finite() => NOT_FINITE,
             _ => return "",
         };
-        self.texts
-            .iter()
-            .position(|known| known == why)
-            .map_or("", |place| self.mark_at(place))
+        self.texts.iter().position(|known| known == why).map_or("", |place| self.mark_at(place))
     }
 }
 
@@ -112,10 +98,7 @@ impl Reasons {
 fn scan(table: &Table<'_>, unicode: bool) -> (Vec<ColumnFormat>, Reasons) {
     let mut scans: Vec<ColumnScan> = table.columns.iter().map(ColumnScan::new).collect();
     let mut absent = vec![false; scans.len()];
-    let mut reasons = Reasons {
-        texts: Vec::new(),
-        more: false,
-    };
+    let mut reasons = Reasons { texts: Vec::new(), more: false };
     let mut cells = Vec::with_capacity(scans.len());
     for row in 0..table.rows {
         cells.clear();
@@ -163,18 +146,8 @@ impl<'t> Shown<'t> {
         // A heading is wrapped to what the cells need, but never within a word.
         let longest = heading.split(' ').map(columns_of).max().unwrap_or(0);
         let heading = wrapped(&heading, options.width.map(|_| least.max(longest)));
-        let widest = heading
-            .iter()
-            .map(|line| columns_of(line))
-            .max()
-            .unwrap_or(0);
-        Shown {
-            index,
-            format,
-            heading,
-            width: least.max(widest),
-            narrowed: false,
-        }
+        let widest = heading.iter().map(|line| columns_of(line)).max().unwrap_or(0);
+        Shown { index, format, heading, width: least.max(widest), narrowed: false }
     }
 
     fn narrow(&mut self, width: usize) {
@@ -200,11 +173,7 @@ fn blocks<'t>(
         .map(|(index, format)| Shown::new(table, index, format, options))
         .collect();
     let taken = |columns: &[Shown<'_>]| {
-        columns
-            .iter()
-            .map(|column| column.width + GAP)
-            .sum::<usize>()
-            .saturating_sub(GAP)
+        columns.iter().map(|column| column.width + GAP).sum::<usize>().saturating_sub(GAP)
     };
     let Some(width) = options.width else {
         return vec![columns];
@@ -217,16 +186,9 @@ fn blocks<'t>(
     // Only words can be narrowed: what is left must hold the widest number.
     let widest = |columns: &[Shown<'_>]| {
         let numbers = columns.iter().filter(|column| !words(column));
-        numbers
-            .map(|column| column.width)
-            .max()
-            .unwrap_or(LEAST_WORDS)
+        numbers.map(|column| column.width).max().unwrap_or(LEAST_WORDS)
     };
-    let mut names = columns
-        .iter()
-        .take_while(|column| words(column))
-        .count()
-        .max(1);
+    let mut names = columns.iter().take_while(|column| words(column)).count().max(1);
     if taken(&columns[..names]) + GAP + widest(&columns[names..]) > room {
         names = 1;
     }
@@ -252,27 +214,19 @@ fn blocks<'t>(
 }
 
 fn push_heading(text: &mut String, block: &[Shown<'_>], margin: usize, options: TextOptions) {
-    let height = block
-        .iter()
-        .map(|column| column.heading.len())
-        .max()
-        .unwrap_or(0);
+    let height = block.iter().map(|column| column.heading.len()).max().unwrap_or(0);
     for line in 0..height {
         push_line(text, margin, block, |column| {
             // Headings stand on the line of the units, so short ones leave the top free.
             let above = height - column.heading.len();
-            line.checked_sub(above)
-                .map_or("", |line| column.heading[line].as_str())
+            line.checked_sub(above).map_or("", |line| column.heading[line].as_str())
         });
     }
     if block.iter().any(|column| !column.format.unit().is_empty()) {
         push_line(text, margin, block, |column| column.format.unit());
     }
     let width = block.iter().map(|column| column.width + GAP).sum::<usize>() - GAP + margin;
-    text.extend(std::iter::repeat_n(
-        if options.unicode { '─' } else { '-' },
-        width,
-    ));
+    text.extend(std::iter::repeat_n(if options.unicode { '─' } else { '-' }, width));
     text.push('\n');
 }
 
@@ -325,10 +279,7 @@ fn push_rows(
             .filter(|column| column.narrowed)
             .map(|column| {
                 let cell = &cells[column.index];
-                wrapped(
-                    &column.format.value(cell, reasons.mark_of(cell)),
-                    Some(column.width),
-                )
+                wrapped(&column.format.value(cell, reasons.mark_of(cell)), Some(column.width))
             })
             .collect();
         let height = wrapped.iter().map(Vec::len).max().unwrap_or(1);
@@ -340,25 +291,16 @@ fn push_rows(
                 let cell = &cells[column.index];
                 if column.narrowed {
                     let lines = narrowed.next().map_or(&[][..], Vec::as_slice);
-                    push_left(
-                        &mut text,
-                        lines.get(line).map_or("", String::as_str),
-                        column.width,
-                    );
+                    push_left(&mut text, lines.get(line).map_or("", String::as_str), column.width);
                 } else if line == 0 {
-                    column
-                        .format
-                        .push(&mut text, cell, reasons.mark_of(cell), column.width);
+                    column.format.push(&mut text, cell, reasons.mark_of(cell), column.width);
                 } else {
                     push_blanks(&mut text, column.width);
                 }
             }
             end_line(&mut text);
         }
-        debug_assert!(
-            !text.chars().any(|sign| sign != '\n' && sign.is_control()),
-            "{text:?}"
-        );
+        debug_assert!(!text.chars().any(|sign| sign != '\n' && sign.is_control()), "{text:?}");
         out.extend_from_slice(text.as_bytes());
     }
 }

@@ -84,10 +84,7 @@ impl Field {
         }
         for (place, column) in table.columns.iter().enumerate() {
             if !placed[place] {
-                fields.push(Field {
-                    key: column.key,
-                    source: Source::Column(place),
-                });
+                fields.push(Field { key: column.key, source: Source::Column(place) });
             }
         }
         fields
@@ -117,12 +114,7 @@ fn push_rows(table: &Table<'_>, fields: &[Field], range: Range<usize>, out: &mut
     for row in range {
         cells.clear();
         (table.fill)(row, &mut cells);
-        debug_assert_eq!(
-            cells.len(),
-            table.columns.len(),
-            "row {row} of `{}`",
-            table.name
-        );
+        debug_assert_eq!(cells.len(), table.columns.len(), "row {row} of `{}`", table.name);
         for (place, field) in fields.iter().enumerate() {
             if place > 0 {
                 out.push(b',');
@@ -143,6 +135,7 @@ fn push_cell(out: &mut Vec<u8>, cell: &Cell<'_>) {
         Cell::Number(value) => _ = push_f64(out, *value),
         Cell::Integer(value) => push_i64(out, *value),
         Cell::Time(time) => push_time(out, *time),
+        Cell::Flag(flag) => out.extend_from_slice(flag.to_string().as_bytes()),
         Cell::Absent(_) => {}
     }
 }
@@ -150,10 +143,7 @@ fn push_cell(out: &mut Vec<u8>, cell: &Cell<'_>) {
 /// Appends a text, within quotes where RFC 4180 asks for them.
 fn push_text(out: &mut Vec<u8>, text: &str) {
     let bytes = text.as_bytes();
-    if !bytes
-        .iter()
-        .any(|byte| matches!(byte, b'"' | b',' | b'\n' | b'\r'))
-    {
+    if !bytes.iter().any(|byte| matches!(byte, b'"' | b',' | b'\n' | b'\r')) {
         out.extend_from_slice(bytes);
         return;
     }

@@ -43,20 +43,14 @@ struct Scratch {
 impl Write for Scratch {
     fn write_str(&mut self, text: &str) -> fmt::Result {
         let end = self.len + text.len();
-        self.bytes
-            .get_mut(self.len..end)
-            .ok_or(fmt::Error)?
-            .copy_from_slice(text.as_bytes());
+        self.bytes.get_mut(self.len..end).ok_or(fmt::Error)?.copy_from_slice(text.as_bytes());
         self.len = end;
         Ok(())
     }
 }
 
 impl Decimal {
-    const ZERO: Decimal = Decimal {
-        digits: Vec::new(),
-        exponent: 0,
-    };
+    const ZERO: Decimal = Decimal { digits: Vec::new(), exponent: 0 };
 
     /// Reads what the standard formatter or the shortest printer wrote, in either notation.
     fn read(text: &[u8]) -> Decimal {
@@ -81,23 +75,14 @@ impl Decimal {
             return Decimal::ZERO;
         }
         digits.drain(..zeros);
-        Decimal {
-            digits,
-            exponent: exponent + whole as i32 - 1 - zeros as i32,
-        }
+        Decimal { digits, exponent: exponent + whole as i32 - 1 - zeros as i32 }
     }
 
     /// The magnitude with a number of digits, correctly rounded.
     fn with_digits(value: f64, count: usize) -> Decimal {
-        let mut scratch = Scratch {
-            bytes: [0; 64],
-            len: 0,
-        };
+        let mut scratch = Scratch { bytes: [0; 64], len: 0 };
         let written = write!(scratch, "{:.*e}", count - 1, value.abs());
-        debug_assert!(
-            written.is_ok(),
-            "the scratch holds {SETTLING_DIGITS} digits"
-        );
+        debug_assert!(written.is_ok(), "the scratch holds {SETTLING_DIGITS} digits");
         Decimal::read(&scratch.bytes[..scratch.len])
     }
 
@@ -183,57 +168,43 @@ impl Decimal {
         digits.push(u8::from(rest != 0));
         let zeros = digits.iter().take_while(|&&digit| digit == 0).count();
         digits.drain(..zeros);
-        Decimal {
-            digits,
-            exponent: self.exponent - zeros as i32,
-        }
+        Decimal { digits, exponent: self.exponent - zeros as i32 }
     }
 
     /// The decimal rounded to a multiple of 10^`position`, ties to even. Unless these
     /// digits are all there are, `None` when what is dropped looks like a tie.
-    fn rounded(&self, position: i32, complete: bool) -> Option<Decimal> {
+    fn rounded(mut self, position: i32, complete: bool) -> Option<Decimal> {
         if self.is_zero() {
             return Some(Decimal::ZERO);
         }
-        let keep = self.exponent - position + 1;
-        if keep < 0 {
+        let Ok(keep) = usize::try_from(self.exponent - position + 1) else {
             return Some(Decimal::ZERO);
-        }
-        let keep = keep as usize;
-        let mut digits = self.digits.clone();
-        if keep >= digits.len() {
-            if !complete && keep > digits.len() {
+        };
+        if keep >= self.digits.len() {
+            if !complete && keep > self.digits.len() {
                 return None;
             }
-            digits.resize(keep, 0);
-            return Some(Decimal {
-                digits,
-                exponent: self.exponent,
-            });
+            self.digits.resize(keep, 0);
+            return Some(self);
         }
-        let dropped = digits.split_off(keep);
-        let tail = dropped[1..].iter().any(|&digit| digit != 0);
-        let up = match dropped[0] {
+        let tail = self.digits[keep + 1..].iter().any(|&digit| digit != 0);
+        let up = match self.digits[keep] {
             5 if !tail && !complete => return None,
-            5 if !tail => digits.last().is_some_and(|digit| digit % 2 == 1),
+            5 if !tail => keep > 0 && self.digits[keep - 1] % 2 == 1,
             first => first >= 5,
         };
-        let mut exponent = self.exponent;
+        self.digits.truncate(keep);
         if up {
-            let nines = digits.iter().rev().take_while(|&&digit| digit == 9).count();
-            let kept = digits.len();
-            digits[kept - nines..].fill(0);
-            if nines == kept {
-                digits.insert(0, 1);
-                exponent += 1;
+            let nines = self.digits.iter().rev().take_while(|&&digit| digit == 9).count();
+            self.digits[keep - nines..].fill(0);
+            if nines == keep {
+                self.digits.insert(0, 1);
+                self.exponent += 1;
             } else {
-                digits[kept - nines - 1] += 1;
+                self.digits[keep - nines - 1] += 1;
             }
         }
-        if digits.is_empty() {
-            return Some(Decimal::ZERO);
-        }
-        Some(Decimal { digits, exponent })
+        Some(if self.digits.is_empty() { Decimal::ZERO } else { self })
     }
 
     /// Plain notation with a number of decimals: `0.0120`, `43200.00`.
@@ -245,9 +216,7 @@ impl Decimal {
                 text.push('.');
             }
             let place = self.exponent - position;
-            let digit = usize::try_from(place)
-                .ok()
-                .and_then(|place| self.digits.get(place));
+            let digit = usize::try_from(place).ok().and_then(|place| self.digits.get(place));
             text.push(char::from(b'0' + digit.copied().unwrap_or(0)));
         }
         text
@@ -284,19 +253,7 @@ mod tests {
             Decimal::at_position(value, Scale::Ten(0), -decimals).fixed(decimals as usize)
         };
         for decimals in 0..17 {
-            for value in [
-                0.5,
-                1.5,
-                2.5,
-                0.125,
-                9.5,
-                0.05,
-                99.95,
-                0.1,
-                1.0 / 3.0,
-                1e-3,
-                0.0,
-            ] {
+            for value in [0.5, 1.5, 2.5, 0.125, 9.5, 0.05, 99.95, 0.1, 1.0 / 3.0, 1e-3, 0.0] {
                 let wanted = format!("{value:.*}", decimals as usize);
                 let digits = Decimal::shortest(value).exponent + decimals + 1;
                 if digits <= 17 {
@@ -306,10 +263,7 @@ mod tests {
         }
         // 1e23 is a little below its shortest form.
         assert_eq!(Decimal::at_position(1e23, Scale::Ten(0), 23).digits, [1]);
-        assert_eq!(
-            Decimal::at_position(1e23, Scale::Ten(3), 5).fixed(0),
-            "100000000000000000000"
-        );
+        assert_eq!(Decimal::at_position(1e23, Scale::Ten(3), 5).fixed(0), "100000000000000000000");
     }
 
     #[test]
@@ -321,11 +275,51 @@ mod tests {
         let gravity = Scale::Whole(980_665, -5);
         assert_eq!(Decimal::significant(9.80665, gravity, 5).fixed(4), "1.0000");
         let light_year = Scale::Whole(9_460_730_472_580_800, 0);
-        let shown = Decimal::significant(9.460730472580799e15, light_year, 4);
-        assert_eq!(shown.fixed(3), "1.000");
-        assert_eq!(
-            Decimal::at_position(1.0, light_year, -20).fixed(20),
-            "0.00000000000000010570"
+        let shown = Decimal::significant(
+            f64::from_bits(9.460_730_472_580_8e15_f64.to_bits() - 1),
+            light_year,
+            4,
         );
+        assert_eq!(shown.fixed(3), "1.000");
+        assert_eq!(Decimal::at_position(1.0, light_year, -20).fixed(20), "0.00000000000000010570");
+    }
+
+    /// A generator of bits that is good enough to pick inputs with.
+    fn next(state: &mut u64) -> u64 {
+        *state =
+            state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+        *state ^ (*state >> 29)
+    }
+
+    #[test]
+    fn plain_notation_agrees_with_the_standard_formatter() {
+        let mut state = 1;
+        for _ in 0..20_000 {
+            let value = (next(&mut state) >> 12) as f64 / (1_u64 << (next(&mut state) % 60)) as f64;
+            for decimals in 0..20_usize {
+                let shown = Decimal::at_position(value, Scale::Ten(0), -(decimals as i32));
+                assert_eq!(shown.fixed(decimals), format!("{value:.decimals$}"));
+            }
+        }
+    }
+
+    #[test]
+    fn quotients_agree_with_whole_numbers() {
+        let mut state = 2;
+        for _ in 0..20_000 {
+            let count = next(&mut state) >> (12 + next(&mut state) % 40);
+            for divisor in [60, 3_600, 86_400, 31_557_600, 149_597_870_700] {
+                for decimals in 0..8_usize {
+                    let parts = u128::from(count) * 10_u128.pow(decimals as u32) * 2;
+                    let (quotient, rest) = (parts / (2 * divisor), parts % (2 * divisor));
+                    let up = rest > divisor || (rest == divisor && quotient % 2 == 1);
+                    let wanted = quotient + u128::from(up);
+                    let scale = Scale::Whole(divisor as u64, 0);
+                    let shown = Decimal::at_position(count as f64, scale, -(decimals as i32));
+                    let shown = shown.fixed(decimals).replace('.', "");
+                    assert_eq!(shown.parse(), Ok(wanted), "{count} / {divisor} to {decimals}");
+                }
+            }
+        }
     }
 }

@@ -10,6 +10,11 @@ use crate::model::array_time::ArrayTime;
 /// Digits under which a value that has more is not shown in plain notation.
 const LEAST_DIGITS: i32 = 4;
 
+/// A flag for people.
+pub(super) fn yes_or_no(flag: bool) -> &'static str {
+    if flag { "yes" } else { "no" }
+}
+
 /// How the cells of a column are shown: chosen once from the cells of a whole table or of
 /// the rows in view, then used for each of them.
 #[derive(Clone, Debug)]
@@ -18,6 +23,8 @@ pub struct ColumnFormat {
     form: Form,
     signed: bool,
     unicode: bool,
+    /// Smallest magnitude that the form was chosen for.
+    pub(super) smallest: f64,
     pub(super) width: usize,
 }
 
@@ -31,10 +38,7 @@ pub(super) enum Form {
     /// Plain notation with the same number of decimals in each cell.
     Fixed { scale: Scale, decimals: usize },
     /// A power of ten in each cell, of which the longest takes that many columns.
-    Scientific {
-        digits: usize,
-        exponent_width: usize,
-    },
+    Scientific { digits: usize, exponent_width: usize },
     /// Exact times with the same number of decimals, in a unit of so many attoseconds.
     Exact { size: u128, decimals: usize },
 }
@@ -55,23 +59,13 @@ pub fn fit<'c, 'a: 'c>(
 
 impl ColumnFormat {
     pub(super) fn new(unit: Unit, form: Form, signed: bool, unicode: bool) -> ColumnFormat {
-        ColumnFormat {
-            unit,
-            form,
-            signed,
-            unicode,
-            width: 0,
-        }
+        ColumnFormat { unit, form, signed, unicode, smallest: f64::INFINITY, width: 0 }
     }
 
     /// The unit for the heading; empty where there is none.
     #[must_use]
     pub fn unit(&self) -> &'static str {
-        if self.unicode {
-            self.unit.label
-        } else {
-            self.unit.ascii
-        }
+        if self.unicode { self.unit.label } else { self.unit.ascii }
     }
 
     /// Columns of a cell, without room for the heading.
@@ -101,6 +95,7 @@ impl ColumnFormat {
         match cell {
             Cell::Text(text) if self.is_left() => push_left(out, text, width),
             Cell::Text(text) => push_right(out, text, width),
+            Cell::Flag(flag) if self.is_left() => push_left(out, yes_or_no(*flag), width),
             Cell::Absent(_) if self.is_left() => push_left(out, &format!("-{mark}"), width),
             _ => push_right(out, &self.value(cell, mark), width),
         }
@@ -119,6 +114,7 @@ impl ColumnFormat {
                 _ => self.number_in_width(*value as f64),
             },
             Cell::Time(time) => self.time(time.attoseconds()),
+            Cell::Flag(flag) => yes_or_no(*flag).to_owned(),
         }
     }
 
@@ -140,18 +136,14 @@ impl ColumnFormat {
         let sign = self.sign(value < 0.0);
         match self.form {
             Form::Fixed { decimals, .. } if value == 0.0 => zero(decimals, 0),
-            Form::Scientific {
-                digits,
-                exponent_width,
-            } if value == 0.0 => zero(digits - 1, exponent_width),
+            Form::Scientific { digits, exponent_width } if value == 0.0 => {
+                zero(digits - 1, exponent_width)
+            }
             Form::Fixed { scale, decimals } => {
                 let decimal = Decimal::at_position(value, scale, -(decimals as i32));
                 format!("{sign}{}", decimal.fixed(decimals))
             }
-            Form::Scientific {
-                digits,
-                exponent_width,
-            } => {
+            Form::Scientific { digits, exponent_width } => {
                 let (mantissa, exponent) =
                     Decimal::significant(value, Scale::Ten(0), digits).scientific();
                 format!("{sign}{mantissa}{exponent:exponent_width$}")
@@ -185,6 +177,9 @@ impl ColumnFormat {
         let Form::Fixed { scale, decimals } = self.form else {
             return true;
         };
+        if value.abs() >= self.smallest {
+            return true;
+        }
         let last = -(decimals as i32);
         let shift = match scale {
             Scale::Ten(tens) => tens,
@@ -212,7 +207,7 @@ impl ColumnFormat {
         }
         let (whole, rest) = (magnitude / size, magnitude % size);
         let parts = 10_u128.pow(decimals as u32);
-        if rest * parts % size != 0 {
+        if !(rest * parts).is_multiple_of(size) {
             // From outside the cells the form was chosen for: exact in seconds all the same.
             return format!("{} s", ArrayTime::from_attoseconds(count));
         }
@@ -227,9 +222,6 @@ impl ColumnFormat {
 /// An exact zero, in line with the digit before the decimal point.
 fn zero(decimals: usize, exponent_width: usize) -> String {
     let mut shown = "0".to_owned();
-    push_blanks(
-        &mut shown,
-        if decimals > 0 { decimals + 1 } else { 0 } + exponent_width,
-    );
+    push_blanks(&mut shown, if decimals > 0 { decimals + 1 } else { 0 } + exponent_width);
     shown
 }

@@ -113,10 +113,7 @@ fn open_rows(out: &mut Vec<u8>, name: &str) {
 
 fn push_head(out: &mut Vec<u8>, head: &Head<'_>) {
     out.extend_from_slice(b"{\"schema\":");
-    push_string(
-        out,
-        &format!("clockspar.{}/{}", head.command, head.schema_version),
-    );
+    push_string(out, &format!("clockspar.{}/{}", head.command, head.schema_version));
     out.extend_from_slice(b",\"program\":");
     push_string(out, PROGRAM);
     out.extend_from_slice(b",\"model\":");
@@ -216,6 +213,7 @@ fn push_pair(out: &mut Vec<u8>, keys: &ColumnKeys, cell: &Cell<'_>) {
         Cell::Text(text) => return push_string(out, text),
         Cell::Integer(value) => return push_i64(out, *value),
         Cell::Time(time) => return push_time(out, *time),
+        Cell::Flag(flag) => return out.extend_from_slice(flag.to_string().as_bytes()),
         Cell::Number(value) => {
             if push_f64(out, *value) {
                 return;

@@ -1,5 +1,43 @@
 //! Results as data before they are text: one table type, then text, CSV and JSON
 //! renderers of the same table.
+//!
+//! ```
+//! use clockspar::model::array_time::ArrayTime;
+//! use clockspar::table::{Cell, Column, Measure, Report, Table, TextOptions, write_text};
+//!
+//! let rates = [("mast", 2.62e-16), ("hub", 0.0)];
+//! let column = |key, heading, measure| Column { key, heading, measure };
+//! let report = Report {
+//!     command: "rates",
+//!     schema_version: 1,
+//!     layout: "Marram survey line",
+//!     revision: Some("C"),
+//!     layout_sha256: "3f2a9c01d4e7b688",
+//!     at: Ok(ArrayTime::from_seconds(22_200)),
+//!     reference_acceleration_m_s2: Ok(0.196133),
+//!     rapidity: Ok(1.4e-5),
+//!     scalars: Vec::new(),
+//!     tables: vec![Table {
+//!         name: "nodes",
+//!         columns: vec![
+//!             column("node", "node", Measure::Word),
+//!             column("rate_minus_one", "rate less one", Measure::Ratio),
+//!         ],
+//!         rows: rates.len(),
+//!         fill: Box::new(|row, cells| {
+//!             let (name, rate) = rates[row];
+//!             cells.push(Cell::Text(name.into()));
+//!             cells.push(Cell::Number(rate));
+//!         }),
+//!         marked: Some(1),
+//!     }],
+//!     remarks: Vec::new(),
+//! };
+//! let mut page = Vec::new();
+//! write_text(&report, &TextOptions { width: Some(80), unicode: true }, &mut page)?;
+//! assert!(String::from_utf8_lossy(&page).contains("array time: 6 h 10 min = 22200 s"));
+//! # Ok::<(), std::io::Error>(())
+//! ```
 
 mod columns;
 pub mod content;
@@ -49,6 +87,8 @@ pub enum Cell<'a> {
     Integer(i64),
     /// An exact moment or length of array time.
     Time(ArrayTime),
+    /// Yes or no.
+    Flag(bool),
     /// A value that does not exist or overflows, and why.
     Absent(Cow<'a, str>),
 }
@@ -57,11 +97,7 @@ impl<'a> Cell<'a> {
     /// A number, or its absence with the reason when it is not finite.
     #[must_use]
     pub fn finite(value: f64, why_not: &'a str) -> Cell<'a> {
-        if value.is_finite() {
-            Cell::Number(value)
-        } else {
-            Cell::Absent(why_not.into())
-        }
+        if value.is_finite() { Cell::Number(value) } else { Cell::Absent(why_not.into()) }
     }
 }
 
@@ -115,6 +151,9 @@ pub struct Column {
     pub measure: Measure,
 }
 
+/// Makes a row: one cell per column, pushed onto the vector it is given.
+pub type Fill<'a> = Box<dyn Fn(usize, &mut Vec<Cell<'a>>) + Send + Sync + 'a>;
+
 /// A table whose rows are made when they are asked for, so that it can be streamed,
 /// windowed or rendered on all cores without being held.
 pub struct Table<'a> {
@@ -125,7 +164,7 @@ pub struct Table<'a> {
     /// Number of rows.
     pub rows: usize,
     /// Fills a row with one cell per column. The vector comes in empty.
-    pub fill: Box<dyn Fn(usize, &mut Vec<Cell<'a>>) + Send + Sync + 'a>,
+    pub fill: Fill<'a>,
     /// Row to mark in text (the reference node), if any.
     pub marked: Option<usize>,
 }
@@ -194,23 +233,17 @@ impl Report<'_> {
             None if self.tables.is_empty() => "",
             None => return Ok(0),
         };
-        self.tables
-            .iter()
-            .position(|table| table.name == wanted)
-            .ok_or_else(|| UnknownTable {
-                wanted: wanted.to_owned(),
-                known: self.tables.iter().map(|table| table.name).collect(),
-            })
+        self.tables.iter().position(|table| table.name == wanted).ok_or_else(|| UnknownTable {
+            wanted: wanted.to_owned(),
+            known: self.tables.iter().map(|table| table.name).collect(),
+        })
     }
 
     /// The moment and what the reference does at it, with their keys in order.
     fn moment_cells(&self) -> [(&'static str, Cell<'static>); 3] {
         [
             ("at_s", self.at.into()),
-            (
-                "reference_acceleration_m_s2",
-                self.reference_acceleration_m_s2.into(),
-            ),
+            ("reference_acceleration_m_s2", self.reference_acceleration_m_s2.into()),
             ("rapidity", self.rapidity.into()),
         ]
     }
@@ -257,12 +290,7 @@ impl fmt::Display for UnknownTable {
         if self.known.is_empty() {
             return f.write_str("this report has no tables");
         }
-        write!(
-            f,
-            "no table `{}`; there is `{}`",
-            self.wanted,
-            self.known.join("`, `")
-        )
+        write!(f, "no table `{}`; there is `{}`", self.wanted, self.known.join("`, `"))
     }
 }
 

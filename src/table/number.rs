@@ -47,10 +47,7 @@ pub fn push_time(out: &mut Vec<u8>, time: ArrayTime) {
     if part != 0 {
         let mut digits = [b'0'; 18];
         fill_digits(&mut digits, part);
-        let shown = digits
-            .iter()
-            .rposition(|&digit| digit != b'0')
-            .map_or(0, |last| last + 1);
+        let shown = digits.iter().rposition(|&digit| digit != b'0').map_or(0, |last| last + 1);
         out.push(b'.');
         out.extend_from_slice(&digits[..shown]);
     }
@@ -112,13 +109,7 @@ mod tests {
             push_i64(&mut out, value);
             assert_eq!(String::from_utf8(out).expect("digits"), value.to_string());
         }
-        for count in [
-            0,
-            1,
-            -1,
-            1_500_000_000_000_000_000,
-            -100_000_000_000 * 10_i128.pow(18),
-        ] {
+        for count in [0, 1, -1, 1_500_000_000_000_000_000, -100_000_000_000 * 10_i128.pow(18)] {
             let time = ArrayTime::from_attoseconds(count);
             let mut out = Vec::new();
             push_time(&mut out, time);

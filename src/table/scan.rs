@@ -1,6 +1,7 @@
 //! What a column holds, gathered in one pass and constant memory, and the form it asks for.
 
 use super::digits::{Decimal, MOST_DIGITS, Scale, exponent_of};
+use super::format::yes_or_no;
 use super::format::{ColumnFormat, Form};
 use super::unit::{LONG_TIMES, SECOND, TIMES, Unit, base_unit, decimal_unit, long_unit};
 use super::width::columns_of;
@@ -15,8 +16,17 @@ const SHORT_DIGITS: i32 = 10;
 /// Decimals up to which minutes, hours, days and years serve: further ones are fractions
 /// of a second that are read better as such.
 const MOST_LONG_DECIMALS: i32 = 6;
+/// Power of ten of the first digit of the largest value, in its unit, from which and up to
+/// which plain notation serves; less far up for numbers that have no unit.
+const LEAST_FIRST: i32 = -3;
+const MOST_WHOLE: i32 = 11;
+const MOST_BARE: i32 = 6;
 /// Steps between neighbours smaller than this part of the column's spread need not show.
 const LEAST_STEP: f64 = 1e-15;
+/// Digits of a number that a reader takes in, clock readings aside.
+const GLANCE_DIGITS: i32 = 12;
+/// Digits shown where the glance would not do.
+const PLAIN_DIGITS: i32 = 7;
 
 /// Gathers, cell by cell in the order of the rows, what decides units and digits.
 #[derive(Clone, Debug)]
@@ -93,12 +103,10 @@ impl ColumnScan {
     pub fn see(&mut self, cell: &Cell<'_>) {
         match cell {
             Cell::Text(text) => {
-                debug_assert!(
-                    !text.chars().any(char::is_control),
-                    "names are clean: {text:?}"
-                );
+                debug_assert!(!text.chars().any(char::is_control), "names are clean: {text:?}");
                 self.text_columns = self.text_columns.max(columns_of(text));
             }
+            Cell::Flag(flag) => self.text_columns = self.text_columns.max(yes_or_no(*flag).len()),
             Cell::Absent(_) => self.anything_absent = true,
             Cell::Number(value) if value.is_finite() => self.see_number(*value),
             Cell::Number(_) => self.anything_absent = true,
@@ -121,10 +129,7 @@ impl ColumnScan {
 
     /// Whether whole numbers are counts and not values with a unit.
     fn counts(&self) -> bool {
-        matches!(
-            self.measure,
-            Measure::Word | Measure::Count | Measure::Ratio
-        )
+        matches!(self.measure, Measure::Word | Measure::Count | Measure::Ratio)
     }
 
     fn see_number(&mut self, value: f64) {
@@ -135,15 +140,17 @@ impl ColumnScan {
             let step = (value - previous).abs();
             if step > 0.0 {
                 self.step = self.step.min(step);
-                self.relative_step = self
-                    .relative_step
-                    .min(step / value.abs().max(previous.abs()));
+                self.relative_step = self.relative_step.min(step / value.abs().max(previous.abs()));
             }
         }
         if value == 0.0 {
             return;
         }
         self.smallest = self.smallest.min(value.abs());
+        // A number with as many digits as are ever shown settles that none can be saved.
+        if self.longest >= MOST_DIGITS {
+            return;
+        }
         let shortest = Decimal::shortest(value);
         self.shortest_position = self.shortest_position.min(shortest.last_position());
         self.longest = self.longest.max(shortest.digits.len());
@@ -161,15 +168,10 @@ impl ColumnScan {
         } else if self.measure == Measure::Word {
             (base_unit(Measure::Word), Form::Words)
         } else {
-            (
-                base_unit(self.measure),
-                Form::Fixed {
-                    scale: Scale::Ten(0),
-                    decimals: 0,
-                },
-            )
+            (base_unit(self.measure), Form::Fixed { scale: Scale::Ten(0), decimals: 0 })
         };
         let mut format = ColumnFormat::new(unit, form, self.signed, unicode);
+        format.smallest = self.smallest;
         let mut width = self.text_columns.max(usize::from(self.anything_absent));
         if self.numbers > 0 {
             for value in [self.lowest, self.highest, self.smallest] {
@@ -196,23 +198,10 @@ impl ColumnScan {
         let largest = self.largest();
         let fixed = |unit: Unit, place: Places| {
             let decimals = usize::try_from(-place.last).unwrap_or(0);
-            (
-                unit,
-                Form::Fixed {
-                    scale: unit.scale,
-                    decimals,
-                },
-            )
+            (unit, Form::Fixed { scale: unit.scale, decimals })
         };
         if largest == 0.0 {
-            return fixed(
-                base_unit(self.measure),
-                Places {
-                    first: 0,
-                    span: 0,
-                    last: 0,
-                },
-            );
+            return fixed(base_unit(self.measure), Places { first: 0, span: 0, last: 0 });
         }
         // Exact times beside numbers are told in seconds, so the numbers are as well.
         if self.times > 0 {
@@ -221,14 +210,14 @@ impl ColumnScan {
         if let Some(unit) = long_unit(self.measure, largest) {
             let places = self.places(unit.scale);
             let readable = self.measure == Measure::Length || -places.last <= MOST_LONG_DECIMALS;
-            if readable && places.span <= MOST_DECADES {
+            if readable && places.first <= MOST_WHOLE && places.span <= MOST_DECADES {
                 return fixed(unit, places);
             }
         }
         let unit = decimal_unit(self.measure, largest);
         let places = self.places(unit.scale);
-        let most = if unit.label.is_empty() { 6 } else { 11 };
-        if (-3..=most).contains(&places.first)
+        let most = if unit.label.is_empty() { MOST_BARE } else { MOST_WHOLE };
+        if (LEAST_FIRST..=most).contains(&places.first)
             && (places.span <= MOST_DECADES || places.digits() <= SHORT_DIGITS)
         {
             return fixed(unit, places);
@@ -241,18 +230,9 @@ impl ColumnScan {
         let digits = usize::try_from(self.least_digits.max(told_apart)).unwrap_or(MOST_DIGITS);
         let digits = digits.min(self.longest).clamp(1, MOST_DIGITS);
         let exponents = [exponent_of(self.smallest), exponent_of(largest)];
-        let exponent_width = exponents
-            .map(|power| format!("e{power}").len())
-            .into_iter()
-            .max();
+        let exponent_width = exponents.map(|power| format!("e{power}").len()).into_iter().max();
         let exponent_width = exponent_width.unwrap_or(0);
-        (
-            base_unit(self.measure),
-            Form::Scientific {
-                digits,
-                exponent_width,
-            },
-        )
+        (base_unit(self.measure), Form::Scientific { digits, exponent_width })
     }
 
     fn largest(&self) -> f64 {
@@ -271,14 +251,15 @@ impl ColumnScan {
             last = last.min(exponent(step / 2.0));
         }
         last = last.max(first + 1 - MOST_DIGITS as i32);
+        // Only readings of clocks are worth more than a glance can hold: where other
+        // neighbours differ farther down, the difference is told by another column.
+        if self.measure != Measure::Time && first - last >= GLANCE_DIGITS {
+            last = last.max(first + 1 - PLAIN_DIGITS).min(smallest + 1 - self.least_digits);
+        }
         if let Scale::Ten(tens) = scale {
             last = last.max(self.shortest_position - tens);
         }
-        Places {
-            first,
-            span: first - smallest,
-            last: last.min(0),
-        }
+        Places { first, span: first - smallest, last: last.min(0) }
     }
 
     /// Exact times: the largest unit in which they all are exact and short.
@@ -295,16 +276,10 @@ impl ColumnScan {
             }
             let decimals = (0..=2).find(|&decimals| {
                 let parts = self.common_divisor.checked_mul(10_u128.pow(decimals));
-                parts.is_some_and(|parts| parts % size == 0)
+                parts.is_some_and(|parts| parts.is_multiple_of(size))
             });
             if let Some(decimals) = decimals {
-                return (
-                    unit,
-                    Form::Exact {
-                        size,
-                        decimals: decimals as usize,
-                    },
-                );
+                return (unit, Form::Exact { size, decimals: decimals as usize });
             }
         }
         let mut place = TIMES.iter().rposition(|unit| match unit.scale {
@@ -317,15 +292,9 @@ impl ColumnScan {
         let place = place.unwrap_or(0);
         let size = 1000_u128.pow(place as u32);
         let decimals = (0..3 * place as u32)
-            .find(|&decimals| self.common_divisor % (size / 10_u128.pow(decimals)) == 0)
+            .find(|&decimals| self.common_divisor.is_multiple_of(size / 10_u128.pow(decimals)))
             .unwrap_or(3 * place as u32);
-        (
-            TIMES[place],
-            Form::Exact {
-                size,
-                decimals: decimals as usize,
-            },
-        )
+        (TIMES[place], Form::Exact { size, decimals: decimals as usize })
     }
 }
 
@@ -360,7 +329,9 @@ fn is_difference(key: &str) -> bool {
         "applied",
         "residual",
     ];
-    key.split('_').any(|word| DIFFERENCES.contains(&word))
+    // The worst of several is a size.
+    let is_size = key.starts_with("worst_");
+    !is_size && key.split('_').any(|word| DIFFERENCES.contains(&word))
 }
 
 fn common_divisor(mut left: u128, mut right: u128) -> u128 {

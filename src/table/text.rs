@@ -6,7 +6,7 @@ use super::columns::write_table;
 use super::digits::Scale;
 use super::scan::ColumnScan;
 use super::unit::{acceleration, readable_time, rounded};
-use super::width::{in_ascii, wrapped};
+use super::width::{columns_of, in_ascii, push_blanks, wrapped};
 use super::{Cell, Head, Report, Scalar, Series};
 
 /// Digits of a value that stands alone, outside a table.
@@ -15,6 +15,8 @@ const DIGITS_ALONE: i32 = 6;
 const HASH_DIGITS: usize = 12;
 /// Blanks before the further lines of a text that was wrapped.
 const INDENT: usize = 2;
+/// A blank at which no line is broken: a sign that no clean text holds.
+const JOINT: char = '\u{1f}';
 /// Remarks remembered so that a report over time says each once.
 const REMARKS_REMEMBERED: usize = 100;
 
@@ -30,30 +32,22 @@ pub struct TextOptions {
 impl TextOptions {
     /// A text of our own in the signs that may be used.
     pub(super) fn signs(self, text: &str) -> String {
-        if self.unicode {
-            text.to_owned()
-        } else {
-            in_ascii(text)
-        }
+        if self.unicode { text.to_owned() } else { in_ascii(text) }
     }
 
     /// Appends a text as lines that fit, the later ones indented.
     pub(super) fn push_lines(self, out: &mut String, text: &str) {
-        debug_assert!(
-            !text.chars().any(char::is_control),
-            "text is clean: {text:?}"
-        );
+        let clean = !text.chars().any(|sign| sign != JOINT && sign.is_control());
+        debug_assert!(clean, "text is clean: {text:?}");
         let text = self.signs(text);
         let width = self.width.map(|width| width.saturating_sub(INDENT));
         // A text that fits needs no room for an indentation.
-        let whole = self
-            .width
-            .is_none_or(|width| super::width::columns_of(&text) <= width);
+        let whole = self.width.is_none_or(|width| columns_of(&text) <= width);
         for (place, line) in wrapped(&text, width.filter(|_| !whole)).iter().enumerate() {
             if place > 0 {
-                super::width::push_blanks(out, INDENT);
+                push_blanks(out, INDENT);
             }
-            out.push_str(line.trim_end());
+            out.push_str(&line.trim_end().replace(JOINT, " "));
             out.push('\n');
         }
     }
@@ -125,11 +119,7 @@ impl TextWriter {
     /// Nothing written yet.
     #[must_use]
     pub fn new(options: TextOptions) -> TextWriter {
-        TextWriter {
-            options,
-            moments: 0,
-            remarks: Vec::new(),
-        }
+        TextWriter { options, moments: 0, remarks: Vec::new() }
     }
 
     /// Writes what stands on top, once.
@@ -152,7 +142,10 @@ impl TextWriter {
     /// Those of the writer.
     pub fn moment(&mut self, report: &Report<'_>, out: &mut dyn Write) -> io::Result<()> {
         let options = self.options;
-        let parts = moment_parts(report, options).map(|(label, value)| format!("{label} {value}"));
+        let parts: Vec<String> = moment_parts(report, options)
+            .into_iter()
+            .map(|(label, value)| format!("{label} {value}"))
+            .collect();
         let mut text = String::from("\n");
         options.push_lines(&mut text, &parts.join(", "));
         push_scalars(&mut text, &report.scalars, options);
@@ -175,44 +168,52 @@ impl TextWriter {
     }
 }
 
-const UNITS: &str = "units: as headed; g0 = 9.80665 m/s², d = 86400 s, a = 365.25 d";
+/// What the labels of the headings mean, with joints inside the equations.
+const UNITS: &str = "units: as headed; g0\u{1f}=\u{1f}9.80665\u{1f}m/s², \
+                     d\u{1f}=\u{1f}86400\u{1f}s, a\u{1f}=\u{1f}365.25\u{1f}d";
+
+/// Quantities as one word each when lines are broken, an equation of two as two.
+fn joined(text: &str) -> String {
+    let joint = &JOINT.to_string();
+    text.split(" = ")
+        .map(|side| side.replace(' ', joint))
+        .collect::<Vec<_>>()
+        .join(&format!(" ={joint}"))
+}
 
 fn push_head(text: &mut String, head: &Head<'_>, options: TextOptions) {
     // The name of the layout and its revision are the layout's own, so no sign is changed.
-    let named = TextOptions {
-        unicode: true,
-        ..options
-    };
+    let named = TextOptions { unicode: true, ..options };
     named.push_lines(text, &format!("layout: {}", head.layout));
     let revision = head.revision.unwrap_or("-");
     named.push_lines(text, &format!("revision: {revision}"));
-    let hash = head
-        .layout_sha256
-        .get(..HASH_DIGITS)
-        .unwrap_or(head.layout_sha256);
+    let hash = head.layout_sha256.get(..HASH_DIGITS).unwrap_or(head.layout_sha256);
     options.push_lines(text, &format!("hash: {hash}"));
 }
 
 /// The moment, the acceleration of the reference and the rapidity, with their labels.
-fn moment_parts(report: &Report<'_>, options: TextOptions) -> [(&'static str, String); 3] {
-    let absent = |why: &'static str| format!("- ({why})");
+fn moment_parts(report: &Report<'_>, options: TextOptions) -> Vec<(&'static str, String)> {
+    if let (Err(why), Err(_), Err(_)) =
+        (report.at, report.reference_acceleration_m_s2, report.rapidity)
+    {
+        return vec![("array time", absent_alone(why))];
+    }
+    let absent = absent_alone;
     let moment = report.at.map_or_else(absent, |at| {
         let (readable, exact) = (readable_time(at), format!("{at} s"));
-        if readable == exact {
-            exact
-        } else {
-            format!("{readable} = {exact}")
-        }
+        if readable == exact { exact } else { format!("{readable} = {exact}") }
     });
     let reference = report.reference_acceleration_m_s2;
-    let reference = reference.map_or_else(absent, |value| acceleration(value, options.unicode));
+    let reference =
+        reference.map_or_else(absent, |value| joined(&acceleration(value, options.unicode)));
     let rapidity = report.rapidity;
     let rapidity = rapidity.map_or_else(absent, |value| rounded(value, Scale::Ten(0), 10));
-    [
-        ("array time", moment),
-        ("reference acceleration", reference),
-        ("rapidity", rapidity),
-    ]
+    vec![("array time", moment), ("reference acceleration", reference), ("rapidity", rapidity)]
+}
+
+/// What stands for a value that does not exist, outside a table.
+fn absent_alone(why: &str) -> String {
+    format!("- ({why})")
 }
 
 fn push_scalars(text: &mut String, scalars: &[Scalar<'_>], options: TextOptions) {
@@ -226,9 +227,9 @@ fn push_scalars(text: &mut String, scalars: &[Scalar<'_>], options: TextOptions)
         let value = match &scalar.value {
             Cell::Absent(why) => format!("- ({why})"),
             Cell::Number(value) if !value.is_finite() => format!("- ({})", super::NOT_FINITE),
-            value => format!("{} {}", format.value(value, "").trim_end(), format.unit()),
+            value => format!("{}{JOINT}{}", format.value(value, "").trim_end(), format.unit()),
         };
-        let line = format!("{}: {}", scalar.heading, value.trim_end());
+        let line = format!("{}: {}", scalar.heading, value.trim_end_matches(JOINT));
         options.push_lines(text, &line);
     }
 }

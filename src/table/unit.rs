@@ -14,27 +14,15 @@ pub(super) struct Unit {
 }
 
 const fn ten(label: &'static str, power: i32) -> Unit {
-    Unit {
-        label,
-        ascii: label,
-        scale: Scale::Ten(power),
-    }
+    Unit { label, ascii: label, scale: Scale::Ten(power) }
 }
 
 const fn whole(label: &'static str, count: u64, power: i32) -> Unit {
-    Unit {
-        label,
-        ascii: label,
-        scale: Scale::Whole(count, power),
-    }
+    Unit { label, ascii: label, scale: Scale::Whole(count, power) }
 }
 
 const fn micro(label: &'static str, ascii: &'static str) -> Unit {
-    Unit {
-        label,
-        ascii,
-        scale: Scale::Ten(-6),
-    }
+    Unit { label, ascii, scale: Scale::Ten(-6) }
 }
 
 /// Decimal units of time, of which the second is the largest.
@@ -55,40 +43,21 @@ pub(super) const LONG_TIMES: [(Unit, f64); 4] = [
     (whole("h", 3_600, 0), 7_200.0),
     (whole("min", 60, 0), 120.0),
 ];
-const LENGTHS: [Unit; 5] = [
-    ten("nm", -9),
-    micro("µm", "um"),
-    ten("mm", -3),
-    ten("m", 0),
-    ten("km", 3),
-];
+const LENGTHS: [Unit; 5] =
+    [ten("nm", -9), micro("µm", "um"), ten("mm", -3), ten("m", 0), ten("km", 3)];
 /// The longest lengths, from a tenth of the unit on: 0.97 ly says more than 61 000 au.
-const LONG_LENGTHS: [(Unit, f64); 2] = [
-    (whole("ly", 9_460_730_472_580_800, 0), 0.95e15),
-    (whole("au", 149_597_870_700, 0), 0.75e11),
-];
-const FREQUENCIES: [Unit; 5] = [
-    ten("Hz", 0),
-    ten("kHz", 3),
-    ten("MHz", 6),
-    ten("GHz", 9),
-    ten("THz", 12),
-];
+const LONG_LENGTHS: [(Unit, f64); 2] =
+    [(whole("ly", 9_460_730_472_580_800, 0), 0.95e15), (whole("au", 149_597_870_700, 0), 0.75e11)];
+const FREQUENCIES: [Unit; 5] =
+    [ten("Hz", 0), ten("kHz", 3), ten("MHz", 6), ten("GHz", 9), ten("THz", 12)];
 const FORCES: [Unit; 3] = [ten("N", 0), ten("kN", 3), ten("MN", 6)];
 const SPEEDS: [Unit; 2] = [ten("m/s", 0), ten("km/s", 3)];
 const KILOGRAM: Unit = ten("kg", 0);
-const METRES_PER_SECOND_SQUARED: Unit = Unit {
-    label: "m/s²",
-    ascii: "m/s^2",
-    scale: Scale::Ten(0),
-};
+const METRES_PER_SECOND_SQUARED: Unit =
+    Unit { label: "m/s²", ascii: "m/s^2", scale: Scale::Ten(0) };
 const STANDARD_GRAVITY: Unit = whole("g0", 980_665, -5);
 const MILLI_GRAVITY: Unit = whole("mg0", 980_665, -8);
-const MICRO_GRAVITY: Unit = Unit {
-    label: "µg0",
-    ascii: "ug0",
-    scale: Scale::Whole(980_665, -11),
-};
+const MICRO_GRAVITY: Unit = Unit { label: "µg0", ascii: "ug0", scale: Scale::Whole(980_665, -11) };
 
 /// The SI unit, in which values of all sizes stand in scientific notation.
 pub(super) fn base_unit(measure: Measure) -> Unit {
@@ -132,18 +101,11 @@ pub(super) fn long_unit(measure: Measure, largest: f64) -> Option<Unit> {
         Measure::Length => &LONG_LENGTHS,
         _ => return None,
     };
-    ladder
-        .iter()
-        .find(|(_, from)| largest >= *from)
-        .map(|(unit, _)| *unit)
+    ladder.iter().find(|(_, from)| largest >= *from).map(|(unit, _)| *unit)
 }
 
 fn from_ladder(ladder: &[Unit], largest: f64) -> Unit {
-    let exponent = if largest > 0.0 {
-        exponent_of(largest)
-    } else {
-        0
-    };
+    let exponent = if largest > 0.0 { exponent_of(largest) } else { 0 };
     let reached = |unit: &&Unit| matches!(unit.scale, Scale::Ten(power) if power <= exponent);
     *ladder.iter().rev().find(reached).unwrap_or(&ladder[0])
 }
@@ -164,7 +126,7 @@ pub(super) fn rounded(value: f64, scale: Scale, count: usize) -> String {
     format!("{sign}{mantissa}{exponent}")
 }
 
-/// An acceleration in m/s² and in parts of g0, each to ten digits: `0.196133 m/s² = 0.02 g0`.
+/// An acceleration in m/s² to ten digits and in parts of g0 to seven: `0.196133 m/s² = 0.02 g0`.
 pub(super) fn acceleration(value_m_s2: f64, unicode: bool) -> String {
     let unit = METRES_PER_SECOND_SQUARED;
     let label = if unicode { unit.label } else { unit.ascii };
@@ -178,7 +140,7 @@ pub(super) fn acceleration(value_m_s2: f64, unicode: bool) -> String {
         _ => MICRO_GRAVITY,
     };
     let label = if unicode { parts.label } else { parts.ascii };
-    format!("{si} = {} {label}", rounded(value_m_s2, parts.scale, 10))
+    format!("{si} = {} {label}", rounded(value_m_s2, parts.scale, 7))
 }
 
 /// A length of array time in the units people count in, exactly: `6 h 10 min`,
@@ -242,10 +204,7 @@ mod tests {
             (90 * second, "1 min 30 s"),
             (22_200 * second, "6 h 10 min"),
             (86_400 * second, "1 d"),
-            (
-                (2 * 86_400 + 3 * 3_600 + 4) * second + 1_000_000_000,
-                "2 d 3 h 4.000000001 s",
-            ),
+            ((2 * 86_400 + 3 * 3_600 + 4) * second + 1_000_000_000, "2 d 3 h 4.000000001 s"),
             (-61 * second, "-1 min 1 s"),
             (100_000_000_000 * second, "1157407 d 9 h 46 min 40 s"),
         ] {
@@ -255,10 +214,7 @@ mod tests {
 
     #[test]
     fn accelerations_stand_in_both_units() {
-        assert_eq!(
-            acceleration(0.02 * 9.80665, true),
-            "0.196133 m/s² = 0.02 g0"
-        );
+        assert_eq!(acceleration(0.02 * 9.80665, true), "0.196133 m/s² = 0.02 g0");
         assert_eq!(acceleration(-9.80665, false), "-9.80665 m/s^2 = -1 g0");
         assert_eq!(acceleration(0.0, false), "0 m/s^2");
         assert_eq!(acceleration(9.80665e-7, true), "9.80665e-7 m/s² = 0.1 µg0");
@@ -277,13 +233,7 @@ mod tests {
         ] {
             assert_eq!(decimal_unit(measure, largest).label, label);
         }
-        assert_eq!(
-            long_unit(Measure::Length, 9.2e15).map(|unit| unit.label),
-            Some("ly")
-        );
-        assert_eq!(
-            long_unit(Measure::Time, 3_600.0).map(|unit| unit.label),
-            Some("min")
-        );
+        assert_eq!(long_unit(Measure::Length, 9.2e15).map(|unit| unit.label), Some("ly"));
+        assert_eq!(long_unit(Measure::Time, 3_600.0).map(|unit| unit.label), Some("min"));
     }
 }

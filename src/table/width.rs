@@ -138,10 +138,7 @@ mod tests {
         assert_eq!(wrapped("one two three", Some(7)), ["one two", "three"]);
         assert_eq!(wrapped("abcdefghij", Some(4)), ["abcd", "efgh", "ij"]);
         assert_eq!(wrapped("標準時計", Some(5)), ["標準", "時計"]);
-        assert_eq!(
-            wrapped("e\u{301}e\u{301}", Some(1)),
-            ["e\u{301}", "e\u{301}"]
-        );
+        assert_eq!(wrapped("e\u{301}e\u{301}", Some(1)), ["e\u{301}", "e\u{301}"]);
         assert_eq!(wrapped("", Some(5)), [""]);
         assert_eq!(wrapped("as  it is", None), ["as  it is"]);
     }

@@ -1,14 +1,25 @@
 //! The library against identities, independent references and published values.
+// What a test compares with may come from anywhere.
+#![allow(clippy::disallowed_methods)]
 
 mod identities;
+mod layout_random;
 mod layout_read;
 mod layout_refused;
+mod layout_units;
 mod loads_identities;
+mod loads_layouts;
 mod loads_published;
 mod loads_reference;
 mod pinned;
 mod published;
+mod recording;
+mod recording_hostile;
 mod reference;
+mod run;
+mod run_refused;
+mod table_csv;
+mod table_json;
 mod table_sample;
 mod table_text;
 mod tolerance;

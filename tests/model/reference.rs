@@ -37,8 +37,7 @@ fn plans() -> BTreeMap<String, Plan> {
     for row in rows("plans.csv") {
         let (start, end) = (attoseconds(&row["start_as"]), attoseconds(&row["end_as"]));
         let length = ArrayTime::from_attoseconds(end.attoseconds() - start.attoseconds());
-        let phase =
-            Phase::whole(start, length, number(&row["from_m_s2"]), number(&row["to_m_s2"]));
+        let phase = Phase::whole(start, length, number(&row["from_m_s2"]), number(&row["to_m_s2"]));
         phases.entry(row["plan"].clone()).or_default().push(phase);
     }
     phases.into_iter().map(|(name, phases)| (name, Plan::new(phases).expect("a plan"))).collect()

@@ -1,1 +1,6 @@
-fn main() {}
+//! The executable: exit status, messages, pipes, pseudo-terminal.
+
+mod commands;
+mod desk;
+mod readme;
+mod terminal_session;

@@ -36,9 +36,12 @@ fn check(root: &Path, arguments: &str, expected: &str) {
     let mut rest = got.as_str();
     for (index, piece) in expected.trim_end().split("…\n").enumerate() {
         let piece = piece.trim_end_matches('…').trim_end();
-        let found = if index == 0 { rest.starts_with(piece).then_some(0) } else { rest.find(piece) };
+        let found =
+            if index == 0 { rest.starts_with(piece).then_some(0) } else { rest.find(piece) };
         let Some(found) = found else {
-            panic!("`clockspar {arguments}` does not print what is shown:\n{piece}\n-- got:\n{got}");
+            panic!(
+                "`clockspar {arguments}` does not print what is shown:\n{piece}\n-- got:\n{got}"
+            );
         };
         rest = &rest[found + piece.len()..];
     }

@@ -3,7 +3,7 @@
 use super::LoadsFault;
 use super::balance::Balance;
 use super::march::{Field, Rods};
-use crate::model::constants::C2_M2_S2;
+use crate::model::constants::INVERSE_C2_S2_M2;
 use crate::model::dd::Dd;
 
 /// Displacement from the relaxed position, per unit of acceleration, of every row:
@@ -67,8 +67,8 @@ const ROUNDING: f64 = 4.0e-16;
 
 impl Map {
     fn new(rods: &Rods, range: &Range, relaxed_m: &[Dd]) -> Map {
-        let fore = relaxed_m.first().map_or(0.0, |m| m.to_f64()) / C2_M2_S2.hi;
-        let aft = relaxed_m.last().map_or(0.0, |m| m.to_f64()) / C2_M2_S2.hi;
+        let fore = relaxed_m.first().map_or(0.0, |m| m.to_f64()) * INVERSE_C2_S2_M2.hi;
+        let aft = relaxed_m.last().map_or(0.0, |m| m.to_f64()) * INVERSE_C2_S2_M2.hi;
         debug_assert!(relaxed_m.len() == rods.rows());
         let mut map = Map { fore, aft, low: 0.0, high: 0.0, burned: range.most_burned };
         map.low = map.stretch(range.lowest_m_s2);

@@ -3,7 +3,7 @@
 use super::compliance::{Basis, Compliance, Range};
 use super::propellant::Propulsion;
 use crate::model::array_time::ArrayTime;
-use crate::model::constants::C2_M2_S2;
+use crate::model::constants::{C2_M2_S2, INVERSE_C2_S2_M2};
 use crate::model::dd::{Dd, RunningSum};
 use crate::model::horizon::Extremes;
 use crate::model::motion::{NODES_10, WEIGHTS_10};
@@ -247,7 +247,7 @@ pub(super) fn neglected_motion_s(
             let speed =
                 speed(compliance, row, &basis, alpha, point.slope_m_s3, point.burning_per_s);
             let position = relaxed_m + alpha * compliance.sum(row, &basis.values).to_f64();
-            let rate = 1.0 + alpha * position / C2_M2_S2.hi;
+            let rate = 1.0 + alpha * position * INVERSE_C2_S2_M2.hi;
             sum += point.width_s * speed * speed / (2.0 * C2_M2_S2.hi * rate);
         });
     }

@@ -3,7 +3,7 @@
 use super::LoadsFault;
 use super::balance::Ends;
 use super::structure::Structure;
-use crate::model::constants::C2_M2_S2;
+use crate::model::constants::INVERSE_C2_S2_M2;
 use crate::model::dd::{Dd, RunningSum};
 
 /// Lengths, thermal strain and compliance of every gap, and which rows they join.
@@ -36,9 +36,9 @@ impl Field {
     pub fn excess(&self, position_m: Dd) -> Dd {
         let potential = self.acceleration_m_s2 * position_m;
         if self.gradient_per_s2 == 0.0 {
-            return potential / C2_M2_S2;
+            return potential * INVERSE_C2_S2_M2;
         }
-        (potential - position_m * position_m * (0.5 * self.gradient_per_s2)) / C2_M2_S2
+        (potential - position_m * position_m * (0.5 * self.gradient_per_s2)) * INVERSE_C2_S2_M2
     }
 
     /// `N` at a position.
@@ -189,7 +189,7 @@ impl Rods {
                     acceleration_m_s2: field.acceleration_m_s2.to_f64(),
                 });
             }
-            let slope = local / C2_M2_S2.hi;
+            let slope = local * INVERSE_C2_S2_M2.hi;
             if expansion + compliance * drive * force(done) / rate <= 0.0 {
                 return Err(crushed(span.gap, field));
             }
@@ -210,7 +210,7 @@ impl Rods {
                     let apart = span.direction
                         * step
                         * (STAGES[stage] * expansion + drive * compliance * sum);
-                    let curve = 0.5 * field.gradient_per_s2 * apart * apart / C2_M2_S2.hi;
+                    let curve = 0.5 * field.gradient_per_s2 * apart * apart * INVERSE_C2_S2_M2.hi;
                     shifts[stage] = slope * apart - curve;
                 }
                 let change = (0..3).map(|k| (shifts[k] - before[k]).abs()).fold(0.0, f64::max);

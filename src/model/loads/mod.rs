@@ -73,7 +73,7 @@ use self::march::Rods;
 use self::peaks::Corners;
 use self::standing::{Masses, Standing, mass_balance};
 use super::array_time::ArrayTime;
-use super::constants::C2_M2_S2;
+use super::constants::INVERSE_C2_S2_M2;
 use super::dd::Dd;
 use super::plan::{Moment, Plan};
 use super::rates::Instant;
@@ -310,7 +310,7 @@ impl Loads {
                 let stretch_s = if compliance.terms() == 0 {
                     thermal
                 } else {
-                    thermal + compliance.sum_wide(row, &state.integrals) / C2_M2_S2
+                    thermal + compliance.sum_wide(row, &state.integrals) * INVERSE_C2_S2_M2
                 };
                 Offset { total_s: unloaded_s + stretch_s, unloaded_s, stretch_s }
             }

@@ -5,7 +5,7 @@ use super::compliance::Basis;
 use super::flight::{Flight, sections, slope};
 use super::propellant::Propulsion;
 use crate::model::array_time::ArrayTime;
-use crate::model::constants::C2_M2_S2;
+use crate::model::constants::INVERSE_C2_S2_M2;
 use crate::model::dd::Dd;
 
 /// An extreme over the plan: its value and where it first occurs.
@@ -238,7 +238,7 @@ impl Corners {
 
     fn rate(&self, flight: &Flight, relaxed_m: &[Dd], row: usize, corner: &Corner) -> Dd {
         let position = self.position(flight, relaxed_m, row, corner);
-        corner.acceleration_m_s2 * position / C2_M2_S2 + 1.0
+        corner.acceleration_m_s2 * position * INVERSE_C2_S2_M2 + 1.0
     }
 }
 
@@ -273,7 +273,7 @@ impl Curve<'_> {
         if self.flight.compliance.terms() > 0 {
             position = position + alpha * self.flight.compliance.sum(row, &basis.values);
         }
-        let rate = alpha * position / C2_M2_S2 + 1.0;
+        let rate = alpha * position * INVERSE_C2_S2_M2 + 1.0;
         let ends = self.balance.ends(self.gap, drive.burned);
         let balance = if self.end == 0 { ends.fore } else { ends.aft };
         let falling = self.balance.slope(self.gap).to_f64() * drive.burning_per_s;

@@ -1,5 +1,6 @@
 //! `clockspar compare`.
 
+use std::collections::HashSet;
 use std::path::Path;
 
 use clockspar::model::array_time::ArrayTime;
@@ -9,9 +10,9 @@ use clockspar::table::content::{compare_report, differences};
 use super::show::show;
 use super::{recordings, run_of};
 use crate::program::arguments::CompareArguments;
+use crate::program::files;
 use crate::program::moments::Moments;
 use crate::program::problem::Problem;
-use crate::program::{files, recording_file};
 
 /// Two layouts, or two recordings, at the same moments.
 ///
@@ -31,11 +32,21 @@ pub fn compare(arguments: &CompareArguments) -> Result<u8, Problem> {
         ));
     }
     let asked = &arguments.moments;
-    let moments = match (asked.at.is_none() && asked.every.is_none(), a.recorded, b.recorded) {
-        // Two recordings speak for themselves at the last moment both hold.
-        (true, Some(first), Some(second)) => Moments::One(first.min(second)),
+    let moments = match (&a.recorded, &b.recorded) {
+        // Two recordings speak for themselves at every moment both hold.
+        (Some(first), Some(second)) if asked.at.is_none() && asked.every.is_none() => {
+            let common: HashSet<_> = second.iter().collect();
+            first.iter().copied().filter(|at| common.contains(at)).collect::<Vec<_>>().into()
+        }
         _ => Moments::of(asked, a.run.layout())?,
     };
+    if moments.count() == 0 {
+        return Err(Problem::new(
+            "the recordings have no moment in common",
+            "recordings are compared at the moments both hold a frame of",
+            "give the moments with --at or --every",
+        ));
+    }
     for at in moments.iter() {
         for (side, path) in [(&a, &arguments.a), (&b, &arguments.b)] {
             side.run.check_moment(at).map_err(|fault| {
@@ -45,7 +56,7 @@ pub fn compare(arguments: &CompareArguments) -> Result<u8, Problem> {
         }
     }
     let (a, b) = (&a.run, &b.run);
-    show(moments, asked.paced, &arguments.output, &|at| {
+    show(&moments, asked.paced, &arguments.output, &|at| {
         let (first, second) = (state_at(a, at), state_at(b, at));
         let found = differences(&first, &second);
         compare_report(&first, &second, found)
@@ -56,15 +67,15 @@ pub fn compare(arguments: &CompareArguments) -> Result<u8, Problem> {
 /// One side of a comparison.
 struct Side {
     run: Run,
-    /// The last moment of a recording; `None` for a layout.
-    recorded: Option<ArrayTime>,
+    /// The moments of its frames; `None` for a layout.
+    recorded: Option<Vec<ArrayTime>>,
 }
 
 impl Side {
     fn load(path: &Path) -> Result<Side, Problem> {
-        if recording_file::looks_like_recording(path) {
-            let (run, last) = recordings::run_of_recording(path)?;
-            return Ok(Side { run, recorded: Some(last) });
+        if files::looks_like_recording(path) {
+            let (run, moments) = recordings::run_of_recording(path)?;
+            return Ok(Side { run, recorded: Some(moments) });
         }
         let run = run_of(files::load(path)?, &files::shown_name(path))?;
         Ok(Side { run, recorded: None })

@@ -20,7 +20,7 @@ pub type Reporter<'a> = &'a (dyn Fn(ArrayTime) -> Report<'a> + 'a);
 
 /// Writes what a command found, where and how it was asked for.
 pub fn show<'a>(
-    moments: Moments,
+    moments: &Moments,
     paced: bool,
     arguments: &OutputArguments,
     reporter: Reporter<'a>,
@@ -42,14 +42,14 @@ pub fn show<'a>(
     }
     match moments {
         Moments::One(at) => {
-            let report = chosen.report(at);
+            let report = chosen.report(*at);
             output.write(arguments.replace, |out| match form {
                 Form::Text => write_text(&report, &options, out),
                 Form::Csv => write_csv(&report, 0, out),
                 Form::Json => write_json(&report, out),
             })
         }
-        Moments::Every { .. } => {
+        Moments::Every { .. } | Moments::Listed(_) => {
             let series = series(moments, chosen);
             output.write(arguments.replace, |out| match form {
                 Form::Text => write_text_series(&series, &options, out),
@@ -79,7 +79,8 @@ impl<'a> Chosen<'a> {
 }
 
 /// The reports of a range of moments.
-fn series(moments: Moments, chosen: Chosen<'_>) -> Series<'_> {
+fn series<'a>(moments: &Moments, chosen: Chosen<'a>) -> Series<'a> {
+    let moments = moments.clone();
     let Report { command, schema_version, layout, revision, layout_sha256, .. } =
         chosen.report(moments.nth(0));
     Series {
@@ -91,7 +92,7 @@ fn series(moments: Moments, chosen: Chosen<'_>) -> Series<'_> {
 
 /// Appends one block a moment at wall-clock pace: the step of array time is waited for.
 fn show_paced(
-    moments: Moments,
+    moments: &Moments,
     form: Form,
     options: TextOptions,
     output: Output,
@@ -112,7 +113,7 @@ fn show_paced(
             let at = moments.nth(index);
             wait_until(begun, at.seconds_since(moments.nth(0)).to_f64());
             if form == Form::Csv {
-                write_rows(&series(Moments::One(at), chosen), index == 0, out)?;
+                write_rows(&series(&Moments::One(at), chosen), index == 0, out)?;
             } else {
                 let report = chosen.report(at);
                 if index == 0 {

@@ -8,7 +8,7 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
-    Judgement, JudgedOver, RuleState, check_report, judge, offsets_report, rates_report,
+    JudgedOver, Judgement, RuleState, check_report, judge, offsets_report, rates_report,
 };
 
 use super::show::show;
@@ -60,7 +60,7 @@ fn show_run(
     report: impl for<'a> Fn(State<'a>) -> Report<'a>,
 ) -> Result<u8, Problem> {
     let asked = Moments::of(moments, run.layout())?;
-    show(asked, moments.paced, output, &|at| report(state_at(run, at)))?;
+    show(&asked, moments.paced, output, &|at| report(state_at(run, at)))?;
     Ok(0)
 }
 
@@ -76,7 +76,7 @@ pub fn check(arguments: &TableArguments) -> Result<u8, Problem> {
     if !asked {
         let judgements = judge(&layout, JudgedOver::Plan);
         let report = |_| check_report(&layout, JudgedOver::Plan, judgements.clone().into());
-        show(Moments::One(ArrayTime::ZERO), false, &arguments.output, &report)?;
+        show(&Moments::One(ArrayTime::ZERO), false, &arguments.output, &report)?;
         return Ok(status_of(is_broken(&judgements)));
     }
     let moments = Moments::of(&arguments.moments, &layout)?;
@@ -84,7 +84,7 @@ pub fn check(arguments: &TableArguments) -> Result<u8, Problem> {
         let span = JudgedOver::Moment(at);
         check_report(&layout, span, judge(&layout, span).into())
     };
-    show(moments, arguments.moments.paced, &arguments.output, &report)?;
+    show(&moments, arguments.moments.paced, &arguments.output, &report)?;
     let broken = moments.iter().any(|at| is_broken(&judge(&layout, JudgedOver::Moment(at))));
     Ok(status_of(broken))
 }

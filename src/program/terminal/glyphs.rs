@@ -74,6 +74,12 @@ glyph_table! {
     over: "═", "=";
     /// A gap that nothing holds together.
     broken: "×", "x";
+    /// A tether from a node down to the next.
+    tether_down: "│", "|";
+    /// A boom from a node down to the next.
+    boom_down: "┃", "H";
+    /// A gap from a node down to the next that nothing spans.
+    gap_down: ":", ":";
     /// The aft end of the drawn line.
     aft_end: "├", "[";
     /// The fore end of the drawn line.

@@ -1,5 +1,7 @@
 //! Bytes of a line to what it says.
 
+use crate::layout::MOST_NODES;
+use crate::layout::names::{is_unsafe, made_safe};
 use crate::model::array_time::ArrayTime;
 use crate::run::{Event, EventKind};
 
@@ -9,16 +11,14 @@ use super::{COLUMNS, Closing, EmbeddedFile, FORMAT, Frame, Line, Opening, READIN
 /// Length of `,"crc32":"xxxxxxxx"}`.
 const TAIL: usize = 20;
 
-/// The most nodes a layout has.
-const MOST_NODES: usize = 1_000_000;
-
 /// The most files a layout names.
 const MOST_FILES: usize = 16;
 
 /// The body of a line without its line end, when its CRC agrees.
 pub(super) fn body(line: &[u8]) -> Result<&[u8], String> {
     let missing = || "it does not end in a CRC".to_owned();
-    let (body, tail) = line.split_at_checked(line.len().saturating_sub(TAIL)).ok_or_else(missing)?;
+    let (body, tail) =
+        line.split_at_checked(line.len().saturating_sub(TAIL)).ok_or_else(missing)?;
     let digits = tail
         .strip_prefix(b",\"crc32\":\"")
         .and_then(|rest| rest.strip_suffix(b"\"}"))
@@ -44,8 +44,11 @@ impl Kind {
     pub(super) const PREFIX: usize = 11;
 
     pub(super) fn of(line: &[u8]) -> Option<Kind> {
-        let kinds =
-            [("{\"frame\":", Kind::Frame), ("{\"event\":", Kind::Event), ("{\"closing\":", Kind::Closing)];
+        let kinds = [
+            ("{\"frame\":", Kind::Frame),
+            ("{\"event\":", Kind::Event),
+            ("{\"closing\":", Kind::Closing),
+        ];
         let found = kinds.into_iter().find(|(prefix, _)| line.starts_with(prefix.as_bytes()));
         found.map(|(_, kind)| kind)
     }
@@ -64,12 +67,12 @@ pub(super) fn opening(body: &[u8]) -> Result<Opening, Malformed> {
     scanner.expect("{\"opening\":")?;
     format(&mut scanner)?;
     scanner.key("program")?;
-    let program = scanner.text()?;
+    let program = made_safe(&scanner.text()?);
     scanner.key("model")?;
     let at = scanner.clone();
     let model = u32::try_from(scanner.whole()?).or_else(|_| at.fail("not a model"))?;
     scanner.key("layout")?;
-    let layout = scanner.text()?;
+    let layout = made_safe(&scanner.text()?);
     scanner.key("layout_text")?;
     let layout_text = scanner.text()?;
     scanner.key("layout_sha256")?;
@@ -83,7 +86,7 @@ pub(super) fn opening(body: &[u8]) -> Result<Opening, Malformed> {
     scanner.key("every_s")?;
     let every = scanner.time_or_null()?;
     scanner.key("nodes")?;
-    let nodes = scanner.list(MOST_NODES, Scanner::text)?;
+    let nodes = scanner.list(MOST_NODES, name)?;
     scanner.key("columns")?;
     let at = scanner.clone();
     let columns = scanner.list(COLUMNS.len() + 1, Scanner::text)?;
@@ -106,6 +109,16 @@ pub(super) fn opening(body: &[u8]) -> Result<Opening, Malformed> {
         nodes,
         has_readings,
     })
+}
+
+fn name(scanner: &mut Scanner<'_>) -> Result<String, Malformed> {
+    let at = scanner.clone();
+    let name = scanner.text()?;
+    if name.chars().any(is_unsafe) {
+        at.fail("a name with marks that cannot be seen")
+    } else {
+        Ok(name)
+    }
 }
 
 fn embedded_file(scanner: &mut Scanner<'_>) -> Result<EmbeddedFile, Malformed> {
@@ -224,7 +237,8 @@ fn event(body: &[u8]) -> Result<Event, Malformed> {
         "mend" => EventKind::Mend { between: between(&mut scanner)? },
         "note" => {
             scanner.key("text")?;
-            EventKind::Note { text: scanner.text()? }
+            // Made safe here, where the file is read; no number depends on it.
+            EventKind::Note { text: made_safe(&scanner.text()?) }
         }
         _ => return before.fail("an unknown kind of event"),
     };

@@ -94,7 +94,7 @@ impl<'r, R: ReadAt> Lines<'r, R> {
 }
 
 /// What a line without its line feed says.
-pub(super) fn parse<R>(line: &[u8], reader: &Reader<R>) -> Result<Line, String> {
+pub(super) fn parse<R: ReadAt>(line: &[u8], reader: &Reader<R>) -> Result<Line, String> {
     let body = decode::body(line)?;
     decode::line(body, reader.opening()).map_err(|malformed| malformed.text())
 }

@@ -32,10 +32,9 @@ mod verify;
 mod window;
 mod writer;
 
-use sha2::{Digest, Sha256};
-
 use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
+use crate::table::{MODEL, PROGRAM};
 
 pub use fault::{Condition, Cut, Damage, Missing, OpenFault, ReadFault, WriteFault};
 pub use lines::{Events, Lines};
@@ -49,9 +48,6 @@ use super::Event;
 
 /// What the first and the last line of a recording call its format.
 pub const FORMAT: &str = "clockspar.recording/1";
-
-/// The program, as recordings name it.
-pub const PROGRAM: &str = concat!("clockspar ", env!("CARGO_PKG_VERSION"));
 
 /// The most bytes the text of a note has, unless it stands in the layout.
 pub const LONGEST_NOTE: usize = 64 * 1024;
@@ -164,15 +160,15 @@ impl Opening {
         let files = layout.source.files.iter();
         Opening {
             program: PROGRAM.to_owned(),
-            model: crate::model::constants::MODEL,
+            model: MODEL,
             layout: layout.name.clone(),
-            layout_sha256: sha256_hex(layout.source.text.as_bytes()),
+            layout_sha256: layout.source.sha256.clone(),
             layout_text: layout.source.text.clone(),
             files: files
                 .map(|file| EmbeddedFile {
                     name: file.name.clone(),
                     text: file.text.clone(),
-                    sha256: sha256_hex(file.text.as_bytes()),
+                    sha256: file.sha256.clone(),
                 })
                 .collect(),
             seed,
@@ -182,12 +178,6 @@ impl Opening {
             has_readings: seed.is_some(),
         }
     }
-}
-
-/// SHA-256 of some bytes as 64 hex digits.
-#[must_use]
-pub fn sha256_hex(bytes: &[u8]) -> String {
-    hex(&Sha256::digest(bytes))
 }
 
 fn hex(bytes: &[u8]) -> String {

@@ -129,6 +129,9 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// When the bytes cannot be read.
     pub fn events_until(&self, until: ArrayTime) -> io::Result<Events<'_, R>> {
+        if self.has_no_event() {
+            return Ok(Events::new(self, self.data_end, self.data_end));
+        }
         let end = self.first_line_where(|moment| moment > until)?;
         Ok(Events::new(self, self.data_start, end))
     }
@@ -139,9 +142,17 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// When the bytes cannot be read.
     pub fn events_between(&self, from: ArrayTime, until: ArrayTime) -> io::Result<Events<'_, R>> {
+        if self.has_no_event() {
+            return Ok(Events::new(self, self.data_end, self.data_end));
+        }
         let start = self.first_line_where(|moment| moment >= from)?;
         let end = self.first_line_where(|moment| moment > until)?;
         Ok(Events::new(self, start, end.max(start)))
+    }
+
+    /// Whether the closing line says that there is no event to look for.
+    fn has_no_event(&self) -> bool {
+        matches!(&self.condition, Condition::Whole(closing) if closing.events == 0)
     }
 
     /// The frame a moment means; `None` when there is none on that side.
@@ -151,10 +162,14 @@ impl<R: ReadAt> Reader<R> {
     /// A damaged line in its place, or bytes that cannot be read.
     pub fn frame(&self, seek: Seek, at: ArrayTime) -> Result<Option<Frame>, ReadFault> {
         match seek {
-            Seek::Before => self.frame_before(self.first_line_where(|moment| moment >= at)?),
-            Seek::AtOrBefore => self.frame_before(self.first_line_where(|moment| moment > at)?),
-            Seek::AtOrAfter => self.frame_from(self.first_line_where(|moment| moment >= at)?),
-            Seek::After => self.frame_from(self.first_line_where(|moment| moment > at)?),
+            Seek::Before => self.frame_up_to(self.first_line_where(|moment| moment >= at)?, None),
+            Seek::AtOrBefore => {
+                self.frame_up_to(self.first_line_where(|moment| moment > at)?, Some(at))
+            }
+            Seek::AtOrAfter => {
+                self.frame_from(self.first_line_where(|moment| moment >= at)?, Some(at))
+            }
+            Seek::After => self.frame_from(self.first_line_where(|moment| moment > at)?, None),
         }
     }
 
@@ -164,7 +179,7 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// A damaged line in its place, or bytes that cannot be read.
     pub fn first_frame(&self) -> Result<Option<Frame>, ReadFault> {
-        self.frame_from(self.data_start)
+        self.frame_from(self.data_start, None)
     }
 
     /// The last frame.
@@ -174,6 +189,23 @@ impl<R: ReadAt> Reader<R> {
     /// A damaged line in its place, or bytes that cannot be read.
     pub fn last_frame(&self) -> Result<Option<Frame>, ReadFault> {
         self.frame_before(self.data_end)
+    }
+
+    /// The moment of the last frame or event; `None` when there is none, or its line is
+    /// damaged.
+    ///
+    /// # Errors
+    ///
+    /// When the bytes cannot be read.
+    pub fn last_moment(&self) -> io::Result<Option<ArrayTime>> {
+        if self.data_end <= self.data_start {
+            return Ok(None);
+        }
+        let start = line_start(&self.source, self.data_start, self.data_end - 1)?;
+        let mut window = Window::new(&self.source);
+        let found = window.line(start, self.data_end, self.longest_line())?;
+        let body = found.held.and_then(|range| decode::body(window.held(range)).ok());
+        Ok(body.and_then(|body| decode::moment(body).ok()))
     }
 
     /// Where the lines after the opening begin.
@@ -224,13 +256,42 @@ impl<R: ReadAt> Reader<R> {
         Ok(cut(size, Missing::Closing))
     }
 
-    fn frame_from(&self, offset: u64) -> Result<Option<Frame>, ReadFault> {
+    /// The first frame from a byte on. A damaged line before it may have been that frame,
+    /// unless the frame is just the one that was wanted.
+    fn frame_from(
+        &self,
+        offset: u64,
+        wanted: Option<ArrayTime>,
+    ) -> Result<Option<Frame>, ReadFault> {
+        let mut damaged = None;
         for line in Lines::new(self, offset) {
-            if let Line::Frame(frame) = line? {
-                return Ok(Some(frame));
+            match line {
+                Ok(Line::Event(_)) => {}
+                Ok(Line::Frame(frame)) if damaged.is_none() || wanted == Some(frame.at) => {
+                    return Ok(Some(frame));
+                }
+                Ok(Line::Frame(_)) => break,
+                Err(ReadFault::Io(error)) => return Err(error.into()),
+                Err(ReadFault::Damaged(damage)) => {
+                    damaged.get_or_insert(damage);
+                }
             }
         }
-        Ok(None)
+        damaged.map_or(Ok(None), |damage| Err(ReadFault::Damaged(damage)))
+    }
+
+    /// The last frame before a byte. A damaged line at that byte may have been that frame,
+    /// unless the frame is just the one that was wanted.
+    fn frame_up_to(
+        &self,
+        offset: u64,
+        wanted: Option<ArrayTime>,
+    ) -> Result<Option<Frame>, ReadFault> {
+        let frame = self.frame_before(offset)?;
+        if wanted.is_none() || frame.as_ref().map(|frame| frame.at) != wanted {
+            Lines::new(self, offset).next().transpose()?;
+        }
+        Ok(frame)
     }
 
     fn frame_before(&self, offset: u64) -> Result<Option<Frame>, ReadFault> {
@@ -291,10 +352,12 @@ impl Opening {
     ///
     /// The faults of its text.
     pub fn read_layout(&self) -> Result<Layout, Faults> {
-        layout::read(&self.layout_text, |name| {
-            let file = self.files.iter().find(|file| file.name == name);
-            file.map(|file| file.text.clone())
-        })
+        let file = |name: &str| {
+            let found = self.files.iter().find(|file| file.name == name);
+            let text = found.map(|file| file.text.clone());
+            text.ok_or_else(|| "it is not in the recording".to_owned())
+        };
+        layout::read("layout in the recording", &self.layout_text, &file)
     }
 }
 
@@ -334,5 +397,7 @@ fn is_newer(format: &str) -> bool {
     let is_number = !found_version.is_empty()
         && found_version.len() < 10
         && found_version.bytes().all(|byte| byte.is_ascii_digit());
-    kind == found_kind && is_number && found_version.parse::<u32>() > version.parse::<u32>()
+    kind == found_kind
+        && is_number
+        && found_version.parse::<u32>().ok() > version.parse::<u32>().ok()
 }

@@ -4,6 +4,7 @@
 //! A general JSON reader would round moments to doubles and build a tree of a frame of a
 //! million nodes.
 
+use crate::layout::quantity::parse_duration;
 use crate::model::array_time::ArrayTime;
 
 /// What is wrong with a line, and at which of its bytes.
@@ -63,7 +64,11 @@ impl<'a> Scanner<'a> {
 
     /// The end of the line.
     pub(super) fn end(&self) -> Scanned<()> {
-        if self.at == self.bytes.len() { Ok(()) } else { self.fail("more than the line should have") }
+        if self.at == self.bytes.len() {
+            Ok(())
+        } else {
+            self.fail("more than the line should have")
+        }
     }
 
     pub(super) fn text(&mut self) -> Scanned<String> {
@@ -84,7 +89,7 @@ impl<'a> Scanner<'a> {
             self.at = (self.at + length + 2).min(self.bytes.len());
         }
         serde_json::from_slice(&self.bytes[start..self.at])
-            .or_else(|_| Err(Malformed { at: start, what: "a malformed text".to_owned() }))
+            .map_err(|_| Malformed { at: start, what: "a malformed text".to_owned() })
     }
 
     /// The next number, as it is written.
@@ -132,14 +137,14 @@ impl<'a> Scanner<'a> {
     pub(super) fn whole(&mut self) -> Scanned<u64> {
         let at = self.at;
         let parsed = self.number()?.parse();
-        parsed.or_else(|_| Err(Malformed { at, what: "not a whole number".to_owned() }))
+        parsed.map_err(|_| Malformed { at, what: "not a whole number".to_owned() })
     }
 
     /// An exact moment or length of array time.
     pub(super) fn time(&mut self) -> Scanned<ArrayTime> {
         let at = self.at;
         let written = self.number()?;
-        exact_time(written).ok_or_else(|| Malformed {
+        parse_duration(written).map_err(|_| Malformed {
             at,
             what: format!("`{written:.40}` is not a moment of array time"),
         })
@@ -173,33 +178,6 @@ impl<'a> Scanner<'a> {
     }
 }
 
-/// A decimal as a count of attoseconds, if it is one, within the domain.
-fn exact_time(written: &str) -> Option<ArrayTime> {
-    let (mantissa, exponent) = match written.split_once(['e', 'E']) {
-        Some((mantissa, exponent)) => (mantissa, exponent.parse::<i32>().ok()?),
-        None => (written, 0),
-    };
-    let (sign, digits) = match mantissa.strip_prefix('-') {
-        Some(digits) => (-1, digits),
-        None => (1, mantissa),
-    };
-    let (whole, part) = digits.split_once('.').unwrap_or((digits, ""));
-    // Zeros at the end are no digits: they only move the point.
-    let both = [whole, part].concat();
-    let significant = both.trim_end_matches('0');
-    if significant.trim_start_matches('0').is_empty() {
-        return Some(ArrayTime::ZERO);
-    }
-    let cut = i32::try_from(both.len() - significant.len()).ok()?;
-    let power = exponent
-        .checked_sub(i32::try_from(part.len()).ok()?)?
-        .checked_add(cut)?
-        .checked_add(18)?;
-    let scale = 10_i128.checked_pow(u32::try_from(power).ok()?)?;
-    let count = significant.parse::<i128>().ok()?.checked_mul(scale)?;
-    ArrayTime::from_attoseconds(sign * count).in_domain()
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -207,7 +185,9 @@ mod tests {
 
     #[test]
     fn moments_are_read_exactly_or_not_at_all() {
-        let count = |written| exact_time(written).map(ArrayTime::attoseconds);
+        let count = |written: &str| {
+            Scanner::new(written.as_bytes()).time().ok().map(ArrayTime::attoseconds)
+        };
         assert_eq!(count("0"), Some(0));
         assert_eq!(count("-0.0"), Some(0));
         assert_eq!(count("43200"), Some(43_200 * ATTOSECONDS_PER_SECOND));

@@ -219,7 +219,8 @@ impl Judged<'_> {
     /// The first phase and moment at which a node feels more than it is built for.
     fn first_over(&self, position_m: f64, rating: f64) -> Option<(usize, ArrayTime)> {
         let over = |acceleration: Dd| {
-            let extreme = Extreme { acceleration_m_s2: acceleration, phase: 0, at: ArrayTime::ZERO };
+            let extreme =
+                Extreme { acceleration_m_s2: acceleration, phase: 0, at: ArrayTime::ZERO };
             self.felt(&extreme, position_m).abs() > rating
         };
         for (index, phase) in self.plan?.phases().iter().enumerate() {
@@ -249,10 +250,7 @@ fn horizon_remedy(reached: &HorizonReached) -> String {
 
 /// An acceleration for a sentence.
 fn amount(acceleration_m_s2: f64) -> String {
-    format!(
-        "{acceleration_m_s2:.6} m/s^2 ({:.6} g0)",
-        acceleration_m_s2 / STANDARD_GRAVITY_M_S2
-    )
+    format!("{acceleration_m_s2:.6} m/s^2 ({:.6} g0)", acceleration_m_s2 / STANDARD_GRAVITY_M_S2)
 }
 
 /// Judges every rule: the horizon for each node, then the rating of each node that has one.
@@ -297,8 +295,18 @@ pub fn check_report(layout: &Layout, span: JudgedOver, judgements: Arc<[Judgemen
     ];
     if let Some(smallest) = smallest {
         report.scalars.extend([
-            scalar("smallest_margin", "smallest margin", Measure::Ratio, Cell::Number(smallest.margin)),
-            scalar("smallest_margin_rule", "of the rule", Measure::Word, Cell::Text(smallest.rule.word().into())),
+            scalar(
+                "smallest_margin",
+                "smallest margin",
+                Measure::Ratio,
+                Cell::Number(smallest.margin),
+            ),
+            scalar(
+                "smallest_margin_rule",
+                "of the rule",
+                Measure::Word,
+                Cell::Text(smallest.rule.word().into()),
+            ),
             scalar(
                 "smallest_margin_subject",
                 "for",

@@ -43,8 +43,14 @@ pub fn differences(a: &State<'_>, b: &State<'_>) -> Vec<Difference> {
     ] {
         push(&mut found, None, quantity, Some(a), Some(b));
     }
-    let rows: HashMap<&str, usize> =
-        b.run().layout().nodes.iter().enumerate().map(|(row, node)| (node.name.as_str(), row)).collect();
+    let rows: HashMap<&str, usize> = b
+        .run()
+        .layout()
+        .nodes
+        .iter()
+        .enumerate()
+        .map(|(row, node)| (node.name.as_str(), row))
+        .collect();
     for (row, node) in a.run().layout().nodes.iter().enumerate() {
         let theirs = rows.get(node.name.as_str()).and_then(|&row| values(b, row));
         push_node(&mut found, &node.name, values(a, row), theirs);
@@ -59,13 +65,8 @@ pub fn differences(a: &State<'_>, b: &State<'_>) -> Vec<Difference> {
     found
 }
 
-const QUANTITIES: [&str; 5] = [
-    "position_m",
-    "acceleration_m_s2",
-    "rate_minus_one",
-    "clock_offset_s",
-    "predicted_reading_s",
-];
+const QUANTITIES: [&str; 5] =
+    ["position_m", "acceleration_m_s2", "rate_minus_one", "clock_offset_s", "predicted_reading_s"];
 
 fn values(state: &State<'_>, row: usize) -> Option<[Dd; 5]> {
     let aboard = state.node(row).aboard()?;
@@ -80,12 +81,7 @@ fn values(state: &State<'_>, row: usize) -> Option<[Dd; 5]> {
     ])
 }
 
-fn push_node(
-    found: &mut Vec<Difference>,
-    name: &str,
-    a: Option<[Dd; 5]>,
-    b: Option<[Dd; 5]>,
-) {
+fn push_node(found: &mut Vec<Difference>, name: &str, a: Option<[Dd; 5]>, b: Option<[Dd; 5]>) {
     for (index, quantity) in QUANTITIES.into_iter().enumerate() {
         let pick = |side: Option<[Dd; 5]>| side.map(|values| values[index]);
         push(found, Some(name), quantity, pick(a), pick(b));

@@ -4,6 +4,7 @@ mod check;
 mod compare;
 mod offsets;
 mod rates;
+mod recording;
 
 use crate::layout::Layout;
 use crate::model::dd::Dd;
@@ -16,6 +17,7 @@ pub use check::{JudgedOver, Judgement, Rule, RuleState, check_report, judge};
 pub use compare::{Difference, compare_report, differences};
 pub use offsets::offsets_report;
 pub use rates::rates_report;
+pub use recording::{detail, events_table, replay_report, verify_report};
 
 /// Why a released node has no number.
 pub const RELEASED: &str = "released: the node no longer belongs to the line";
