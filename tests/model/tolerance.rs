@@ -191,7 +191,7 @@ pub const ALLOWED: &[Allowed] = &[
     Allowed {
         quantity: "ln_ratio",
         required: 1e-14,
-        held: 2.0 * U,
+        held: 0.6 * U,
         scale: "total rapidity + what the arrival may be off times the acceleration",
         reason: "the rapidity itself, rounded once",
     },
