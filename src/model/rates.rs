@@ -110,6 +110,38 @@ impl Instant {
     }
 }
 
+/// What is known of a real clock beside the rate of its place.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct KnownClock {
+    /// Reading at array time zero, s.
+    pub reading_at_start_s: f64,
+    /// Fractional frequency bias.
+    pub bias: f64,
+    /// Linear drift of the fractional frequency, 1/s.
+    pub drift_per_s: f64,
+    /// Fractional frequency per m/s² of felt acceleration.
+    pub acceleration_sensitivity: f64,
+}
+
+impl KnownClock {
+    /// Reading less array time, s.
+    ///
+    /// With own proper time `s`: `(s − τ) + x₀ + b s + D s²/2 + k ∫ a ds`. Under thrust
+    /// `∫ a ds = ∫ α dτ = c φ`, the same for every node, because the local clock and the
+    /// local acceleration differ by the same factor `N`; `velocity_m_s` is that integral.
+    ///
+    /// Within 4 units of 2⁻⁵³ of the sum of the moduli of the terms.
+    #[must_use]
+    pub fn reading_less_array_time_s(&self, at_s: Dd, clock_offset_s: Dd, velocity_m_s: Dd) -> Dd {
+        let own = at_s + clock_offset_s;
+        clock_offset_s
+            + self.reading_at_start_s
+            + own * self.bias
+            + own * own * (0.5 * self.drift_per_s)
+            + velocity_m_s * self.acceleration_sensitivity
+    }
+}
+
 /// Whether `1 + α h / c²` is above zero, decided exactly for double inputs.
 #[must_use]
 pub fn is_realisable(acceleration_m_s2: Dd, position_m: f64) -> bool {

@@ -71,7 +71,10 @@ fn recording_words(desk: &Desk) -> (String, &'static str) {
         Some(recording) => {
             // The frame of the present moment counts: it is written when it is left.
             let frames = recording.frames + u64::from(recording.is_waiting());
-            (format!("recording {}, {frames} frames", recording.path), "recording")
+            (
+                format!("recording {}, {}", recording.path, words::count(frames, "frame")),
+                "recording",
+            )
         }
     }
 }

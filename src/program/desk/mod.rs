@@ -174,7 +174,7 @@ fn take_in(desk: &mut Desk, outside: &mut Outside, news: Incoming) -> Heard {
     let message = match news {
         Incoming::Key(key) => Message::Key(key),
         Incoming::Paste(text) => Message::Paste(text),
-        Incoming::Resized | Incoming::Woken => return Heard::Nothing,
+        Incoming::Resized => return Heard::Nothing,
         Incoming::Resumed => return Heard::Resumed,
         Incoming::Ended(ended) => return Heard::Ended(ended),
     };
@@ -231,8 +231,10 @@ fn summary(desk: &Desk) -> String {
     for made in &desk.made {
         let state = if made.is_whole { "closed" } else { "cut: it has no closing line" };
         lines.push(format!(
-            "recorded {}: {} frames, {} events, {state}",
-            made.path, made.frames, made.events
+            "recorded {}: {}, {}, {state}",
+            made.path,
+            words::count(made.frames, "frame"),
+            words::count(made.events, "event")
         ));
     }
     lines.join("\n")

@@ -48,7 +48,8 @@ impl Desk {
                 self.pass(target, effects);
             }
         }
-        if target >= last {
+        let has_come_to_end = self.replay.is_some() || self.at >= last;
+        if target >= last && has_come_to_end {
             self.stop_running(effects);
             self.notice = Some(Notice::said(if self.replay.is_some() {
                 "the end of the recording"

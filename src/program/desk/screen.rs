@@ -38,13 +38,12 @@ pub fn view(desk: &Desk, area: Rect, buffer: &mut Buffer) -> Option<Position> {
 
 /// One line of text: what is being typed, else what was said, else how things stand.
 fn draw_one_line(desk: &Desk, line: Rect, painter: &mut Painter<'_>) -> Option<Position> {
-    if desk.focus == Focus::Entry {
-        return draw_entry(desk, None, line, painter);
-    }
-    match &desk.notice {
-        Some(notice) => {
-            painter.put(line, line.x, line.y, &notice.text(), PLAIN);
+    let is_typing = desk.focus == Focus::Entry && !desk.entry.text().is_empty();
+    match message(desk).filter(|_| !is_typing) {
+        Some((text, style)) => {
+            painter.put(line, line.x, line.y, &text, style);
         }
+        None if desk.focus == Focus::Entry => return draw_entry(desk, None, line, painter),
         None => head::draw_one_line(desk, line, painter),
     }
     None

@@ -37,8 +37,7 @@ impl Step {
         let fitting = LADDER_S
             .iter()
             .map(|seconds| ArrayTime::from_seconds(*seconds))
-            .filter(|step| step.attoseconds().saturating_mul(50) <= end.attoseconds())
-            .next_back();
+            .rfind(|step| step.attoseconds().saturating_mul(50) <= end.attoseconds());
         let least = || {
             // Plans of seconds and less: the power of ten below a fiftieth.
             let mut step = ArrayTime::from_seconds(1).attoseconds();

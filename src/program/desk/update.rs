@@ -209,6 +209,12 @@ impl Desk {
             Ok(sentence) => self.perform(sentence, effects),
             Err(notice) => self.notice = Some(notice),
         }
+        // What was refused can be brought back by Up and mended; after anything else the
+        // keys step again.
+        let is_refused = self.notice.as_ref().is_some_and(|notice| notice.refusal.is_some());
+        if !is_refused && self.question.is_none() {
+            self.focus = self.focus_before;
+        }
     }
 
     fn answer(&mut self, text: &str, effects: &mut Vec<Effect>) {
@@ -219,9 +225,11 @@ impl Desk {
                 if let Some(question) = question {
                     self.perform_for_certain(question.then, effects);
                 }
+                self.focus = self.focus_before;
             }
             "no" => {
                 self.question = None;
+                self.focus = self.focus_before;
                 self.notice = Some(Notice::said("nothing has been changed"));
             }
             _ => {

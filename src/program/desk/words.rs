@@ -74,6 +74,11 @@ pub fn pace(pace: f64) -> String {
     format!("{} s", rounded(pace))
 }
 
+/// A number of things: `1 frame`, `2 frames`.
+pub fn count(number: u64, thing: &str) -> String {
+    format!("{number} {thing}{}", if number == 1 { "" } else { "s" })
+}
+
 /// An event in words.
 pub fn event(kind: &EventKind) -> String {
     match kind {
