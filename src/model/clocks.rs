@@ -98,7 +98,7 @@ impl Noise {
 }
 
 /// `3γ − ln 2`, the constant in the law of flicker phase noise (γ: Euler's constant).
-const FLICKER_CONSTANT: f64 = 1.038_499_813_784_652_7;
+const FLICKER_CONSTANT: f64 = 1.038_499_814_144_653_3;
 /// The value below which `b` is not let fall: from there on the variance is convex over the
 /// logarithm of the averaging time, so that it has one minimum.
 const LEAST_BRACKET: f64 = 3.0;

@@ -1,5 +1,7 @@
 //! The library against identities, independent references and published values.
 
+mod check;
+mod clocks;
 mod identities;
 mod layout_read;
 mod layout_refused;

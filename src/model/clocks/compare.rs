@@ -134,10 +134,8 @@ impl Comparison {
     #[must_use]
     pub fn quietest_within(&self, limit_s: f64) -> Quietest {
         let curve = &self.curve;
-        let floor = |averaging_s| Quietest {
-            deviation: curve.level.to_f64().max(0.0).sqrt(),
-            averaging_s,
-        };
+        let floor =
+            |averaging_s| Quietest { deviation: curve.level.to_f64().max(0.0).sqrt(), averaging_s };
         match (curve.falls(), curve.rises()) {
             (false, _) => return floor(Some(0.0)),
             (true, false) if limit_s.is_infinite() => return floor(None),

@@ -30,12 +30,13 @@ def frequency_noise_integral(a):
     """int_0^inf x^(a-2) sin^4 x dx: quadrature over half periods, then a tail by its mean 3/8 and
     the oscillating rest sin^4 x - 3/8 = -cos(2x)/2 + cos(4x)/8, summed over periods."""
     power = a - 2
-    head = quad(lambda x: x**power * sin(x) ** 4, [k * pi / 2 for k in range(0, 41)])
+    head = quad(lambda x: x**power * sin(x) ** 4, [k * pi / 2 for k in range(0, 41)], method="gauss-legendre")
     start = 20 * pi
     mean = mpf(3) / 8 * start ** (power + 1) / -(power + 1)
     rest = nsum(
         lambda k: quad(
-            lambda x: x**power * (sin(x) ** 4 - mpf(3) / 8), [start + k * pi, start + (k + 1) * pi]
+            lambda x: x**power * (sin(x) ** 4 - mpf(3) / 8), [start + k * pi, start + (k + 1) * pi],
+            method="gauss-legendre",
         ),
         [0, inf],
     )
@@ -52,10 +53,27 @@ def variance(kind, t, bandwidth):
     top = pi * t * bandwidth
     count = int(round(float(2 * top / pi)))
     assert abs(count * pi / 2 - top) < mpf(10) ** -20, "whole numbers of f_h t"
-    return scale * quad(lambda x: x ** (a - 2) * sin(x) ** 4, [k * pi / 2 for k in range(count + 1)])
+    zeros = [k * pi / 2 for k in range(count + 1)]
+    return scale * quad(lambda x: x ** (a - 2) * sin(x) ** 4, zeros, method="gauss-legendre", maxdegree=4)
 
 
 INTEGRALS = {a: frequency_noise_integral(a) for a in (0, -1, -2)}
+
+
+def check_coefficients():
+    """The coefficients of table B.2 of IEEE Std 1139-2008 (from memory), against the integrals."""
+    for kind, wanted in (
+        ("white_fm", mpf(1) / 2),
+        ("flicker_fm", 2 * log(2)),
+        ("random_walk_fm", 2 * pi**2 / 3),
+    ):
+        got = variance(kind, mpf(1), None)
+        assert abs(got / wanted - 1) < mpf(10) ** -18, (kind, got, wanted)
+    got = variance("white_pm", mpf(1), 10) * 4 * pi**2 / 30
+    assert abs(got - 1) < mpf(10) ** -15, got
+    # 1.039448 at f_h t = 10 where the standard prints 1.038: what is left out dies away.
+    got = variance("flicker_pm", mpf(1), 10) * 4 * pi**2 - 3 * log(20 * pi)
+    assert abs(got - mpf("1.039448")) < mpf(10) ** -6, got
 
 
 def noise_rows():
@@ -65,7 +83,7 @@ def noise_rows():
             ratio = sqrt(variance(kind, mpf(t), None) / variance(kind, mpf(1), None))
             yield f"{kind},1,{t},{mp.nstr(ratio, 20)},4e-16"
     for kind, tolerance in (("white_pm", "4e-16"), ("flicker_pm", None)):
-        for bandwidth, t in ((10, 2), (10, 10), (10, 40), (100, 3), (100, 10)):
+        for bandwidth, t in ((10, 2), (10, 10), (100, 3)):
             ratio = sqrt(variance(kind, mpf(t), bandwidth) / variance(kind, mpf(1), bandwidth))
             # The left-out terms fall with the square of f_h t; the largest is at 1 s.
             allowed = tolerance or ("5e-5" if bandwidth == 10 else "5e-7")
@@ -127,10 +145,10 @@ def resolve_rows():
         target = (mpf(float(difference)) / mpf(float(k))) ** 2
         over = lambda u: total(first, second, link, mpf(10) ** u) - target
         found = ""
-        steps = [mpf(n) / 50 - 20 for n in range(0, 2001)]
+        steps = [mpf(n) / 10 - 20 for n in range(0, 401)]
         for low, high in zip(steps, steps[1:]):
             if over(low) > 0 >= over(high):
-                for _ in range(140):
+                for _ in range(110):
                     middle = (low + high) / 2
                     low, high = (middle, high) if over(middle) > 0 else (low, middle)
                 found = mp.nstr(mpf(10) ** high, 20)
@@ -139,6 +157,7 @@ def resolve_rows():
 
 
 def main():
+    check_coefficients()
     wrong = False
     for name, rows in (("noise.csv", noise_rows), ("resolve.csv", resolve_rows)):
         text = "".join(f"{row}\n" for row in rows())
