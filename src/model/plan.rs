@@ -4,7 +4,7 @@
 use std::fmt;
 
 use super::array_time::ArrayTime;
-use super::constants::SPEED_OF_LIGHT_M_S;
+use super::constants::{INVERSE_C_S_M, SPEED_OF_LIGHT_M_S};
 use super::dd::{Dd, RunningSum, Wide};
 use super::motion::{self, Launch};
 
@@ -411,7 +411,7 @@ impl Plan {
 
 /// `φ` of a velocity gain.
 fn rapidity_of(velocity_gain: Wide) -> Dd {
-    velocity_gain.to_dd() / SPEED_OF_LIGHT_M_S
+    velocity_gain.to_dd() * INVERSE_C_S_M
 }
 
 fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), PlanFault> {

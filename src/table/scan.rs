@@ -35,6 +35,8 @@ pub struct ColumnScan {
     signed: bool,
     least_digits: i32,
     text_columns: usize,
+    /// The measured cell last seen: limits are often the same in many rows.
+    measured: Option<(f64, Measure)>,
     anything_absent: bool,
     /// Numbers, in SI units.
     numbers: usize,
@@ -73,6 +75,7 @@ impl ColumnScan {
             signed: is_difference(key),
             least_digits: LEAST_DIGITS,
             text_columns: 0,
+            measured: None,
             anything_absent: false,
             numbers: 0,
             lowest: f64::INFINITY,
@@ -110,7 +113,9 @@ impl ColumnScan {
             Cell::Absent(_) => self.anything_absent = true,
             Cell::Number(value) if value.is_finite() => self.see_number(*value),
             Cell::Number(_) => self.anything_absent = true,
+            Cell::Measured(value, measure) if self.measured == Some((*value, *measure)) => {}
             Cell::Measured(value, measure) if value.is_finite() => {
+                self.measured = Some((*value, *measure));
                 // The ASCII label may be the longer one; a column too wide is no harm.
                 let shown = measured(*value, *measure, false);
                 self.text_columns = self.text_columns.max(columns_of(&shown));

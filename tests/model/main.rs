@@ -1,10 +1,18 @@
 //! The library against identities, independent references and published values.
+// What a test compares with may come from anywhere.
+#![allow(clippy::disallowed_methods)]
+// Published digits are kept as they are printed.
+#![allow(clippy::excessive_precision)]
+// Distributions of errors are shown with `--nocapture`.
+#![allow(clippy::print_stdout)]
 
 mod check;
 mod clocks;
 mod identities;
+mod layout_random;
 mod layout_read;
 mod layout_refused;
+mod layout_units;
 mod pinned;
 mod published;
 mod recording;

@@ -91,6 +91,13 @@ pub const ALLOWED: &[Allowed] = &[
         reason: "exact array time plus a double-double offset, rounded once",
     },
     Allowed {
+        quantity: "predicted_reading_s",
+        required: 4.0 * U,
+        held: 1.0 * U,
+        scale: "the sum of the moduli of its terms",
+        reason: "double-double, rounded once",
+    },
+    Allowed {
         quantity: "launch_time_s",
         required: 1e-14,
         held: 6.0 * U,

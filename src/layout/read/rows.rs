@@ -1,8 +1,7 @@
 //! The rows of a line: nodes fore to aft, found by name.
 
-use std::collections::HashMap;
-
-use super::nodes::Gathered;
+use super::index::NameIndex;
+use super::nodes::{Gathered, Place};
 use super::{Named, named};
 use crate::layout::Node;
 use crate::layout::fault::{Collector, Spot};
@@ -13,14 +12,17 @@ use crate::layout::written::Written;
 /// Lines up to this many nodes are searched for the name that was meant.
 const SEARCHED_FOR_NAMES: usize = 20_000;
 
+/// After this many faults no name is searched for any more.
+const FAULTS_SEARCHED_FOR: usize = 200;
+
 /// The nodes of a line, fore to aft, with an index of their names.
 pub(super) struct Rows {
     pub(super) nodes: Vec<Node>,
     pub(super) reference: usize,
-    by_name: HashMap<String, u32>,
-    /// Whether every node that was written is there; otherwise a name that is not found
-    /// may be one of a faulty node, and is not reported.
-    whole: bool,
+    by_name: NameIndex,
+    /// Whether a name that is not found may be one of a faulty node; it is then not
+    /// reported.
+    hides_nodes: bool,
 }
 
 impl Rows {
@@ -28,69 +30,41 @@ impl Rows {
     pub(super) fn arrange(
         gathered: Gathered,
         written: &Written,
-        whole: bool,
         faults: &mut Collector,
     ) -> Option<Rows> {
-        let Gathered { mut nodes, places, default_reference } = gathered;
-        let mut by_name = HashMap::with_capacity(nodes.len());
+        let Gathered { mut nodes, places, default_reference, hides_nodes } = gathered;
+        let mut by_name = NameIndex::with_room_for(nodes.len());
         for (index, node) in nodes.iter().enumerate() {
-            let index = u32::try_from(index).ok()?;
-            if let Some(first) = by_name.insert(node.name.clone(), index) {
-                by_name.insert(node.name.clone(), first);
+            let number = u32::try_from(index).ok()?;
+            let name_of = |number: u32| nodes[number as usize].name.as_str();
+            if let Some(first) = by_name.add(&node.name, number, name_of) {
                 let rule = format!("names are unique; `{}` names two nodes", node.name);
-                let remedy = places[index as usize].remedy_for_same_name(&places[first as usize]);
-                faults.fault(places[index as usize].spot, rule, remedy);
+                let remedy = places[index].remedy_for_same_name(&places[first as usize]);
+                faults.fault(places[index].spot, rule, remedy);
             }
         }
-        let mut rows = Rows { nodes: Vec::new(), reference: 0, by_name, whole };
+        let mut rows = Rows { nodes: Vec::new(), reference: 0, by_name, hides_nodes };
         let reference = match named(&written.reference) {
             Some(name) => rows.find(name, &nodes, faults),
             None if written.reference.is_absent() => default_reference,
             None => None,
         };
-        for (index, place) in places.iter().enumerate() {
-            let is_reference = Some(index) == reference;
-            match place.position {
-                None if is_reference => {}
-                // Without a reference one node of many may go without a position.
-                None if reference.is_some() || places.len() > 1 => {
-                    if reference.is_some() || written.reference.is_absent() {
-                        faults.fault(
-                            place.spot,
-                            format!("`{}` states its position", nodes[index].name),
-                            "add its distance ahead of the reference, for example `position = \"120 m\"`",
-                        );
-                    }
-                }
-                Some(spot) if is_reference && nodes[index].position_m != 0.0 => {
-                    let rule = format!(
-                        "the reference stands at position 0; `{}` is given {} m",
-                        nodes[index].name, nodes[index].position_m
-                    );
-                    let remedy = format!(
-                        "count all positions from `{}`, or name another reference",
-                        nodes[index].name
-                    );
-                    faults.fault(spot, rule, remedy);
-                }
-                _ => {}
+        // Only a known reference tells which node may go without a position.
+        if let Some(reference) = reference {
+            for (index, (node, place)) in nodes.iter().zip(&places).enumerate() {
+                judge_position(node, place, index == reference, faults);
             }
         }
         let reference = reference?;
-        let order = order(&nodes);
-        if let Some(order) = order {
+        rows.reference = reference;
+        if let Some(order) = order(&nodes) {
             let mut row_of = vec![0_u32; nodes.len()];
-            for (row, index) in order.iter().enumerate() {
-                row_of[*index as usize] = u32::try_from(row).ok()?;
-            }
-            let mut taken: Vec<Option<Node>> = nodes.into_iter().map(Some).collect();
-            nodes = order.iter().filter_map(|index| taken[*index as usize].take()).collect();
-            for index in rows.by_name.values_mut() {
-                *index = row_of[*index as usize];
+            for (row, index) in (0_u32..).zip(&order) {
+                row_of[*index as usize] = row;
             }
             rows.reference = row_of[reference] as usize;
-        } else {
-            rows.reference = reference;
+            rows.by_name.renumber(|index| row_of[index as usize]);
+            permute(&mut nodes, row_of);
         }
         rows.nodes = nodes;
         Some(rows)
@@ -107,10 +81,10 @@ impl Rows {
         nodes: &[Node],
         faults: &mut Collector,
     ) -> Option<usize> {
-        if let Some(row) = self.by_name.get(name) {
-            return Some(*row as usize);
+        if let Some(row) = self.by_name.find(name, |row| nodes[row as usize].name.as_str()) {
+            return Some(row as usize);
         }
-        if self.whole {
+        if !self.hides_nodes {
             let searched = if nodes.len() <= SEARCHED_FOR_NAMES { nodes } else { &[] };
             let names = searched.iter().map(|node| node.name.as_str());
             not_found("node", name, spot, names, faults);
@@ -131,6 +105,27 @@ impl Rows {
     }
 }
 
+/// Every node but the reference states its position; the reference stands at 0.
+fn judge_position(node: &Node, place: &Place, is_reference: bool, faults: &mut Collector) {
+    if !is_reference {
+        if place.has_no_position {
+            let rule = format!("`{}` states its position", node.name);
+            faults.fault(place.spot, rule, place.remedy_for_no_position());
+        }
+        return;
+    }
+    if let Some(spot) = place.position
+        && node.position_m != 0.0
+    {
+        let rule = format!(
+            "the reference stands at position 0; `{}` is given {} m",
+            node.name, node.position_m
+        );
+        let remedy = format!("count all positions from `{}`, or name another reference", node.name);
+        faults.fault(spot, rule, remedy);
+    }
+}
+
 /// The rows fore to aft as indices, ties in the order given; `None` when they stand in
 /// that order already.
 fn order(nodes: &[Node]) -> Option<Vec<u32>> {
@@ -142,6 +137,18 @@ fn order(nodes: &[Node]) -> Option<Vec<u32>> {
     Some(order)
 }
 
+/// Moves every node to its row.
+fn permute(nodes: &mut [Node], mut row_of: Vec<u32>) {
+    for place in 0..nodes.len() {
+        // Each swap brings one node to where it belongs.
+        while row_of[place] as usize != place {
+            let row = row_of[place] as usize;
+            nodes.swap(place, row);
+            row_of.swap(place, row);
+        }
+    }
+}
+
 /// Notes that a name is not there, with the one that was meant.
 pub(super) fn not_found<'n>(
     what: &str,
@@ -150,7 +157,8 @@ pub(super) fn not_found<'n>(
     all: impl Iterator<Item = &'n str>,
     faults: &mut Collector,
 ) {
-    let all: Vec<&str> = all.collect();
+    let searched = faults.total() < FAULTS_SEARCHED_FOR;
+    let all: Vec<&str> = if searched { all.collect() } else { Vec::new() };
     let remedy = match nearest(name, all.iter().copied()) {
         Some(meant) => format!("write `{meant}`"),
         None if all.is_empty() || all.len() > 8 => format!("write the name of a {what}"),

@@ -13,6 +13,7 @@ mod resolve;
 mod words;
 
 use std::borrow::Cow;
+use std::sync::OnceLock;
 
 use crate::layout::{Layout, SpanKind};
 use crate::model::array_time::ArrayTime;
@@ -209,6 +210,8 @@ pub struct Check<'a> {
     /// Rules whose inputs the layout has and this version does not judge.
     unjudged: Vec<(Rule, Subject)>,
     limits: Limits<'a>,
+    /// Made once, when it is asked for.
+    summary: OnceLock<Summary>,
 }
 
 impl<'a> Check<'a> {
@@ -225,6 +228,7 @@ impl<'a> Check<'a> {
             unjudged: unjudged(layout),
             limits: Limits::judge(layout, span, &line),
             line,
+            summary: OnceLock::new(),
         }
     }
 
@@ -278,7 +282,11 @@ impl<'a> Check<'a> {
 
     /// Counts and the smallest margin.
     #[must_use]
-    pub fn summary(&self) -> Summary {
+    pub fn summary(&self) -> &Summary {
+        self.summary.get_or_init(|| self.summarised())
+    }
+
+    fn summarised(&self) -> Summary {
         let mut summary =
             Summary { kept: 0, broken: 0, not_judged: 0, smallest: self.judgement(0) };
         for row in 0..self.rows() {

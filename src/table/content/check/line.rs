@@ -72,7 +72,15 @@ impl<'a> Line<'a> {
 
     /// What holds a node under an acceleration of the reference.
     pub(super) fn instant(&self, acceleration_m_s2: Dd, at: ArrayTime) -> Instant {
-        let moment = Moment { acceleration_m_s2, ..Moment::held_always(at, 0.0) };
+        // Only the acceleration counts for rates and what is felt.
+        let moment = Moment {
+            at,
+            phase: None,
+            acceleration_m_s2,
+            velocity_gain_m_s: Dd::ZERO,
+            rapidity: Dd::ZERO,
+            total_rapidity: 0.0,
+        };
         Instant { moment, gradient_per_s2: self.gradient_per_s2 }
     }
 
