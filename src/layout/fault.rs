@@ -165,6 +165,14 @@ impl Collector {
         }
     }
 
+    /// Counts faults of a file that are not told one by one.
+    pub(crate) fn count_more(&mut self, file: usize, count: usize) {
+        if count > 0 {
+            self.counts.resize(self.counts.len().max(file + 1), 0);
+            self.counts[file] += count;
+        }
+    }
+
     /// Whether nothing was found.
     pub(crate) fn is_empty(&self) -> bool {
         self.total() == 0
@@ -189,19 +197,20 @@ impl Collector {
             let end = text[after..].find('\n').map_or(text.len(), |at| after + at);
             (start, end)
         };
-        let mut lines: Vec<(usize, usize)> = self
-            .found
-            .iter()
-            .filter(|found| found.syntax)
-            .map(|found| line_of(found.spot))
-            .collect();
+        let syntax = self.found.iter().filter(|found| found.syntax);
+        let mut starts: Vec<u32> = syntax.clone().map(|found| found.spot.start).collect();
+        let mut lines: Vec<(usize, usize)> = syntax.map(|found| line_of(found.spot)).collect();
+        starts.sort_unstable();
         lines.sort_unstable();
         let before = self.found.len();
         self.found.retain(|found| {
-            let start = found.spot.start as usize;
-            let nowhere = found.spot.end == 0;
-            let blamed = lines.iter().any(|(from, to)| (*from..=*to).contains(&start));
-            found.syntax || !(nowhere || blamed)
+            let Spot { start, end, .. } = found.spot;
+            let nowhere = end == 0;
+            let holds_one =
+                starts.partition_point(|at| *at < start) < starts.partition_point(|at| *at < end);
+            let next = lines.partition_point(|(from, _)| *from <= start as usize);
+            let on_line = next > 0 && start as usize <= lines[next - 1].1;
+            found.syntax || !(nowhere || holds_one || on_line)
         });
         if let Some(count) = self.counts.first_mut() {
             *count -= before - self.found.len();

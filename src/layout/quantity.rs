@@ -267,6 +267,13 @@ fn unknown_unit(
             how_to_write(dimension),
         );
     }
+    if name.contains(|digit: char| digit.is_ascii_digit()) && name.contains(is_blank) {
+        return QuantityFault::new(
+            whole,
+            "a quantity holds one number and one unit",
+            "put the sum into one unit, for example `90 min` for an hour and a half",
+        );
+    }
     if dimension.units().next().is_none() {
         return QuantityFault::new(
             place,

@@ -148,7 +148,6 @@ fn check(
     faults: &mut Collector,
 ) -> Option<Layout> {
     let text_of = |file: Option<u32>| Some((file?, named.get(file? as usize - 1)?.text.as_str()));
-    let survey_is_lost = written.survey.is_some() && survey.is_none();
     let positions = written.positions.value().copied().unwrap_or(Positions::Unloaded);
     if let (Positions::AsFlown, Some(spot)) = (positions, written.positions.spot())
         && written.design_acceleration.is_absent()
@@ -160,10 +159,8 @@ fn check(
         );
     }
     let course = course::check(written, text_of(history), faults);
-    let before_nodes = faults.total();
     let gathered = nodes::gather(written, text_of(survey), faults);
-    let whole = written.nodes_are_whole && !survey_is_lost && faults.total() == before_nodes;
-    let line = rows::Rows::arrange(gathered, written, whole, faults)?;
+    let line = rows::Rows::arrange(gathered, written, faults)?;
     course::check_gradient(written, &line, faults);
 
     let spans = parts::spans(written, &line, faults);

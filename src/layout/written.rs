@@ -6,6 +6,7 @@ mod document;
 mod keys;
 mod nodes;
 mod section;
+mod syntax;
 mod tables;
 
 use super::fault::Spot;
@@ -13,7 +14,7 @@ use super::{AccelerationUncertainty, Clock, Epoch, Note, Positions, Shape, SpanK
 use crate::model::array_time::ArrayTime;
 
 pub(crate) use document::read_document;
-pub(crate) use nodes::{NodeKey, NodeValues, set_from_text};
+pub(crate) use nodes::{NodeKey, NodeValues, set_from_text, set_number};
 
 /// A value that may be absent, or present but faulty (and then reported already).
 #[derive(Clone, Debug, Default, PartialEq)]
@@ -77,9 +78,10 @@ pub(crate) struct Written {
     pub(crate) stations: Vec<WrittenStation>,
     pub(crate) limits: Vec<WrittenLimit>,
     pub(crate) notes: Vec<Note>,
-    /// Whether tables are there at all, faulty ones included: a reference into a faulty
-    /// table is not reported a second time.
-    pub(crate) nodes_are_whole: bool,
+    /// Whether every table was understood: what an unknown one holds is not reported as
+    /// missing.
+    pub(crate) tables_are_known: bool,
+    /// Whether every kind of clock was.
     pub(crate) clocks_are_whole: bool,
 }
 

@@ -1,8 +1,10 @@
 //! The library against identities, independent references and published values.
 
 mod identities;
+mod layout_random;
 mod layout_read;
 mod layout_refused;
+mod layout_units;
 mod pinned;
 mod published;
 mod recording;

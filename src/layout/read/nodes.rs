@@ -16,6 +16,9 @@ pub(super) struct Gathered {
     pub(super) places: Vec<Place>,
     /// The reference when none is named.
     pub(super) default_reference: Option<usize>,
+    /// Whether a faulty part may have hidden nodes, so that a name that is not found is
+    /// not reported.
+    pub(super) hides_nodes: bool,
 }
 
 /// Where a node was written.
@@ -24,6 +27,8 @@ pub(super) struct Place {
     pub(super) spot: Spot,
     /// Where its position stands, when it has one.
     pub(super) position: Option<Spot>,
+    /// Whether it was given none at all, not even a faulty one.
+    pub(super) has_no_position: bool,
     pub(super) origin: Origin,
 }
 
@@ -36,6 +41,13 @@ pub(super) enum Origin {
 }
 
 impl Place {
+    pub(super) fn remedy_for_no_position(&self) -> &'static str {
+        match self.origin {
+            Origin::Survey => "fill in its `position_m`, metres ahead of the reference",
+            _ => "add its distance ahead of the reference, for example `position = \"120 m\"`",
+        }
+    }
+
     pub(super) fn remedy_for_same_name(&self, other: &Place) -> &'static str {
         match (self.origin, other.origin) {
             (Origin::Series, Origin::Survey) => {
@@ -64,7 +76,7 @@ impl<'w> Clocks<'w> {
     pub(super) fn new(written: &'w Written) -> Clocks<'w> {
         let names = written.clocks.iter().enumerate();
         let by_name = names.map(|(index, clock)| (clock.name.as_str(), index)).collect();
-        Clocks { by_name, whole: written.clocks_are_whole }
+        Clocks { by_name, whole: written.clocks_are_whole && written.tables_are_known }
     }
 
     pub(super) fn index(&self, values: &NodeValues, faults: &mut Collector) -> Option<usize> {
@@ -107,14 +119,19 @@ pub(super) fn gather(
 ) -> Gathered {
     let mut gathered = Gathered::default();
     let mut listed = std::mem::take(&mut written.nodes);
+    let before_survey = faults.total();
     let new = survey.map(|(file, text)| survey::read(file, text, &mut listed, faults));
     let new = new.unwrap_or_default();
+    let survey_is_lost = written.survey.is_some() && survey.is_none();
+    gathered.hides_nodes =
+        survey_is_lost || faults.total() > before_survey || !written.tables_are_known;
     if let Some(spot) = too_many(written, listed.len(), new.len()) {
         faults.fault(
             spot,
             format!("a line has at most {MOST_NODES} nodes"),
             "lower the count of a series, or divide the line",
         );
+        gathered.hides_nodes = true;
         return gathered;
     }
     let clocks = Clocks::new(written);
@@ -125,17 +142,22 @@ pub(super) fn gather(
         let place = Place {
             spot: written.name.spot().unwrap_or(written.spot),
             position: written.position_m.spot(),
+            has_no_position: written.position_m.is_absent(),
             origin,
         };
         let position_m = written.position_m.into_value().unwrap_or(0.0);
         if let Some(name) = written.name.into_value() {
             gathered.push(node(name, position_m, &written.values, clock), place);
+        } else {
+            gathered.hides_nodes = true;
         }
     }
     let first_of_series = gathered.nodes.len();
     for series in &written.series {
         let clock = clocks.index(&series.values, faults);
-        series::expand(series, clock, written, &mut gathered, faults);
+        if series::expand(series, clock, written, &mut gathered, faults).is_none() {
+            gathered.hides_nodes = true;
+        }
     }
     // The first node, else the first member of a series, else the first row of a survey.
     let any = !gathered.nodes.is_empty();
@@ -144,7 +166,7 @@ pub(super) fn gather(
     } else {
         Some(first_of_series)
     };
-    if !any && faults.is_empty() {
+    if !any && !gathered.hides_nodes {
         faults.fault(
             Spot::new(0, 0..1),
             "a line has at least one node",
@@ -158,7 +180,8 @@ pub(super) fn gather(
 fn too_many(written: &Written, listed: usize, new: usize) -> Option<Spot> {
     let mut sum = listed.saturating_add(new);
     if sum > MOST_NODES {
-        return Some(Spot::new(0, 0..1));
+        let survey = written.survey.as_ref().and_then(|survey| survey.file.spot());
+        return Some(survey.unwrap_or(Spot::new(0, 0..1)));
     }
     for series in &written.series {
         let (count, spot) = series.count.stated()?;

@@ -91,10 +91,9 @@ pub(super) fn engines(written: &Written, line: &Rows, faults: &mut Collector) ->
             propellant_kg: engine.propellant_kg,
         });
     }
-    // A sum that is not a number, from shares too large, fails too.
     if let Some(last) = written.engines.last()
         && known
-        && !((sum - 1.0_f64).abs() <= SHARES_WITHIN)
+        && (sum - 1.0_f64).abs() > SHARES_WITHIN
     {
         let rule = format!("the shares of the engines sum to 1; these sum to {sum}");
         let remedy = if several { "change the shares" } else { "one engine has the share 1" };

@@ -2,7 +2,7 @@
 
 use std::collections::HashMap;
 
-use super::nodes::Gathered;
+use super::nodes::{Gathered, Place};
 use super::{Named, named};
 use crate::layout::Node;
 use crate::layout::fault::{Collector, Spot};
@@ -18,9 +18,9 @@ pub(super) struct Rows {
     pub(super) nodes: Vec<Node>,
     pub(super) reference: usize,
     by_name: HashMap<String, u32>,
-    /// Whether every node that was written is there; otherwise a name that is not found
-    /// may be one of a faulty node, and is not reported.
-    whole: bool,
+    /// Whether a name that is not found may be one of a faulty node; it is then not
+    /// reported.
+    hides_nodes: bool,
 }
 
 impl Rows {
@@ -28,10 +28,9 @@ impl Rows {
     pub(super) fn arrange(
         gathered: Gathered,
         written: &Written,
-        whole: bool,
         faults: &mut Collector,
     ) -> Option<Rows> {
-        let Gathered { mut nodes, places, default_reference } = gathered;
+        let Gathered { mut nodes, places, default_reference, hides_nodes } = gathered;
         let mut by_name = HashMap::with_capacity(nodes.len());
         for (index, node) in nodes.iter().enumerate() {
             let index = u32::try_from(index).ok()?;
@@ -42,38 +41,16 @@ impl Rows {
                 faults.fault(places[index as usize].spot, rule, remedy);
             }
         }
-        let mut rows = Rows { nodes: Vec::new(), reference: 0, by_name, whole };
+        let mut rows = Rows { nodes: Vec::new(), reference: 0, by_name, hides_nodes };
         let reference = match named(&written.reference) {
             Some(name) => rows.find(name, &nodes, faults),
             None if written.reference.is_absent() => default_reference,
             None => None,
         };
-        for (index, place) in places.iter().enumerate() {
-            let is_reference = Some(index) == reference;
-            match place.position {
-                None if is_reference => {}
-                // Without a reference one node of many may go without a position.
-                None if reference.is_some() || places.len() > 1 => {
-                    if reference.is_some() || written.reference.is_absent() {
-                        faults.fault(
-                            place.spot,
-                            format!("`{}` states its position", nodes[index].name),
-                            "add its distance ahead of the reference, for example `position = \"120 m\"`",
-                        );
-                    }
-                }
-                Some(spot) if is_reference && nodes[index].position_m != 0.0 => {
-                    let rule = format!(
-                        "the reference stands at position 0; `{}` is given {} m",
-                        nodes[index].name, nodes[index].position_m
-                    );
-                    let remedy = format!(
-                        "count all positions from `{}`, or name another reference",
-                        nodes[index].name
-                    );
-                    faults.fault(spot, rule, remedy);
-                }
-                _ => {}
+        // Only a known reference tells which node may go without a position.
+        if let Some(reference) = reference {
+            for (index, (node, place)) in nodes.iter().zip(&places).enumerate() {
+                judge_position(node, place, index == reference, faults);
             }
         }
         let reference = reference?;
@@ -110,7 +87,7 @@ impl Rows {
         if let Some(row) = self.by_name.get(name) {
             return Some(*row as usize);
         }
-        if self.whole {
+        if !self.hides_nodes {
             let searched = if nodes.len() <= SEARCHED_FOR_NAMES { nodes } else { &[] };
             let names = searched.iter().map(|node| node.name.as_str());
             not_found("node", name, spot, names, faults);
@@ -128,6 +105,27 @@ impl Rows {
         let first = self.row((&first.0, first.1), faults);
         let second = self.row((&second.0, second.1), faults);
         Some([first?, second?])
+    }
+}
+
+/// Every node but the reference states its position; the reference stands at 0.
+fn judge_position(node: &Node, place: &Place, is_reference: bool, faults: &mut Collector) {
+    if !is_reference {
+        if place.has_no_position {
+            let rule = format!("`{}` states its position", node.name);
+            faults.fault(place.spot, rule, place.remedy_for_no_position());
+        }
+        return;
+    }
+    if let Some(spot) = place.position
+        && node.position_m != 0.0
+    {
+        let rule = format!(
+            "the reference stands at position 0; `{}` is given {} m",
+            node.name, node.position_m
+        );
+        let remedy = format!("count all positions from `{}`, or name another reference", node.name);
+        faults.fault(spot, rule, remedy);
     }
 }
 

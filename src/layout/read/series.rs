@@ -7,40 +7,36 @@ use crate::layout::written::{Field, Spacing, Written, WrittenSeries};
 use crate::model::constants::C2_M2_S2;
 use crate::model::dd::Dd;
 
-/// Adds the members of a series: prefix followed by 1, 2, …
+/// Adds the members of a series: prefix followed by 1, 2, …; `None` after a fault.
 pub(super) fn expand(
     series: &WrittenSeries,
     clock: Option<usize>,
     written: &Written,
     gathered: &mut Gathered,
     faults: &mut Collector,
-) {
-    let (Some((prefix, prefix_spot)), Some(count), Some(from_m)) =
-        (series.prefix.stated(), series.count.value(), series.from_m.value())
-    else {
-        return;
-    };
+) -> Option<()> {
+    let (prefix, prefix_spot) = series.prefix.stated()?;
+    let (count, from_m) = (series.count.value()?, series.from_m.value()?);
     let longest = format!("{prefix}{count}");
     if let Err((rule, remedy)) = names::check_name(&longest) {
         faults.fault(prefix_spot, format!("{rule}; the last member would be `{longest}`"), remedy);
-        return;
+        return None;
     }
     let to_m = match series.to_m {
         Field::Stated(to_m, _) => to_m,
         _ if *count == 1 => *from_m,
-        _ => return,
+        _ => return None,
     };
     let spacing = series.spacing.value().copied().unwrap_or(Spacing::Even);
-    let Some(positions) = positions(series, spacing, *count, [*from_m, to_m], written, faults)
-    else {
-        return;
-    };
+    let positions = positions(series, spacing, *count, [*from_m, to_m], written, faults)?;
     for (index, position_m) in positions.into_iter().enumerate() {
         let name = format!("{prefix}{}", index + 1);
         let position = if index == 0 { series.from_m.spot() } else { series.to_m.spot() };
-        let place = Place { spot: prefix_spot, position, origin: Origin::Series };
+        let place =
+            Place { spot: prefix_spot, position, has_no_position: false, origin: Origin::Series };
         gathered.push(node(name, position_m, &series.values, clock), place);
     }
+    Some(())
 }
 
 fn positions(

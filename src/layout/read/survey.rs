@@ -1,6 +1,5 @@
 //! Positions from a table.
 
-use std::borrow::Cow;
 use std::collections::HashMap;
 
 use super::csv::{Row, Rows};
@@ -9,7 +8,7 @@ use crate::layout::fault::{Collector, Spot};
 use crate::layout::names;
 use crate::layout::nearest::nearest;
 use crate::layout::quantity::{self, Dimension, short};
-use crate::layout::written::{Field, NodeKey, NodeValues, WrittenNode, set_from_text};
+use crate::layout::written::{Field, NodeKey, NodeValues, WrittenNode, set_from_text, set_number};
 
 /// A column of a survey.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -157,9 +156,11 @@ fn read_row(row: Row<'_, '_>, columns: &[Column], faults: &mut Collector) -> Opt
             _ if text.is_empty() => {}
             Column::PositionM => node.position_m = metres(&text, spot, "position_m", faults),
             Column::UPositionM => {
-                if let Field::Stated(value, _) = metres(&text, spot, "u_position_m", faults) {
-                    let text = format!("{value:?}");
-                    set(&mut node.values, NodeKey::UPosition, &Cow::Owned(text), spot, faults);
+                if let Field::Stated(value, _) = metres(&text, spot, "u_position_m", faults)
+                    && let Err((rule, remedy)) =
+                        set_number(&mut node.values, NodeKey::UPosition, value)
+                {
+                    faults.fault(spot, rule, remedy);
                 }
             }
             Column::Position => match quantity::parse(&text, Dimension::Length) {
@@ -188,13 +189,7 @@ fn read_row(row: Row<'_, '_>, columns: &[Column], faults: &mut Collector) -> Opt
     Some(node)
 }
 
-fn set(
-    values: &mut NodeValues,
-    key: NodeKey,
-    text: &Cow<'_, str>,
-    spot: Spot,
-    faults: &mut Collector,
-) {
+fn set(values: &mut NodeValues, key: NodeKey, text: &str, spot: Spot, faults: &mut Collector) {
     if let Err(fault) = set_from_text(values, key, text, spot) {
         faults.fault(spot, fault.rule, fault.remedy);
     }

@@ -1,24 +1,20 @@
 //! The whole of a layout file.
 
-use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
 use super::keys::{self, Kind};
 use super::section::{Section, type_words};
-use super::{Written, nodes, tables};
+use super::{Written, nodes, syntax, tables};
 use crate::layout::date;
 use crate::layout::fault::{Collector, Spot};
 use crate::layout::names;
-use crate::layout::quantity::{Dimension, QuantityFault, short};
-use crate::layout::{Epoch, Positions};
-
-/// Up to this size every fault of syntax is reported; of a longer file the first.
-const ALL_SYNTAX_UP_TO: usize = 4 << 20;
+use crate::layout::quantity::{Dimension, QuantityFault};
+use crate::layout::{Clock, Epoch, Positions};
 
 /// Reads the text of a layout, noting every fault of syntax, type, unit, range and form.
 pub(crate) fn read_document(text: &str, faults: &mut Collector) -> Written {
-    let root = parse(text, faults);
-    let mut reader = Reader { text, root: root.get_ref(), faults };
+    let root = syntax::parse(text, faults);
+    let mut reader = Reader { text, root: root.get_ref(), faults, has_lost_a_table: false };
     let written = reader.read();
     if faults.has_syntax() {
         faults.keep_what_syntax_leaves(text);
@@ -26,60 +22,12 @@ pub(crate) fn read_document(text: &str, faults: &mut Collector) -> Written {
     written
 }
 
-fn parse<'i>(text: &'i str, faults: &mut Collector) -> Spanned<DeTable<'i>> {
-    let (root, errors) = if text.len() <= ALL_SYNTAX_UP_TO {
-        DeTable::parse_recoverable(text)
-    } else {
-        match DeTable::parse(text) {
-            Ok(root) => (root, Vec::new()),
-            Err(error) => (Spanned::new(0..0, DeTable::new()), vec![error]),
-        }
-    };
-    for error in errors {
-        let span = error.span().unwrap_or(text.len()..text.len());
-        let (rule, remedy) = words_for(error.message(), text.get(span.clone()).unwrap_or(""));
-        faults.syntax(Spot::new(0, span), rule, remedy);
-    }
-    root
-}
-
-/// The rule and the remedy for a fault of syntax.
-fn words_for(message: &str, marked: &str) -> (String, String) {
-    if message.starts_with("string values must be quoted") {
-        let rule = "texts, and quantities with a unit, stand in quotes";
-        return (rule.to_owned(), format!("write `\"{}\"`", short(marked)));
-    }
-    if message == "duplicate key" {
-        return match keys::TABLES.iter().find(|kind| kind.key == marked) {
-            Some(kind) if kind.title.starts_with("[[") => (
-                format!("each {} has its own header", kind.title),
-                format!("write {}, with two brackets on either side", kind.title),
-            ),
-            _ => (
-                format!("`{}` is stated once", short(marked)),
-                "take one of the two away".to_owned(),
-            ),
-        };
-    }
-    if message.contains("recursion") || message.contains("recurse") {
-        return (
-            "lists and tables are nested at most 80 deep".to_owned(),
-            "take the brackets away".to_owned(),
-        );
-    }
-    let (what, expected) = message.split_once(", expected ").unwrap_or((message, ""));
-    let remedy = match expected {
-        "" => "see the TOML format, toml.io".to_owned(),
-        "nothing" => "take away what is marked".to_owned(),
-        one_of => format!("expected here: {one_of}"),
-    };
-    (format!("a layout is written in TOML; this is not: {what}"), remedy)
-}
-
 struct Reader<'a, 'i> {
     text: &'i str,
     root: &'a DeTable<'i>,
     faults: &'a mut Collector,
+    /// Whether something stands where a table should.
+    has_lost_a_table: bool,
 }
 
 impl<'a, 'i> Reader<'a, 'i> {
@@ -102,15 +50,12 @@ impl<'a, 'i> Reader<'a, 'i> {
             );
         }
         let epoch = self.epoch();
-        let before_nodes = self.faults.total();
         let nodes = self.each(&keys::NODE, nodes::read_node);
         let series = self.each(&keys::SERIES, nodes::read_series);
-        let nodes_are_whole = self.faults.total() == before_nodes;
         let notes = self.each(&keys::NOTE, |section| tables::read_note(section, epoch.as_ref()));
-        let before_clocks = self.faults.total();
-        let clocks = self.clocks();
-        let clocks_are_whole = self.faults.total() == before_clocks;
-        Written {
+        let (clocks, clocks_are_whole) = self.clocks();
+        let known = self.root.keys().all(|key| keys::TOP.keys.contains(&&**key.get_ref()));
+        let mut written = Written {
             name,
             revision,
             reference,
@@ -130,9 +75,11 @@ impl<'a, 'i> Reader<'a, 'i> {
             limits: self.each(&keys::LIMIT, tables::read_limit),
             notes: notes.into_iter().flatten().collect(),
             epoch,
-            nodes_are_whole,
+            tables_are_known: false,
             clocks_are_whole,
-        }
+        };
+        written.tables_are_known = known && !self.has_lost_a_table;
+        written
     }
 
     fn open<'b>(
@@ -162,6 +109,7 @@ impl<'a, 'i> Reader<'a, 'i> {
                 other => format!("`{}` is a list of tables, not {}", kind.key, type_words(other)),
             };
             self.faults.fault(Spot::new(0, value.span()), rule, remedy);
+            self.has_lost_a_table = true;
             return Vec::new();
         };
         let mut all = Vec::with_capacity(array.len());
@@ -172,6 +120,7 @@ impl<'a, 'i> Reader<'a, 'i> {
                 let words = type_words(item.get_ref());
                 let rule = format!("`{}` is a list of tables; this is {words}", kind.key);
                 self.faults.fault(Spot::new(0, item.span()), rule, remedy.clone());
+                self.has_lost_a_table = true;
             }
         }
         all
@@ -193,30 +142,36 @@ impl<'a, 'i> Reader<'a, 'i> {
         };
         let remedy = format!("write {} above its keys", kind.title);
         self.faults.fault(Spot::new(0, value.span()), rule, remedy);
+        self.has_lost_a_table = true;
         None
     }
 
-    fn clocks(&mut self) -> Vec<crate::layout::Clock> {
+    /// The kinds of clock, and whether every one was understood.
+    fn clocks(&mut self) -> (Vec<Clock>, bool) {
         let Some(value) = self.root.get("clock") else {
-            return Vec::new();
+            return (Vec::new(), true);
         };
         let remedy = "write [clock.NAME] above the keys of each kind of clock";
         let DeValue::Table(clocks) = value.get_ref() else {
             let words = type_words(value.get_ref());
             let rule = format!("`clock` holds one table for each kind of clock; this is {words}");
             self.faults.fault(Spot::new(0, value.span()), rule, remedy);
-            return Vec::new();
+            return (Vec::new(), false);
         };
         let mut all = Vec::with_capacity(clocks.len());
+        let mut whole = true;
         for (key, value) in clocks {
             let name: &str = key.get_ref();
-            if let Err((rule, remedy)) = names::check_name(name) {
-                self.faults.fault(Spot::new(0, key.span()), rule, remedy);
-            }
             if let DeValue::Table(table) = value.get_ref() {
+                if let Err((rule, remedy)) = names::check_name(name) {
+                    self.faults.fault(Spot::new(0, key.span()), rule, remedy);
+                }
                 let section = self.open(table, value.span(), &keys::CLOCK);
                 all.push(tables::read_clock(name.to_owned(), section));
-            } else if keys::CLOCK.keys.contains(&name) {
+                continue;
+            }
+            whole = false;
+            if keys::CLOCK.keys.contains(&name) {
                 let rule = format!("`{name}` belongs to a kind of clock, which has a name");
                 self.faults.fault(Spot::new(0, key.span()), rule, remedy);
             } else {
@@ -225,7 +180,7 @@ impl<'a, 'i> Reader<'a, 'i> {
                 self.faults.fault(Spot::new(0, value.span()), rule, remedy);
             }
         }
-        all
+        (all, whole)
     }
 
     fn epoch(&mut self) -> Option<Epoch> {

@@ -12,7 +12,7 @@ pub(crate) struct Kind {
 }
 
 pub(crate) const TOP: Kind = Kind {
-    title: "the top of a layout",
+    title: "a layout",
     key: "",
     keys: &[
         "name",

@@ -162,15 +162,29 @@ pub(crate) fn set_from_text(
         uncertainty.shape = *shape;
         return Ok(());
     }
-    let (dimension, bound) = key.dimension_and_bound();
+    let (dimension, _) = key.dimension_and_bound();
     let number = match quantity::plain(text) {
         Some(number) => number,
         None => quantity::parse(text, dimension)?,
     };
+    set_number(values, key, number)
+        .map_err(|(rule, remedy)| QuantityFault::new(0..text.len(), rule, remedy))
+}
+
+/// Sets one value that is a number, in SI units.
+///
+/// # Errors
+///
+/// The rule and the remedy when it lies outside its range.
+pub(crate) fn set_number(
+    values: &mut NodeValues,
+    key: NodeKey,
+    number: f64,
+) -> Result<(), (String, &'static str)> {
+    values.stated |= key.bit();
+    let (_, bound) = key.dimension_and_bound();
     if let Some(broken) = bound.broken_by(number) {
-        let rule = format!("this value {broken}");
-        let remedy = format!("write for example `{}`", dimension.example());
-        return Err(QuantityFault::new(0..text.len(), rule, remedy));
+        return Err((format!("this value {broken}"), bound.remedy()));
     }
     match key {
         NodeKey::UPosition => values.u_position_m.u = number,

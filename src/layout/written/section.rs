@@ -32,6 +32,17 @@ pub(crate) enum Bound {
 }
 
 impl Bound {
+    /// What would be inside, in words.
+    pub(crate) fn remedy(self) -> &'static str {
+        match self {
+            Bound::Any => "write a number",
+            Bound::NotNegative => "take the minus away, or write 0",
+            Bound::Positive => "write a value above zero, or leave the key out",
+            Bound::AtLeastOne => "write 1 or more, or leave the key out",
+            Bound::Within(..) | Bound::PositiveUpTo(..) => "write a value inside this range",
+        }
+    }
+
     /// What is broken by a value, in words; `None` when it is inside.
     pub(crate) fn broken_by(self, value: f64) -> Option<String> {
         match self {
@@ -54,6 +65,8 @@ pub(crate) struct Section<'a, 'i> {
     table: &'a DeTable<'i>,
     pub(crate) spot: Spot,
     kind: &'static Kind,
+    /// Known keys that were meant by misspelt ones: they are not missing.
+    meant: Vec<&'static str>,
     pub(crate) faults: &'a mut Collector,
 }
 
@@ -66,14 +79,19 @@ impl<'a, 'i> Section<'a, 'i> {
         kind: &'static Kind,
         faults: &'a mut Collector,
     ) -> Section<'a, 'i> {
+        let mut meant = Vec::new();
         for (key, _) in table {
             let name: &str = key.get_ref();
-            if !kind.keys.contains(&name) {
-                let rule = format!("`{}` is not a key of {}", short(name), kind.title);
-                faults.fault(Spot::new(0, key.span()), rule, remedy_for_key(name, kind));
+            if kind.keys.contains(&name) {
+                continue;
             }
+            let nearest = nearest(name, kind.keys.iter().copied());
+            let rule = format!("`{}` is not a key of {}", short(name), kind.title);
+            let remedy = remedy_for_key(name, nearest, kind);
+            faults.fault(Spot::new(0, key.span()), rule, remedy);
+            meant.extend(nearest);
         }
-        Section { text, table, spot: Spot::new(0, span), kind, faults }
+        Section { text, table, spot: Spot::new(0, span), kind, meant, faults }
     }
 
     /// A table whose keys were judged before.
@@ -83,7 +101,7 @@ impl<'a, 'i> Section<'a, 'i> {
         kind: &'static Kind,
         faults: &'a mut Collector,
     ) -> Section<'a, 'i> {
-        Section { text, table, spot: Spot::default(), kind, faults }
+        Section { text, table, spot: Spot::default(), kind, meant: Vec::new(), faults }
     }
 
     /// The text of the file at a place.
@@ -94,6 +112,11 @@ impl<'a, 'i> Section<'a, 'i> {
     pub(crate) fn get(&self, key: &str) -> Option<&'a Spanned<DeValue<'i>>> {
         debug_assert!(self.kind.keys.contains(&key), "{key} is missing in the list of keys");
         self.table.get(key)
+    }
+
+    /// The field of a key that is not there; one that was misspelt is faulty instead.
+    fn absent<T>(&self, key: &str) -> Field<T> {
+        if self.meant.contains(&key) { Field::Faulty } else { Field::Absent }
     }
 
     pub(crate) fn has(&self, key: &str) -> bool {
@@ -112,7 +135,7 @@ impl<'a, 'i> Section<'a, 'i> {
 
     /// Notes that a key is missing, unless broken syntax may have swallowed it.
     pub(crate) fn missing(&mut self, key: &str, example: &str) {
-        if !self.faults.has_syntax() {
+        if !self.faults.has_syntax() && !self.meant.contains(&key) {
             let rule = format!("{} states its `{key}`", self.kind.title);
             self.faults.fault(self.spot, rule, format!("add `{key} = {example}`"));
         }
@@ -129,7 +152,7 @@ impl<'a, 'i> Section<'a, 'i> {
     /// A quantity in SI units.
     pub(crate) fn quantity(&mut self, key: &str, dimension: Dimension, bound: Bound) -> Field<f64> {
         let Some(value) = self.get(key) else {
-            return Field::Absent;
+            return self.absent(key);
         };
         self.quantity_of(value, key, dimension, bound)
     }
@@ -146,8 +169,7 @@ impl<'a, 'i> Section<'a, 'i> {
         if let Some((number, spot)) = field.stated()
             && let Some(broken) = bound.broken_by(*number)
         {
-            let remedy = format!("write for example `{}`", example_within(dimension, bound));
-            self.faults.fault(spot, format!("`{key}` {broken}"), remedy);
+            self.faults.fault(spot, format!("`{key}` {broken}"), bound.remedy());
             return Field::Faulty;
         }
         field
@@ -156,7 +178,7 @@ impl<'a, 'i> Section<'a, 'i> {
     /// An exact length of time above zero.
     pub(crate) fn length_of_time(&mut self, key: &str) -> Field<ArrayTime> {
         let Some(value) = self.get(key) else {
-            return Field::Absent;
+            return self.absent(key);
         };
         self.scalar(value, Dimension::Time, quantity::parse_length_of_time)
     }
@@ -199,7 +221,7 @@ impl<'a, 'i> Section<'a, 'i> {
     /// A text of any content.
     fn string(&mut self, key: &str, example: &str) -> Field<String> {
         let Some(value) = self.get(key) else {
-            return Field::Absent;
+            return self.absent(key);
         };
         let rule = format!("`{key}` is a text");
         self.string_of(value, &rule, example)
@@ -255,7 +277,7 @@ impl<'a, 'i> Section<'a, 'i> {
     /// Two different names, `["a", "b"]`.
     pub(crate) fn pair(&mut self, key: &str) -> Field<[(String, Spot); 2]> {
         let Some(value) = self.get(key) else {
-            return Field::Absent;
+            return self.absent(key);
         };
         let example = "[\"hub\", \"s1\"]";
         let rule = format!("`{key}` is a list of two node names");
@@ -287,7 +309,7 @@ impl<'a, 'i> Section<'a, 'i> {
     /// A whole number from 1 to a limit.
     pub(crate) fn count(&mut self, key: &str, most: usize) -> Field<usize> {
         let Some(value) = self.get(key) else {
-            return Field::Absent;
+            return self.absent(key);
         };
         if let DeValue::Integer(digits) = value.get_ref()
             && digits.radix() == 10
@@ -304,7 +326,7 @@ impl<'a, 'i> Section<'a, 'i> {
     /// One of several words.
     pub(crate) fn choice<T: Copy>(&mut self, key: &str, choices: &[(&str, T)]) -> Field<T> {
         let Some(value) = self.get(key) else {
-            return Field::Absent;
+            return self.absent(key);
         };
         let span = value.span();
         let spot = Spot::new(0, span.clone());
@@ -369,19 +391,13 @@ pub(crate) fn type_words(value: &DeValue<'_>) -> &'static str {
     }
 }
 
-/// An example that lies in the range as well.
-fn example_within(dimension: Dimension, bound: Bound) -> &'static str {
-    match (bound, dimension) {
-        (Bound::AtLeastOne, _) => "1.5",
-        (Bound::Positive | Bound::NotNegative, Dimension::Temperature) => "5 K",
-        _ => dimension.example(),
-    }
-}
-
 /// What would be right instead of an unknown key.
-fn remedy_for_key(name: &str, kind: &Kind) -> String {
-    if let Some(meant) = nearest(name, kind.keys.iter().copied()) {
-        return format!("write `{meant}`");
+fn remedy_for_key(name: &str, meant: Option<&str>, kind: &Kind) -> String {
+    if let Some(meant) = meant {
+        return match TABLES.iter().find(|table| kind.key.is_empty() && table.key == meant) {
+            Some(table) => format!("write {}", table.title),
+            None => format!("write `{meant}`"),
+        };
     }
     if let Some(home) = TABLES.iter().find(|table| table.keys.contains(&name)) {
         return format!("move it to {}, or take it away", home.title);
