@@ -1,3 +1,8 @@
-use clockspar::{layout::Layout, run::recording::Reader}; use super::{arguments::Look, problem::Problem, recording_file::RecordingSource};
-pub fn run(_: Layout, _: &Look) -> Result<u8, Problem> { todo!() }
-pub fn replay(_: Reader<RecordingSource>, _: &str, _: &Look) -> Result<u8, Problem> { todo!() }
+use super::{arguments::Look, problem::Problem, recording_file::RecordingSource};
+use clockspar::{layout::Layout, run::recording::Reader};
+pub fn run(_: Layout, _: &Look) -> Result<u8, Problem> {
+    todo!()
+}
+pub fn replay(_: Reader<RecordingSource>, _: &str, _: &Look) -> Result<u8, Problem> {
+    todo!()
+}
