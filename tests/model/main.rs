@@ -1,5 +1,6 @@
 //! The library against identities, independent references and published values.
 
+mod history;
 mod identities;
 mod layout_random;
 mod layout_read;
