@@ -10,12 +10,15 @@ use std::sync::Arc;
 
 use clockspar::layout;
 use clockspar::model::array_time::ArrayTime;
-use clockspar::run::Run;
+use clockspar::run::{Run, State};
 use clockspar::table::content::{offsets_report, rates_report};
-use clockspar::table::write_csv;
+use clockspar::table::{Report, write_csv};
 use criterion::{Criterion, Throughput, criterion_group, criterion_main};
 
 const NODES: usize = 1_000_000;
+
+/// Makes the report of a state.
+type Maker = for<'a> fn(State<'a>) -> Report<'a>;
 
 fn line_of(nodes: usize) -> Run {
     let mut text = String::from("name = \"bench line\"\n");
@@ -56,10 +59,9 @@ fn tables(criterion: &mut Criterion) {
         });
     });
     let mut csv = Vec::new();
-    for (name, make) in [
-        ("rates as CSV", rates_report as for<'a> fn(clockspar::run::State<'a>) -> _),
-        ("offsets as CSV", |state| offsets_report(state, false)),
-    ] {
+    let makers: [(&str, Maker); 2] =
+        [("rates as CSV", rates_report), ("offsets as CSV", |state| offsets_report(state, false))];
+    for (name, make) in makers {
         csv.clear();
         let state = run.state_at(at).expect("in the domain");
         write_csv(&make(state), 0, &mut csv).expect("written to memory");

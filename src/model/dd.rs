@@ -394,6 +394,7 @@ impl RunningSum {
 }
 
 #[cfg(test)]
+#[expect(clippy::disallowed_methods, reason = "powers of two in a test are exact")]
 mod tests {
     use super::*;
 

@@ -4,7 +4,7 @@
 use std::fmt;
 
 use super::array_time::ArrayTime;
-use super::constants::SPEED_OF_LIGHT_M_S;
+use super::constants::{INVERSE_C_S_M, SPEED_OF_LIGHT_M_S};
 use super::dd::{Dd, RunningSum, Wide};
 use super::motion::{self, Launch};
 
@@ -97,17 +97,19 @@ impl Phase {
             .over(Dd::from_i128(2 * length.attoseconds()))
     }
 
-    /// `∫ |α| dτ` from the start of the phase to a moment of it, m/s, to 1e-15.
-    fn velocity_spent(&self, until: ArrayTime) -> f64 {
-        let elapsed = until.seconds_since(self.start).to_f64();
-        let first = self.acceleration(self.start).to_f64();
-        let last = self.acceleration(until).to_f64();
+    /// `∫ |α| dτ` from the start of the phase to a moment of it, m/s, to 2⁻¹⁰⁰ of itself.
+    fn velocity_spent(&self, until: ArrayTime) -> Dd {
+        let elapsed = until.seconds_since(self.start);
+        let (first, last) = (self.acceleration(self.start), self.acceleration(until));
         let sizes = first.abs() + last.abs();
-        if first * last >= 0.0 || sizes == 0.0 {
-            return sizes / 2.0 * elapsed;
+        if sizes.is_zero() {
+            return Dd::ZERO;
+        }
+        if first.is_negative() == last.is_negative() || first.is_zero() || last.is_zero() {
+            return sizes * elapsed * 0.5;
         }
         // Two triangles meet at the zero inside.
-        (first / sizes * first + last / sizes * last) / 2.0 * elapsed
+        (first / sizes * first + last / sizes * last) * elapsed * 0.5
     }
 
     /// The moment inside the phase at which the acceleration has a given value,
@@ -285,7 +287,7 @@ impl Plan {
             sum.gain = sum.gain + phase.gain(phase.end);
             end_rapidity = near_rapidity_of(sum.gain);
             check_rapidity(index, phase, start_rapidity, end_rapidity)?;
-            spent.add(Dd::new(phase.velocity_spent(phase.end)));
+            spent.add(phase.velocity_spent(phase.end));
             time.add(launch.time_s);
             position.add(launch.position_m);
             sum.velocity_spent = spent.value();
@@ -342,6 +344,16 @@ impl Plan {
             velocity_gain_m_s: gain.to_dd(),
             rapidity: rapidity_of(gain),
             total_rapidity: (spent / SPEED_OF_LIGHT_M_S).to_f64(),
+        }
+    }
+
+    /// `∫ |α| dτ` from array time zero to a moment, m/s, to 2⁻¹⁰⁰ of itself: what engines
+    /// have to deliver. Zero before the plan, constant after it.
+    #[must_use]
+    pub fn velocity_spent_m_s(&self, at: ArrayTime) -> Dd {
+        match self.phase_at(at) {
+            Some(index) => self.until[index].velocity_spent + self.phases[index].velocity_spent(at),
+            None => self.reached_outside(at).velocity_spent,
         }
     }
 
@@ -419,7 +431,7 @@ fn near_rapidity_of(gain: Wide) -> Dd {
 
 /// `φ` of a velocity gain.
 fn rapidity_of(velocity_gain: Wide) -> Dd {
-    velocity_gain.to_dd() / SPEED_OF_LIGHT_M_S
+    velocity_gain.to_dd() * INVERSE_C_S_M
 }
 
 fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), PlanFault> {

@@ -19,7 +19,7 @@
 //! `N − 1 = (g h − Γ h²/2)/c²`, `α_h = (g − Γ h)/N` and `τ_h − τ = (N − 1) τ`; with
 //! `Γ = 0` the bits are those of a held thrust.
 
-use super::constants::{C2_M2_S2, SPEED_OF_LIGHT_M_S};
+use super::constants::{C2_M2_S2, INVERSE_C_S_M, INVERSE_C2_S2_M2};
 use super::dd::{Dd, Wide};
 use super::motion::{LAUNCH_SCALE, Launch, cosh_sinh};
 use super::plan::Moment;
@@ -39,10 +39,10 @@ impl Instant {
     pub fn rate_minus_one(&self, position_m: Dd) -> Dd {
         let potential = self.moment.acceleration_m_s2 * position_m;
         if self.gradient_per_s2 == 0.0 {
-            return potential / C2_M2_S2;
+            return potential * INVERSE_C2_S2_M2;
         }
         let bend = position_m * position_m * (0.5 * self.gradient_per_s2);
-        (potential - bend) / C2_M2_S2
+        (potential - bend) * INVERSE_C2_S2_M2
     }
 
     /// `N` at a position.
@@ -93,7 +93,7 @@ impl Instant {
     #[must_use]
     pub fn clock_offset_s(&self, position_m: Dd) -> Dd {
         if self.gradient_per_s2 == 0.0 {
-            return position_m * self.moment.rapidity / SPEED_OF_LIGHT_M_S;
+            return position_m * self.moment.rapidity * INVERSE_C_S_M;
         }
         self.rate_minus_one(position_m) * self.moment.at.seconds()
     }
@@ -108,7 +108,7 @@ impl Instant {
         if self.gradient_per_s2 != 0.0 {
             drive = drive - apart * (to_m + from_m) * (0.5 * self.gradient_per_s2);
         }
-        drive / (C2_M2_S2 * self.rate(from_m))
+        drive * INVERSE_C2_S2_M2 / self.rate(from_m)
     }
 
     /// Difference of two clock offsets, to − from, of nodes that have stood still, s.
@@ -151,7 +151,7 @@ impl PairFactors {
         let moment = &instant.moment;
         let factors = (instant.gradient_per_s2 == 0.0).then(|| {
             let rate = instant.rate(Dd::new(from_m));
-            [moment.acceleration_m_s2 / (C2_M2_S2 * rate), moment.rapidity / SPEED_OF_LIGHT_M_S]
+            [moment.acceleration_m_s2 * INVERSE_C2_S2_M2 / rate, moment.rapidity * INVERSE_C_S_M]
         });
         PairFactors { from_m, factors }
     }
@@ -194,6 +194,38 @@ impl PairFactors {
     }
 }
 
+/// What is known of a real clock beside the rate of its place.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct KnownClock {
+    /// Reading at array time zero, s.
+    pub reading_at_start_s: f64,
+    /// Fractional frequency bias.
+    pub bias: f64,
+    /// Linear drift of the fractional frequency, 1/s.
+    pub drift_per_s: f64,
+    /// Fractional frequency per m/s² of felt acceleration.
+    pub acceleration_sensitivity: f64,
+}
+
+impl KnownClock {
+    /// Reading less array time, s.
+    ///
+    /// With own proper time `s`: `(s − τ) + x₀ + b s + D s²/2 + k ∫ a ds`. Under thrust
+    /// `∫ a ds = ∫ α dτ = c φ`, the same for every node, because the local clock and the
+    /// local acceleration differ by the same factor `N`; `velocity_m_s` is that integral.
+    ///
+    /// Within 4 units of 2⁻⁵³ of the sum of the moduli of the terms.
+    #[must_use]
+    pub fn reading_less_array_time_s(&self, at_s: Dd, clock_offset_s: Dd, velocity_m_s: Dd) -> Dd {
+        let own = at_s + clock_offset_s;
+        clock_offset_s
+            + self.reading_at_start_s
+            + own * self.bias
+            + own * own * (0.5 * self.drift_per_s)
+            + velocity_m_s * self.acceleration_sensitivity
+    }
+}
+
 /// Whether `1 + α h / c²` is above zero, decided exactly for double inputs.
 #[must_use]
 pub fn is_realisable(acceleration_m_s2: Dd, position_m: f64) -> bool {
@@ -223,7 +255,7 @@ impl LaunchFrame {
     /// `t + |h sinh φ|/c`. `None` above the largest double.
     #[must_use]
     pub fn time_s(&self, position_m: Dd) -> Option<f64> {
-        let own = position_m * (self.sinh * LAUNCH_SCALE) / SPEED_OF_LIGHT_M_S;
+        let own = position_m * (self.sinh * LAUNCH_SCALE) * INVERSE_C_S_M;
         finite((self.reference.time_s + own).to_f64() / LAUNCH_SCALE)
     }
 

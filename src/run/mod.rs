@@ -34,6 +34,9 @@ pub use state::{Aboard, NodeState, State};
 #[derive(Clone, Debug)]
 pub struct Run {
     layout: Arc<Layout>,
+    /// The positions of the layout, m, side by side: what every table of a large line
+    /// goes through.
+    positions_m: Arc<[f64]>,
     events: Vec<Event>,
     /// The plan as it is being flown; `None` as long as it is the one filed.
     changed_plan: Option<Plan>,
@@ -79,6 +82,7 @@ impl Run {
     /// round: such a line cannot be flown at all.
     pub fn new(layout: Arc<Layout>) -> Result<Run, RunFault> {
         let run = Run {
+            positions_m: layout.nodes.iter().map(|node| node.position_m).collect(),
             layout,
             events: Vec::new(),
             changed_plan: None,

@@ -135,7 +135,7 @@ impl<'a> State<'a> {
     }
 
     fn unchanged(&self, row: usize) -> NodeState {
-        let position_m = self.run.layout.nodes[row].position_m;
+        let position_m = self.run.positions_m[row];
         NodeState::Aboard(Aboard {
             position_m,
             rate_minus_one: self.instant.rate_minus_one(Dd::new(position_m)),

@@ -246,6 +246,8 @@ fn damage_is_named_by_its_line_and_what_follows_is_read() {
         let verdict = verdict(&bytes);
         assert_eq!(verdict.first_bad_line, Some(damaged as u64 + 1));
         assert!(!verdict.whole && !verdict.holds);
+        let Condition::Damaged(damage) = verdict.condition else { panic!("{damaged}") };
+        assert_eq!(damage.byte, start as u64);
     }
 }
 

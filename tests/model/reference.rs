@@ -6,12 +6,15 @@
 use std::collections::BTreeMap;
 use std::fs;
 use std::path::Path;
+use std::sync::Arc;
 
 use clockspar::model::array_time::ArrayTime;
 use clockspar::model::dd::Dd;
 use clockspar::model::horizon::{Extremes, reached};
 use clockspar::model::plan::{Phase, Plan};
-use clockspar::model::rates::{Instant, LaunchFrame, is_realisable};
+use clockspar::model::rates::{Instant, KnownClock, LaunchFrame, is_realisable};
+use clockspar::run::Run;
+use clockspar::table::content::{offsets_report, rates_report};
 use num_rational::BigRational;
 use num_traits::{Signed, ToPrimitive};
 
@@ -64,6 +67,7 @@ fn every_quantity_of_a_node() {
         "redshift",
         "clock_offset_s",
         "proper_time_s",
+        "predicted_reading_s",
         "launch_time_s",
         "launch_position_m",
     ]
@@ -127,6 +131,36 @@ fn every_quantity_of_a_node() {
             "proper_time_s",
             value("proper_time_s"),
         );
+        // A real clock: its terms are few enough to be formed from the reference exactly.
+        let known = KnownClock {
+            reading_at_start_s: -3.7e-6,
+            bias: 2.9e-13,
+            drift_per_s: 1.3e-21,
+            acceleration_sensitivity: 4.1e-14,
+        };
+        let got =
+            known.reading_less_array_time_s(at.seconds(), offset, here.moment.velocity_gain_m_s);
+        let own = wanted("proper_time_s");
+        let terms = [
+            wanted("clock_offset_s"),
+            exact(known.reading_at_start_s),
+            exact(known.bias) * &own,
+            exact(known.drift_per_s / 2.0) * &own * &own,
+            exact(known.acceleration_sensitivity) * wanted("rapidity") * &light,
+        ];
+        let zero = exact(0.0);
+        let sum = terms.iter().fold(zero.clone(), |sum, term| sum + term);
+        let scale = terms.iter().fold(zero, |sum, term| sum + term.abs());
+        errors.get_mut("predicted_reading_s").expect("listed above").compare(
+            got.to_f64(),
+            &sum,
+            &scale,
+            &input,
+        );
+        let mut compare = |quantity: &'static str, got: f64, key: &str, scale: BigRational| {
+            let errors = errors.get_mut(quantity).expect("listed above");
+            errors.compare(got, &wanted(key), &scale, &input);
+        };
         match here.horizon_m(node) {
             Some(got) => compare("horizon_m", got.to_f64(), "horizon_m", value("horizon_m")),
             None => assert!(row["horizon_m"].is_empty(), "a horizon is missing; {input}"),
@@ -215,4 +249,22 @@ fn the_horizon_is_decided_exactly() {
         assert!(!is_realisable(Dd::new(beyond), position), "{input}: a larger one is allowed");
     }
     assert!(kept > 50 && refused > 50, "{kept} kept, {refused} refused");
+}
+
+/// Keys that are inputs, names or counts.
+const NOT_COMPUTED: &[&str] = &["node", "from", "to", "position_m"];
+
+#[test]
+fn every_printed_quantity_has_a_row_of_allowed_errors() {
+    let text = "name = \"line\"\n[[node]]\nname = \"a\"\n[[node]]\nname = \"b\"\nposition = 1\n";
+    let layout = clockspar::layout::read("line.toml", text, &|_| Err("no file".to_owned()));
+    let run = Run::new(Arc::new(layout.expect("a layout"))).expect("a line");
+    let state = || run.state_at(ArrayTime::ZERO).expect("in the domain");
+    for report in [rates_report(state()), offsets_report(state(), true)] {
+        for column in report.tables.iter().flat_map(|table| &table.columns) {
+            if !NOT_COMPUTED.contains(&column.key) {
+                crate::tolerance::allowed(column.key);
+            }
+        }
+    }
 }

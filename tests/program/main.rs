@@ -2,5 +2,6 @@
 
 mod choose;
 mod commands;
+mod desk;
 mod readme;
 mod terminal_session;

@@ -10,6 +10,8 @@ use super::{COLUMNS, Closing, FORMAT, Opening, READING_COLUMN};
 #[derive(Debug, Default)]
 pub(super) struct LineBuffer {
     bytes: Vec<u8>,
+    /// The second column of a frame, gathered while the first one is written.
+    clock_offsets_s: Vec<Option<f64>>,
 }
 
 impl LineBuffer {
@@ -71,13 +73,16 @@ impl LineBuffer {
         self.key("rapidity");
         self.number_or_null(state.rapidity());
         self.key("rate_minus_one");
+        let mut clock_offsets_s = std::mem::take(&mut self.clock_offsets_s);
+        clock_offsets_s.clear();
         self.list(state.nodes(), |line, node| {
-            line.number_or_null(node.aboard().map(|aboard| aboard.rate_minus_one.to_f64()));
+            let aboard = node.aboard();
+            clock_offsets_s.push(aboard.map(|aboard| aboard.clock_offset_s.to_f64()));
+            line.number_or_null(aboard.map(|aboard| aboard.rate_minus_one.to_f64()));
         });
         self.key("clock_offset_s");
-        self.list(state.nodes(), |line, node| {
-            line.number_or_null(node.aboard().map(|aboard| aboard.clock_offset_s.to_f64()));
-        });
+        self.list(clock_offsets_s.iter(), |line, offset| line.number_or_null(*offset));
+        self.clock_offsets_s = clock_offsets_s;
         if let Some(readings) = readings {
             self.key(READING_COLUMN);
             self.list(readings.iter(), |line, reading| line.number_or_null(*reading));

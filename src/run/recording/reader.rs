@@ -129,6 +129,9 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// When the bytes cannot be read.
     pub fn events_until(&self, until: ArrayTime) -> io::Result<Events<'_, R>> {
+        if self.has_no_event() {
+            return Ok(Events::new(self, self.data_end, self.data_end));
+        }
         let end = self.first_line_where(|moment| moment > until)?;
         Ok(Events::new(self, self.data_start, end))
     }
@@ -139,9 +142,17 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// When the bytes cannot be read.
     pub fn events_between(&self, from: ArrayTime, until: ArrayTime) -> io::Result<Events<'_, R>> {
+        if self.has_no_event() {
+            return Ok(Events::new(self, self.data_end, self.data_end));
+        }
         let start = self.first_line_where(|moment| moment >= from)?;
         let end = self.first_line_where(|moment| moment > until)?;
         Ok(Events::new(self, start, end.max(start)))
+    }
+
+    /// Whether the closing line says that there is no event to look for.
+    fn has_no_event(&self) -> bool {
+        matches!(&self.condition, Condition::Whole(closing) if closing.events == 0)
     }
 
     /// The frame a moment means; `None` when there is none on that side.

@@ -35,7 +35,7 @@ pub struct Verdict {
     pub worst_ulps: u64,
     /// How numbers were compared.
     pub basis: Basis,
-    /// Whether the recording was cut; damage in it is among the findings.
+    /// Whether the recording is whole, damaged (the first damaged line) or else cut.
     pub condition: Condition,
     /// Whether readings of noisy clocks were computed again; `None` when there are none.
     pub readings_compared: Option<bool>,
@@ -192,6 +192,9 @@ impl Check {
                 Some(Err(ReadFault::Damaged(damage))) => {
                     self.verdict.whole = false;
                     self.differs(damage.line, format!("damaged: {}", damage.what));
+                    if !matches!(self.verdict.condition, Condition::Damaged(_)) {
+                        self.verdict.condition = Condition::Damaged(damage);
+                    }
                 }
                 Some(Ok(Line::Event(event))) => {
                     self.verdict.events += 1;

@@ -8,7 +8,7 @@ mod recording;
 
 use crate::layout::Layout;
 use crate::model::dd::Dd;
-use crate::model::rates::Instant;
+use crate::model::rates::{Instant, KnownClock};
 use crate::run::{Aboard, State};
 
 use super::{Cell, Column, Measure, Report};
@@ -53,26 +53,22 @@ fn number(value: Dd) -> Cell<'static> {
     Cell::finite(value.to_f64(), OVERFLOW)
 }
 
-/// Reading less array time of the real clock of a node, s.
-///
-/// With own proper time `s`: `reading − τ = (s − τ) + x₀ + b s + D s²/2 + k ∫ a ds`, where
-/// `x₀` is the reading at the start, `b` the known bias, `D` the known drift and `k` the
-/// acceleration sensitivity. Under thrust `∫ a ds = ∫ α dτ = c φ`, for every node the same,
-/// because the local clock and the local acceleration differ by the same factor `N`.
+/// Reading less array time of the real clock of a node, s; a node without a clock is given
+/// an ideal one.
 fn predicted_reading_s(layout: &Layout, instant: &Instant, row: usize, aboard: &Aboard) -> Dd {
     let node = &layout.nodes[row];
-    let own = instant.moment.at.seconds() + aboard.clock_offset_s;
-    let mut reading = aboard.clock_offset_s + node.reading_at_start_s + own * node.bias;
-    if let Some(clock) = node.clock.map(|clock| &layout.clocks[clock]) {
-        reading = reading + own * own * (0.5 * clock.drift_per_s);
-        if clock.acceleration_sensitivity != 0.0 {
-            let felt = if instant.gradient_per_s2 == 0.0 {
-                instant.moment.velocity_gain_m_s
-            } else {
-                instant.felt_acceleration_m_s2(Dd::new(aboard.position_m)) * own
-            };
-            reading = reading + felt * clock.acceleration_sensitivity;
-        }
-    }
-    reading
+    let clock = node.clock.map(|clock| &layout.clocks[clock]);
+    let known = KnownClock {
+        reading_at_start_s: node.reading_at_start_s,
+        bias: node.bias,
+        drift_per_s: clock.map_or(0.0, |clock| clock.drift_per_s),
+        acceleration_sensitivity: clock.map_or(0.0, |clock| clock.acceleration_sensitivity),
+    };
+    let at_s = instant.moment.at.seconds();
+    let velocity = if instant.gradient_per_s2 == 0.0 {
+        instant.moment.velocity_gain_m_s
+    } else {
+        instant.felt_acceleration_m_s2(Dd::new(aboard.position_m)) * (at_s + aboard.clock_offset_s)
+    };
+    known.reading_less_array_time_s(at_s, aboard.clock_offset_s, velocity)
 }
