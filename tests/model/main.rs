@@ -9,6 +9,7 @@
 mod check;
 mod clocks;
 mod demo_recordings;
+mod history;
 mod identities;
 mod layout_random;
 mod layout_read;
