@@ -26,14 +26,7 @@ pub fn show<'a>(
     reporter: Reporter<'a>,
 ) -> Result<(), Problem> {
     let first = moments.iter().next().unwrap_or_default();
-    let index = reporter(first).table_named(arguments.table.as_deref()).map_err(|unknown| {
-        Problem::new(
-            format_args!("--table {}: no such table", unknown.wanted),
-            "a table is asked for by its name",
-            format_args!("one of `{}`", unknown.known.join("`, `")),
-        )
-    })?;
-    let chosen = Chosen { reporter, only: arguments.table.is_some().then_some(index) };
+    let chosen = Chosen::of(arguments, first, reporter)?;
     let form = arguments.form.unwrap_or(Form::Text);
     let output = Output::open(arguments.out.as_deref(), arguments.replace)?;
     let options = TextOptions { width: output.width(), unicode: locale_is_unicode() };
@@ -68,6 +61,16 @@ struct Chosen<'a> {
 }
 
 impl<'a> Chosen<'a> {
+    /// With the table asked for; an unknown name of a table is refused.
+    fn of(
+        arguments: &OutputArguments,
+        first: ArrayTime,
+        reporter: Reporter<'a>,
+    ) -> Result<Chosen<'a>, Problem> {
+        let only = chosen_table(arguments, &reporter(first))?;
+        Ok(Chosen { reporter, only })
+    }
+
     fn report(self, at: ArrayTime) -> Report<'a> {
         let mut report = (self.reporter)(at);
         if let Some(index) = self.only {
@@ -76,6 +79,21 @@ impl<'a> Chosen<'a> {
         }
         report
     }
+}
+
+/// The place of the table asked for by name; an unknown name is refused.
+pub fn chosen_table(
+    arguments: &OutputArguments,
+    report: &Report<'_>,
+) -> Result<Option<usize>, Problem> {
+    let index = report.table_named(arguments.table.as_deref()).map_err(|unknown| {
+        Problem::new(
+            format_args!("--table {}: no such table", unknown.wanted),
+            "a table is asked for by its name",
+            format_args!("one of `{}`", unknown.known.join("`, `")),
+        )
+    })?;
+    Ok(arguments.table.is_some().then_some(index))
 }
 
 /// The reports of a range of moments.
@@ -99,32 +117,64 @@ fn show_paced(
     replace: bool,
     chosen: Chosen<'_>,
 ) -> Result<(), Problem> {
-    if form == Form::Json {
-        return Err(Problem::new(
-            "--paced --as json: one object is whole only at its end",
-            "a paced table is lines appended as they come",
-            "use --as csv or --as text",
-        ));
-    }
+    let mut blocks = Blocks::new(form, options, chosen.only, "--paced")?;
     output.write(replace, |out| {
         let begun = Instant::now();
-        let mut text = TextWriter::new(options);
         for index in 0..moments.count() {
             let at = moments.nth(index);
             wait_until(begun, at.seconds_since(moments.nth(0)).to_f64());
-            if form == Form::Csv {
-                write_rows(&series(&Moments::One(at), chosen), index == 0, out)?;
-            } else {
-                let report = chosen.report(at);
-                if index == 0 {
-                    text.head(&report.head(), out)?;
-                }
-                text.moment(&report, out)?;
-            }
-            out.flush()?;
+            blocks.append(at, chosen.reporter, out)?;
         }
         Ok(())
     })
+}
+
+/// A table over time of which one block after the other is appended, as text or CSV.
+pub struct Blocks {
+    form: Form,
+    text: TextWriter,
+    only: Option<usize>,
+    is_begun: bool,
+}
+
+impl Blocks {
+    /// Nothing appended yet; `option` is what was asked for, in case it cannot be.
+    pub fn new(
+        form: Form,
+        options: TextOptions,
+        only: Option<usize>,
+        option: &str,
+    ) -> Result<Blocks, Problem> {
+        if form == Form::Json {
+            return Err(Problem::new(
+                format_args!("{option} --as json: one object is whole only at its end"),
+                "what is printed as it comes is lines appended",
+                "use --as csv or --as text",
+            ));
+        }
+        Ok(Blocks { form, text: TextWriter::new(options), only, is_begun: false })
+    }
+
+    /// Appends the block of a moment, in one piece.
+    pub fn append(
+        &mut self,
+        at: ArrayTime,
+        reporter: Reporter<'_>,
+        out: &mut dyn Write,
+    ) -> io::Result<()> {
+        let chosen = Chosen { reporter, only: self.only };
+        let is_first = !std::mem::replace(&mut self.is_begun, true);
+        if self.form == Form::Csv {
+            write_rows(&series(&Moments::One(at), chosen), is_first, out)?;
+        } else {
+            let report = chosen.report(at);
+            if is_first {
+                self.text.head(&report.head(), out)?;
+            }
+            self.text.moment(&report, out)?;
+        }
+        out.flush()
+    }
 }
 
 fn wait_until(begun: Instant, seconds: f64) {

@@ -9,7 +9,14 @@ use super::scan::{Malformed, Scanner};
 use super::{COLUMNS, Closing, EmbeddedFile, FORMAT, Frame, Line, Opening, READING_COLUMN};
 
 /// Length of `,"crc32":"xxxxxxxx"}`.
-const TAIL: usize = 20;
+pub(super) const TAIL: usize = 20;
+
+/// What follows a body of some CRC.
+pub(super) fn tail(crc: u32) -> [u8; TAIL] {
+    let mut tail = *b",\"crc32\":\"00000000\"}";
+    tail[10..18].copy_from_slice(super::hex(&crc.to_be_bytes()).as_bytes());
+    tail
+}
 
 /// The most files a layout names.
 const MOST_FILES: usize = 16;
@@ -139,15 +146,23 @@ fn format(scanner: &mut Scanner<'_>) -> Result<(), Malformed> {
 
 /// The moment of a frame or an event, from the first bytes of its line.
 pub(super) fn moment(line: &[u8]) -> Result<ArrayTime, Malformed> {
+    head(line).map(|(_, at)| at)
+}
+
+/// The number of a frame, `None` for an event, and the moment, from the first bytes of
+/// the line.
+pub(super) fn head(line: &[u8]) -> Result<(Option<u64>, ArrayTime), Malformed> {
     let mut scanner = Scanner::new(line);
-    if scanner.passes("{\"frame\":") {
-        scanner.whole()?;
-    } else {
-        scanner.expect("{\"event\":")?;
+    let index = if scanner.passes("{\"frame\":") {
+        Some(scanner.whole()?)
+    } else if scanner.passes("{\"event\":") {
         scanner.text()?;
-    }
+        None
+    } else {
+        return scanner.fail("neither a frame nor an event");
+    };
     scanner.key("at_s")?;
-    scanner.time()
+    Ok((index, scanner.time()?))
 }
 
 /// A frame or an event, from its body.
