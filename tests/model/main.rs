@@ -7,6 +7,7 @@
 #![allow(clippy::print_stdout)]
 
 mod demo_recordings;
+mod hostile;
 mod identities;
 mod layout_random;
 mod layout_read;
