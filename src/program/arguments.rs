@@ -243,6 +243,9 @@ pub struct RecordArguments {
 pub struct ReplayArguments {
     /// Recording file
     pub file: PathBuf,
+    /// Print every frame, then those that are appended, until the recording is closed
+    #[arg(long, conflicts_with_all = ["at", "from", "until", "every", "paced", "out", "replace"])]
+    pub follow: bool,
     /// Which moments.
     #[command(flatten)]
     pub moments: MomentArguments,

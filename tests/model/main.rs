@@ -10,6 +10,7 @@ mod check;
 mod clocks;
 mod demo_recordings;
 mod history;
+mod hostile;
 mod identities;
 mod layout_random;
 mod layout_read;

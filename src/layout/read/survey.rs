@@ -118,6 +118,12 @@ fn row_name(node: &WrittenNode) -> &str {
 }
 
 fn read_header(header: Row<'_, '_>, faults: &mut Collector) -> Option<Vec<Column>> {
+    if header.is_too_wide() {
+        let rule = format!("a survey has one column a quantity; this header has {}", header.len());
+        let remedy = "the columns are name, position_m, u_position_m and the keys of [[node]]";
+        faults.fault(header.whole(), rule, remedy);
+        return None;
+    }
     let mut columns = Vec::with_capacity(header.len());
     let before = faults.total();
     for index in 0..header.len() {

@@ -2,7 +2,9 @@
 
 mod choice;
 mod compare;
+mod following;
 mod recordings;
+mod replay;
 mod show;
 mod tables;
 
@@ -29,7 +31,7 @@ pub fn run(arguments: Arguments) -> Result<u8, Problem> {
         Some(Command::Offsets(arguments)) => tables::offsets(&arguments),
         Some(Command::Compare(arguments)) => compare::compare(&arguments),
         Some(Command::Record(arguments)) => recordings::record(&arguments),
-        Some(Command::Replay(arguments)) => recordings::replay(&arguments),
+        Some(Command::Replay(arguments)) => replay::replay(&arguments),
         Some(Command::Verify(arguments)) => recordings::verify(&arguments),
     }
 }

@@ -24,6 +24,7 @@ impl Desk {
             Message::Key(key) => self.press(key, &mut effects),
             Message::Paste(text) => self.paste(&text),
             Message::Sized { width, height } => self.size = (width, height),
+            Message::Resized => self.look_again(&mut effects),
             Message::Elapsed(elapsed) => self.run_on(elapsed, &mut effects),
             Message::RecordingOpened { path } => {
                 if let Some(recording) = &mut self.recording {
