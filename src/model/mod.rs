@@ -4,6 +4,7 @@ pub mod array_time;
 pub mod constants;
 pub mod dd;
 pub mod horizon;
+pub mod loads;
 pub mod motion;
 pub mod plan;
 pub mod rates;
