@@ -59,10 +59,8 @@ fn tables(criterion: &mut Criterion) {
         });
     });
     let mut csv = Vec::new();
-    let makers: [(&str, Maker); 2] = [
-        ("rates as CSV", rates_report),
-        ("offsets as CSV", |state| offsets_report(state, false)),
-    ];
+    let makers: [(&str, Maker); 2] =
+        [("rates as CSV", rates_report), ("offsets as CSV", |state| offsets_report(state, false))];
     for (name, make) in makers {
         csv.clear();
         let state = run.state_at(at).expect("in the domain");

@@ -132,12 +132,7 @@ impl KnownClock {
     ///
     /// Within 4 units of 2⁻⁵³ of the sum of the moduli of the terms.
     #[must_use]
-    pub fn reading_less_array_time_s(
-        &self,
-        at_s: Dd,
-        clock_offset_s: Dd,
-        velocity_m_s: Dd,
-    ) -> Dd {
+    pub fn reading_less_array_time_s(&self, at_s: Dd, clock_offset_s: Dd, velocity_m_s: Dd) -> Dd {
         let own = at_s + clock_offset_s;
         clock_offset_s
             + self.reading_at_start_s

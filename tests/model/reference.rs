@@ -138,11 +138,8 @@ fn every_quantity_of_a_node() {
             drift_per_s: 1.3e-21,
             acceleration_sensitivity: 4.1e-14,
         };
-        let got = known.reading_less_array_time_s(
-            at.seconds(),
-            offset,
-            here.moment.velocity_gain_m_s,
-        );
+        let got =
+            known.reading_less_array_time_s(at.seconds(), offset, here.moment.velocity_gain_m_s);
         let own = wanted("proper_time_s");
         let terms = [
             wanted("clock_offset_s"),

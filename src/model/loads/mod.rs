@@ -134,6 +134,13 @@ pub struct Offset {
     pub stretch_s: Dd,
 }
 
+/// What the motion of stretching nodes takes from their clocks up to a moment.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct NeglectedMotion {
+    /// `∫ v_t v_u/(2c²) dτ` of every pair of terms of the stretch.
+    products: Vec<f64>,
+}
+
 impl Loads {
     /// A line under a thrust plan.
     ///
@@ -211,6 +218,22 @@ impl Loads {
             Course::Thrust(thrust) => self.state_of(thrust, thrust.flight.plan.phase_at(at), at),
             Course::Standing(standing) => self.state_standing(standing.gravity, at),
         }
+    }
+
+    /// The line at an instant of the same course, which says itself on which side of a
+    /// boundary it stands.
+    #[must_use]
+    pub fn state_of_instant(&self, instant: Instant) -> State {
+        let Instant { moment, gradient_per_s2 } = instant;
+        let mut state = match &self.course {
+            Course::Thrust(thrust) => self.state_of(thrust, moment.phase, moment.at),
+            Course::Standing(standing) => {
+                debug_assert_eq!(standing.gravity.gradient_per_s2, gradient_per_s2);
+                self.state_standing(standing.gravity, moment.at)
+            }
+        };
+        state.instant = instant;
+        state
     }
 
     /// The line at the end of a phase, as the limit from below; `None` when there is no
@@ -334,6 +357,31 @@ impl Loads {
                 at,
             ),
             Course::Standing(_) => 0.0,
+        }
+    }
+
+    /// The same for any row of the line, found once for a moment: the size of what is left
+    /// out, to `|N − 1|` of itself.
+    #[must_use]
+    pub fn neglected_motion(&self, at: ArrayTime) -> NeglectedMotion {
+        NeglectedMotion {
+            products: match &self.course {
+                Course::Thrust(thrust) => {
+                    flight::motion_products(&thrust.flight, &self.propulsion, at)
+                }
+                Course::Standing(_) => Vec::new(),
+            },
+        }
+    }
+
+    /// What the clock offset of a row leaves out, s, from what was found for the moment.
+    #[must_use]
+    pub fn neglected_of_row_s(&self, motion: &NeglectedMotion, row: usize) -> f64 {
+        match &self.course {
+            Course::Thrust(thrust) if !motion.products.is_empty() => {
+                thrust.flight.compliance.square(row, &motion.products)
+            }
+            _ => 0.0,
         }
     }
 

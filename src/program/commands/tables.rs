@@ -8,7 +8,8 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
-    JudgedOver, Judgement, RuleState, check_report, judge, offsets_report, rates_report,
+    JudgedOver, Judgement, LoadsOverPlan, RuleState, check_report, judge, loads_report,
+    offsets_report, rates_report,
 };
 
 use super::show::show;
@@ -31,6 +32,17 @@ pub fn offsets(arguments: &OffsetsArguments) -> Result<u8, Problem> {
     table_of_run(&table.layout, &table.moments, &table.output, move |state| {
         offsets_report(state, pairs)
     })
+}
+
+/// `clockspar loads`: status 1 when the plan breaks strength, a rating, slack or propellant.
+pub fn loads(arguments: &TableArguments) -> Result<u8, Problem> {
+    let run = run_of(files::load(&arguments.layout)?, &files::shown_name(&arguments.layout))?;
+    let loads = run
+        .loads()
+        .map_err(|fault| Problem::new(format_args!("{fault}"), fault.rule(), fault.remedy()))?;
+    let over_plan = LoadsOverPlan::new(run.layout(), loads);
+    show_run(&run, &arguments.moments, &arguments.output, |state| loads_report(state, &over_plan))?;
+    Ok(status_of(over_plan.fails()))
 }
 
 /// The rates of the built-in layout, when there is no terminal to open the desk on.

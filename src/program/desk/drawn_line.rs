@@ -1,7 +1,6 @@
 //! The line itself, drawn down the left margin: nodes, what joins them, the horizon.
 
 use clockspar::layout::SpanKind;
-use clockspar::model::dd::Dd;
 use clockspar::run::NodeState;
 use clockspar::table::Measure;
 use ratatui::layout::Rect;
@@ -72,7 +71,7 @@ pub fn horizon(desk: &Desk) -> Option<Horizon> {
         (0..state.rows()).rev().find(is_aboard)
     }?;
     let position_m = state.node(row).aboard()?.position_m;
-    let distance = state.instant().horizon_m(Dd::new(position_m))?.to_f64();
+    let distance = state.instant().horizon_m(position_m)?.to_f64();
     let side = if is_fore { "fore" } else { "aft" };
     let name = &desk.layout().nodes[row].name;
     let text = format!("horizon {} {side} of {name}", words::value(Measure::Length, distance));
