@@ -4,6 +4,7 @@
 mod course;
 mod csv;
 mod history;
+mod index;
 mod nodes;
 mod parts;
 mod rows;
@@ -25,6 +26,10 @@ pub const FARTHEST_POSITION_M: f64 = 1.0e19;
 
 /// Largest layout text read, in bytes.
 pub const LARGEST_LAYOUT_BYTES: usize = 128 << 20;
+
+/// Most marks (brackets, quotes, `=`, blanks, line ends and the like) in a layout text; the
+/// parser needs about 100 bytes for each. A million nodes with four keys have 40 million.
+const MOST_MARKS: usize = 64_000_000;
 
 /// Largest table of positions or accelerations read, in bytes.
 pub const LARGEST_TABLE_BYTES: usize = 256 << 20;
@@ -79,6 +84,11 @@ pub fn read(
         faults.fault(Spot::default(), rule, "put positions into a survey, or shorten the file");
         return Err(faults.into_faults(&[(file_name, "")]).unwrap_or_default());
     }
+    if text.len() > MOST_MARKS && count_marks(text) > MOST_MARKS {
+        let rule = format!("a layout has at most {} million marks", MOST_MARKS / 1_000_000);
+        faults.fault(Spot::default(), rule, "put positions into a survey, or shorten the file");
+        return Err(faults.into_faults(&[(file_name, "")]).unwrap_or_default());
+    }
     let mut written = written::read_document(text, &mut faults);
     if faults.has_syntax() {
         return Err(faults.into_faults(&[(file_name, text)]).unwrap_or_default());
@@ -106,6 +116,12 @@ pub fn read(
     Err(faults.into_faults(&texts).unwrap_or_default())
 }
 
+/// About how many pieces the parser will cut a text into.
+fn count_marks(text: &str) -> usize {
+    let is_mark = |byte: &u8| !(byte.is_ascii_alphanumeric() || *byte >= 0x80);
+    text.bytes().filter(is_mark).count()
+}
+
 /// SHA-256 of a text, as 64 lower-case hexadecimal digits (FIPS 180-4).
 #[must_use]
 pub fn sha256(text: &str) -> String {
@@ -131,7 +147,10 @@ fn open(
             None
         }
         Err(reason) => {
-            let rule = format!("the file `{}` can be read; it could not: {reason}", short(name));
+            let rule = format!(
+                "a file named in a layout can be read; `{}` could not: {reason}",
+                short(name)
+            );
             faults.fault(spot, rule, "name a file that exists, relative to the layout");
             None
         }

@@ -72,17 +72,14 @@ fn values_worked_by_hand() {
         ("8.64 /d", Dimension::PerTime, 1e-4),
         ("31.5576 /a", Dimension::PerTime, 1e-6),
         ("429.228 THz", Dimension::Frequency, 429_228e9),
-        ("\u{b5}".repeat(1).as_str(), Dimension::Length, f64::NAN),
         ("5 \u{b5}m", Dimension::Length, 5e-6),
         ("5\u{3bc}s", Dimension::Time, 5e-6),
         ("  7 \u{a0}mm ", Dimension::Length, 7e-3),
         ("-0 kg", Dimension::Mass, 0.0),
         ("1_000.5", Dimension::Number, 1000.5),
     ] {
-        match parse(text, dimension) {
-            Ok(found) => assert_eq!(found.to_bits(), value.to_bits(), "{text}: {found:e}"),
-            Err(fault) => assert!(value.is_nan(), "{text}: {fault}"),
-        }
+        let found = parse(text, dimension).unwrap_or_else(|fault| panic!("{text}: {fault}"));
+        assert_eq!(found.to_bits(), f64::to_bits(value), "{text}: {found:e}");
     }
 }
 

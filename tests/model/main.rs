@@ -1,18 +1,25 @@
 //! The library against identities, independent references and published values.
 // What a test compares with may come from anywhere.
 #![allow(clippy::disallowed_methods)]
+// Published digits are kept as they are printed.
+#![allow(clippy::excessive_precision)]
+// Distributions of errors are shown with `--nocapture`.
+#![allow(clippy::print_stdout)]
 
+mod demo_recordings;
 mod identities;
 mod layout_random;
 mod layout_read;
 mod layout_refused;
 mod layout_units;
+mod links;
 mod loads_identities;
 mod loads_layouts;
 mod loads_published;
 mod loads_reference;
 mod pinned;
 mod published;
+mod reach;
 mod recording;
 mod recording_hostile;
 mod reference;

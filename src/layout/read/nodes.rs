@@ -6,7 +6,7 @@ use super::rows::not_found;
 use super::{MOST_NODES, series, survey};
 use crate::layout::Node;
 use crate::layout::fault::{Collector, Spot};
-use crate::layout::written::{NodeValues, Written};
+use crate::layout::written::{NodeValues, Written, WrittenNode};
 
 /// The nodes in the order of the file: nodes, new ones of the survey, members of series.
 #[derive(Default)]
@@ -60,32 +60,67 @@ impl Place {
 }
 
 impl Gathered {
+    /// Adds a node as written.
+    pub(super) fn add(
+        &mut self,
+        written: WrittenNode,
+        origin: Origin,
+        clocks: &Clocks<'_>,
+        faults: &mut Collector,
+    ) {
+        let clock = clocks.index(&written.values, faults);
+        let place = Place {
+            spot: written.name.spot().unwrap_or(written.spot),
+            position: written.position_m.spot(),
+            has_no_position: written.position_m.is_absent(),
+            origin,
+        };
+        let position_m = written.position_m.into_value().unwrap_or(0.0);
+        if let Some(name) = written.name.into_value() {
+            self.push(node(name, position_m, &written.values, clock), place);
+        } else {
+            self.hides_nodes = true;
+        }
+    }
+
+    /// Adds the nodes of a survey behind those listed, of which there are few as a rule.
+    fn append(&mut self, mut new: Gathered) {
+        new.nodes.splice(0..0, self.nodes.drain(..));
+        new.places.splice(0..0, self.places.drain(..));
+        (self.nodes, self.places) = (new.nodes, new.places);
+    }
+
+    /// A list with room for a number of nodes.
+    pub(super) fn with_room_for(count: usize) -> Gathered {
+        let (nodes, places) = (Vec::with_capacity(count), Vec::with_capacity(count));
+        Gathered { nodes, places, ..Gathered::default() }
+    }
+
     pub(super) fn push(&mut self, node: Node, place: Place) {
         self.nodes.push(node);
         self.places.push(place);
     }
 }
 
-/// Looks up clocks by name, remembering the last.
+/// Looks up clocks by name.
 pub(super) struct Clocks<'w> {
+    names: Vec<&'w str>,
     by_name: HashMap<&'w str, usize>,
     whole: bool,
 }
 
 impl<'w> Clocks<'w> {
     pub(super) fn new(written: &'w Written) -> Clocks<'w> {
-        let names = written.clocks.iter().enumerate();
-        let by_name = names.map(|(index, clock)| (clock.name.as_str(), index)).collect();
-        Clocks { by_name, whole: written.clocks_are_whole && written.tables_are_known }
+        let names: Vec<&str> = written.clocks.iter().map(|clock| clock.name.as_str()).collect();
+        let by_name = names.iter().enumerate().map(|(index, name)| (*name, index)).collect();
+        Clocks { names, by_name, whole: written.clocks_are_whole && written.tables_are_known }
     }
 
     pub(super) fn index(&self, values: &NodeValues, faults: &mut Collector) -> Option<usize> {
         let (name, spot) = values.clock.stated()?;
         let index = self.by_name.get(name.as_str()).copied();
         if index.is_none() && self.whole {
-            let mut names: Vec<&str> = self.by_name.keys().copied().collect();
-            names.sort_unstable();
-            not_found("clock", name, spot, names.into_iter(), faults);
+            not_found("clock", name, spot, self.names.iter().copied(), faults);
         }
         index
     }
@@ -117,15 +152,18 @@ pub(super) fn gather(
     survey: Option<(u32, &str)>,
     faults: &mut Collector,
 ) -> Gathered {
-    let mut gathered = Gathered::default();
     let mut listed = std::mem::take(&mut written.nodes);
+    let listed_count = listed.len();
+    let clocks = Clocks::new(written);
     let before_survey = faults.total();
-    let new = survey.map(|(file, text)| survey::read(file, text, &mut listed, faults));
+    let new = survey.map(|(file, text)| survey::read(file, text, &mut listed, &clocks, faults));
     let new = new.unwrap_or_default();
     let survey_is_lost = written.survey.is_some() && survey.is_none();
-    gathered.hides_nodes =
-        survey_is_lost || faults.total() > before_survey || !written.tables_are_known;
-    if let Some(spot) = too_many(written, listed.len(), new.len()) {
+    let mut gathered = Gathered {
+        hides_nodes: survey_is_lost || faults.total() > before_survey || !written.tables_are_known,
+        ..Gathered::default()
+    };
+    if let Some(spot) = too_many(written, listed_count, new.nodes.len()) {
         faults.fault(
             spot,
             format!("a line has at most {MOST_NODES} nodes"),
@@ -134,24 +172,10 @@ pub(super) fn gather(
         gathered.hides_nodes = true;
         return gathered;
     }
-    let clocks = Clocks::new(written);
-    let listed_count = listed.len();
-    let all = listed.into_iter().map(|node| (node, Origin::Node));
-    for (written, origin) in all.chain(new.into_iter().map(|node| (node, Origin::Survey))) {
-        let clock = clocks.index(&written.values, faults);
-        let place = Place {
-            spot: written.name.spot().unwrap_or(written.spot),
-            position: written.position_m.spot(),
-            has_no_position: written.position_m.is_absent(),
-            origin,
-        };
-        let position_m = written.position_m.into_value().unwrap_or(0.0);
-        if let Some(name) = written.name.into_value() {
-            gathered.push(node(name, position_m, &written.values, clock), place);
-        } else {
-            gathered.hides_nodes = true;
-        }
+    for node in listed {
+        gathered.add(node, Origin::Node, &clocks, faults);
     }
+    gathered.append(new);
     let first_of_series = gathered.nodes.len();
     for series in &written.series {
         let clock = clocks.index(&series.values, faults);

@@ -1,6 +1,6 @@
 //! Spans, engines, links, limits and stations: what names the rows of a line.
 
-use std::collections::HashMap;
+use std::collections::{BTreeMap, HashMap};
 
 use super::named;
 use super::rows::Rows;
@@ -13,18 +13,19 @@ const SHARES_WITHIN: f64 = 1e-9;
 
 /// One span for every neighbour gap along each `[[span]]`, fore to aft.
 pub(super) fn spans(written: &Written, line: &Rows, faults: &mut Collector) -> Vec<Span> {
-    let gaps = line.nodes.len().saturating_sub(1);
-    let mut covered_by: Vec<Option<u32>> = vec![None; gaps];
-    for (index, span) in (0_u32..).zip(&written.spans) {
+    // What covers the gaps from a row on, and up to which row.
+    let mut covered: BTreeMap<usize, (usize, &SpanValues)> = BTreeMap::new();
+    for span in &written.spans {
         let Some((along, spot)) = span.along.stated() else {
             continue;
         };
         let Some([a, b]) = line.pair(along, faults) else {
             continue;
         };
-        let gaps = a.min(b)..a.max(b);
-        let twice = gaps.clone().find(|gap| covered_by[*gap].is_some());
-        if let Some(gap) = twice {
+        let (fore, aft) = (a.min(b), a.max(b));
+        let before = covered.range(..aft).next_back().filter(|(_, (end, _))| *end > fore);
+        if let Some((start, _)) = before {
+            let gap = fore.max(*start);
             let rule = format!(
                 "one span covers a gap; {} to {} is covered before",
                 line.nodes[gap].name,
@@ -33,14 +34,12 @@ pub(super) fn spans(written: &Written, line: &Rows, faults: &mut Collector) -> V
             faults.fault(spot, rule, "let each span begin where the other ends");
             continue;
         }
-        covered_by[gaps].fill(Some(index));
+        covered.insert(fore, (aft, &span.values));
     }
-    let values = |index: u32| written.spans.get(index as usize).map(|span| &span.values);
-    covered_by
-        .iter()
-        .enumerate()
-        .filter_map(|(fore, index)| Some(span(fore, values((*index)?)?)))
-        .collect()
+    let gaps = covered
+        .into_iter()
+        .flat_map(|(fore, (aft, values))| (fore..aft).map(move |gap| span(gap, values)));
+    gaps.collect()
 }
 
 fn span(fore: usize, values: &SpanValues) -> Span {

@@ -1,7 +1,6 @@
 //! The rows of a line: nodes fore to aft, found by name.
 
-use std::collections::HashMap;
-
+use super::index::NameIndex;
 use super::nodes::{Gathered, Place};
 use super::{Named, named};
 use crate::layout::Node;
@@ -13,11 +12,14 @@ use crate::layout::written::Written;
 /// Lines up to this many nodes are searched for the name that was meant.
 const SEARCHED_FOR_NAMES: usize = 20_000;
 
+/// After this many faults no name is searched for any more.
+const FAULTS_SEARCHED_FOR: usize = 200;
+
 /// The nodes of a line, fore to aft, with an index of their names.
 pub(super) struct Rows {
     pub(super) nodes: Vec<Node>,
     pub(super) reference: usize,
-    by_name: HashMap<String, u32>,
+    by_name: NameIndex,
     /// Whether a name that is not found may be one of a faulty node; it is then not
     /// reported.
     hides_nodes: bool,
@@ -31,14 +33,14 @@ impl Rows {
         faults: &mut Collector,
     ) -> Option<Rows> {
         let Gathered { mut nodes, places, default_reference, hides_nodes } = gathered;
-        let mut by_name = HashMap::with_capacity(nodes.len());
+        let mut by_name = NameIndex::with_room_for(nodes.len());
         for (index, node) in nodes.iter().enumerate() {
-            let index = u32::try_from(index).ok()?;
-            if let Some(first) = by_name.insert(node.name.clone(), index) {
-                by_name.insert(node.name.clone(), first);
+            let number = u32::try_from(index).ok()?;
+            let name_of = |number: u32| nodes[number as usize].name.as_str();
+            if let Some(first) = by_name.add(&node.name, number, name_of) {
                 let rule = format!("names are unique; `{}` names two nodes", node.name);
-                let remedy = places[index as usize].remedy_for_same_name(&places[first as usize]);
-                faults.fault(places[index as usize].spot, rule, remedy);
+                let remedy = places[index].remedy_for_same_name(&places[first as usize]);
+                faults.fault(places[index].spot, rule, remedy);
             }
         }
         let mut rows = Rows { nodes: Vec::new(), reference: 0, by_name, hides_nodes };
@@ -54,20 +56,15 @@ impl Rows {
             }
         }
         let reference = reference?;
-        let order = order(&nodes);
-        if let Some(order) = order {
+        rows.reference = reference;
+        if let Some(order) = order(&nodes) {
             let mut row_of = vec![0_u32; nodes.len()];
-            for (row, index) in order.iter().enumerate() {
-                row_of[*index as usize] = u32::try_from(row).ok()?;
-            }
-            let mut taken: Vec<Option<Node>> = nodes.into_iter().map(Some).collect();
-            nodes = order.iter().filter_map(|index| taken[*index as usize].take()).collect();
-            for index in rows.by_name.values_mut() {
-                *index = row_of[*index as usize];
+            for (row, index) in (0_u32..).zip(&order) {
+                row_of[*index as usize] = row;
             }
             rows.reference = row_of[reference] as usize;
-        } else {
-            rows.reference = reference;
+            rows.by_name.renumber(|index| row_of[index as usize]);
+            permute(&mut nodes, row_of);
         }
         rows.nodes = nodes;
         Some(rows)
@@ -84,8 +81,8 @@ impl Rows {
         nodes: &[Node],
         faults: &mut Collector,
     ) -> Option<usize> {
-        if let Some(row) = self.by_name.get(name) {
-            return Some(*row as usize);
+        if let Some(row) = self.by_name.find(name, |row| nodes[row as usize].name.as_str()) {
+            return Some(row as usize);
         }
         if !self.hides_nodes {
             let searched = if nodes.len() <= SEARCHED_FOR_NAMES { nodes } else { &[] };
@@ -140,6 +137,18 @@ fn order(nodes: &[Node]) -> Option<Vec<u32>> {
     Some(order)
 }
 
+/// Moves every node to its row.
+fn permute(nodes: &mut [Node], mut row_of: Vec<u32>) {
+    for place in 0..nodes.len() {
+        // Each swap brings one node to where it belongs.
+        while row_of[place] as usize != place {
+            let row = row_of[place] as usize;
+            nodes.swap(place, row);
+            row_of.swap(place, row);
+        }
+    }
+}
+
 /// Notes that a name is not there, with the one that was meant.
 pub(super) fn not_found<'n>(
     what: &str,
@@ -148,7 +157,8 @@ pub(super) fn not_found<'n>(
     all: impl Iterator<Item = &'n str>,
     faults: &mut Collector,
 ) {
-    let all: Vec<&str> = all.collect();
+    let searched = faults.total() < FAULTS_SEARCHED_FOR;
+    let all: Vec<&str> = if searched { all.collect() } else { Vec::new() };
     let remedy = match nearest(name, all.iter().copied()) {
         Some(meant) => format!("write `{meant}`"),
         None if all.is_empty() || all.len() > 8 => format!("write the name of a {what}"),

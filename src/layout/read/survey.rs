@@ -3,6 +3,7 @@
 use std::collections::HashMap;
 
 use super::csv::{Row, Rows};
+use super::nodes::{Clocks, Gathered, Origin};
 use super::{FARTHEST_POSITION_M, MOST_NODES};
 use crate::layout::fault::{Collector, Spot};
 use crate::layout::names;
@@ -31,8 +32,9 @@ pub(super) fn read(
     file: u32,
     text: &str,
     listed: &mut [WrittenNode],
+    clocks: &Clocks<'_>,
     faults: &mut Collector,
-) -> Vec<WrittenNode> {
+) -> Gathered {
     let mut rows = Rows::new(file, text);
     let Some(columns) = rows.next(faults).map(|header| read_header(header, faults)) else {
         faults.fault(
@@ -40,10 +42,10 @@ pub(super) fn read(
             "a survey begins with a header line",
             "begin with `name,position_m,u_position_m`",
         );
-        return Vec::new();
+        return Gathered::default();
     };
     let Some(columns) = columns else {
-        return Vec::new();
+        return Gathered::default();
     };
     let by_name: HashMap<String, usize> = listed
         .iter()
@@ -51,7 +53,8 @@ pub(super) fn read(
         .filter_map(|(index, node)| Some((node.name.value()?.clone(), index)))
         .collect();
     let mut surveyed = vec![false; listed.len()];
-    let mut new = Vec::new();
+    let lines = text.bytes().filter(|byte| *byte == b'\n').count();
+    let mut new = Gathered::with_room_for((lines + listed.len()).min(MOST_NODES));
     while let Some(row) = rows.next(faults) {
         if !row.is_as_wide_as(columns.len(), faults) {
             continue;
@@ -61,7 +64,7 @@ pub(super) fn read(
         };
         let known = node.name.value().and_then(|name| by_name.get(name)).copied();
         match known {
-            None if new.len() == MOST_NODES => {
+            None if new.nodes.len() == MOST_NODES => {
                 faults.fault(
                     row.whole(),
                     format!("a line has at most {MOST_NODES} nodes"),
@@ -69,7 +72,7 @@ pub(super) fn read(
                 );
                 break;
             }
-            None => new.push(node),
+            None => new.add(node, Origin::Survey, clocks, faults),
             Some(index) if surveyed[index] => faults.fault(
                 row.whole(),
                 format!("a survey has one row a node; `{}` has two", row_name(&node)),

@@ -173,6 +173,20 @@ pub(crate) const LIMIT: Kind = Kind {
 
 pub(crate) const NOTE: Kind = Kind { title: "[[note]]", key: "note", keys: &["at", "text"] };
 
+// An uncertainty, its degrees of freedom and its shape.
+pub(crate) const U_POSITION: [&str; 3] = ["u_position", "dof_position", "shape_position"];
+pub(crate) const U_BIAS: [&str; 3] = ["u_bias", "dof_bias", "shape_bias"];
+pub(crate) const U_AXIAL_STIFFNESS: [&str; 3] =
+    ["u_axial_stiffness", "dof_axial_stiffness", "shape_axial_stiffness"];
+pub(crate) const U_THERMAL_EXPANSION: [&str; 3] =
+    ["u_thermal_expansion", "dof_thermal_expansion", "shape_thermal_expansion"];
+pub(crate) const U_TEMPERATURE_CHANGE: [&str; 3] =
+    ["u_temperature_change", "dof_temperature_change", "shape_temperature_change"];
+pub(crate) const U_SCALE: [&str; 3] = ["u_scale", "dof_scale", "shape_scale"];
+pub(crate) const U_ZERO: [&str; 3] = ["u_zero", "dof_zero", "shape_zero"];
+pub(crate) const U_GRAVITY: [&str; 3] = ["u_gravity", "dof_gravity", "shape_gravity"];
+pub(crate) const U_GRADIENT: [&str; 3] = ["u_gradient", "dof_gradient", "shape_gradient"];
+
 /// Every table below the top.
 pub(crate) const TABLES: [&Kind; 13] = [
     &NODE,

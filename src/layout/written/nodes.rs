@@ -1,5 +1,6 @@
 //! What a node states beside its name and place, in a layout or in a survey.
 
+use super::keys;
 use super::section::{Bound, Section};
 use super::{Field, SHAPES, Spacing, WrittenNode, WrittenSeries};
 use crate::layout::Uncertainty;
@@ -122,12 +123,12 @@ impl NodeValues {
         let reading_at_start_s = number("reading_at_start", NodeKey::ReadingAtStart).unwrap_or(0.0);
         NodeValues {
             stated,
-            u_position_m: section.uncertainty("position", Dimension::Length),
+            u_position_m: section.uncertainty(keys::U_POSITION, Dimension::Length),
             mass_kg,
             clock: section.reference_to("clock", "\"lattice\""),
             rating_m_s2,
             bias,
-            u_bias: section.uncertainty("bias", Dimension::Number),
+            u_bias: section.uncertainty(keys::U_BIAS, Dimension::Number),
             reading_at_start_s,
         }
     }

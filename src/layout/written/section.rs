@@ -348,15 +348,18 @@ impl<'a, 'i> Section<'a, 'i> {
         Field::Faulty
     }
 
-    /// The uncertainty `u_STEM`, with `dof_STEM` and `shape_STEM` beside it.
-    pub(crate) fn uncertainty(&mut self, stem: &str, dimension: Dimension) -> Uncertainty {
-        let (u_key, dof_key, shape_key) =
-            (format!("u_{stem}"), format!("dof_{stem}"), format!("shape_{stem}"));
-        let u = self.quantity(&u_key, dimension, Bound::NotNegative);
-        let dof = self.quantity(&dof_key, Dimension::Number, Bound::Positive);
-        let shape = self.choice(&shape_key, &SHAPES);
+    /// An uncertainty, its degrees of freedom and its shape, each under its key.
+    pub(crate) fn uncertainty(
+        &mut self,
+        keys: [&'static str; 3],
+        dimension: Dimension,
+    ) -> Uncertainty {
+        let [u_key, dof_key, shape_key] = keys;
+        let u = self.quantity(u_key, dimension, Bound::NotNegative);
+        let dof = self.quantity(dof_key, Dimension::Number, Bound::Positive);
+        let shape = self.choice(shape_key, &SHAPES);
         if u.is_absent() {
-            for key in [&dof_key, &shape_key] {
+            for key in [dof_key, shape_key] {
                 if let Some(value) = self.get(key) {
                     let rule = format!("`{key}` stands beside `{u_key}`");
                     let remedy = format!("add `{u_key}`, or take `{key}` away");

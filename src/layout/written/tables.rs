@@ -3,6 +3,7 @@
 use toml::Spanned;
 use toml::de::DeValue;
 
+use super::keys;
 use super::section::{Bound, Section, type_words};
 use super::{
     Field, SpanValues, WrittenAcceleration, WrittenEngine, WrittenLimit, WrittenLink, WrittenPhase,
@@ -38,7 +39,7 @@ pub(super) fn read_span(mut section: Section<'_, '_>) -> WrittenSpan {
     let safety_factor = number("safety_factor", Dimension::Number, Bound::AtLeastOne);
     let thermal_expansion = number("thermal_expansion", Dimension::PerTemperature, Bound::Any);
     let temperature_change = number("temperature_change", Dimension::Temperature, Bound::Any);
-    let u_axial_stiffness_n = section.uncertainty("axial_stiffness", Dimension::Force);
+    let u_axial_stiffness_n = section.uncertainty(keys::U_AXIAL_STIFFNESS, Dimension::Force);
     if let Some(value) = section.get("u_axial_stiffness")
         && !section.has("axial_stiffness")
     {
@@ -57,9 +58,10 @@ pub(super) fn read_span(mut section: Section<'_, '_>) -> WrittenSpan {
         safety_factor: safety_factor.unwrap_or(1.0),
         thermal_expansion_per_k: thermal_expansion.unwrap_or(0.0),
         u_thermal_expansion_per_k: section
-            .uncertainty("thermal_expansion", Dimension::PerTemperature),
+            .uncertainty(keys::U_THERMAL_EXPANSION, Dimension::PerTemperature),
         temperature_change_k: temperature_change.unwrap_or(0.0),
-        u_temperature_change_k: section.uncertainty("temperature_change", Dimension::Temperature),
+        u_temperature_change_k: section
+            .uncertainty(keys::U_TEMPERATURE_CHANGE, Dimension::Temperature),
     };
     WrittenSpan { along, values }
 }
@@ -140,8 +142,8 @@ pub(super) fn read_acceleration(mut section: Section<'_, '_>) -> WrittenAccelera
         spot: section.spot,
         history: section.line_of_text("history", "\"run.csv\""),
         uncertainty: AccelerationUncertainty {
-            scale: section.uncertainty("scale", Dimension::Number),
-            zero_m_s2: section.uncertainty("zero", Dimension::Acceleration),
+            scale: section.uncertainty(keys::U_SCALE, Dimension::Number),
+            zero_m_s2: section.uncertainty(keys::U_ZERO, Dimension::Acceleration),
         },
     }
 }
@@ -151,9 +153,9 @@ pub(super) fn read_standing(mut section: Section<'_, '_>) -> WrittenStanding {
     WrittenStanding {
         spot: section.spot,
         gravity_m_s2: section.required(gravity, "gravity", "\"9.81 m/s^2\""),
-        u_gravity_m_s2: section.uncertainty("gravity", Dimension::Acceleration),
+        u_gravity_m_s2: section.uncertainty(keys::U_GRAVITY, Dimension::Acceleration),
         gradient_per_s2: section.quantity("gradient", Dimension::PerTimeSquared, Bound::Any),
-        u_gradient_per_s2: section.uncertainty("gradient", Dimension::PerTimeSquared),
+        u_gradient_per_s2: section.uncertainty(keys::U_GRADIENT, Dimension::PerTimeSquared),
     }
 }
 
@@ -177,7 +179,7 @@ pub(super) fn read_clock(name: String, mut section: Section<'_, '_>) -> Clock {
         acceleration_sensitivity: sensitivity.unwrap_or(0.0),
         drift_per_s: number("drift", Dimension::PerTime, Bound::Any).unwrap_or(0.0),
         steer_step: number("steer_step", Dimension::Number, Bound::Positive),
-        u_bias: section.uncertainty("bias", Dimension::Number),
+        u_bias: section.uncertainty(keys::U_BIAS, Dimension::Number),
         name,
     }
 }

@@ -174,7 +174,7 @@ fn take_in(desk: &mut Desk, outside: &mut Outside, news: Incoming) -> Heard {
     let message = match news {
         Incoming::Key(key) => Message::Key(key),
         Incoming::Paste(text) => Message::Paste(text),
-        Incoming::Resized | Incoming::Woken => return Heard::Nothing,
+        Incoming::Resized => return Heard::Nothing,
         Incoming::Resumed => return Heard::Resumed,
         Incoming::Ended(ended) => return Heard::Ended(ended),
     };

@@ -76,11 +76,13 @@ impl<W: Write> ScreenBackend<W> {
     }
 
     /// How many bytes have been sent.
+    #[cfg(test)]
     pub fn bytes(&self) -> u64 {
         self.bytes
     }
 
     /// How many frames have been sent, each in one write.
+    #[cfg(test)]
     pub fn frames(&self) -> u64 {
         self.frames
     }

@@ -1,7 +1,5 @@
 //! What reaches the main thread, and the thread that reads keys.
 
-use std::sync::Arc;
-use std::sync::atomic::{AtomicBool, Ordering};
 use std::sync::mpsc::Sender;
 
 use ratatui::crossterm::event::{KeyCode, KeyEvent, KeyModifiers};
@@ -31,8 +29,6 @@ pub enum Incoming {
     Resized,
     /// The program was stopped and continues; every cell will be drawn again.
     Resumed,
-    /// A [`Waker`] was used.
-    Woken,
     /// The desk must end now, for this reason.
     Ended(Ended),
 }
@@ -48,35 +44,6 @@ pub(super) enum Report {
     StopSignal,
     /// SIGCONT.
     Continued,
-}
-
-/// Wakes the main thread from another thread.
-///
-/// Put the result where the main thread finds it, then call [`Waker::wake`]. However
-/// often it is called before the main thread looks, one [`Incoming::Woken`] is sent,
-/// so that results never queue up faster than they are drawn.
-#[derive(Debug, Clone)]
-pub struct Waker {
-    sender: Sender<Report>,
-    pending: Arc<AtomicBool>,
-}
-
-impl Waker {
-    pub(super) fn new(sender: Sender<Report>) -> Self {
-        Waker { sender, pending: Arc::new(AtomicBool::new(false)) }
-    }
-
-    /// Makes the main thread receive [`Incoming::Woken`].
-    pub fn wake(&self) {
-        if !self.pending.swap(true, Ordering::SeqCst) {
-            let _ = self.sender.send(Report::Told(Incoming::Woken));
-        }
-    }
-
-    /// Lets the next call to [`Waker::wake`] send again.
-    pub(super) fn rearm(&self) {
-        self.pending.store(false, Ordering::SeqCst);
-    }
 }
 
 /// Reads keys until the terminal is lost; blocks while there are none.
@@ -123,24 +90,5 @@ fn understood(typed: Typed) -> Report {
         }
         Typed::Key(key) => Report::Told(Incoming::Key(key)),
         Typed::Paste(text) => Report::Told(Incoming::Paste(text)),
-    }
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-    use std::sync::mpsc::channel;
-
-    #[test]
-    fn many_wakes_are_one_message_until_it_has_been_seen() {
-        let (sender, reports) = channel();
-        let waker = Waker::new(sender);
-        let worker = waker.clone();
-        worker.wake();
-        worker.wake();
-        assert_eq!(reports.try_iter().count(), 1);
-        waker.rearm();
-        worker.wake();
-        assert_eq!(reports.try_iter().count(), 1);
     }
 }

@@ -5,8 +5,6 @@
 //! WGL4 set, the bar steps and the plan line's slopes excepted, and none of them
 //! has a picture form that a terminal could draw two columns wide.
 
-use ratatui::symbols::{border, line};
-
 /// What the reader asked for on the command line.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub enum GlyphChoice {
@@ -162,37 +160,6 @@ impl Glyphs {
             GlyphChoice::Unicode => &UNICODE,
             GlyphChoice::Auto if locale_is_utf8(variable) => &UNICODE,
             GlyphChoice::Auto => &ASCII,
-        }
-    }
-
-    /// The rules and corners as the border of a block.
-    pub fn border(&self) -> border::Set<'static> {
-        border::Set {
-            top_left: self.top_left,
-            top_right: self.top_right,
-            bottom_left: self.bottom_left,
-            bottom_right: self.bottom_right,
-            vertical_left: self.vertical,
-            vertical_right: self.vertical,
-            horizontal_top: self.horizontal,
-            horizontal_bottom: self.horizontal,
-        }
-    }
-
-    /// The rules, corners and branches as a set of line symbols.
-    pub fn lines(&self) -> line::Set<'static> {
-        line::Set {
-            vertical: self.vertical,
-            horizontal: self.horizontal,
-            top_right: self.top_right,
-            top_left: self.top_left,
-            bottom_right: self.bottom_right,
-            bottom_left: self.bottom_left,
-            vertical_left: self.branch_left,
-            vertical_right: self.branch_right,
-            horizontal_down: self.branch_down,
-            horizontal_up: self.branch_up,
-            cross: self.cross,
         }
     }
 }

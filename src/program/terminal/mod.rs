@@ -39,8 +39,8 @@ use rustix::process::{Signal, kill_current_process_group};
 use signal_hook::consts::SIGSTOP;
 use signal_hook::low_level;
 
-pub use colour::{ColourChoice, Depth};
-pub use events::{Incoming, Waker};
+pub use colour::ColourChoice;
+pub use events::Incoming;
 #[cfg(test)]
 pub use glyphs::{ASCII, UNICODE};
 pub use glyphs::{GlyphChoice, Glyphs};
@@ -67,9 +67,7 @@ pub struct Options {
 pub struct Terminal {
     drawing: ratatui::Terminal<ScreenBackend<Screen>>,
     reports: Receiver<Report>,
-    waker: Waker,
     glyphs: &'static Glyphs,
-    depth: Depth,
 }
 
 impl Terminal {
@@ -104,7 +102,7 @@ impl Terminal {
         guard::enter()?;
         let keys = sender.clone();
         signals::spawn("keys", move || events::read_keys(&keys))?;
-        Ok(Terminal { drawing, reports, waker: Waker::new(sender), glyphs, depth })
+        Ok(Terminal { drawing, reports, glyphs })
     }
 
     /// Draws a frame and sends what differs from the one before, in one write.
@@ -147,12 +145,7 @@ impl Terminal {
 
     fn deal_with(&mut self, report: Report) -> Option<Incoming> {
         match report {
-            Report::Told(incoming) => {
-                if incoming == Incoming::Woken {
-                    self.waker.rearm();
-                }
-                Some(incoming)
-            }
+            Report::Told(incoming) => Some(incoming),
             // What the terminal does for Ctrl-Z when it is not in raw mode: the whole
             // foreground group gets the signal, so that a wrapper the program was
             // started from stops too and the shell comes back. The terminal is given
@@ -189,29 +182,9 @@ impl Terminal {
         self.drawing.resize(Rect::new(0, 0, width, height))
     }
 
-    /// A handle with which another thread can wake the main one.
-    pub fn waker(&self) -> Waker {
-        self.waker.clone()
-    }
-
     /// The marks to draw with.
     pub fn glyphs(&self) -> &'static Glyphs {
         self.glyphs
-    }
-
-    /// How many colours the terminal is trusted with.
-    pub fn depth(&self) -> Depth {
-        self.depth
-    }
-
-    /// How many bytes the frames have taken.
-    pub fn bytes(&self) -> u64 {
-        self.drawing.backend().bytes()
-    }
-
-    /// How many frames have been sent.
-    pub fn frames(&self) -> u64 {
-        self.drawing.backend().frames()
     }
 }
 

@@ -10,11 +10,6 @@ pub struct Unusable {
 }
 
 impl Unusable {
-    /// The fault alone, without the rule and the remedy.
-    pub fn what(&self) -> &str {
-        &self.what
-    }
-
     /// What the desk needs.
     pub const RULE: &str = "standard input and standard output are a terminal, and TERM names one that can place its cursor";
 
