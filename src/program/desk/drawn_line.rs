@@ -3,9 +3,10 @@
 use clockspar::layout::SpanKind;
 use clockspar::run::NodeState;
 use clockspar::table::Measure;
+use clockspar::table::content::SpanLoad;
 use ratatui::layout::Rect;
 
-use super::painter::{PLAIN, Painter, QUIET, STRONG};
+use super::painter::{PLAIN, Painter, QUIET, STRONG, state_style};
 use super::state::Desk;
 use super::words;
 
@@ -36,16 +37,31 @@ pub fn draw_row(
         return;
     }
     let span = layout.spans.binary_search_by_key(&row, |span| span.fore).ok();
-    let joined = match span.map(|index| layout.spans[index].kind) {
-        Some(SpanKind::Tether) => glyphs.tether_down,
-        Some(SpanKind::Boom) => glyphs.boom_down,
-        None => glyphs.gap_down,
+    let (joined, style) = match (span_load(desk, row), span.map(|index| layout.spans[index].kind)) {
+        (Some(SpanLoad::Slack), _) => (glyphs.slack, state_style("slack")),
+        (Some(SpanLoad::Over), _) => (glyphs.over, state_style("over")),
+        (_, Some(SpanKind::Tether)) => (glyphs.tether_down, QUIET),
+        (_, Some(SpanKind::Boom)) => (glyphs.boom_down, QUIET),
+        (_, None) => (glyphs.gap_down, QUIET),
     };
     if is_spread {
-        painter.put(area, area.x + NODE, y + 1, joined, QUIET);
+        painter.put(area, area.x + NODE, y + 1, joined, style);
     } else {
-        painter.put(area, area.x + GAP, y, joined, QUIET);
+        painter.put(area, area.x + GAP, y, joined, style);
     }
+}
+
+/// How the span aft of a row stands; `None` on a line without spans, whose loads are not
+/// worked out for a mark, and where there is nothing between the two.
+fn span_load(desk: &Desk, row: usize) -> Option<SpanLoad> {
+    if desk.layout().spans.is_empty() {
+        return None;
+    }
+    let state = desk.state()?;
+    state.node(row).aboard()?;
+    state.node(row + 1).aboard()?;
+    let loads = desk.run.loads().ok()?;
+    Some(SpanLoad::of(&loads, &loads.state_of_instant(*state.instant()), row))
 }
 
 /// The horizon of the line at the present moment.

@@ -17,8 +17,8 @@ use super::{Cell, Column, Measure, Report};
 pub use check::{JudgedOver, Judgement, Rule, RuleState, check_report, judge};
 pub use compare::{Difference, compare_report, differences};
 pub use loads::{
-    CAUTION, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, judge_loads, loads_report,
-    sentence as load_sentence,
+    CAUTION, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad, judge_loads,
+    loads_report, sentence as load_sentence,
 };
 pub use offsets::offsets_report;
 pub use rates::rates_report;

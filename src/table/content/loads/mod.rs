@@ -1,6 +1,7 @@
 //! `loads`: forces, stretch, propellant; peaks over the plan, and the rules they break.
 
 mod rules;
+mod span;
 
 use std::borrow::Cow;
 use std::sync::Arc;
@@ -15,6 +16,7 @@ use crate::table::{Cell, Column, Measure, Report, Scalar, Table, readable_time};
 use rules::six_digits;
 
 pub use rules::{LoadJudgement, LoadRule, LoadSubject, judge_loads};
+pub use span::SpanLoad;
 
 /// What stands under everything that shows forces.
 pub const CAUTION: &str = "these figures are for planning. They leave out buckling, sag, \
