@@ -54,7 +54,7 @@ fn straightforward(plan: &Plan, from_m: f64, to_m: f64, emitted: ArrayTime) -> f
     let integrand = |s: f64| {
         let here = plan.moment(moment(s));
         let rate = 1.0 + here.acceleration_m_s2.to_f64() * to_m / (c * c);
-        c * rate * (-sign * (here.rapidity.to_f64() - origin)).exp()
+        c * rate * libm::exp(-sign * (here.rapidity.to_f64() - origin))
     };
     let integral = |until: f64| {
         let count = 32;

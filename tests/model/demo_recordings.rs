@@ -55,10 +55,7 @@ fn the_braking_run_with_what_was_changed_on_the_way() {
     for (second, kind) in [
         (600, EventKind::Note { text: "chamber two reads low, holding less".to_owned() }),
         (600, EventKind::Hold { acceleration_m_s2: 1.8 }),
-        (
-            900,
-            EventKind::Ramp { to_m_s2: 2.451_662_5, length: ArrayTime::from_seconds(120) },
-        ),
+        (900, EventKind::Ramp { to_m_s2: 2.451_662_5, length: ArrayTime::from_seconds(120) }),
         (1500, EventKind::Plan),
         (1800, EventKind::Move { node: next_to_last.clone(), position_m: -241.5 }),
         (2400, EventKind::Note { text: "aft head let go for the survey pass".to_owned() }),

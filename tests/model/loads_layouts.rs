@@ -46,13 +46,11 @@ fn every_shipped_layout_has_loads() {
             assert!(peaks.smallest.value <= peaks.largest.value);
             assert_eq!(loads.strength(span.fore).is_some(), span.strength_n.is_some());
         }
-        println!(
-            "{name}: {} slack, {} dry, period {:?} s, largest share ringing {:?}",
-            loads.slack().len(),
-            loads.running_dry().len(),
-            loads.lowest_period().map(|period| period.period_s),
-            loads.ringing().iter().map(|ringing| ringing.share).reduce(f64::max),
-        );
+        if let Some(period) = loads.lowest_period() {
+            for ringing in loads.ringing(&period) {
+                assert!(ringing.share > 0.0 && ringing.share <= 1.0, "{name}: {ringing:?}");
+            }
+        }
         seen += 1;
     }
     assert!(seen > 3);

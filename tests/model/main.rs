@@ -17,6 +17,7 @@ mod loads_identities;
 mod loads_layouts;
 mod loads_published;
 mod loads_reference;
+mod loads_rules;
 mod pinned;
 mod published;
 mod reach;

@@ -316,6 +316,36 @@ impl Loads {
         }
     }
 
+    /// Loaded position of a row and its speed at a moment of a phase (`None` outside the
+    /// plan), the end of the phase meaning the limit from below: what the end of a link
+    /// needs, without the cost of a whole [`State`].
+    #[must_use]
+    pub fn end_motion(&self, phase: Option<usize>, at: ArrayTime, row: usize) -> (Dd, f64) {
+        match &self.course {
+            Course::Standing(standing) => (standing.positions_m[row], 0.0),
+            Course::Thrust(thrust) if thrust.flight.compliance.terms() == 0 => {
+                (self.relaxed_m[row], 0.0)
+            }
+            Course::Thrust(thrust) => {
+                let flight = &thrust.flight;
+                let drive = flight.drive(&self.propulsion, phase, at);
+                let (alpha, slope) = (drive.acceleration_m_s2, drive.slope_m_s3);
+                let basis = flight.compliance.basis(alpha.to_f64(), drive.burned);
+                let position =
+                    self.relaxed_m[row] + alpha * flight.compliance.sum(row, &basis.values);
+                let speed = flight::speed(
+                    &flight.compliance,
+                    row,
+                    &basis,
+                    alpha.to_f64(),
+                    slope,
+                    drive.burning_per_s,
+                );
+                (position, speed)
+            }
+        }
+    }
+
     /// Clock offset of a row: within 1e-14 of `(1/c²) ∫ |h α| dτ`.
     ///
     /// With `h = relaxed + α C(α, x)` the offset is `relaxed φ/c + (1/c²) ∫ α² C dτ`; the

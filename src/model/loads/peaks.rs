@@ -2,7 +2,7 @@
 
 use super::balance::Balance;
 use super::compliance::Basis;
-use super::flight::{Flight, sections, slope};
+use super::flight::{Drive, Flight, sections, slope};
 use super::propellant::Propulsion;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::INVERSE_C2_S2_M2;
@@ -79,8 +79,8 @@ struct Corner {
     phase: usize,
     at: ArrayTime,
     is_limit: bool,
-    /// Where the extreme may lie when this corner is a sample of a curve.
-    bracket: Option<[ArrayTime; 2]>,
+    /// Where the extreme may lie when this corner is a sample of a curve, and the drive there.
+    bracket: Option<[(ArrayTime, Drive); 2]>,
     basis: Basis,
 }
 
@@ -89,6 +89,10 @@ impl Corners {
         let mut found = Vec::new();
         for index in 0..flight.plan.phases().len() {
             sample(flight, propulsion, index, &mut found);
+            // A long history is folded into its hull as it comes.
+            if found.len() > 4096 {
+                found = hull(found);
+            }
         }
         let mut corners = hull(found);
         for corner in &mut corners {
@@ -145,7 +149,8 @@ impl Corners {
                         if corner.bracket.is_none() || sign * (best - value) > 0.05 * best.abs() {
                             continue;
                         }
-                        let refined = curve.refine(corner, sign);
+                        let position_m = self.position(flight, relaxed_m, row, corner);
+                        let refined = curve.refine(corner, sign, position_m);
                         if let Some(better) =
                             refined.filter(|peak| sign * (peak.value - peaks[which].value) > 0.0)
                         {
@@ -263,39 +268,45 @@ struct Curve<'a> {
 }
 
 impl Curve<'_> {
-    /// `N² dT/dτ = α′ j − N α j′ x′`, and the force itself, at a moment of a phase.
-    fn slope_and_force(&self, phase: usize, at: ArrayTime) -> (f64, f64) {
-        let drive = self.flight.drive(self.propulsion, Some(phase), at);
+    fn balance(&self, burned: f64) -> Dd {
+        let ends = self.balance.ends(self.gap, burned);
+        if self.end == 0 { ends.fore } else { ends.aft }
+    }
+
+    /// `N² dT/dτ = α′ j − N α j′ x′` for a node that stands at a position.
+    fn slope(&self, drive: &Drive, position_m: Dd) -> f64 {
         let alpha = drive.acceleration_m_s2;
-        let basis = self.flight.compliance.basis(alpha.to_f64(), drive.burned);
+        let rate = alpha * position_m * INVERSE_C2_S2_M2 + 1.0;
+        let falling = self.balance.slope(self.gap).to_f64() * drive.burning_per_s;
+        drive.slope_m_s3 * self.balance(drive.burned).to_f64() - (rate * alpha).to_f64() * falling
+    }
+
+    /// The extreme inside a corner's bracket: the zero of the slope, to the attosecond or
+    /// as near as the slope has a sign. `None` when the slope does not change sign there.
+    fn refine(&self, corner: &Corner, sign: f64, position_m: Dd) -> Option<Peak> {
+        let [from, to] = corner.bracket?;
+        let rises = |drive: &Drive| sign * self.slope(drive, position_m) > 0.0;
+        if !rises(&from.1) || rises(&to.1) {
+            return None;
+        }
+        let drive = |at| self.flight.drive(self.propulsion, Some(corner.phase), at);
+        let (mut low, mut high) = (from.0.attoseconds(), to.0.attoseconds());
+        while high - low > 1 {
+            let middle = low + (high - low) / 2;
+            let is_rising = rises(&drive(ArrayTime::from_attoseconds(middle)));
+            if is_rising { low = middle } else { high = middle }
+        }
+        let at = ArrayTime::from_attoseconds(high);
+        let there = drive(at);
+        let alpha = there.acceleration_m_s2;
+        let basis = self.flight.compliance.basis(alpha.to_f64(), there.burned);
         let row = self.gap + self.end;
         let mut position = self.relaxed_m[row];
         if self.flight.compliance.terms() > 0 {
             position = position + alpha * self.flight.compliance.sum(row, &basis.values);
         }
         let rate = alpha * position * INVERSE_C2_S2_M2 + 1.0;
-        let ends = self.balance.ends(self.gap, drive.burned);
-        let balance = if self.end == 0 { ends.fore } else { ends.aft };
-        let falling = self.balance.slope(self.gap).to_f64() * drive.burning_per_s;
-        let slope = drive.slope_m_s3 * balance.to_f64() - (rate * alpha).to_f64() * falling;
-        (slope, (alpha * balance / rate).to_f64())
-    }
-
-    /// The extreme inside a corner's bracket: the zero of the slope, to the attosecond or
-    /// as near as the slope has a sign. `None` when the slope does not change sign there.
-    fn refine(&self, corner: &Corner, sign: f64) -> Option<Peak> {
-        let [from, to] = corner.bracket?;
-        let rises = |at: ArrayTime| sign * self.slope_and_force(corner.phase, at).0 > 0.0;
-        let (mut low, mut high) = (from.attoseconds(), to.attoseconds());
-        if !rises(from) || rises(to) {
-            return None;
-        }
-        while high - low > 1 {
-            let middle = low + (high - low) / 2;
-            if rises(ArrayTime::from_attoseconds(middle)) { low = middle } else { high = middle }
-        }
-        let at = ArrayTime::from_attoseconds(high);
-        let value = self.slope_and_force(corner.phase, at).1;
+        let value = (alpha * self.balance(there.burned) / rate).to_f64();
         Some(Peak { value, phase: Some(corner.phase), at, is_limit: false })
     }
 }
@@ -304,7 +315,7 @@ impl Curve<'_> {
 /// section: good to the square of the last interval.
 fn summit(corner: &Corner, sign: f64, value: impl Fn(ArrayTime) -> Dd) -> Dd {
     const SHARE: f64 = 0.381_966_011_250_105;
-    let [from, to] = corner.bracket.unwrap_or([corner.at; 2]);
+    let [from, to] = corner.bracket.map_or([corner.at; 2], |bracket| bracket.map(|end| end.0));
     let (mut low, mut high) = (from.attoseconds(), to.attoseconds());
     let inner = |low: i128, high: i128, share: f64| {
         ArrayTime::from_attoseconds(low + ((high - low) as f64 * share) as i128)
@@ -329,7 +340,8 @@ fn sample(flight: &Flight, propulsion: &Propulsion, index: usize, found: &mut Ve
         let spent = |at| flight.plan.velocity_spent_m_s(at).to_f64();
         let length = phase.end.attoseconds() - phase.start.attoseconds();
         let fall = (spent(phase.end) - spent(phase.start)) * propulsion.inverse_speed_s_m();
-        let count = (16.0 + 8.0 * fall).min(400.0) as i128;
+        // A short piece of a curve has one extreme at most, and one sample finds it.
+        let count = (2.0 + 14.0 * fall.min(1.0) + 8.0 * fall).min(400.0) as i128;
         for step in 1..count {
             let at = phase.start.attoseconds() + length * step / count;
             moments.push(ArrayTime::from_attoseconds(at));
@@ -342,15 +354,15 @@ fn sample(flight: &Flight, propulsion: &Propulsion, index: usize, found: &mut Ve
         moments.dedup();
     }
     let is_curve = moments.len() > 2;
-    for (place, &at) in moments.iter().enumerate() {
-        let drive = flight.drive(propulsion, Some(index), at);
-        let mass = if propulsion.is_falling() { 1.0 - drive.burned } else { 1.0 };
-        let before = moments[place.saturating_sub(1)];
-        let after = moments[(place + 1).min(moments.len() - 1)];
+    let drives: Vec<(ArrayTime, Drive)> =
+        moments.into_iter().map(|at| (at, flight.drive(propulsion, Some(index), at))).collect();
+    for (place, &(at, drive)) in drives.iter().enumerate() {
+        let before = drives[place.saturating_sub(1)];
+        let after = drives[(place + 1).min(drives.len() - 1)];
         found.push(Corner {
             acceleration_m_s2: drive.acceleration_m_s2,
             burned: drive.burned,
-            mass,
+            mass: 1.0 - drive.burned,
             phase: index,
             at,
             is_limit: at == phase.end,

@@ -178,13 +178,11 @@ impl Loads {
         lowest_period_of(&self.structure, &self.masses_kg, &lengths)
     }
 
-    /// What every ramp and every step of the plan leaves ringing, in the order of time.
-    /// Empty on a standing line, or when nothing can swing.
+    /// What every ramp and every step of the plan leaves ringing, given the lowest axial
+    /// period, in the order of time. Empty on a standing line.
     #[must_use]
-    pub fn ringing(&self) -> Vec<Ringing> {
-        let (Some(thrust), Some(period)) = (self.thrust(), self.lowest_period()) else {
-            return Vec::new();
-        };
+    pub fn ringing(&self, period: &Period) -> Vec<Ringing> {
+        let Some(thrust) = self.thrust() else { return Vec::new() };
         let plan = &thrust.flight.plan;
         let mut found = Vec::new();
         // A history may have many phases and a line many nodes: the nodes that move most in

@@ -92,9 +92,10 @@ impl LoadsOverPlan {
     pub fn new(layout: &Layout, loads: Arc<Loads>) -> LoadsOverPlan {
         let broken: Vec<LoadJudgement> =
             judge_loads(layout, &loads).into_iter().filter(|judged| judged.is_broken).collect();
+        let period = loads.lowest_period();
         LoadsOverPlan {
-            ringing: loads.ringing().into(),
-            period_s: loads.lowest_period().map(|period| period.period_s),
+            ringing: period.map_or_else(Vec::new, |period| loads.ringing(&period)).into(),
+            period_s: period.map(|period| period.period_s),
             broken: broken.into(),
             loads,
         }

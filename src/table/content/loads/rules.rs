@@ -232,7 +232,7 @@ pub fn mends(layout: &Layout, slack: &Slack) -> String {
 
 fn ramps(layout: &Layout, loads: &Loads) -> Vec<LoadJudgement> {
     let Some(period) = loads.lowest_period() else { return Vec::new() };
-    loads.ringing().iter().map(|ringing| ramp(layout, ringing, period.period_s)).collect()
+    loads.ringing(&period).iter().map(|ringing| ramp(layout, ringing, period.period_s)).collect()
 }
 
 fn ramp(layout: &Layout, ringing: &Ringing, period_s: f64) -> LoadJudgement {
