@@ -15,7 +15,7 @@ use std::sync::Arc;
 use crate::layout::{Course, Layout};
 use crate::model::array_time::ArrayTime;
 use crate::model::dd::Dd;
-use crate::model::loads::{self, Gravity, Loads, LoadsFault, Structure};
+use crate::model::loads::{self, Loads, LoadsFault, Structure};
 use crate::model::plan::Plan;
 use crate::model::rates::Instant;
 
@@ -83,7 +83,8 @@ impl<'a> Loaded<'a> {
 }
 
 /// Whether a layout says anything that could move a node.
-pub(super) fn may_stretch(layout: &Layout) -> bool {
+#[must_use]
+pub fn may_stretch(layout: &Layout) -> bool {
     layout.spans.iter().any(|span| {
         span.axial_stiffness_n.is_some()
             || span.thermal_expansion_per_k * span.temperature_change_k != 0.0
@@ -168,14 +169,9 @@ impl Run {
     }
 
     fn loads_over(&self, plan: Option<&Plan>) -> Result<Loads, RunFault> {
-        let structure = Structure::from_layout(&self.layout);
-        let built = match (plan, &self.layout.course) {
-            (Some(plan), _) | (None, Course::Thrust(plan)) => Loads::under_thrust(structure, plan),
-            (None, Course::Standing(standing)) => {
-                let (gravity_m_s2, gradient_per_s2) =
-                    (standing.gravity_m_s2, standing.gradient_per_s2);
-                Loads::standing(structure, Gravity { gravity_m_s2, gradient_per_s2 })
-            }
+        let built = match plan {
+            Some(plan) => Loads::under_thrust(Structure::from_layout(&self.layout), plan),
+            None => Loads::of_layout(&self.layout),
         };
         built.map_err(|fault| self.told(fault))
     }

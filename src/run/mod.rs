@@ -29,7 +29,7 @@ use crate::model::rates::Instant;
 
 pub use event::{Event, EventKind};
 pub use fault::{HorizonFault, RunFault};
-pub use loaded::Stretched;
+pub use loaded::{Stretched, may_stretch};
 pub use place::Place;
 pub use state::{Aboard, NodeState, State};
 

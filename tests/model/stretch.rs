@@ -179,7 +179,7 @@ fn what_stretch_makes_of_an_offset_is_shown() {
         assert!((got - wanted).abs() <= 1e-9 * wanted, "{row}: {got:e} {wanted:e}");
         assert_eq!(wanted > 0.0, row != run.layout().reference, "{row}");
     }
-    assert!(report.remarks.iter().any(|remark| remark.contains("neglected motion")));
+    assert!(report.remarks.iter().any(|remark| remark.contains("slows their clocks further, by")));
     // A rigid line has no such table and no such words.
     let rigid = crate::run::line();
     let report = offsets_report(rigid.state_at(seconds("5 h")).unwrap(), true);

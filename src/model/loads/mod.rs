@@ -77,6 +77,7 @@ use super::constants::INVERSE_C2_S2_M2;
 use super::dd::Dd;
 use super::plan::{Moment, Plan};
 use super::rates::Instant;
+use crate::layout::{self, Layout};
 
 /// A line and what moves or holds it, ready to be asked about any moment.
 #[derive(Clone, Debug)]
@@ -142,6 +143,23 @@ pub struct NeglectedMotion {
 }
 
 impl Loads {
+    /// The line of a checked layout, over its plan as filed or in its gravity.
+    ///
+    /// # Errors
+    ///
+    /// As [`Loads::under_thrust`] and [`Loads::standing`].
+    pub fn of_layout(layout: &Layout) -> Result<Loads, LoadsFault> {
+        let structure = Structure::from_layout(layout);
+        match &layout.course {
+            layout::Course::Thrust(plan) => Loads::under_thrust(structure, plan),
+            layout::Course::Standing(standing) => {
+                let (gravity_m_s2, gradient_per_s2) =
+                    (standing.gravity_m_s2, standing.gradient_per_s2);
+                Loads::standing(structure, Gravity { gravity_m_s2, gradient_per_s2 })
+            }
+        }
+    }
+
     /// A line under a thrust plan.
     ///
     /// # Errors

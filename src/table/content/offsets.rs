@@ -39,15 +39,18 @@ pub fn offsets_report(state: State<'_>, pairs: bool) -> Report<'_> {
     if pairs {
         report.tables.push(pair_table(state.clone()));
     }
-    if state.loaded().is_some() {
-        report.remarks.push(NEGLECTED.to_owned());
+    if let Some((loads, _)) = state.loaded() {
+        let motion = loads.neglected_motion(state.at());
+        let rows = (0..state.rows()).filter(|row| state.node(*row).aboard().is_some());
+        let most_s = rows.map(|row| loads.neglected_of_row_s(&motion, row)).fold(0.0, f64::max);
+        report.remarks.push(format!(
+            "Clock offsets are those of the loaded positions; the motion of stretching nodes \
+             along the line slows their clocks further, by {most_s:.1e} s at most up to now."
+        ));
         report.tables.push(stretch_table(state));
     }
     report
 }
-
-const NEGLECTED: &str = "Clock offsets are those of the loaded positions; the motion of stretching \
-    nodes along the line slows their clocks further by what stands under neglected motion.";
 
 /// What part of each clock offset comes from load and temperature, and what is left out.
 fn stretch_table(state: State<'_>) -> Table<'_> {

@@ -15,7 +15,7 @@ use crate::table::{Cell, Column, Measure, Report, Scalar, Table, readable_time};
 
 use rules::six_digits;
 
-pub use rules::{LoadJudgement, LoadRule, LoadSubject, judge_loads};
+pub use rules::{LoadJudgement, LoadRule, LoadSubject, judge_loads, judge_loads_at};
 pub use span::SpanLoad;
 
 /// What stands under everything that shows forces.
@@ -69,10 +69,10 @@ const BROKEN: [Column; 9] = [
     column("rule", "rule", Measure::Word),
     column("subject", "subject", Measure::Word),
     column("phase", "phase", Measure::Count),
-    column("from_s", "from", Measure::Time),
-    column("value", "value", Measure::Ratio),
-    column("limit", "limit", Measure::Ratio),
-    column("unit", "unit", Measure::Word),
+    column("from_s", "from", Measure::Various),
+    column("value", "value", Measure::Various),
+    column("limit", "limit", Measure::Various),
+    column("unit", "unit", Measure::Unit),
     column("margin", "margin", Measure::Ratio),
     column("remedy", "remedy", Measure::Word),
 ];
@@ -442,11 +442,15 @@ fn broken_table<'a>(layout: &'a Layout, broken: Arc<[LoadJudgement]>) -> Table<'
                 None => Cell::Absent("outside every phase of a plan".into()),
             });
             cells.push(match judged.at {
-                Some(at) => Cell::Number(at.to_f64()),
+                Some(at) => Cell::Computed(at),
                 None => Cell::Absent(STILL.into()),
             });
-            cells.push(Cell::finite(judged.value, OVERFLOW));
-            cells.push(Cell::Number(judged.limit));
+            let measure = judged.rule.measure();
+            cells.push(match judged.value.is_finite() {
+                true => Cell::Measured(judged.value, measure),
+                false => Cell::Absent(OVERFLOW.into()),
+            });
+            cells.push(Cell::Measured(judged.limit, measure));
             cells.push(Cell::Text(judged.rule.unit().into()));
             cells.push(match judged.margin {
                 Some(margin) => Cell::finite(margin, OVERFLOW),

@@ -3,11 +3,13 @@
 
 use std::borrow::Cow;
 
+use super::span::SpanLoad;
 use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::{C2_M2_S2, STANDARD_GRAVITY_M_S2};
 use crate::model::dd::Dd;
 use crate::model::loads::{Loads, Mend, Peak, Ringing, RunsDry, Slack};
+use crate::table::Measure;
 use crate::table::digits::Scale;
 use crate::table::unit::rounded;
 
@@ -36,6 +38,17 @@ impl LoadRule {
             LoadRule::Slack => "slack",
             LoadRule::Ramp => "ramp",
             LoadRule::Propellant => "propellant",
+        }
+    }
+
+    /// What its value and its limit measure.
+    #[must_use]
+    pub fn measure(self) -> Measure {
+        match self {
+            LoadRule::Rating => Measure::Acceleration,
+            LoadRule::Strength | LoadRule::Slack => Measure::Force,
+            LoadRule::Ramp => Measure::Time,
+            LoadRule::Propellant => Measure::Mass,
         }
     }
 
@@ -139,6 +152,73 @@ pub fn judge_loads(layout: &Layout, loads: &Loads) -> Vec<LoadJudgement> {
     found.extend(ramps(layout, loads));
     found.extend(propellant(layout, loads));
     found
+}
+
+/// Judges strength, slack and propellant at one moment; ramps are judged over a plan only.
+#[must_use]
+pub fn judge_loads_at(layout: &Layout, loads: &Loads, at: ArrayTime) -> Vec<LoadJudgement> {
+    let state = loads.state(at);
+    let moment = state.instant.moment;
+    let phase = moment.phase;
+    let now = |value: f64| Some(Peak { value, phase, at, is_limit: false });
+    let stamped = |judgement: LoadJudgement| LoadJudgement { at: Some(at), ..judgement };
+    let members = loads.structure().members.iter().enumerate();
+    let mut found = Vec::new();
+    for (gap, member) in members.clone() {
+        let Some(strength_n) = member.strength_n else { continue };
+        let [fore_n, aft_n] = loads.span_force_n(&state, gap);
+        let value = if member.is_tether {
+            fore_n.max(aft_n).max(0.0)
+        } else {
+            fore_n.abs().max(aft_n.abs())
+        };
+        let limit = strength_n / member.safety_factor;
+        let subject = LoadSubject::Span(gap);
+        let mut judgement =
+            LoadJudgement::new(LoadRule::Strength, subject, now(value), value, limit);
+        if judgement.is_broken {
+            judgement.remedy = strength_remedy(value * member.safety_factor);
+        }
+        found.push(stamped(judgement));
+    }
+    for (gap, _) in members.filter(|(_, member)| member.is_tether) {
+        let is_slack = SpanLoad::of(loads, &state, gap) == SpanLoad::Slack;
+        let [fore_n, aft_n] = loads.span_force_n(&state, gap);
+        let push = if is_slack { -fore_n.min(aft_n) } else { 0.0 };
+        let subject = LoadSubject::Span(gap);
+        let mut judgement = LoadJudgement::new(LoadRule::Slack, subject, now(push), push, 0.0);
+        if is_slack {
+            judgement.remedy = "thrust the other way, or file the span as a boom".to_owned();
+        }
+        found.push(stamped(judgement));
+    }
+    if let crate::layout::Course::Thrust(_) = &layout.course {
+        let propulsion = loads.propulsion();
+        for (index, engine) in propulsion.engines().iter().enumerate() {
+            let (Some(_), Some(aboard_kg)) = (engine.exhaust_speed_m_s, engine.propellant_kg)
+            else {
+                continue;
+            };
+            let used_kg = propulsion.used(index, state.velocity_spent_m_s).used_kg;
+            let subject = LoadSubject::Engine(engine.row);
+            let rule = LoadRule::Propellant;
+            let mut judgement = LoadJudgement::new(rule, subject, now(used_kg), used_kg, aboard_kg);
+            // A tank filled to the last digit is not dry.
+            judgement.is_broken = used_kg > aboard_kg * (1.0 + 1e-14);
+            if judgement.is_broken {
+                judgement.remedy = format!(
+                    "{} kg aboard, a higher exhaust speed, or less thrust until then",
+                    six_digits(used_kg)
+                );
+            }
+            found.push(stamped(judgement));
+        }
+    }
+    found
+}
+
+fn strength_remedy(needed_n: f64) -> String {
+    format!("a strength of {} N, or less thrust or mass beyond it", six_digits(needed_n))
 }
 
 /// The rating of one node; `None` where none is given, and for a plan without phases.
@@ -281,6 +361,7 @@ fn propellant(layout: &Layout, loads: &Loads) -> Vec<LoadJudgement> {
             let used_kg = propulsion.used(index, spent).used_kg;
             let mut judgement = LoadJudgement::new(rule, subject, None, used_kg, aboard_kg);
             judgement.is_broken = false;
+            judgement.phase = plan.phases().len().checked_sub(1);
             judgement.at = Some(plan.end());
             Some(judgement)
         })
