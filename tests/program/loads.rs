@@ -81,7 +81,7 @@ fn the_tables_have_their_keys() {
     assert_eq!(object["broken"], serde_json::json!([]));
     assert!(object["caution"].as_str().expect("a caution").contains("range-safety"));
     for (key, low, high) in [
-        ("line_mass_kg", 1450.0, 1510.0),
+        ("line_mass_kg", 1422.31, 1422.32),
         ("lowest_period_s", 2.0, 2.1),
         ("rapidity_spent", 5e-6, 7e-6),
     ] {
@@ -114,14 +114,14 @@ fn what_breaks_ends_with_one_and_says_what_would_mend_it() {
             "strength = \"0.2 kN\"",
             "broken: strength",
             "tug to pod carries 107.873 N of 100 N in phase 2, from 1 min; remedy: a strength of \
-             215.746 N",
+             215.748 N",
         ),
         (
             "rating = \"1 g0\"",
             "rating = \"0.05 g0\"",
             "broken: rating",
-            "remedy: hold no more than 0.490333 m/s^2 (0.050000 g0) at the reference, or build \
-             the node for 0.980665 m/s^2 (0.100000 g0)",
+            "remedy: hold no more than 0.490332 m/s^2 (0.0499999 g0) at the reference, or build \
+             the node for 0.980666 m/s^2 (0.1 g0)",
         ),
         (
             "node = \"tug\"\nexhaust",
@@ -147,6 +147,24 @@ fn what_breaks_ends_with_one_and_says_what_would_mend_it() {
         assert_eq!(object["broken"][0]["rule"], rule.trim_start_matches("broken: "));
         assert!(!object["broken"][0]["remedy"].as_str().expect("a remedy").is_empty());
     }
+}
+
+#[test]
+fn what_is_offered_is_accepted() {
+    for (from, to, mended) in [
+        ("strength = \"1 kN\"", "strength = \"0.2 kN\"", "strength = \"215.748 N\""),
+        ("rating = \"1 g0\"", "rating = \"0.05 g0\"", "rating = \"0.980666 m/s^2\""),
+    ] {
+        assert_eq!(loads(&LINE.replace(from, to), &[]).0, 1);
+        let (status, stdout, _) = loads(&LINE.replace(from, mended), &[]);
+        assert_eq!(status, 0, "{mended}: {stdout}");
+    }
+    // What an engine is said to need is enough, its own weight included.
+    let short = LINE.replace("\"400 kg\"", "\"50 kg\"");
+    let (_, object) = json(&short);
+    let remedy = object["broken"][0]["remedy"].as_str().expect("a remedy");
+    let (needed, _) = remedy.split_once(" aboard").expect("an amount");
+    assert_eq!(loads(&LINE.replace("400 kg", needed), &[]).0, 0, "{needed}");
 }
 
 #[test]

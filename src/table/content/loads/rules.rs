@@ -208,7 +208,7 @@ pub fn judge_loads_at(layout: &Layout, loads: &Loads, at: ArrayTime) -> Vec<Load
             if judgement.is_broken {
                 judgement.remedy = format!(
                     "{} kg aboard, a higher exhaust speed, or less thrust until then",
-                    six_digits(used_kg)
+                    six_digits(at_least(used_kg))
                 );
             }
             found.push(stamped(judgement));
@@ -218,7 +218,7 @@ pub fn judge_loads_at(layout: &Layout, loads: &Loads, at: ArrayTime) -> Vec<Load
 }
 
 fn strength_remedy(needed_n: f64) -> String {
-    format!("a strength of {} N, or less thrust or mass beyond it", six_digits(needed_n))
+    format!("a strength of {} N, or less thrust or mass beyond it", six_digits(at_least(needed_n)))
 }
 
 /// The rating of one node; `None` where none is given, and for a plan without phases.
@@ -231,7 +231,7 @@ pub fn rating(layout: &Layout, loads: &Loads, row: usize) -> Option<LoadJudgemen
     if judgement.is_broken {
         let felt = margin.value;
         judgement.remedy = if peak.phase.is_none() {
-            format!("build the node for {}", amount(felt))
+            format!("build the node for {}", amount(at_least(felt)))
         } else {
             // α/(1 + αh/c²) = r at α = r/(1 − rh/c²), with the sign of the thrust.
             let bound = Dd::new(margin.limit.copysign(peak.value));
@@ -239,8 +239,8 @@ pub fn rating(layout: &Layout, loads: &Loads, row: usize) -> Option<LoadJudgemen
             let most = (bound / (Dd::ONE - bound * position_m / C2_M2_S2)).to_f64();
             format!(
                 "hold no more than {} at the reference, or build the node for {}",
-                amount(most.abs()),
-                amount(felt)
+                amount(at_most(most.abs())),
+                amount(at_least(felt))
             )
         };
     }
@@ -257,8 +257,7 @@ fn strength(loads: &Loads, gap: usize) -> Option<LoadJudgement> {
     if judgement.is_broken {
         let member = loads.structure().members[gap];
         let needed_n = margin.value * member.safety_factor;
-        judgement.remedy =
-            format!("a strength of {} N, or less thrust or mass beyond it", six_digits(needed_n));
+        judgement.remedy = strength_remedy(needed_n);
     }
     Some(judgement)
 }
@@ -328,7 +327,7 @@ fn ramp(layout: &Layout, ringing: &Ringing, period_s: f64) -> LoadJudgement {
         judgement.remedy = format!(
             "change the thrust over {} s or longer; as it is, `{}` is left ringing by up to {} m, \
              {:.1e} of any carrier",
-            six_digits(period_s),
+            six_digits(at_least(period_s)),
             layout.nodes[ringing.row].name,
             rounded(ringing.amplitude_m, Scale::Ten(0), 3),
             ringing.doppler
@@ -370,7 +369,7 @@ fn propellant(layout: &Layout, loads: &Loads) -> Vec<LoadJudgement> {
 
 fn dry_remedy(dry: &RunsDry) -> String {
     let needed = if dry.needed_kg.is_finite() && dry.log10_needed_kg < 12.0 {
-        format!("{} kg", six_digits(dry.needed_kg))
+        format!("{} kg", six_digits(at_least(dry.needed_kg)))
     } else {
         format!("10^{:.1} kg, which nothing can carry,", dry.log10_needed_kg)
     };
@@ -384,7 +383,24 @@ pub fn span_name(layout: &Layout, gap: usize) -> String {
 }
 
 fn amount(acceleration_m_s2: f64) -> String {
-    format!("{acceleration_m_s2:.6} m/s^2 ({:.6} g0)", acceleration_m_s2 / STANDARD_GRAVITY_M_S2)
+    let parts = acceleration_m_s2 / STANDARD_GRAVITY_M_S2;
+    format!("{} m/s^2 ({} g0)", six_digits(acceleration_m_s2), six_digits(parts))
+}
+
+/// Six digits that are enough: a figure offered as a remedy is itself accepted.
+fn at_least(value: f64) -> f64 {
+    let near = six(value);
+    if near >= value { near } else { six(value * (1.0 + 1e-5)) }
+}
+
+/// Six digits that are not too much.
+fn at_most(value: f64) -> f64 {
+    let near = six(value);
+    if near <= value { near } else { six(value * (1.0 - 1e-5)) }
+}
+
+fn six(value: f64) -> f64 {
+    format!("{value:.5e}").parse().unwrap_or(value)
 }
 
 /// Six digits, as people write them.
