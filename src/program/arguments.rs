@@ -10,7 +10,12 @@ use clap::{Args, Parser, Subcommand, ValueEnum};
 /// Without a command: opens the desk on a built-in layout, or prints that layout's
 /// rates when standard output is no terminal.
 #[derive(Debug, Parser)]
-#[command(name = "clockspar", version, disable_help_subcommand = true)]
+#[command(
+    name = "clockspar",
+    version,
+    disable_help_subcommand = true,
+    args_conflicts_with_subcommands = true
+)]
 pub struct Arguments {
     /// What to do.
     #[command(subcommand)]
@@ -18,6 +23,9 @@ pub struct Arguments {
     /// How the desk looks.
     #[command(flatten)]
     pub look: Look,
+    /// Whose preferences count.
+    #[command(flatten)]
+    pub preferences: PreferenceArguments,
 }
 
 /// The commands.
@@ -51,6 +59,9 @@ pub struct DeskArguments {
     /// How it looks.
     #[command(flatten)]
     pub look: Look,
+    /// Whose preferences count.
+    #[command(flatten)]
+    pub preferences: PreferenceArguments,
 }
 
 /// How the desk looks.
@@ -65,6 +76,18 @@ pub struct Look {
     /// Draw with Unicode characters whatever the locale says
     #[arg(long)]
     pub unicode: bool,
+}
+
+/// Which file of preferences to use, for display only.
+#[derive(Clone, Debug, Default, Args)]
+pub struct PreferenceArguments {
+    /// Use this file of preferences: units, columns, colour, marks and width of the text form
+    /// [default: clockspar/preferences.toml in the folder for configuration]
+    #[arg(long, value_name = "FILE", conflicts_with = "no_preferences")]
+    pub preferences: Option<PathBuf>,
+    /// Use no preferences
+    #[arg(long)]
+    pub no_preferences: bool,
 }
 
 /// When to use colour.
@@ -125,6 +148,35 @@ pub struct OutputArguments {
     /// Which table, where a command has several
     #[arg(long, value_name = "NAME")]
     pub table: Option<String>,
+    /// Only the rows of these nodes: names and ranges, such as `hub,s2..s7`
+    #[arg(long, value_name = "LIST", allow_hyphen_values = true)]
+    pub nodes: Option<String>,
+    /// Only these columns, in this order: keys of the row, such as `node,clock_offset_s`
+    #[arg(long, value_name = "LIST")]
+    pub columns: Option<String>,
+    /// Unit of a column of the text form, such as `clock_offset=ps`; may be repeated
+    #[arg(long, value_name = "KEY=UNIT")]
+    pub unit: Vec<String>,
+    /// Whose preferences count.
+    #[command(flatten)]
+    pub preferences: PreferenceArguments,
+}
+
+impl OutputArguments {
+    /// The form of the table, text unless another was asked for.
+    pub fn form(&self) -> Form {
+        self.form.unwrap_or(Form::Text)
+    }
+
+    /// Whether anything was asked that only a table can answer.
+    pub fn wants_table(&self) -> bool {
+        self.form.is_some()
+            || self.out.is_some()
+            || self.table.is_some()
+            || self.nodes.is_some()
+            || self.columns.is_some()
+            || !self.unit.is_empty()
+    }
 }
 
 /// Arguments of a table command.

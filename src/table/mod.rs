@@ -39,6 +39,7 @@
 //! # Ok::<(), std::io::Error>(())
 //! ```
 
+pub mod choose;
 mod columns;
 pub mod content;
 mod csv;
@@ -46,6 +47,7 @@ mod digits;
 mod format;
 mod json;
 pub mod number;
+pub mod preferences;
 mod scan;
 mod stream;
 mod text;
@@ -61,7 +63,10 @@ pub use csv::{write_csv, write_csv_series};
 pub use format::{ColumnFormat, fit};
 pub use json::{write_json, write_json_series};
 pub use scan::ColumnScan;
-pub use text::{TextOptions, TextWriter, write_text, write_text_series};
+pub use text::{
+    TextChoice, TextOptions, TextWriter, write_text, write_text_as, write_text_series,
+    write_text_series_as,
+};
 pub use unit::readable_time;
 
 /// Raised whenever a change of the model may change any printed bit.

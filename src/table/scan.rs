@@ -21,6 +21,10 @@ const MOST_LONG_DECIMALS: i32 = 6;
 const LEAST_FIRST: i32 = -3;
 const MOST_WHOLE: i32 = 11;
 const MOST_BARE: i32 = 6;
+/// Decimals up to which an exact time in a unit asked for is shown exactly, and those it is
+/// rounded to where they do not do.
+const MOST_EXACT_DECIMALS: u32 = 9;
+const ROUNDED_DECIMALS: usize = 9;
 /// Steps between neighbours smaller than this part of the column's spread need not show.
 const LEAST_STEP: f64 = 1e-15;
 /// Digits of a number that a reader takes in, clock readings aside.
@@ -33,6 +37,8 @@ const PLAIN_DIGITS: i32 = 7;
 pub struct ColumnScan {
     measure: Measure,
     signed: bool,
+    /// The unit that was asked for, if any.
+    unit: Option<Unit>,
     least_digits: i32,
     text_columns: usize,
     /// The measured cell last seen: limits are often the same in many rows.
@@ -73,6 +79,7 @@ impl ColumnScan {
         ColumnScan {
             measure,
             signed: is_difference(key),
+            unit: None,
             least_digits: LEAST_DIGITS,
             text_columns: 0,
             measured: None,
@@ -99,6 +106,12 @@ impl ColumnScan {
     /// Asks for more digits than a table needs, for a value that stands alone.
     pub(super) fn with_digits(mut self, count: i32) -> ColumnScan {
         self.least_digits = count;
+        self
+    }
+
+    /// Asks for a unit instead of the one that reads best.
+    pub(super) fn in_unit(mut self, unit: Option<Unit>) -> ColumnScan {
+        self.unit = unit;
         self
     }
 
@@ -186,7 +199,8 @@ impl ColumnScan {
         } else if self.measure == Measure::Word {
             (base_unit(Measure::Word), Form::Words)
         } else {
-            (base_unit(self.measure), Form::Fixed { scale: Scale::Ten(0), decimals: 0 })
+            let unit = self.unit.unwrap_or(base_unit(self.measure));
+            (unit, Form::Fixed { scale: unit.scale, decimals: 0 })
         };
         let mut format = ColumnFormat::new(unit, form, self.signed, unicode);
         format.smallest = self.smallest;
@@ -219,7 +233,13 @@ impl ColumnScan {
             (unit, Form::Fixed { scale: unit.scale, decimals })
         };
         if largest == 0.0 {
-            return fixed(base_unit(self.measure), Places { first: 0, span: 0, last: 0 });
+            let unit = self.unit.unwrap_or(base_unit(self.measure));
+            return fixed(unit, Places { first: 0, span: 0, last: 0 });
+        }
+        if let Some(unit) = self.unit {
+            let places = self.places(unit.scale);
+            let readable = places.reads_well(MOST_WHOLE) || self.times > 0;
+            return if readable { fixed(unit, places) } else { self.scientific(unit) };
         }
         // Exact times beside numbers are told in seconds, so the numbers are as well.
         if self.times > 0 {
@@ -235,11 +255,14 @@ impl ColumnScan {
         let unit = decimal_unit(self.measure, largest);
         let places = self.places(unit.scale);
         let most = if unit.label.is_empty() { MOST_BARE } else { MOST_WHOLE };
-        if (LEAST_FIRST..=most).contains(&places.first)
-            && (places.span <= MOST_DECADES || places.digits() <= SHORT_DIGITS)
-        {
+        if places.reads_well(most) {
             return fixed(unit, places);
         }
+        self.scientific(base_unit(self.measure))
+    }
+
+    /// Powers of ten in each cell.
+    fn scientific(&self, unit: Unit) -> (Unit, Form) {
         let told_apart = if self.relative_step.is_finite() {
             1 - exponent_of(self.relative_step / 2.0)
         } else {
@@ -247,10 +270,12 @@ impl ColumnScan {
         };
         let digits = usize::try_from(self.least_digits.max(told_apart)).unwrap_or(MOST_DIGITS);
         let digits = digits.min(self.longest).clamp(1, MOST_DIGITS);
-        let exponents = [exponent_of(self.smallest), exponent_of(largest)];
-        let exponent_width = exponents.map(|power| format!("e{power}").len()).into_iter().max();
-        let exponent_width = exponent_width.unwrap_or(0);
-        (base_unit(self.measure), Form::Scientific { digits, exponent_width })
+        let exponent_width = [self.smallest, self.largest()]
+            .map(|value| Decimal::significant(value, unit.scale, digits).scientific().1.len())
+            .into_iter()
+            .max()
+            .unwrap_or(0);
+        (unit, Form::Scientific { digits, exponent_width })
     }
 
     fn largest(&self) -> f64 {
@@ -280,8 +305,25 @@ impl ColumnScan {
         Places { first, span: first - smallest, last: last.min(0) }
     }
 
+    /// Exact times in a unit that was asked for: exactly where a short decimal does it.
+    fn exact_form_in(&self, unit: Unit) -> (Unit, Form) {
+        let size = unit.attoseconds().unwrap_or(1);
+        let exact = (0..=MOST_EXACT_DECIMALS).find(|&decimals| {
+            let parts = self.common_divisor.checked_mul(10_u128.pow(decimals));
+            parts.is_some_and(|parts| parts.is_multiple_of(size))
+        });
+        let form = match exact {
+            Some(decimals) => Form::Exact { size, decimals: decimals as usize },
+            None => Form::Rounded { scale: unit.scale, decimals: ROUNDED_DECIMALS },
+        };
+        (unit, form)
+    }
+
     /// Exact times: the largest unit in which they all are exact and short.
     fn exact_form(&self) -> (Unit, Form) {
+        if let Some(unit) = self.unit {
+            return self.exact_form_in(unit);
+        }
         let latest = self.earliest.unsigned_abs().max(self.latest.unsigned_abs());
         let second = 10_u128.pow(18);
         for (unit, from) in LONG_TIMES {
@@ -302,7 +344,7 @@ impl ColumnScan {
         }
         let mut place = TIMES.iter().rposition(|unit| match unit.scale {
             Scale::Ten(power) => latest >= 10_u128.pow((power + 18).unsigned_abs()),
-            Scale::Whole(..) => false,
+            Scale::Whole(..) | Scale::Part(_) => false,
         });
         if latest == 0 {
             place = Some(TIMES.len() - 1);
@@ -329,6 +371,12 @@ struct Places {
 impl Places {
     fn digits(&self) -> i32 {
         self.first - self.last + 1
+    }
+
+    /// Whether plain notation serves, up to a first digit of that power of ten.
+    fn reads_well(&self, most: i32) -> bool {
+        (LEAST_FIRST..=most).contains(&self.first)
+            && (self.span <= MOST_DECADES || self.digits() <= SHORT_DIGITS)
     }
 }
 

@@ -1,5 +1,6 @@
 //! The executable: exit status, messages, pipes, pseudo-terminal.
 
+mod choose;
 mod commands;
 mod desk;
 mod loads;

@@ -1,5 +1,6 @@
 //! One function a command.
 
+mod choice;
 mod compare;
 mod recordings;
 mod show;
@@ -13,14 +14,15 @@ use clockspar::table::content::{Check, JudgedOver};
 
 use super::arguments::{Arguments, Command};
 use super::problem::{Problem, STATUS_RULE};
-use super::{desk, files, message};
+use super::{desk, files, message, preferences};
 
 /// Runs the command; the result is the exit status.
 pub fn run(arguments: Arguments) -> Result<u8, Problem> {
     match arguments.command {
-        None => built_in(&arguments.look),
+        None => built_in(&arguments),
         Some(Command::Desk(arguments)) => {
-            desk::run(files::load(&arguments.layout)?, &arguments.look)
+            let look = preferences::look(&arguments.look, &arguments.preferences);
+            desk::run(files::load(&arguments.layout)?, &look)
         }
         Some(Command::Check(arguments)) => tables::check(&arguments),
         Some(Command::Rates(arguments)) => tables::rates(&arguments),
@@ -34,13 +36,14 @@ pub fn run(arguments: Arguments) -> Result<u8, Problem> {
 }
 
 /// Without a command: the desk, or a table when there is no terminal to draw on.
-fn built_in(look: &super::arguments::Look) -> Result<u8, Problem> {
+fn built_in(arguments: &Arguments) -> Result<u8, Problem> {
     use std::io::IsTerminal;
     let layout = files::built_in()?;
     if std::io::stdout().is_terminal() {
-        return desk::run(layout, look);
+        let look = preferences::look(&arguments.look, &arguments.preferences);
+        return desk::run(layout, &look);
     }
-    tables::print_rates(layout)
+    tables::print_rates(layout, &arguments.preferences)
 }
 
 /// The run of a layout; one in which a node reaches the horizon is refused, because its

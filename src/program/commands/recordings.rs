@@ -16,16 +16,17 @@ use clockspar::table::Report;
 use clockspar::table::content::{replay_report, verify_report};
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 
-use super::show::show;
+use super::choice::{DATE_NOTE, LineShown, Nodes};
+use super::show::{Asked, show};
 use super::{run_of, warn_of_broken_rules};
 use crate::program::arguments::{
-    Form, OutputArguments, RecordArguments, ReplayArguments, VerifyArguments,
+    Form, MomentArguments, OutputArguments, RecordArguments, ReplayArguments, VerifyArguments,
 };
 use crate::program::moments::{self, Moments};
 use crate::program::problem::{Problem, STATUS_RULE};
 use crate::program::recording_file::{CreateFault, RecordingFile, RecordingSource, open_recording};
 use crate::program::terminal::die_by;
-use crate::program::{desk, files, message, output};
+use crate::program::{desk, files, message, output, preferences};
 
 /// Most bytes of a recording that come through a pipe and are held in memory.
 const LARGEST_PIPED: u64 = 1 << 30;
@@ -65,6 +66,14 @@ pub fn record(arguments: &RecordArguments) -> Result<u8, Problem> {
         die_by(i32::try_from(interrupted.load(Ordering::Relaxed)).unwrap_or(SIGTERM));
     }
     message(&format!("{shown}: {frames} frames, {events} events"));
+    let dates = MomentArguments {
+        from: arguments.from.clone(),
+        until: Some(arguments.until.clone()),
+        ..MomentArguments::default()
+    };
+    if Moments::date_given(&dates).is_some() {
+        message(&format!("{shown}: {DATE_NOTE}"));
+    }
     Ok(0)
 }
 
@@ -159,13 +168,10 @@ pub fn run_of_recording(path: &Path) -> Result<(Run, Vec<ArrayTime>), Problem> {
 pub fn replay(arguments: &ReplayArguments) -> Result<u8, Problem> {
     let reader = open(&arguments.file)?;
     let (output, moments) = (&arguments.output, &arguments.moments);
-    let wants_table = output.form.is_some()
-        || output.out.is_some()
-        || output.table.is_some()
-        || moments.at.is_some()
-        || moments.every.is_some();
+    let wants_table = output.wants_table() || moments.at.is_some() || moments.every.is_some();
     if !wants_table && std::io::stdout().is_terminal() {
-        return desk::replay(reader, &files::shown_name(&arguments.file), &arguments.look);
+        let look = preferences::look(&arguments.look, &output.preferences);
+        return desk::replay(reader, &files::shown_name(&arguments.file), &look);
     }
     replay_table(&reader, arguments)
 }
@@ -218,7 +224,10 @@ fn replay_table(
         let (frame, events) = frame_with_events(reader, at);
         replay_report(opening, layout.as_ref(), frame, events)
     };
-    show(&moments, asked.paced, &arguments.output, &report)?;
+    let epoch = layout.as_ref().and_then(|layout| layout.epoch.as_ref());
+    let line = LineShown { nodes: Nodes::Listed(&opening.nodes), epoch };
+    let asked = Asked { moments: &moments, options: asked, line };
+    show(&asked, &arguments.output, &report)?;
     if let Some(damage) = damage {
         message(&format!("{shown}: {damage}; shown up to there"));
         return Ok(STATUS_RULE);
@@ -302,12 +311,16 @@ pub fn verify(arguments: &VerifyArguments) -> Result<u8, Problem> {
     })?;
     let mut output: OutputArguments = arguments.output.clone();
     let opening = reader.opening();
-    let is_text = output.form.unwrap_or(Form::Text) == Form::Text;
-    if is_text && output.table.is_none() {
+    if output.form() == Form::Text && output.table.is_none() && output.columns.is_none() {
         // As text the verdict already stands above the table.
         output.table = Some("findings".to_owned());
     }
     let report = |_| verify_report(opening, layout.as_ref(), &verdict);
-    show(&Moments::One(ArrayTime::ZERO), false, &output, &report)?;
+    let asked = Asked {
+        moments: &Moments::One(ArrayTime::ZERO),
+        options: &MomentArguments::default(),
+        line: LineShown { nodes: Nodes::None, epoch: None },
+    };
+    show(&asked, &output, &report)?;
     Ok(if verdict.is_good() { 0 } else { STATUS_RULE })
 }

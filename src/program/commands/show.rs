@@ -1,58 +1,65 @@
 //! Showing a report, at one moment or over time, in the form asked for.
 
 use std::io::{self, Write};
+use std::rc::Rc;
 use std::thread;
 use std::time::{Duration, Instant};
 
 use clockspar::model::array_time::ArrayTime;
 use clockspar::table::{
     Head, Report, Series, TextOptions, TextWriter, write_csv, write_csv_series, write_json,
-    write_json_series, write_text, write_text_series,
+    write_json_series, write_text_as, write_text_series_as,
 };
 
-use crate::program::arguments::{Form, OutputArguments};
+use super::choice::{Choice, LineShown};
+use crate::program::arguments::{Form, MomentArguments, OutputArguments};
 use crate::program::moments::Moments;
-use crate::program::output::{Output, locale_is_unicode};
+use crate::program::output::Output;
 use crate::program::problem::Problem;
 
 /// Makes the report of a moment.
 pub type Reporter<'a> = &'a (dyn Fn(ArrayTime) -> Report<'a> + 'a);
 
+/// The moments a command shows and the line it shows them of.
+pub struct Asked<'a> {
+    /// The moments.
+    pub moments: &'a Moments,
+    /// The options they came from.
+    pub options: &'a MomentArguments,
+    /// The line.
+    pub line: LineShown<'a>,
+}
+
 /// Writes what a command found, where and how it was asked for.
 pub fn show<'a>(
-    moments: &Moments,
-    paced: bool,
+    asked: &Asked<'_>,
     arguments: &OutputArguments,
     reporter: Reporter<'a>,
 ) -> Result<(), Problem> {
+    let moments = asked.moments;
     let first = moments.iter().next().unwrap_or_default();
-    let index = reporter(first).table_named(arguments.table.as_deref()).map_err(|unknown| {
-        Problem::new(
-            format_args!("--table {}: no such table", unknown.wanted),
-            "a table is asked for by its name",
-            format_args!("one of `{}`", unknown.known.join("`, `")),
-        )
-    })?;
-    let chosen = Chosen { reporter, only: arguments.table.is_some().then_some(index) };
-    let form = arguments.form.unwrap_or(Form::Text);
+    let mut choice = Choice::of(arguments, asked)?;
+    choice.settle(reporter(first))?;
+    let shown = Shown { reporter, choice: Rc::new(choice) };
     let output = Output::open(arguments.out.as_deref(), arguments.replace)?;
-    let options = TextOptions { width: output.width(), unicode: locale_is_unicode() };
-    if paced {
-        return show_paced(moments, form, options, output, arguments.replace, chosen);
+    let options = shown.choice.text_options(&output);
+    if asked.options.paced {
+        return show_paced(moments, options, output, arguments, shown);
     }
+    let form = arguments.form();
     match moments {
         Moments::One(at) => {
-            let report = chosen.report(*at);
+            let report = shown.report(*at);
             output.write(arguments.replace, |out| match form {
-                Form::Text => write_text(&report, &options, out),
+                Form::Text => write_text_as(&report, &options, shown.choice.text(), out),
                 Form::Csv => write_csv(&report, 0, out),
                 Form::Json => write_json(&report, out),
             })
         }
         Moments::Every { .. } | Moments::Listed(_) => {
-            let series = series(moments, chosen);
+            let series = series(moments, shown.clone());
             output.write(arguments.replace, |out| match form {
-                Form::Text => write_text_series(&series, &options, out),
+                Form::Text => write_text_series_as(&series, &options, shown.choice.text(), out),
                 Form::Csv => write_csv_series(&series, 0, out),
                 Form::Json => write_json_series(&series, out),
             })
@@ -60,45 +67,40 @@ pub fn show<'a>(
     }
 }
 
-/// Makes reports, with all their tables or with one.
-#[derive(Clone, Copy)]
-struct Chosen<'a> {
+/// Makes reports with what was chosen of them.
+#[derive(Clone)]
+struct Shown<'a> {
     reporter: Reporter<'a>,
-    only: Option<usize>,
+    choice: Rc<Choice>,
 }
 
-impl<'a> Chosen<'a> {
-    fn report(self, at: ArrayTime) -> Report<'a> {
-        let mut report = (self.reporter)(at);
-        if let Some(index) = self.only {
-            report.tables.swap(0, index);
-            report.tables.truncate(1);
-        }
-        report
+impl<'a> Shown<'a> {
+    fn report(&self, at: ArrayTime) -> Report<'a> {
+        self.choice.of_report((self.reporter)(at))
     }
 }
 
 /// The reports of a range of moments.
-fn series<'a>(moments: &Moments, chosen: Chosen<'a>) -> Series<'a> {
+fn series<'a>(moments: &Moments, shown: Shown<'a>) -> Series<'a> {
     let moments = moments.clone();
     let Report { command, schema_version, layout, revision, layout_sha256, .. } =
-        chosen.report(moments.nth(0));
+        (shown.reporter)(moments.nth(0));
     Series {
         head: Head { command, schema_version, layout, revision, layout_sha256 },
         moments: moments.count(),
-        report: Box::new(move |index| chosen.report(moments.nth(index))),
+        report: Box::new(move |index| shown.report(moments.nth(index))),
     }
 }
 
 /// Appends one block a moment at wall-clock pace: the step of array time is waited for.
 fn show_paced(
     moments: &Moments,
-    form: Form,
     options: TextOptions,
     output: Output,
-    replace: bool,
-    chosen: Chosen<'_>,
+    arguments: &OutputArguments,
+    shown: Shown<'_>,
 ) -> Result<(), Problem> {
+    let form = arguments.form();
     if form == Form::Json {
         return Err(Problem::new(
             "--paced --as json: one object is whole only at its end",
@@ -106,16 +108,16 @@ fn show_paced(
             "use --as csv or --as text",
         ));
     }
-    output.write(replace, |out| {
+    output.write(arguments.replace, |out| {
         let begun = Instant::now();
-        let mut text = TextWriter::new(options);
+        let mut text = TextWriter::new(options).with(shown.choice.text());
         for index in 0..moments.count() {
             let at = moments.nth(index);
             wait_until(begun, at.seconds_since(moments.nth(0)).to_f64());
             if form == Form::Csv {
-                write_rows(&series(&Moments::One(at), chosen), index == 0, out)?;
+                write_rows(&series(&Moments::One(at), shown.clone()), index == 0, out)?;
             } else {
-                let report = chosen.report(at);
+                let report = shown.report(at);
                 if index == 0 {
                     text.head(&report.head(), out)?;
                 }

@@ -11,10 +11,11 @@ use clockspar::table::content::{
     Check, JudgedOver, LoadsOverPlan, check_report, loads_report, offsets_report, rates_report,
 };
 
-use super::show::show;
+use super::choice::LineShown;
+use super::show::{Asked, show};
 use super::{run_of, status_of, warn_of_broken_rules};
 use crate::program::arguments::{
-    MomentArguments, OffsetsArguments, OutputArguments, TableArguments,
+    MomentArguments, OffsetsArguments, OutputArguments, PreferenceArguments, TableArguments,
 };
 use crate::program::files;
 use crate::program::moments::Moments;
@@ -45,9 +46,10 @@ pub fn loads(arguments: &TableArguments) -> Result<u8, Problem> {
 }
 
 /// The rates of the built-in layout, when there is no terminal to open the desk on.
-pub fn print_rates(layout: Layout) -> Result<u8, Problem> {
+pub fn print_rates(layout: Layout, preferences: &PreferenceArguments) -> Result<u8, Problem> {
     let run = run_of(layout, files::BUILT_IN_NAME)?;
-    show_run(&run, &MomentArguments::default(), &OutputArguments::default(), rates_report)
+    let output = OutputArguments { preferences: preferences.clone(), ..Default::default() };
+    show_run(&run, &MomentArguments::default(), &output, rates_report)
 }
 
 /// Reads a layout, refuses one that cannot be flown, warns of broken rules, and shows.
@@ -71,7 +73,8 @@ fn show_run(
     report: impl for<'a> Fn(State<'a>) -> Report<'a>,
 ) -> Result<u8, Problem> {
     let asked = Moments::of(moments, run.layout())?;
-    show(&asked, moments.paced, output, &|at| report(state_at(run, at)))?;
+    let asked = Asked { moments: &asked, options: moments, line: LineShown::of(run.layout()) };
+    show(&asked, output, &|at| report(state_at(run, at)))?;
     Ok(0)
 }
 
@@ -87,12 +90,19 @@ pub fn check(arguments: &TableArguments) -> Result<u8, Problem> {
     if !asked {
         let check = Arc::new(Check::new(&layout, JudgedOver::Plan));
         let report = |_| check_report(Arc::clone(&check));
-        show(&Moments::One(ArrayTime::ZERO), false, &arguments.output, &report)?;
+        let asked = Asked {
+            moments: &Moments::One(ArrayTime::ZERO),
+            options: &MomentArguments::default(),
+            line: LineShown::of(&layout),
+        };
+        show(&asked, &arguments.output, &report)?;
         return Ok(status_of(check.broken().is_some()));
     }
     let moments = Moments::of(&arguments.moments, &layout)?;
     let check = |at| Check::new(&layout, JudgedOver::Moment(at));
     let report = |at| check_report(Arc::new(check(at)));
-    show(&moments, arguments.moments.paced, &arguments.output, &report)?;
+    let asked =
+        Asked { moments: &moments, options: &arguments.moments, line: LineShown::of(&layout) };
+    show(&asked, &arguments.output, &report)?;
     Ok(status_of(moments.iter().any(|at| check(at).broken().is_some())))
 }

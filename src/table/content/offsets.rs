@@ -3,6 +3,7 @@
 use std::borrow::Cow;
 
 use super::{OVERFLOW, RELEASED, column, head, number, predicted_reading_s};
+use crate::model::rates::PairFactors;
 use crate::run::State;
 use crate::table::{Cell, Column, Measure, Report, Table};
 
@@ -101,9 +102,20 @@ fn node_table(state: State<'_>) -> Table<'_> {
     }
 }
 
+/// Nodes up to which what pairs share is kept for each first node; of more no one lists the
+/// pairs, but for a few that are chosen.
+const MOST_KEPT: usize = 1 << 16;
+
 fn pair_table(state: State<'_>) -> Table<'_> {
     let layout = state.run().layout();
     let others = state.rows() - 1;
+    let instant = *state.instant();
+    let shared = |row: usize| PairFactors::new(&instant, layout.nodes[row].position_m);
+    let kept: Vec<PairFactors> = if state.rows() <= MOST_KEPT && state.loaded().is_none() {
+        (0..state.rows()).map(shared).collect()
+    } else {
+        Vec::new()
+    };
     Table {
         name: "pairs",
         columns: PAIRS.to_vec(),
@@ -116,15 +128,33 @@ fn pair_table(state: State<'_>) -> Table<'_> {
             for end in [from, to] {
                 cells.push(Cell::Text(Cow::Borrowed(&layout.nodes[end].name)));
             }
-            let ends = (state.node(from).aboard(), state.node(to).aboard());
-            let (Some(first), Some(second)) = ends else {
-                cells.extend([Cell::Absent(RELEASED.into()), Cell::Absent(RELEASED.into())]);
+            if state.loaded().is_some() || state.is_changed(from) || state.is_changed(to) {
+                cells.extend(changed_pair(&state, from, to));
                 return;
+            }
+            let there = layout.nodes[to].position_m;
+            let pairs = match kept.get(from) {
+                Some(factors) => *factors,
+                None => PairFactors::new(&instant, layout.nodes[from].position_m),
             };
-            let apart = state.offset_difference_s(from, to);
-            cells.push(apart.map_or_else(|| Cell::Absent(RELEASED.into()), number));
-            let instant = state.instant();
-            cells.push(number(instant.rate_difference(first.position_m, second.position_m)));
+            for value in
+                [pairs.clock_offset_s(&instant, there), pairs.rate_difference(&instant, there)]
+            {
+                cells.push(Cell::finite(value, OVERFLOW));
+            }
         }),
     }
+}
+
+/// A pair on a line that stretches, or with an end that has been moved or released, or
+/// will be.
+fn changed_pair(state: &State<'_>, from: usize, to: usize) -> [Cell<'static>; 2] {
+    let (Some(first), Some(second)) = (state.node(from).aboard(), state.node(to).aboard()) else {
+        return [Cell::Absent(RELEASED.into()), Cell::Absent(RELEASED.into())];
+    };
+    let apart = state.offset_difference_s(from, to);
+    [
+        apart.map_or_else(|| Cell::Absent(RELEASED.into()), number),
+        number(state.instant().rate_difference(first.position_m, second.position_m)),
+    ]
 }
