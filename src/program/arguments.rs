@@ -39,6 +39,8 @@ pub enum Command {
     Rates(TableArguments),
     /// Clock offsets against the reference, or of every ordered pair
     Offsets(OffsetsArguments),
+    /// Forces, stretch, propellant; peaks over the plan
+    Loads(TableArguments),
     /// Two layouts or recordings: rows of differences
     Compare(CompareArguments),
     /// A run to a recording, without a terminal

@@ -32,6 +32,7 @@ mod recording_hostile;
 mod reference;
 mod run;
 mod run_refused;
+mod stretch;
 mod table_csv;
 mod table_json;
 mod table_sample;

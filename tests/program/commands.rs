@@ -22,11 +22,11 @@ hold = "1 g0"
 for = "1 h"
 "#;
 
-fn clockspar(arguments: &[&str]) -> Output {
+pub fn clockspar(arguments: &[&str]) -> Output {
     with_input(arguments, "")
 }
 
-fn with_input(arguments: &[&str], input: &str) -> Output {
+pub fn with_input(arguments: &[&str], input: &str) -> Output {
     let mut child = Command::new(env!("CARGO_BIN_EXE_clockspar"))
         .args(arguments)
         .current_dir(env!("CARGO_MANIFEST_DIR"))
@@ -46,7 +46,7 @@ fn text(bytes: &[u8]) -> String {
 }
 
 /// Status, standard output, standard error.
-fn seen(output: &Output) -> (i32, String, String) {
+pub fn seen(output: &Output) -> (i32, String, String) {
     (output.status.code().unwrap_or(-1), text(&output.stdout), text(&output.stderr))
 }
 

@@ -3,5 +3,6 @@
 mod choose;
 mod commands;
 mod desk;
+mod loads;
 mod readme;
 mod terminal_session;

@@ -29,6 +29,7 @@ pub fn run(arguments: Arguments) -> Result<u8, Problem> {
         Some(Command::Check(arguments)) => tables::check(&arguments),
         Some(Command::Rates(arguments)) => tables::rates(&arguments),
         Some(Command::Offsets(arguments)) => tables::offsets(&arguments),
+        Some(Command::Loads(arguments)) => tables::loads(&arguments),
         Some(Command::Compare(arguments)) => compare::compare(&arguments),
         Some(Command::Record(arguments)) => recordings::record(&arguments),
         Some(Command::Replay(arguments)) => replay::replay(&arguments),
@@ -56,8 +57,12 @@ fn run_of(layout: Layout, file: &str) -> Result<Run, Problem> {
 }
 
 /// One line of warning when a layout breaks a rule the command does not show.
-fn warn_of_broken_rules(layout: &Layout, file: &str) {
-    let Some((first, count)) = Check::new(layout, JudgedOver::Plan).broken() else { return };
+fn warn_of_broken_rules(run: &Run, file: &str) {
+    let layout = run.layout();
+    // Those of a rigid line are built only when a rule asks for them.
+    let built = if run.is_rigid() { None } else { run.loads().ok() };
+    let check = Check::with_loads(layout, JudgedOver::Plan, built);
+    let Some((first, count)) = check.broken() else { return };
     let more = if count == 1 { String::new() } else { format!(" and {} more", count - 1) };
     message(&format!(
         "warning: {file} breaks the rule `{}` for `{}`{more}; see `clockspar check`",

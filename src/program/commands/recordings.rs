@@ -34,7 +34,7 @@ pub fn record(arguments: &RecordArguments) -> Result<u8, Problem> {
     let layout = files::load(&arguments.layout)?;
     let name = files::shown_name(&arguments.layout);
     let run = run_of(layout, &name)?;
-    warn_of_broken_rules(run.layout(), &name);
+    warn_of_broken_rules(&run, &name);
     let from = match &arguments.from {
         Some(text) => moments::moment("--from", text, run.layout())?,
         None => ArrayTime::ZERO,

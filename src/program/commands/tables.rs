@@ -7,7 +7,9 @@ use clockspar::layout::Layout;
 use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Run, State};
 use clockspar::table::Report;
-use clockspar::table::content::{Check, JudgedOver, check_report, offsets_report, rates_report};
+use clockspar::table::content::{
+    Check, JudgedOver, LoadsOverPlan, check_report, loads_report, offsets_report, rates_report,
+};
 
 use super::choice::LineShown;
 use super::show::{Asked, show};
@@ -32,6 +34,17 @@ pub fn offsets(arguments: &OffsetsArguments) -> Result<u8, Problem> {
     })
 }
 
+/// `clockspar loads`: status 1 when the plan breaks strength, a rating, slack or propellant.
+pub fn loads(arguments: &TableArguments) -> Result<u8, Problem> {
+    let run = run_of(files::load(&arguments.layout)?, &files::shown_name(&arguments.layout))?;
+    let loads = run
+        .loads()
+        .map_err(|fault| Problem::new(format_args!("{fault}"), fault.rule(), fault.remedy()))?;
+    let over_plan = LoadsOverPlan::new(run.layout(), loads);
+    show_run(&run, &arguments.moments, &arguments.output, |state| loads_report(state, &over_plan))?;
+    Ok(status_of(over_plan.fails()))
+}
+
 /// The rates of the built-in layout, when there is no terminal to open the desk on.
 pub fn print_rates(layout: Layout, preferences: &PreferenceArguments) -> Result<u8, Problem> {
     let run = run_of(layout, files::BUILT_IN_NAME)?;
@@ -49,7 +62,7 @@ fn table_of_run(
     let layout = files::load(path)?;
     let name = files::shown_name(path);
     let run = run_of(layout, &name)?;
-    warn_of_broken_rules(run.layout(), &name);
+    warn_of_broken_rules(&run, &name);
     show_run(&run, moments, output, report)
 }
 

@@ -31,6 +31,8 @@ pub struct Geometry {
     pub head: Rect,
     /// The table with its headings and the drawn line.
     pub table: Rect,
+    /// The line of caution under the table; empty where the view has none.
+    pub caution: Rect,
     /// The thrust plan.
     pub plan: Rect,
     /// The entry line; a message stands there too, or above it.
@@ -61,6 +63,8 @@ impl Geometry {
             Extent::OneLine => (area.height.min(1), 0),
         };
         let plan = plan.min(12);
+        let is_cautioned = desk.view().caution(area.width).is_some();
+        let caution = u16::from(is_cautioned && extent != Extent::OneLine);
         let bottom = if extent == Extent::OneLine { 0 } else { 1 };
         let mut y = area.y;
         let mut take = |rows: u16| {
@@ -71,11 +75,12 @@ impl Geometry {
         let head = take(head);
         let table = match extent {
             Extent::OneLine => take(0),
-            _ => take(area.height - head.height - plan - bottom),
+            _ => take(area.height - head.height - plan - bottom - caution),
         };
+        let caution = take(caution);
         let plan = take(plan);
         let entry = take(bottom);
-        Geometry { extent, head, table, plan, entry, has_horizon: desk.view().nodes }
+        Geometry { extent, head, table, caution, plan, entry, has_horizon: desk.view().nodes }
     }
 
     /// How many rows of the table are seen at once.

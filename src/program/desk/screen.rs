@@ -30,6 +30,9 @@ pub fn view(desk: &Desk, area: Rect, buffer: &mut Buffer) -> Option<Position> {
     }
     head::draw(desk, &geometry, &mut painter);
     let cut = table_pane::draw(desk, &geometry, &mut painter);
+    if let Some(caution) = desk.view().caution(area.width) {
+        painter.put(geometry.caution, geometry.caution.x, geometry.caution.y, caution, ASKED);
+    }
     chart::draw(desk, &geometry, &mut painter);
     let message = message(desk).or_else(|| Some((cut?, QUIET)));
     draw_message(desk, message.as_ref(), geometry.entry, area, &mut painter);

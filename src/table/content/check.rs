@@ -8,19 +8,22 @@ mod limits;
 mod line;
 mod offset;
 mod phases;
+mod placed;
 mod report;
 mod resolve;
 mod words;
 
 use std::borrow::Cow;
-use std::sync::OnceLock;
+use std::sync::{Arc, OnceLock};
 
-use crate::layout::{Layout, SpanKind};
+use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
+use crate::model::loads::Loads;
 use crate::table::Measure;
 
 use limits::Limits;
 use line::Line;
+use placed::Placed;
 
 pub use report::check_report;
 
@@ -117,6 +120,10 @@ pub enum Subject {
     Node(usize),
     /// A pair of nodes, from the first to the second.
     Pair([usize; 2]),
+    /// The whole line, at a change of thrust.
+    Line,
+    /// The engine at a row.
+    Engine(usize),
     /// So many parts of the line together, with the word for one of them.
     Parts(usize, &'static str),
 }
@@ -129,6 +136,8 @@ impl Subject {
         match self {
             Subject::Node(row) => Cow::Borrowed(name(row)),
             Subject::Pair([from, to]) => Cow::Owned(format!("{} to {}", name(from), name(to))),
+            Subject::Line => Cow::Borrowed("the line"),
+            Subject::Engine(row) => Cow::Owned(format!("engine at {}", name(row))),
             Subject::Parts(1, word) => Cow::Owned(format!("1 {word}")),
             Subject::Parts(count, word) => Cow::Owned(format!("{count} {word}s")),
         }
@@ -139,7 +148,9 @@ impl Subject {
         match self {
             Subject::Node(row) => [layout.reference, row],
             Subject::Pair(pair) => pair,
-            Subject::Parts(..) => unreachable!("a limit binds a node or a pair"),
+            Subject::Line | Subject::Engine(_) | Subject::Parts(..) => {
+                unreachable!("a limit binds a node or a pair")
+            }
         }
     }
 }
@@ -167,7 +178,6 @@ pub struct Judgement {
 }
 
 const NO_PHASE: &str = "outside every phase of a plan";
-const NO_LOADS: &str = "this version does not judge loads";
 
 impl Judgement {
     fn not_judged(rule: Rule, subject: Subject, why: impl Into<Cow<'static, str>>) -> Judgement {
@@ -207,8 +217,8 @@ pub struct Check<'a> {
     line: Line<'a>,
     /// Rows of the nodes with a rating.
     rated: Vec<usize>,
-    /// Rules whose inputs the layout has and this version does not judge.
-    unjudged: Vec<(Rule, Subject)>,
+    /// Where the nodes are judged, and the rules on loads.
+    placed: Placed,
     limits: Limits<'a>,
     /// Made once, when it is asked for.
     summary: OnceLock<Summary>,
@@ -219,14 +229,25 @@ impl<'a> Check<'a> {
     /// their product.
     #[must_use]
     pub fn new(layout: &'a Layout, span: JudgedOver) -> Check<'a> {
+        Check::with_loads(layout, span, None)
+    }
+
+    /// The same with the loads of the layout over its plan, when they have been built.
+    #[must_use]
+    pub fn with_loads(
+        layout: &'a Layout,
+        span: JudgedOver,
+        loads: Option<Arc<Loads>>,
+    ) -> Check<'a> {
         let line = Line::of(layout, span);
+        let placed = Placed::of(layout, span, &line, loads);
         let rated = layout.nodes.iter().enumerate().filter(|(_, node)| node.rating_m_s2.is_some());
         Check {
             layout,
             span,
             rated: rated.map(|(row, _)| row).collect(),
-            unjudged: unjudged(layout),
-            limits: Limits::judge(layout, span, &line),
+            limits: Limits::judge(layout, span, &line, &placed),
+            placed,
             line,
             summary: OnceLock::new(),
         }
@@ -249,7 +270,7 @@ impl<'a> Check<'a> {
     pub fn rows(&self) -> usize {
         self.layout.nodes.len()
             + self.rated.len()
-            + self.unjudged.len()
+            + self.placed.judgements.len()
             + self.limits.judgements.len()
     }
 
@@ -262,22 +283,22 @@ impl<'a> Check<'a> {
     pub fn judgement(&self, row: usize) -> Judgement {
         let nodes = self.layout.nodes.len();
         if row < nodes {
-            return self.line.horizon(row, self.layout.nodes[row].position_m);
+            return self.line.horizon(row, self.placed.position_m(self.layout, row));
         }
         let row = row - nodes;
         if let Some(&node) = self.rated.get(row) {
             return self.rating(node);
         }
         let row = row - self.rated.len();
-        if let Some(&(rule, subject)) = self.unjudged.get(row) {
-            return Judgement::not_judged(rule, subject, NO_LOADS);
+        if let Some((judgement, _)) = self.placed.judgements.get(row) {
+            return judgement.clone();
         }
-        self.limits.judgements[row - self.unjudged.len()].clone()
+        self.limits.judgements[row - self.placed.judgements.len()].clone()
     }
 
     fn rating(&self, row: usize) -> Judgement {
-        let node = &self.layout.nodes[row];
-        self.line.rating(row, node.position_m, node.rating_m_s2.unwrap_or(f64::INFINITY))
+        let rating = self.layout.nodes[row].rating_m_s2.unwrap_or(f64::INFINITY);
+        self.line.rating(row, self.placed.position_m(self.layout, row), rating)
     }
 
     /// Counts and the smallest margin.
@@ -325,11 +346,13 @@ impl<'a> Check<'a> {
         for &row in &self.rated {
             let node = &nodes[row];
             let rating = node.rating_m_s2.unwrap_or(f64::INFINITY);
-            if !self.line.surely_keeps_rating(node.position_m, rating) {
+            let position_m = self.placed.position_m(self.layout, row);
+            if !self.line.surely_keeps_rating(position_m, rating) {
                 see(self.rating(row));
             }
         }
-        self.limits.judgements.iter().cloned().for_each(see);
+        let loads = self.placed.judgements.iter().map(|(judgement, _)| judgement);
+        loads.chain(&self.limits.judgements).cloned().for_each(see);
         found
     }
 
@@ -340,18 +363,21 @@ impl<'a> Check<'a> {
         match (judgement.state, judgement.subject) {
             (RuleState::Kept, _) | (_, Subject::Parts(..)) => None,
             (RuleState::Broken, Subject::Node(row)) if judgement.rule == Rule::Horizon => {
-                Some(self.line.horizon_remedy(self.layout.nodes[row].position_m))
+                Some(self.line.horizon_remedy(self.placed.position_m(self.layout, row)))
             }
             (RuleState::Broken, Subject::Node(row)) if judgement.rule == Rule::Rating => {
                 Some(self.line.rating_remedy(&self.layout.nodes[row]))
             }
             _ if judgement.rule == Rule::ClockOffset => {
-                self.limits.offset_remedy(self.layout, judgement)
+                self.limits.offset_remedy(self.layout, &self.placed, judgement)
             }
             _ if judgement.rule == Rule::Resolve => {
                 self.limits.resolve_remedy(self.layout, judgement)
             }
-            _ => None,
+            _ => {
+                let same = |(known, _): &&(Judgement, String)| known == judgement;
+                self.placed.judgements.iter().find(same).map(|(_, remedy)| remedy.clone())
+            }
         }
     }
 
@@ -366,7 +392,16 @@ impl<'a> Check<'a> {
         let way = match (judgement.rule, judgement.subject) {
             (Rule::Horizon, Subject::Node(row)) => Some(self.line.horizon_widen(node(row))),
             (Rule::Rating, Subject::Node(row)) => Some(self.line.rating_widen(node(row))),
-            (Rule::ClockOffset, _) => self.limits.offset_widen(self.layout, judgement),
+            (Rule::ClockOffset, _) => {
+                self.limits.offset_widen(self.layout, &self.placed, judgement)
+            }
+            (Rule::Strength, _) => {
+                Some("less thrust, less mass beyond the span, or a stronger one".to_owned())
+            }
+            (Rule::Ramp, _) => Some("a longer ramp, or a stiffer line".to_owned()),
+            (Rule::Propellant, _) => {
+                Some("more propellant, a higher exhaust speed, or less thrust".to_owned())
+            }
             (Rule::Resolve, _) => self.limits.resolve_widen(self.layout, judgement),
             _ => None,
         };
@@ -379,25 +414,4 @@ impl<'a> Check<'a> {
 pub fn judge(layout: &Layout, span: JudgedOver) -> Vec<Judgement> {
     let check = Check::new(layout, span);
     (0..check.rows()).map(|row| check.judgement(row)).collect()
-}
-
-/// One row for each rule on loads that the layout gives the inputs of.
-fn unjudged(layout: &Layout) -> Vec<(Rule, Subject)> {
-    let spans = |is: &dyn Fn(&crate::layout::Span) -> bool| {
-        layout.spans.iter().filter(|span| is(span)).count()
-    };
-    let burning = layout
-        .engines
-        .iter()
-        .filter(|engine| engine.exhaust_speed_m_s.is_some() && engine.propellant_kg.is_some());
-    [
-        (Rule::Strength, spans(&|span| span.strength_n.is_some()), "span"),
-        (Rule::Slack, spans(&|span| span.kind == SpanKind::Tether), "tether"),
-        (Rule::Ramp, spans(&|span| span.axial_stiffness_n.is_some()), "span"),
-        (Rule::Propellant, burning.count(), "engine"),
-    ]
-    .into_iter()
-    .filter(|(_, count, _)| *count > 0)
-    .map(|(rule, count, word)| (rule, Subject::Parts(count, word)))
-    .collect()
 }

@@ -2,11 +2,12 @@
 
 mod check;
 mod compare;
+mod loads;
 mod offsets;
 mod rates;
 mod recording;
 
-use crate::layout::Layout;
+use crate::layout::{Course, Layout};
 use crate::model::dd::Dd;
 use crate::model::rates::{Instant, KnownClock};
 use crate::run::{Aboard, State};
@@ -17,6 +18,10 @@ pub use check::{
     Check, JudgedOver, Judgement, Rule, RuleState, Subject, Summary, check_report, judge,
 };
 pub use compare::{Difference, compare_report, differences};
+pub use loads::{
+    CAUTION, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad, judge_loads,
+    loads_report, sentence as load_sentence,
+};
 pub use offsets::offsets_report;
 pub use rates::rates_report;
 pub use recording::{detail, events_table, replay_report, verify_report};
@@ -50,6 +55,17 @@ fn head<'a>(state: &State<'a>, command: &'static str) -> Report<'a> {
     }
 }
 
+/// How far the first-order form of a standing line's gradient holds; `None` under thrust.
+fn standing_warning(state: &State<'_>) -> Option<String> {
+    let layout = state.run().layout();
+    let Course::Standing(standing) = &layout.course else { return None };
+    if standing.gradient_per_s2 == 0.0 {
+        return None;
+    }
+    let loads = state.run().loads().ok()?;
+    loads::standing_remark(layout, loads.gradient_warning())
+}
+
 /// A number, or its absence when it overflows.
 fn number(value: Dd) -> Cell<'static> {
     Cell::finite(value.to_f64(), OVERFLOW)
@@ -70,7 +86,7 @@ fn predicted_reading_s(layout: &Layout, instant: &Instant, row: usize, aboard: &
     let velocity = if instant.gradient_per_s2 == 0.0 {
         instant.moment.velocity_gain_m_s
     } else {
-        instant.felt_acceleration_m_s2(Dd::new(aboard.position_m)) * (at_s + aboard.clock_offset_s)
+        instant.felt_acceleration_m_s2(aboard.position_m) * (at_s + aboard.clock_offset_s)
     };
     known.reading_less_array_time_s(at_s, aboard.clock_offset_s, velocity)
 }

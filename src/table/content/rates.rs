@@ -3,7 +3,6 @@
 use std::borrow::Cow;
 
 use super::{OVERFLOW, RELEASED, STANDING, column, head, number, predicted_reading_s};
-use crate::model::dd::Dd;
 use crate::model::rates::{LaunchFrame, redshift_of};
 use crate::run::State;
 use crate::table::{Cell, Column, Measure, Report, Table};
@@ -30,6 +29,7 @@ pub fn rates_report(state: State<'_>) -> Report<'_> {
     let moment = state.instant().moment;
     let frame =
         state.run().plan().map(|plan| LaunchFrame::new(plan.launch(moment.at), moment.rapidity));
+    report.remarks.extend(super::standing_warning(&state));
     report.tables.push(Table {
         name: "nodes",
         columns: COLUMNS.to_vec(),
@@ -41,7 +41,7 @@ pub fn rates_report(state: State<'_>) -> Report<'_> {
                 cells.extend((1..COLUMNS.len()).map(|_| Cell::Absent(RELEASED.into())));
                 return;
             };
-            let (instant, position) = (state.instant(), Dd::new(aboard.position_m));
+            let (instant, position) = (state.instant(), aboard.position_m);
             // The rate is the same in all that follows, so it is made once.
             let rate = aboard.rate_minus_one + 1.0;
             cells.push(number(position));

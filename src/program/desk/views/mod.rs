@@ -2,6 +2,7 @@
 
 mod events;
 mod keys;
+mod loads;
 mod offsets;
 mod rates;
 
@@ -24,13 +25,20 @@ pub struct View {
     pub nodes: bool,
 }
 
+impl View {
+    /// The line of caution that stands under the table, where it shows what can hurt.
+    pub fn caution(&self, width: u16) -> Option<&'static str> {
+        (self.name == loads::VIEW.name).then(|| loads::caution(width))
+    }
+}
+
 /// All views, in the order in which their names are shown.
 pub static VIEWS: [&View; 10] = [
     &rates::VIEW,
     &offsets::VIEW,
     &to_come('3', "links"),
     &to_come('4', "reach"),
-    &to_come('5', "loads"),
+    &loads::VIEW,
     &to_come('6', "steer"),
     &to_come('7', "budget"),
     &to_come('8', "reconcile"),
@@ -57,6 +65,7 @@ fn adapted<'a>(desk: &'a Desk, table: Table<'a>) -> Option<Table<'a>> {
 }
 
 const RATE: &str = "rate_minus_one";
+const FROM_STRETCH: &str = "clock_offset_from_stretch_s";
 const OFFSET: &str = "clock_offset_s";
 
 fn place_of(columns: &[Column], key: &str) -> Option<usize> {
@@ -83,7 +92,7 @@ fn recorded<'a>(frame: &'a Frame, table: Table<'a>) -> Table<'a> {
 /// The table with differences from one node in the places of rates and clock offsets.
 /// What would still be against the reference is left out.
 fn against<'a>(desk: &'a Desk, from: usize, table: Table<'a>) -> Option<Table<'a>> {
-    const LEFT_OUT: [&str; 2] = ["redshift", "predicted_reading_s"];
+    const LEFT_OUT: [&str; 3] = ["redshift", "predicted_reading_s", FROM_STRETCH];
     let kept: Vec<usize> = (0..table.columns.len())
         .filter(|place| !LEFT_OUT.contains(&table.columns[*place].key))
         .collect();
@@ -121,8 +130,8 @@ fn differences_from<'a>(desk: &'a Desk, from: usize) -> Option<Differences<'a>> 
         let frame = replay.frame.as_ref()?;
         return Some(Box::new(move |row| recorded_differences(frame, from, row)));
     }
-    let mut pairs = clockspar::table::content::offsets_report(desk.state()?, true);
-    let pairs = pairs.tables.pop()?;
+    let pairs = clockspar::table::content::offsets_report(desk.state()?, true);
+    let pairs = pairs.tables.into_iter().find(|table| table.name == "pairs")?;
     let others = desk.layout().nodes.len() - 1;
     Some(Box::new(move |row| {
         if row == from {

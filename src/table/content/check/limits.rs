@@ -2,6 +2,7 @@
 
 use super::line::Line;
 use super::offset::Parting;
+use super::placed::Placed;
 use super::resolve::Resolving;
 use super::{JudgedOver, Judgement, Subject};
 use crate::layout::{Layout, Limit, LimitSubject};
@@ -14,7 +15,12 @@ pub(super) struct Limits<'a> {
 }
 
 impl<'a> Limits<'a> {
-    pub(super) fn judge(layout: &'a Layout, span: JudgedOver, line: &Line<'a>) -> Limits<'a> {
+    pub(super) fn judge(
+        layout: &'a Layout,
+        span: JudgedOver,
+        line: &Line<'a>,
+        placed: &Placed,
+    ) -> Limits<'a> {
         let resolve = in_order(&layout.limits, |limit| limit.resolve_within_s);
         let offset = in_order(&layout.limits, |limit| limit.clock_offset_s);
         // Nothing goes through the plan for a layout without limits.
@@ -22,11 +28,11 @@ impl<'a> Limits<'a> {
         let parting = (!offset.is_empty()).then(|| Parting::of(layout, span));
         let mut judgements = Vec::with_capacity(resolve.len() + offset.len());
         for (subject, limit_s) in resolve {
-            let judge = |resolving: &Resolving| resolving.judge(layout, subject, limit_s);
+            let judge = |resolving: &Resolving| resolving.judge(layout, placed, subject, limit_s);
             judgements.extend(resolving.as_ref().map(judge));
         }
         for (subject, limit_s) in offset {
-            let judge = |parting: &Parting| parting.judge(layout, subject, limit_s);
+            let judge = |parting: &Parting| parting.judge(layout, placed, subject, limit_s);
             judgements.extend(parting.as_ref().map(judge));
         }
         Limits { judgements, resolving, parting }
@@ -42,16 +48,26 @@ impl<'a> Limits<'a> {
         self.resolving.is_some()
     }
 
-    pub(super) fn offset_remedy(&self, layout: &Layout, judgement: &Judgement) -> Option<String> {
-        self.parting.as_ref().map(|parting| parting.remedy(layout, judgement))
+    pub(super) fn offset_remedy(
+        &self,
+        layout: &Layout,
+        placed: &Placed,
+        judgement: &Judgement,
+    ) -> Option<String> {
+        self.parting.as_ref().map(|parting| parting.remedy(layout, placed, judgement))
     }
 
     pub(super) fn resolve_remedy(&self, layout: &Layout, judgement: &Judgement) -> Option<String> {
         self.resolving.as_ref()?.remedy(layout, judgement)
     }
 
-    pub(super) fn offset_widen(&self, layout: &Layout, judgement: &Judgement) -> Option<String> {
-        self.parting.as_ref().map(|parting| parting.widen(layout, judgement))
+    pub(super) fn offset_widen(
+        &self,
+        layout: &Layout,
+        placed: &Placed,
+        judgement: &Judgement,
+    ) -> Option<String> {
+        self.parting.as_ref().map(|parting| parting.widen(layout, placed, judgement))
     }
 
     pub(super) fn resolve_widen(&self, layout: &Layout, judgement: &Judgement) -> Option<String> {
@@ -74,7 +90,7 @@ fn in_order(limits: &[Limit], kind: impl Fn(&Limit) -> Option<f64>) -> Vec<(Subj
     all.sort_by_key(|(subject, _)| match *subject {
         Subject::Node(row) => row,
         Subject::Pair([from, to]) => from.min(to),
-        Subject::Parts(..) => usize::MAX,
+        Subject::Line | Subject::Engine(_) | Subject::Parts(..) => usize::MAX,
     });
     all
 }

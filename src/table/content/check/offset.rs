@@ -3,6 +3,7 @@
 //! `(h_j − h_i) φ/c` is extreme where the rapidity is: at phase ends and where a ramp passes
 //! through zero. Before the plan it is zero and after it, while the line coasts, it stays.
 
+use super::placed::Placed;
 use super::words::{LENGTH, SPEED, TIME};
 use super::{JudgedOver, Judgement, NO_PHASE, Rule, RuleState, Subject};
 use crate::layout::{Course, Layout, Standing};
@@ -76,17 +77,27 @@ impl<'a> Parting<'a> {
     }
 
     /// Judges one limit.
-    pub(super) fn judge(&self, layout: &Layout, subject: Subject, limit_s: f64) -> Judgement {
+    pub(super) fn judge(
+        &self,
+        layout: &Layout,
+        placed: &Placed,
+        subject: Subject,
+        limit_s: f64,
+    ) -> Judgement {
+        if let (Parting::Plan { plan, .. }, true) = (self, placed.is_elastic()) {
+            return judge_stretched(plan, placed, layout, subject, limit_s);
+        }
+        let offset_s = |instant: &Instant| {
+            let ends = subject.ends(layout);
+            let stretched = placed.offset_s(ends, instant.moment.at);
+            stretched.unwrap_or_else(|| offset_s(layout, subject, instant))
+        };
         let apart = apart_m(layout, subject);
         let parted = |reached: &Reached| apart * reached.rapidity / SPEED_OF_LIGHT_M_S;
         let (value, phase, at) = match self {
             Parting::Plan { peak, .. } => (parted(peak), peak.phase, peak.at),
-            Parting::Moment(reached, instant) => {
-                (offset_s(layout, subject, instant), reached.phase, reached.at)
-            }
-            Parting::Standing(instant) => {
-                (offset_s(layout, subject, instant), Err(NO_PHASE), STANDING_FOR)
-            }
+            Parting::Moment(reached, instant) => (offset_s(instant), reached.phase, reached.at),
+            Parting::Standing(instant) => (offset_s(instant), Err(NO_PHASE), STANDING_FOR),
         };
         let value = value.abs().to_f64();
         let kept = value <= limit_s;
@@ -109,7 +120,7 @@ impl<'a> Parting<'a> {
                     }
                 }
                 Parting::Standing(instant) => {
-                    let pace = offset_s(layout, subject, instant).abs() / STANDING_FOR.seconds();
+                    let pace = offset_s(instant).abs() / STANDING_FOR.seconds();
                     judgement.at =
                         Ok(ArrayTime::nearest(Dd::new(limit_s) / pace).unwrap_or(STANDING_FOR));
                 }
@@ -119,11 +130,14 @@ impl<'a> Parting<'a> {
         judgement
     }
 
-    pub(super) fn remedy(&self, layout: &Layout, judgement: &Judgement) -> String {
+    pub(super) fn remedy(&self, layout: &Layout, placed: &Placed, judgement: &Judgement) -> String {
         let (value, limit_s) = numbers(judgement);
         let allow = TIME.at_least(value, |limit| limit >= value);
         if let Parting::Standing(instant) = self {
-            let offset_s = offset_s(layout, judgement.subject, instant);
+            let ends = judgement.subject.ends(layout);
+            let offset_s = placed
+                .offset_s(ends, instant.moment.at)
+                .unwrap_or_else(|| offset_s(layout, judgement.subject, instant));
             let often = limit_s * STANDING_FOR.to_f64() / offset_s.abs().to_f64();
             let often = TIME.at_most(often, |time| {
                 (offset_s.abs() * time / STANDING_FOR.seconds()).to_f64() <= limit_s
@@ -134,7 +148,7 @@ impl<'a> Parting<'a> {
             Parting::Plan { peak: reached, .. } | Parting::Moment(reached, _) => reached.rapidity,
             Parting::Standing(_) => Dd::ZERO,
         };
-        let apart = apart_m(layout, judgement.subject).abs();
+        let apart = placed.apart_m(layout, judgement.subject.ends(layout)).abs();
         let offset = |apart: Dd, rapidity: Dd| {
             (apart * rapidity / SPEED_OF_LIGHT_M_S).abs().to_f64() <= limit_s
         };
@@ -147,7 +161,7 @@ impl<'a> Parting<'a> {
         format!("gain no more than {gain}, place {place}, or allow {allow}")
     }
 
-    pub(super) fn widen(&self, layout: &Layout, judgement: &Judgement) -> String {
+    pub(super) fn widen(&self, layout: &Layout, placed: &Placed, judgement: &Judgement) -> String {
         let (value, limit_s) = numbers(judgement);
         let name = judgement.subject.name(layout);
         if value == 0.0 {
@@ -159,7 +173,8 @@ impl<'a> Parting<'a> {
                 "setting the clocks of `{name}` more often: they part so far in {often}"
             );
         }
-        let gain = (C2_M2_S2 * limit_s / apart_m(layout, judgement.subject).abs()).to_f64();
+        let apart = placed.apart_m(layout, judgement.subject.ends(layout)).abs();
+        let gain = (C2_M2_S2 * limit_s / apart).to_f64();
         let nearer = match judgement.subject {
             Subject::Node(_) => format!("`{name}` nearer to the reference"),
             _ => format!("`{name}` nearer together"),
@@ -168,6 +183,55 @@ impl<'a> Parting<'a> {
             "a shorter burn, or {nearer}: a gain of {} would bring the offset to its limit",
             SPEED.about(gain)
         )
+    }
+}
+
+/// Judges a limit on a line that stretches: the rate difference has the sign of the thrust,
+/// so the offset is extreme at phase ends and where a ramp passes through zero, as on a
+/// rigid line. A moment at which it passes the limit is found by halving, to the
+/// attosecond.
+fn judge_stretched(
+    plan: &Plan,
+    placed: &Placed,
+    layout: &Layout,
+    subject: Subject,
+    limit_s: f64,
+) -> Judgement {
+    let ends = subject.ends(layout);
+    let size = |at: ArrayTime| placed.offset_s(ends, at).unwrap_or(Dd::ZERO).abs().to_f64();
+    let mut peak = (0.0, Err(NO_PHASE), ArrayTime::ZERO);
+    let mut beyond = None;
+    let mut before = ArrayTime::ZERO;
+    for (index, phase) in plan.phases().iter().enumerate() {
+        let turn =
+            turn_of(phase).and_then(|(after, _)| ArrayTime::nearest(phase.start.seconds() + after));
+        for at in turn.into_iter().chain([phase.end]) {
+            let here = size(at);
+            if here > peak.0 {
+                peak = (here, Ok(index), at);
+            }
+            if here > limit_s && beyond.is_none() {
+                let (mut low, mut high) = (before.attoseconds(), at.attoseconds());
+                while high - low > 1 {
+                    let middle = low + (high - low) / 2;
+                    let is_beyond = size(ArrayTime::from_attoseconds(middle)) > limit_s;
+                    if is_beyond { high = middle } else { low = middle }
+                }
+                beyond = Some((Ok(index), ArrayTime::from_attoseconds(high)));
+            }
+            before = at;
+        }
+    }
+    let (phase, at) = beyond.unwrap_or((peak.1, peak.2));
+    Judgement {
+        rule: Rule::ClockOffset,
+        subject,
+        phase,
+        at: Ok(at),
+        value: Ok(peak.0),
+        limit: Ok(limit_s),
+        margin: Some(1.0 - peak.0 / limit_s),
+        state: RuleState::of(peak.0 <= limit_s),
     }
 }
 

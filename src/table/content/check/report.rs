@@ -84,7 +84,8 @@ fn margin(judgement: &Judgement) -> Cell<'static> {
     match judgement.margin {
         Some(f64::NEG_INFINITY) => Cell::Absent(NEVER.into()),
         Some(margin) => Cell::finite(margin, OVERFLOW),
-        None => Cell::Absent(NOT_JUDGED.into()),
+        None if judgement.state == RuleState::NotJudged => Cell::Absent(NOT_JUDGED.into()),
+        None => Cell::Absent("a limit of zero has no margin".into()),
     }
 }
 
@@ -151,8 +152,8 @@ fn fill<'a>(check: &Check<'a>, judgement: &Judgement, cells: &mut Vec<Cell<'a>>)
     cells.push(margin(judgement));
     cells.push(word(judgement.state.word()));
     cells.push(match (check.remedy(judgement), judgement.state) {
-        (Some(remedy), _) => Cell::Text(Cow::Owned(remedy)),
-        (None, RuleState::NotJudged) => Cell::Absent(NOT_JUDGED.into()),
-        (None, _) => Cell::Absent("nothing to mend".into()),
+        (Some(remedy), _) if !remedy.is_empty() => Cell::Text(Cow::Owned(remedy)),
+        (_, RuleState::NotJudged) => Cell::Absent(NOT_JUDGED.into()),
+        _ => Cell::Absent("nothing to mend".into()),
     });
 }

@@ -8,6 +8,7 @@
 
 use super::line::{Line, why};
 use super::offset::apart_m;
+use super::placed::Placed;
 use super::words::{ACCELERATION, LENGTH, TIME};
 use super::{JudgedOver, Judgement, NO_PHASE, Rule, RuleState, Subject};
 use crate::layout::{Course, Layout};
@@ -64,13 +65,19 @@ impl Resolving {
     }
 
     /// Judges one limit.
-    pub(super) fn judge(&self, layout: &Layout, subject: Subject, limit_s: f64) -> Judgement {
+    pub(super) fn judge(
+        &self,
+        layout: &Layout,
+        placed: &Placed,
+        subject: Subject,
+        limit_s: f64,
+    ) -> Judgement {
         let not_judged = |why: String| Judgement {
             limit: Ok(limit_s),
             ..Judgement::not_judged(Rule::Resolve, subject, why)
         };
         let acceleration = self.instant.moment.acceleration_m_s2;
-        let ends = subject.ends(layout).map(|row| layout.nodes[row].position_m);
+        let ends = subject.ends(layout).map(|row| placed.position_m(layout, row));
         if self.moment && acceleration.is_zero() {
             return not_judged("there is no thrust at this moment".to_owned());
         }
