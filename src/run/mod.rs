@@ -10,6 +10,7 @@
 mod bounds;
 mod event;
 mod fault;
+mod light;
 mod place;
 pub mod recording;
 mod state;
@@ -27,6 +28,7 @@ use crate::model::rates::Instant;
 
 pub use event::{Event, EventKind};
 pub use fault::{HorizonFault, RunFault};
+pub use light::{Answer, Light, NoSignal, NodeEnd, Signal};
 pub use place::Place;
 pub use state::{Aboard, NodeState, State};
 

@@ -5,19 +5,20 @@ use std::sync::Arc;
 
 use clockspar::layout::Layout;
 use clockspar::model::array_time::ArrayTime;
-use clockspar::run::{Run, State};
+use clockspar::run::{Event, EventKind, Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
-    JudgedOver, Judgement, RuleState, check_report, judge, offsets_report, rates_report,
+    JudgedOver, Judgement, Reach, RuleState, check_report, judge, links_report, offsets_report,
+    rates_report, reach_report,
 };
 
 use super::show::show;
 use super::{run_of, status_of, warn_of_broken_rules};
 use crate::program::arguments::{
-    MomentArguments, OffsetsArguments, OutputArguments, TableArguments,
+    MomentArguments, OffsetsArguments, OutputArguments, ReachArguments, TableArguments,
 };
 use crate::program::files;
-use crate::program::moments::Moments;
+use crate::program::moments::{Moments, moment};
 use crate::program::problem::Problem;
 
 /// `clockspar rates`.
@@ -30,6 +31,38 @@ pub fn offsets(arguments: &OffsetsArguments) -> Result<u8, Problem> {
     let (table, pairs) = (&arguments.table, arguments.pairs);
     table_of_run(&table.layout, &table.moments, &table.output, move |state| {
         offsets_report(state, pairs)
+    })
+}
+
+/// `clockspar links`. The summary spans the plan, so a table over time has it only when it
+/// is asked for by name.
+pub fn links(arguments: &TableArguments) -> Result<u8, Problem> {
+    let is_named = arguments.output.table.as_deref() == Some("summary");
+    let with_summary = is_named || arguments.moments.every.is_none();
+    table_of_run(&arguments.layout, &arguments.moments, &arguments.output, move |state| {
+        links_report(state, with_summary)
+    })
+}
+
+/// `clockspar reach`.
+pub fn reach(arguments: &ReachArguments) -> Result<u8, Problem> {
+    let table = &arguments.table;
+    let layout = files::load(&table.layout)?;
+    let name = files::shown_name(&table.layout);
+    let run = run_of(layout, &name)?;
+    let before = arguments.before.as_deref();
+    let before = before.map(|text| moment("--before", text, run.layout())).transpose()?;
+    let released = arguments.release.as_deref().map(|node| node_to_release(&run, node));
+    let asked = Reach { released: released.transpose()?, before };
+    warn_of_broken_rules(run.layout(), &name);
+    show_run(&run, &table.moments, &table.output, move |state| reach_report(state, asked))
+}
+
+/// The row of a node that can be let go: any but the reference.
+fn node_to_release(run: &Run, node: &str) -> Result<usize, Problem> {
+    let event = Event { at: ArrayTime::ZERO, kind: EventKind::Release { node: node.to_owned() } };
+    run.clone().apply(event).and_then(|()| run.row(node)).map_err(|fault| {
+        Problem::new(format_args!("--release {node}: {fault}"), fault.rule(), fault.remedy())
     })
 }
 

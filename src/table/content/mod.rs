@@ -2,9 +2,12 @@
 
 mod check;
 mod compare;
+mod links;
 mod offsets;
 mod rates;
+mod reach;
 mod recording;
+mod released;
 
 use crate::layout::Layout;
 use crate::model::dd::Dd;
@@ -15,9 +18,12 @@ use super::{Cell, Column, Measure, Report};
 
 pub use check::{JudgedOver, Judgement, Rule, RuleState, check_report, judge};
 pub use compare::{Difference, compare_report, differences};
+pub use links::{link_way, links_report};
 pub use offsets::offsets_report;
 pub use rates::rates_report;
+pub use reach::{Reach, reach_report, station_row};
 pub use recording::{detail, events_table, replay_report, verify_report};
+pub use released::CAUTION;
 
 /// Why a released node has no number.
 pub const RELEASED: &str = "released: the node no longer belongs to the line";
@@ -51,6 +57,11 @@ fn head<'a>(state: &State<'a>, command: &'static str) -> Report<'a> {
 /// A number, or its absence when it overflows.
 fn number(value: Dd) -> Cell<'static> {
     Cell::finite(value.to_f64(), OVERFLOW)
+}
+
+/// The same for a double.
+fn double(value: f64) -> Cell<'static> {
+    Cell::finite(value, OVERFLOW)
 }
 
 /// Reading less array time of the real clock of a node, s; a node without a clock is given
