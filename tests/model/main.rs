@@ -12,6 +12,7 @@ mod layout_read;
 mod layout_refused;
 mod layout_units;
 mod links;
+mod links_tables;
 mod pinned;
 mod published;
 mod reach;

@@ -2,5 +2,6 @@
 
 mod commands;
 mod desk;
+mod links;
 mod readme;
 mod terminal_session;

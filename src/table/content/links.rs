@@ -19,7 +19,7 @@ const LINKS: [Column; 13] = [
     column("from", "from", Measure::Word),
     column("to", "to", Measure::Word),
     column("separation_m", "separation", Measure::Length),
-    column("flight_array_s", "flight, array time", Measure::Time),
+    column("flight_array_s", "flight, array", Measure::Time),
     column("flight_emitter_s", "flight, emitter", Measure::Time),
     column("flight_receiver_s", "flight, receiver", Measure::Time),
     column("received_shift", "shift", Measure::Ratio),

@@ -35,7 +35,7 @@ const STATIONS: [Column; 12] = [
     column("sent_array_s", "sent, array time", Measure::Time),
     column("arrives_array_s", "arrives, array time", Measure::Time),
     column("arrives_launch_s", "arrives, launch time", Measure::Time),
-    column("age_launch_s", "age, launch time", Measure::Time),
+    column("age_launch_s", "age, launch", Measure::Time),
     column("received_shift", "shift", Measure::Ratio),
     column("ln_ratio", "ln of ratio", Measure::Ratio),
 ];

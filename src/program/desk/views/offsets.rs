@@ -13,6 +13,8 @@ pub static VIEW: View = View {
     table: Some(table),
     first: &["node", "clock_offset_s", "rate_minus_one", "rate_difference", "predicted_reading_s"],
     nodes: true,
+    beside: None,
+    note: None,
 };
 
 fn table(desk: &Desk) -> Option<Table<'_>> {
