@@ -5,6 +5,7 @@ pub mod constants;
 pub mod dd;
 pub mod horizon;
 pub mod links;
+pub mod loads;
 pub mod motion;
 pub mod plan;
 pub mod rates;

@@ -92,17 +92,19 @@ impl Phase {
             .over(Dd::new(1.0e18))
     }
 
-    /// `∫ |α| dτ` from the start of the phase to a moment of it, m/s, to 1e-15.
-    fn velocity_spent(&self, until: ArrayTime) -> f64 {
-        let elapsed = until.seconds_since(self.start).to_f64();
-        let first = self.acceleration(self.start).to_f64();
-        let last = self.acceleration(until).to_f64();
+    /// `∫ |α| dτ` from the start of the phase to a moment of it, m/s, to 2⁻¹⁰⁰ of itself.
+    fn velocity_spent(&self, until: ArrayTime) -> Dd {
+        let elapsed = until.seconds_since(self.start);
+        let (first, last) = (self.acceleration(self.start), self.acceleration(until));
         let sizes = first.abs() + last.abs();
-        if first * last >= 0.0 || sizes == 0.0 {
-            return sizes / 2.0 * elapsed;
+        if sizes.is_zero() {
+            return Dd::ZERO;
+        }
+        if first.is_negative() == last.is_negative() || first.is_zero() || last.is_zero() {
+            return sizes * elapsed * 0.5;
         }
         // Two triangles meet at the zero inside.
-        (first / sizes * first + last / sizes * last) / 2.0 * elapsed
+        (first / sizes * first + last / sizes * last) * elapsed * 0.5
     }
 
     /// The moment inside the phase at which the acceleration has a given value,
@@ -277,7 +279,7 @@ impl Plan {
             let launch = motion::launch_gain(phase, start_rapidity, phase.end);
             sum.velocity_gain = sum.velocity_gain + phase.velocity_gain(phase.end);
             check_rapidity(index, phase, start_rapidity, rapidity_of(sum.velocity_gain))?;
-            spent.add(Dd::new(phase.velocity_spent(phase.end)));
+            spent.add(phase.velocity_spent(phase.end));
             time.add(launch.time_s);
             position.add(launch.position_m);
             sum.velocity_spent = spent.value();
@@ -334,6 +336,16 @@ impl Plan {
             velocity_gain_m_s: gain.to_dd(),
             rapidity: rapidity_of(gain),
             total_rapidity: (spent / SPEED_OF_LIGHT_M_S).to_f64(),
+        }
+    }
+
+    /// `∫ |α| dτ` from array time zero to a moment, m/s, to 2⁻¹⁰⁰ of itself: what engines
+    /// have to deliver. Zero before the plan, constant after it.
+    #[must_use]
+    pub fn velocity_spent_m_s(&self, at: ArrayTime) -> Dd {
+        match self.phase_at(at) {
+            Some(index) => self.until[index].velocity_spent + self.phases[index].velocity_spent(at),
+            None => self.reached_outside(at).velocity_spent,
         }
     }
 

@@ -6,16 +6,24 @@
 // Distributions of errors are shown with `--nocapture`.
 #![allow(clippy::print_stdout)]
 
+mod demo_recordings;
 mod identities;
 mod layout_random;
 mod layout_read;
 mod layout_refused;
 mod layout_units;
 mod links;
+mod links_identities;
 mod links_tables;
+mod loads_identities;
+mod loads_layouts;
+mod loads_published;
+mod loads_reference;
+mod loads_rules;
 mod pinned;
 mod published;
 mod reach;
+mod reach_identities;
 mod recording;
 mod recording_hostile;
 mod reference;

@@ -191,7 +191,7 @@ pub const ALLOWED: &[Allowed] = &[
     Allowed {
         quantity: "ln_ratio",
         required: 1e-14,
-        held: 2.0 * U,
+        held: 0.6 * U,
         scale: "total rapidity + what the arrival may be off times the acceleration",
         reason: "the rapidity itself, rounded once",
     },
@@ -222,6 +222,48 @@ pub const ALLOWED: &[Allowed] = &[
         held: 6.0 * U,
         scale: "value + what the moment may be off times the acceleration",
         reason: "hyperbolic tangent of the relative rapidity",
+    },
+    Allowed {
+        quantity: "axial_force_n",
+        required: 1e-14,
+        held: 2.0 * U,
+        scale: "(|acceleration|/N)(mass aft + share aft times whole mass)",
+        reason: "the balance in double-double; what has burned to a few u times the mass it leaves",
+    },
+    Allowed {
+        quantity: "engine_force_n",
+        required: 1e-14,
+        held: 4.0 * U,
+        scale: "value",
+        reason: "double-double but for the mass that is left",
+    },
+    Allowed {
+        quantity: "propellant_used_kg",
+        required: 1e-14,
+        held: 4.0 * U,
+        scale: "value",
+        reason: "one expm1 of the libm crate and products",
+    },
+    Allowed {
+        quantity: "loaded_position_m",
+        required: 4.0 * U,
+        held: 2.0 * U,
+        scale: "value",
+        reason: "a double-double sum of lengths; only the stretch itself is rounded early",
+    },
+    Allowed {
+        quantity: "loaded_speed_m_s",
+        required: 1e-12,
+        held: 64.0 * U,
+        scale: "value",
+        reason: "a derivative of the stretch in doubles; first-order end motion needs no more",
+    },
+    Allowed {
+        quantity: "loaded_clock_offset_s",
+        required: 1e-14,
+        held: 4.0 * U,
+        scale: "integral of |h acceleration| / c^2",
+        reason: "closed form, or ten-point quadrature over short pieces",
     },
 ];
 

@@ -58,7 +58,7 @@ fn reach_has_its_columns() {
     assert!(csv.starts_with(
         "at_s,station,position_m,node,direction,last_call_s,sent_launch_s,sent_array_s,\
          arrives_array_s,arrives_launch_s,age_launch_s,received_shift,ln_ratio\n\
-         5184000,home,0.0,lantern,to line,"
+         5184000,home,0,lantern,to line,"
     ));
     assert_eq!(csv.lines().count(), 1 + 2 * 8 * 2);
 }

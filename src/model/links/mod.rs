@@ -31,6 +31,7 @@ pub(crate) mod series;
 mod shift;
 mod standing;
 mod two_way;
+pub(crate) mod way;
 
 pub use extremes::{Extreme, Extremes, Range};
 pub(crate) use one_way::later;

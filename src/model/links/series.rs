@@ -31,6 +31,12 @@ const fn reciprocals() -> [Dd; RECIPROCAL_COUNT] {
     table
 }
 
+/// Terms below this share of the first ones, 2⁻⁵⁶, are formed in plain doubles.
+const DOUBLE_SHARE: f64 = 1.0 / 72_057_594_037_927_936.0;
+
+/// Terms below this share, 2⁻¹¹², are left out.
+const LAST_SHARE: f64 = DOUBLE_SHARE * DOUBLE_SHARE;
+
 /// What the exponential of a quadratic does over a stretch that begins at zero.
 #[derive(Clone, Copy, Debug)]
 pub(crate) struct Decay {
@@ -54,7 +60,7 @@ pub(crate) fn decay(linear: Dd, quadratic: Dd) -> Decay {
     let mut mean = term.scale(0.5);
     let straight = quadratic.is_zero();
     let mut n = 1;
-    while before.hi.abs() + term.hi.abs() > 2.0_f64.powi(-56) * size && n + 2 < RECIPROCAL_COUNT {
+    while before.hi.abs() + term.hi.abs() > DOUBLE_SHARE * size && n + 2 < RECIPROCAL_COUNT {
         n += 1;
         let push = if straight { linear * term } else { linear * term + quadratic * before };
         (before, term) = (term, -(push * RECIPROCALS[n]));
@@ -63,7 +69,7 @@ pub(crate) fn decay(linear: Dd, quadratic: Dd) -> Decay {
     }
     let (mut before, mut term) = (before.hi, term.hi);
     let (mut change_tail, mut mean_tail) = (0.0, 0.0);
-    while before.abs() + term.abs() > 2.0_f64.powi(-112) * size && n + 2 < RECIPROCAL_COUNT {
+    while before.abs() + term.abs() > LAST_SHARE * size && n + 2 < RECIPROCAL_COUNT {
         n += 1;
         let push = linear.hi * term + quadratic.hi * before;
         (before, term) = (term, -push * RECIPROCALS[n].hi);
@@ -172,7 +178,7 @@ mod tests {
     fn logarithm_undoes_exponential() {
         for exponent in -90..30 {
             for factor in [1.0, -1.0, 0.7, -0.3] {
-                let x = Dd::new(factor * 2.0_f64.powi(exponent) / 10.0);
+                let x = Dd::new(factor * libm::exp2(f64::from(exponent)) / 10.0);
                 if x.hi.abs() > 650.0 || x.hi < -0.6 {
                     continue;
                 }
@@ -188,7 +194,7 @@ mod tests {
     #[test]
     fn a_quadratic_decays_as_its_two_halves() {
         // The stretch 0 … 1 is cut at 1/2; the second half begins with its own slope.
-        let (linear, quadratic) = (Dd::new(0.45), Dd::new(-0.9));
+        let (linear, quadratic) = (Dd::new(0.45), Dd::new(-0.7));
         let whole = decay(linear, quadratic);
         let first = decay(linear.scale(0.5), quadratic.scale(0.25));
         let slope = (linear + quadratic.scale(0.5)).scale(0.5);

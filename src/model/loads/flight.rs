@@ -1,0 +1,255 @@
+//! The state of a line under thrust at a moment, and the integrals its clocks need.
+
+use super::compliance::{Basis, Compliance, Range};
+use super::propellant::Propulsion;
+use crate::model::array_time::ArrayTime;
+use crate::model::constants::{C2_M2_S2, INVERSE_C2_S2_M2};
+use crate::model::dd::{Dd, RunningSum};
+use crate::model::horizon::Extremes;
+use crate::model::motion::{NODES_10, WEIGHTS_10};
+use crate::model::plan::{Phase, Plan};
+
+/// A thrust plan with the stretch of the line tabulated over it.
+#[derive(Clone, Debug)]
+pub(super) struct Flight {
+    pub plan: Plan,
+    pub compliance: Compliance,
+    /// `∫ α² T_t dτ` up to the start of each phase and to the end, term by term.
+    until: Vec<Dd>,
+}
+
+/// The acceleration, how fast it changes and what has burned, at a moment of a phase.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct Drive {
+    pub acceleration_m_s2: Dd,
+    pub slope_m_s3: f64,
+    pub burned: f64,
+    /// `dx/dτ = |α| (1 − x)/w`, 1/s.
+    pub burning_per_s: f64,
+}
+
+/// The states a plan passes through, the coasts before and after it included.
+pub(super) fn range(plan: &Plan, propulsion: &Propulsion) -> Range {
+    let mut range = Range { lowest_m_s2: 0.0, highest_m_s2: 0.0, most_burned: 0.0 };
+    if let Some(extremes) = Extremes::of(plan) {
+        range.lowest_m_s2 = extremes.smallest.acceleration_m_s2.to_f64().min(0.0);
+        range.highest_m_s2 = extremes.largest.acceleration_m_s2.to_f64().max(0.0);
+    }
+    if propulsion.is_falling() {
+        range.most_burned = propulsion.burned_fraction(plan.velocity_spent_m_s(plan.end()));
+    }
+    range
+}
+
+impl Flight {
+    pub fn new(plan: Plan, compliance: Compliance, propulsion: &Propulsion) -> Flight {
+        let terms = compliance.terms();
+        let mut flight = Flight { plan, compliance, until: Vec::new() };
+        let mut sums = vec![RunningSum::default(); terms];
+        for index in 0..flight.plan.phases().len() {
+            flight.until.extend(sums.iter().map(RunningSum::value));
+            if terms > 0 {
+                let end = flight.plan.phases()[index].end;
+                let gains = flight.gains(propulsion, index, end);
+                for (sum, gain) in sums.iter_mut().zip(gains) {
+                    sum.add(gain);
+                }
+            }
+        }
+        flight.until.extend(sums.iter().map(RunningSum::value));
+        flight
+    }
+
+    /// The drive at a moment; in a phase that is named, its end meaning the limit from
+    /// below, or wherever the moment falls.
+    pub fn drive(&self, propulsion: &Propulsion, phase: Option<usize>, at: ArrayTime) -> Drive {
+        let mass = propulsion;
+        let spent = self.plan.velocity_spent_m_s(at);
+        let burned = if mass.is_falling() { mass.burned_fraction(spent) } else { 0.0 };
+        let (acceleration_m_s2, slope_m_s3) = match phase {
+            Some(index) => {
+                let phase = &self.plan.phases()[index];
+                (phase.acceleration(at), slope(phase))
+            }
+            None => (Dd::ZERO, 0.0),
+        };
+        let burning_per_s = if mass.is_falling() {
+            acceleration_m_s2.to_f64().abs() * mass.inverse_speed_s_m() * mass.mass_fraction(spent)
+        } else {
+            0.0
+        };
+        Drive { acceleration_m_s2, slope_m_s3, burned, burning_per_s }
+    }
+
+    /// `∫ α² T_t dτ` from array time zero to a moment, term by term, m²/s³.
+    pub fn integrals(&self, propulsion: &Propulsion, at: ArrayTime) -> Vec<Dd> {
+        let terms = self.compliance.terms();
+        let stored = |index: usize| self.until[index * terms..(index + 1) * terms].to_vec();
+        match self.plan.phase_at(at) {
+            None if at < ArrayTime::ZERO => stored(0),
+            None => stored(self.plan.phases().len()),
+            Some(index) => {
+                let gains = self.gains(propulsion, index, at);
+                stored(index).into_iter().zip(gains).map(|(sum, gain)| sum + gain).collect()
+            }
+        }
+    }
+
+    /// The same from the start of a phase. A hold of constant mass in closed form;
+    /// otherwise Gauss–Legendre over pieces so short that ten points are exact to rounding
+    /// (which they are for any polynomial in a ramp of constant mass).
+    fn gains(&self, propulsion: &Propulsion, index: usize, until: ArrayTime) -> Vec<Dd> {
+        let phase = &self.plan.phases()[index];
+        let terms = self.compliance.terms();
+        if terms == 0 || until <= phase.start {
+            return vec![Dd::ZERO; terms];
+        }
+        if phase.is_hold() && !propulsion.is_falling() {
+            let alpha = phase.acceleration(phase.start);
+            let weight = alpha * alpha * until.seconds_since(phase.start);
+            let basis = self.compliance.basis(alpha.to_f64(), 0.0);
+            return basis.values.iter().map(|value| weight * *value).collect();
+        }
+        let mut sums = vec![RunningSum::default(); terms];
+        self.pieces(propulsion, index, until, &mut |point| {
+            let weight = point.width_s * point.acceleration_m_s2 * point.acceleration_m_s2;
+            let basis = self.compliance.basis(point.acceleration_m_s2, point.burned);
+            for (sum, value) in sums.iter_mut().zip(&basis.values) {
+                sum.add(Dd::product(weight, *value));
+            }
+        });
+        sums.iter().map(RunningSum::value).collect()
+    }
+
+    /// Visits the quadrature points of a phase up to a moment.
+    pub fn pieces(
+        &self,
+        propulsion: &Propulsion,
+        index: usize,
+        until: ArrayTime,
+        visit: &mut dyn FnMut(&Point),
+    ) {
+        let phase = &self.plan.phases()[index];
+        let degrees = self.compliance.degrees();
+        let length = until.seconds_since(phase.start).to_f64();
+        let first = phase.acceleration(phase.start).to_f64();
+        let slope_m_s3 = slope(phase);
+        let spent_before = self.plan.velocity_spent_m_s(phase.start).to_f64();
+        let inverse = if propulsion.is_falling() { propulsion.inverse_speed_s_m() } else { 0.0 };
+        let mut spent_here = spent_before;
+        let mut begin = 0.0;
+        // |α| has a corner where a ramp passes through zero.
+        let corner = sections(phase).filter(|zero| *zero < length);
+        for finish in corner.into_iter().chain([length]) {
+            let alpha = |s: f64| first + slope_m_s3 * s;
+            let (from, to) = (alpha(begin), alpha(finish));
+            let spend = |s: f64| 0.5 * (from + alpha(s)).abs() * (s - begin);
+            let fall = spend(finish) * inverse;
+            let travel = self.compliance.distance(from, to) * degrees.0 as f64;
+            let count = (fall + fall * degrees.1 as f64 * 0.2).max(travel * 0.25).ceil().max(1.0);
+            let width = (finish - begin) / count;
+            let mut piece = 0.0;
+            while piece < count {
+                for (node, weight) in NODES_10.iter().zip(&WEIGHTS_10) {
+                    let s = begin + (piece + node) * width;
+                    let drop = (spent_here + spend(s)) * inverse;
+                    visit(&Point {
+                        acceleration_m_s2: alpha(s),
+                        slope_m_s3,
+                        burned: -libm::expm1(-drop),
+                        burning_per_s: alpha(s).abs() * inverse * libm::exp(-drop),
+                        width_s: width * weight,
+                    });
+                }
+                piece += 1.0;
+            }
+            spent_here += spend(finish);
+            begin = finish;
+        }
+    }
+}
+
+/// A point of a quadrature over array time.
+pub(super) struct Point {
+    pub acceleration_m_s2: f64,
+    pub slope_m_s3: f64,
+    pub burned: f64,
+    pub burning_per_s: f64,
+    /// Weight of the point, s.
+    pub width_s: f64,
+}
+
+/// `dα/dτ` in a phase, m/s³.
+pub(super) fn slope(phase: &Phase) -> f64 {
+    if phase.is_hold() {
+        return 0.0;
+    }
+    let line = phase.line;
+    (Dd::difference(line.to_m_s2, line.from_m_s2) / line.length.seconds_since(ArrayTime::ZERO))
+        .to_f64()
+}
+
+/// Where a ramp passes through zero inside a phase, s after its start.
+pub(super) fn sections(phase: &Phase) -> Option<f64> {
+    let (first, last) = (phase.acceleration(phase.start), phase.acceleration(phase.end));
+    if phase.is_hold()
+        || first.is_zero()
+        || last.is_zero()
+        || first.is_negative() == last.is_negative()
+    {
+        return None;
+    }
+    phase.moment_of(Dd::ZERO).map(Dd::to_f64)
+}
+
+/// Speed of a row along the line, `ḣ = α′ (C + α ∂C/∂α) + α x′ ∂C/∂x`, m/s.
+pub(super) fn speed(
+    compliance: &Compliance,
+    row: usize,
+    basis: &Basis,
+    acceleration_m_s2: f64,
+    slope_m_s3: f64,
+    burning_per_s: f64,
+) -> f64 {
+    if compliance.terms() == 0 {
+        return 0.0;
+    }
+    let values: Vec<f64> = (0..compliance.terms())
+        .map(|t| {
+            slope_m_s3 * (basis.values[t] + acceleration_m_s2 * basis.by_acceleration[t])
+                + acceleration_m_s2 * burning_per_s * basis.by_burned[t]
+        })
+        .collect();
+    compliance.sum(row, &values).to_f64()
+}
+
+/// `∫ ḣ²/(2 c² N) dτ` of a row from array time zero to a moment, s: what the clock offset
+/// leaves out, always slowing the node's clock.
+pub(super) fn neglected_motion_s(
+    flight: &Flight,
+    propulsion: &Propulsion,
+    row: usize,
+    relaxed_m: f64,
+    at: ArrayTime,
+) -> f64 {
+    let compliance = &flight.compliance;
+    let mut sum = 0.0;
+    for (index, phase) in flight.plan.phases().iter().enumerate() {
+        if phase.start >= at || compliance.terms() == 0 {
+            break;
+        }
+        if phase.is_hold() && !propulsion.is_falling() {
+            continue;
+        }
+        flight.pieces(propulsion, index, phase.end.min(at), &mut |point| {
+            let alpha = point.acceleration_m_s2;
+            let basis = compliance.basis(alpha, point.burned);
+            let speed =
+                speed(compliance, row, &basis, alpha, point.slope_m_s3, point.burning_per_s);
+            let position = relaxed_m + alpha * compliance.sum(row, &basis.values).to_f64();
+            let rate = 1.0 + alpha * position * INVERSE_C2_S2_M2.hi;
+            sum += point.width_s * speed * speed / (2.0 * C2_M2_S2.hi * rate);
+        });
+    }
+    sum
+}
