@@ -109,7 +109,8 @@ fn a_standing_line_has_links_and_no_launch_frame() {
         row.split(',').nth(7).expect("a shift").parse().expect("a number")
     };
     // gL/c² with the gradient's share ΓL/(2g), up red and down blue.
-    let wanted = (9.8012 * 450.0 + 0.5 * 3.086e-6 * 450.0 * 450.0) / 299_792_458.0_f64.powi(2);
+    let c2 = 299_792_458.0 * 299_792_458.0;
+    let wanted = (9.8012 * 450.0 + 0.5 * 3.086e-6 * 450.0 * 450.0) / c2;
     assert!((shift(1) / wanted - 1.0).abs() < 1e-12, "{csv}");
     assert!((shift(2) / -wanted - 1.0).abs() < 1e-12, "{csv}");
     let (status, json, _) = clockspar(&["reach", path, "--as", "json"]);

@@ -130,7 +130,7 @@ impl<'a> Ways<'a> {
             }
             None => [row / 2, row / 2 + 1],
         };
-        if row % 2 == 0 {
+        if row.is_multiple_of(2) {
             Way { from: fore, to: aft, link }
         } else {
             Way { from: aft, to: fore, link }

@@ -94,7 +94,7 @@ pub fn reach_report(state: State<'_>, asked: Reach) -> Report<'_> {
 pub fn station_row(layout: &Layout, row: usize) -> Option<(usize, usize, bool)> {
     let nodes = layout.nodes.len();
     let station = row / (2 * nodes);
-    (station < layout.stations.len()).then_some((station, row / 2 % nodes, row % 2 == 0))
+    (station < layout.stations.len()).then_some((station, row / 2 % nodes, row.is_multiple_of(2)))
 }
 
 /// Launch time of a position on the line at a moment, s.
