@@ -62,7 +62,9 @@ const MICRO_GRAVITY: Unit = Unit { label: "µg0", ascii: "ug0", scale: Scale::Wh
 /// The SI unit, in which values of all sizes stand in scientific notation.
 pub(super) fn base_unit(measure: Measure) -> Unit {
     match measure {
-        Measure::Word | Measure::Count | Measure::Ratio => ten("", 0),
+        Measure::Word | Measure::Unit | Measure::Various | Measure::Count | Measure::Ratio => {
+            ten("", 0)
+        }
         Measure::Time => SECOND,
         Measure::Length => ten("m", 0),
         Measure::Acceleration => METRES_PER_SECOND_SQUARED,
@@ -77,7 +79,12 @@ pub(super) fn base_unit(measure: Measure) -> Unit {
 /// The unit in powers of ten in which the largest value of a column reads well.
 pub(super) fn decimal_unit(measure: Measure, largest: f64) -> Unit {
     match measure {
-        Measure::Word | Measure::Count | Measure::Ratio | Measure::PerSecond => base_unit(measure),
+        Measure::Word
+        | Measure::Unit
+        | Measure::Various
+        | Measure::Count
+        | Measure::Ratio
+        | Measure::PerSecond => base_unit(measure),
         Measure::Time => from_ladder(&TIMES, largest),
         Measure::Length => from_ladder(&LENGTHS, largest),
         Measure::Frequency => from_ladder(&FREQUENCIES, largest),
@@ -124,6 +131,22 @@ pub(super) fn rounded(value: f64, scale: Scale, count: usize) -> String {
     }
     let (mantissa, exponent) = decimal.scientific();
     format!("{sign}{mantissa}{exponent}")
+}
+
+/// Digits of a measured cell, which stands beside others of other units.
+const MEASURED_DIGITS: usize = 7;
+
+/// A value with the unit it reads well in: `0.2 mg0`, `2 h`.
+pub(super) fn measured(value: f64, measure: Measure, unicode: bool) -> String {
+    let largest = value.abs();
+    let unit = if value == 0.0 {
+        base_unit(measure)
+    } else {
+        long_unit(measure, largest).unwrap_or_else(|| decimal_unit(measure, largest))
+    };
+    let shown = rounded(value, unit.scale, MEASURED_DIGITS);
+    let label = if unicode { unit.label } else { unit.ascii };
+    if label.is_empty() { shown } else { format!("{shown} {label}") }
 }
 
 /// An acceleration in m/s² to ten digits and in parts of g0 to seven: `0.196133 m/s² = 0.02 g0`.

@@ -6,6 +6,8 @@
 // Distributions of errors are shown with `--nocapture`.
 #![allow(clippy::print_stdout)]
 
+mod check;
+mod clocks;
 mod demo_recordings;
 mod identities;
 mod layout_random;
