@@ -45,9 +45,9 @@ fn rows(report: &Report<'_>, name: &str) -> Vec<Row> {
             (table.fill)(row, &mut cells);
             assert_eq!(cells.len(), table.columns.len(), "row {row} of {name}");
             let value = |cell: &Cell<'_>| match cell {
-                Cell::Number(value) => Value::Number(*value),
+                Cell::Number(value) | Cell::Measured(value, _) => Value::Number(*value),
                 Cell::Integer(value) => Value::Number(*value as f64),
-                Cell::Time(at) => Value::Number(at.to_f64()),
+                Cell::Time(at) | Cell::Computed(at) => Value::Number(at.to_f64()),
                 Cell::Text(text) => Value::Text(text.to_string()),
                 Cell::Flag(flag) => Value::Text(flag.to_string()),
                 Cell::Absent(why) => Value::Absent(why.to_string()),

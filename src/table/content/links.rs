@@ -241,7 +241,7 @@ fn summary_table<'a>(
             for range in [shift, extremes.shift_rate_per_s, extremes.flight_array_s] {
                 for Extreme { value, emitted, .. } in [range.least, range.greatest] {
                     cells.push(number(value));
-                    cells.push(number(emitted.to_f64()));
+                    cells.push(Cell::Computed(emitted));
                 }
             }
             for extreme in [shift.least, shift.greatest] {
