@@ -41,6 +41,10 @@ pub enum Command {
     Offsets(OffsetsArguments),
     /// Forces, stretch, propellant; peaks over the plan
     Loads(TableArguments),
+    /// Per link and direction: flight times, shift, received frequency, round trip, two-way error
+    Links(TableArguments),
+    /// Stations, last call, contact tables; released nodes and what they pass
+    Reach(ReachArguments),
     /// Two layouts or recordings: rows of differences
     Compare(CompareArguments),
     /// A run to a recording, without a terminal
@@ -201,6 +205,20 @@ pub struct OffsetsArguments {
     /// Add the table of every ordered pair
     #[arg(long)]
     pub pairs: bool,
+}
+
+/// Arguments of `reach`.
+#[derive(Clone, Debug, Args)]
+pub struct ReachArguments {
+    /// As for every table.
+    #[command(flatten)]
+    pub table: TableArguments,
+    /// Let this node go at the moment: adds what it passes and how it is heard
+    #[arg(long, value_name = "NODE")]
+    pub release: Option<String>,
+    /// Add the spans of sending time from which nothing arrives before this moment
+    #[arg(long, value_name = "MOMENT", allow_hyphen_values = true)]
+    pub before: Option<String>,
 }
 
 /// Arguments of `compare`.

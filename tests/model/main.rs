@@ -18,6 +18,7 @@ mod layout_refused;
 mod layout_units;
 mod links;
 mod links_identities;
+mod links_tables;
 mod loads_identities;
 mod loads_layouts;
 mod loads_published;

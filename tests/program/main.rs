@@ -4,5 +4,6 @@ mod choose;
 mod commands;
 mod desk;
 mod loads;
+mod links;
 mod readme;
 mod terminal_session;
