@@ -7,11 +7,13 @@
 use std::borrow::Cow;
 
 use crate::layout::Course;
-use crate::model::array_time::ArrayTime;
+use crate::model::array_time::{ATTOSECONDS_PER_SECOND, ArrayTime};
 use crate::model::dd::Dd;
 use crate::model::links::{
     End, Extremes, Flight, Moved as Displaced, NoFlight, Rays, standing_flight,
 };
+use crate::model::loads::Loads;
+use crate::model::plan::Plan;
 
 use super::{LinkState, Run};
 
@@ -21,7 +23,7 @@ type Displacement<'a> = Box<dyn Fn(ArrayTime) -> Displaced + Send + Sync + 'a>;
 /// Where a node stands as an end of signals.
 pub struct NodeEnd<'a> {
     /// Its position at rest, m from the reference node, + towards the fore end.
-    pub rest_m: f64,
+    pub rest_m: Dd,
     /// How a line that stretches displaces it; `None` for a node that stays.
     pub displacement: Option<Displacement<'a>>,
 }
@@ -39,7 +41,7 @@ impl NodeEnd<'_> {
     /// Its position at a moment, m.
     #[must_use]
     pub fn position_m(&self, at: ArrayTime) -> Dd {
-        let rest = Dd::new(self.rest_m);
+        let rest = self.rest_m;
         self.displacement.as_ref().map_or(rest, |moved| rest + moved(at).displacement_m)
     }
 }
@@ -162,14 +164,35 @@ impl<'a> Light<'a> {
     ///
     /// [`NoSignal::Released`] for a node that no longer belongs to the line.
     pub fn end(&self, row: usize, at: ArrayTime) -> Result<NodeEnd<'a>, NoSignal> {
-        let rest_m = match self.run.moved.get(&row) {
+        let placed_m = match self.run.moved.get(&row) {
             None => self.run.positions_m[row],
             Some(moved) if moved.released.is_some_and(|since| since <= at) => {
                 return Err(NoSignal::Released);
             }
             Some(moved) => moved.place.position_m(at),
         };
-        Ok(NodeEnd { rest_m, displacement: None })
+        Ok(self.displaced(row, placed_m, at))
+    }
+
+    /// The end of a node that stands at a place, displaced as load and temperature displace
+    /// it in its place of the layout.
+    fn displaced(&self, row: usize, placed_m: f64, at: ArrayTime) -> NodeEnd<'a> {
+        let run = self.run;
+        let placed_m = Dd::new(placed_m);
+        let Some(loads) = run.loads_at(at) else {
+            return NodeEnd { rest_m: placed_m, displacement: None };
+        };
+        let filed_m = Dd::new(run.layout.nodes[row].position_m);
+        let Some(plan) = run.plan().filter(|_| loads.is_elastic()) else {
+            // Gravity never changes, and a temperature that was filed does not either.
+            let (position_m, _) = loads.end_motion(None, at, row);
+            return NodeEnd { rest_m: placed_m + (position_m - filed_m), displacement: None };
+        };
+        let displacement = move |at: ArrayTime| {
+            let loads = run.loads_at(at).unwrap_or(loads);
+            motion(loads, plan, at, row, filed_m)
+        };
+        NodeEnd { rest_m: placed_m, displacement: Some(Box::new(displacement)) }
     }
 
     /// Where a released node stood when it was let go, as an end of signals, and when.
@@ -177,7 +200,7 @@ impl<'a> Light<'a> {
     pub fn released_end(&self, row: usize, at: ArrayTime) -> Option<(NodeEnd<'a>, ArrayTime)> {
         let moved = self.run.moved.get(&row)?;
         let since = moved.released.filter(|since| *since <= at)?;
-        Some((NodeEnd { rest_m: moved.place.position_m(since), displacement: None }, since))
+        Some((self.displaced(row, moved.place.position_m(since), since), since))
     }
 
     /// The signal between two rows that leaves at a moment, with its answer.
@@ -295,6 +318,33 @@ impl<'a> Light<'a> {
         }
         Ok(())
     }
+}
+
+/// How a node of a line that stretches moves along it at a moment.
+///
+/// Its acceleration is a difference of two speeds close by in the same phase: a smooth
+/// quantity, which enters the shift rate alone and is far below the felt acceleration.
+fn motion(loads: &Loads, plan: &Plan, at: ArrayTime, row: usize, filed_m: Dd) -> Displaced {
+    let phase = plan.phase_at(at);
+    let (position_m, velocity_m_s) = loads.end_motion(phase, at, row);
+    let acceleration_m_s2 = phase.map_or(0.0, |index| {
+        let phase = plan.phases()[index];
+        let length = phase.end.attoseconds() - phase.start.attoseconds();
+        let step = (length / 1024).min(ATTOSECONDS_PER_SECOND);
+        let near = |offset: i128| {
+            let count = (at.attoseconds() + offset)
+                .clamp(phase.start.attoseconds(), phase.end.attoseconds() - 1);
+            ArrayTime::from_attoseconds(count)
+        };
+        let (before, after) = (near(-step), near(step));
+        if phase.is_hold() && !loads.propulsion().is_falling() || after <= before {
+            return 0.0;
+        }
+        let speed = |at| loads.end_motion(Some(index), at, row).1;
+        (speed(after) - speed(before)) / after.seconds_since(before).to_f64()
+    });
+    let displacement_m = (position_m - filed_m).to_f64();
+    Displaced { displacement_m, velocity_m_s, acceleration_m_s2 }
 }
 
 fn signal_of(separation_m: f64, out: &Flight, answer: Result<Answer, NoSignal>) -> Signal {

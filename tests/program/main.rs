@@ -3,7 +3,7 @@
 mod choose;
 mod commands;
 mod desk;
-mod loads;
 mod links;
+mod loads;
 mod readme;
 mod terminal_session;

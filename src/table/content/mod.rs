@@ -2,8 +2,8 @@
 
 mod check;
 mod compare;
-mod loads;
 mod links;
+mod loads;
 mod offsets;
 mod rates;
 mod reach;
@@ -21,11 +21,11 @@ pub use check::{
     Check, JudgedOver, Judgement, Rule, RuleState, Subject, Summary, check_report, judge,
 };
 pub use compare::{Difference, compare_report, differences};
+pub use links::{link_way, links_report};
 pub use loads::{
     CAUTION, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad, judge_loads,
     loads_report, sentence as load_sentence,
 };
-pub use links::{link_way, links_report};
 pub use offsets::offsets_report;
 pub use rates::rates_report;
 pub use reach::{Reach, reach_report, station_row};
