@@ -309,6 +309,17 @@ impl Plan {
         self.phases.last().map_or(ArrayTime::ZERO, |phase| phase.end)
     }
 
+    /// The rapidity at the start of a phase, by its index; one past the last phase: at the
+    /// end of the plan.
+    ///
+    /// # Panics
+    ///
+    /// If there is no such phase.
+    #[must_use]
+    pub fn rapidity_at_start(&self, phase: usize) -> Dd {
+        rapidity_of(velocity(self.until[phase].gain))
+    }
+
     /// The phase a moment falls in: at a boundary the later one; `None` before array
     /// time zero and from the end of the plan on.
     #[must_use]

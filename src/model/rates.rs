@@ -229,6 +229,12 @@ impl KnownClock {
 /// Whether `1 + α h / c²` is above zero, decided exactly for double inputs.
 #[must_use]
 pub fn is_realisable(acceleration_m_s2: Dd, position_m: f64) -> bool {
+    // A rate clear of zero by far more than doubles can be wrong needs no wide numbers.
+    let drive = acceleration_m_s2.hi * position_m / C2_M2_S2.hi;
+    let unsure = 1e-12 * (1.0 + drive.abs());
+    if (1.0 + drive).abs() > unsure {
+        return drive > -1.0;
+    }
     let rate = Wide::from(acceleration_m_s2).times(Dd::new(position_m)) + Wide::from(C2_M2_S2);
     let rate = rate.to_dd();
     !rate.is_negative() && !rate.is_zero()

@@ -174,7 +174,9 @@ const SI_ENDINGS: [&str; 8] = ["_s", "_m", "_m_s2", "_hz", "_n", "_kg", "_m_s", 
 /// A key without the SI unit at its end; `None` when it has none.
 fn bare_key(key: &str, measure: Measure) -> Option<&str> {
     let unit = match measure {
-        Measure::Word | Measure::Count | Measure::Ratio => return None,
+        Measure::Word | Measure::Count | Measure::Ratio | Measure::Unit | Measure::Various => {
+            return None;
+        }
         Measure::Time => "_s",
         Measure::Length => "_m",
         Measure::Acceleration => "_m_s2",

@@ -89,7 +89,7 @@ impl Reasons {
     fn mark_of(&self, cell: &Cell<'_>) -> &'static str {
         let why = match cell {
             Cell::Absent(why) => why,
-            Cell::Number(value) if !value.is_finite() => NOT_FINITE,
+            Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => NOT_FINITE,
             _ => return "",
         };
         self.texts.iter().position(|known| known == why).map_or("", |place| self.mark_at(place))
@@ -112,7 +112,7 @@ fn scan(table: &Table<'_>, units: Option<&Units>, unicode: bool) -> (Vec<ColumnF
             scan.see(cell);
             let why = match cell {
                 Cell::Absent(why) => why,
-                Cell::Number(value) if !value.is_finite() => NOT_FINITE,
+                Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => NOT_FINITE,
                 _ => continue,
             };
             *absent = true;
@@ -174,6 +174,8 @@ fn blocks<'t>(
     let mut columns: Vec<Shown<'t>> = formats
         .iter()
         .enumerate()
+        // Measured cells carry their units themselves.
+        .filter(|(index, _)| table.columns[*index].measure != Measure::Unit)
         .map(|(index, format)| Shown::new(table, index, format, options))
         .collect();
     let taken = |columns: &[Shown<'_>]| {

@@ -2,9 +2,9 @@
 
 use super::digits::{Decimal, Scale, exponent_of};
 use super::scan::ColumnScan;
-use super::unit::{SECOND, Unit};
+use super::unit::{SECOND, Unit, measured};
 use super::width::{push_blanks, push_left, push_right};
-use super::{Cell, Column};
+use super::{Cell, Column, Measure};
 use crate::model::array_time::ArrayTime;
 
 /// Digits under which a value that has more is not shown in plain notation.
@@ -109,7 +109,10 @@ impl ColumnFormat {
         match cell {
             Cell::Text(text) => text.clone().into_owned(),
             Cell::Absent(_) => format!("-{mark}"),
-            Cell::Number(value) if !value.is_finite() => format!("-{mark}"),
+            Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => {
+                format!("-{mark}")
+            }
+            Cell::Measured(value, measure) => measured(*value, *measure, self.unicode),
             Cell::Number(value) => self.number_in_width(*value),
             Cell::Integer(value) => match self.form {
                 Form::Counts | Form::Words => self.count(*value),
@@ -117,6 +120,7 @@ impl ColumnFormat {
                 _ => self.number_in_width(*value as f64),
             },
             Cell::Time(time) => self.time(time.attoseconds()),
+            Cell::Computed(time) => measured(time.to_f64(), Measure::Time, self.unicode),
             Cell::Flag(flag) => yes_or_no(*flag).to_owned(),
         }
     }

@@ -88,10 +88,16 @@ pub enum Cell<'a> {
     Text(Cow<'a, str>),
     /// An SI value, finite.
     Number(f64),
+    /// An SI value, finite, of what the cell itself says: for columns whose rows measure
+    /// different things. Text shows it with its unit.
+    Measured(f64, Measure),
     /// A whole number.
     Integer(i64),
     /// An exact moment or length of array time.
     Time(ArrayTime),
+    /// A moment that was computed, to the attosecond, and is not worth so many digits to a
+    /// person: text shows it as a measured cell.
+    Computed(ArrayTime),
     /// Yes or no.
     Flag(bool),
     /// A value that does not exist or overflows, and why.
@@ -123,6 +129,11 @@ impl<'a> From<Result<ArrayTime, &'a str>> for Cell<'a> {
 pub enum Measure {
     /// A name or a word.
     Word,
+    /// The SI unit of the measured cells of a row, for JSON and CSV: text leaves the column
+    /// out, because there each of those cells carries the unit it is shown in.
+    Unit,
+    /// What each measured cell says itself.
+    Various,
     /// A count.
     Count,
     /// A dimensionless number such as a rate difference.

@@ -3,7 +3,7 @@
 use super::digits::{Decimal, MOST_DIGITS, Scale, exponent_of};
 use super::format::yes_or_no;
 use super::format::{ColumnFormat, Form};
-use super::unit::{LONG_TIMES, SECOND, TIMES, Unit, base_unit, decimal_unit, long_unit};
+use super::unit::{LONG_TIMES, SECOND, TIMES, Unit, base_unit, decimal_unit, long_unit, measured};
 use super::width::columns_of;
 use super::{Cell, Column, Measure};
 
@@ -41,6 +41,8 @@ pub struct ColumnScan {
     unit: Option<Unit>,
     least_digits: i32,
     text_columns: usize,
+    /// The measured cell last seen: limits are often the same in many rows.
+    measured: Option<(f64, Measure)>,
     anything_absent: bool,
     /// Numbers, in SI units.
     numbers: usize,
@@ -80,6 +82,7 @@ impl ColumnScan {
             unit: None,
             least_digits: LEAST_DIGITS,
             text_columns: 0,
+            measured: None,
             anything_absent: false,
             numbers: 0,
             lowest: f64::INFINITY,
@@ -123,6 +126,18 @@ impl ColumnScan {
             Cell::Absent(_) => self.anything_absent = true,
             Cell::Number(value) if value.is_finite() => self.see_number(*value),
             Cell::Number(_) => self.anything_absent = true,
+            Cell::Measured(value, measure) if self.measured == Some((*value, *measure)) => {}
+            Cell::Measured(value, measure) if value.is_finite() => {
+                self.measured = Some((*value, *measure));
+                // The ASCII label may be the longer one; a column too wide is no harm.
+                let shown = measured(*value, *measure, false);
+                self.text_columns = self.text_columns.max(columns_of(&shown));
+            }
+            Cell::Measured(..) => self.anything_absent = true,
+            Cell::Computed(time) => {
+                let shown = measured(time.to_f64(), Measure::Time, false);
+                self.text_columns = self.text_columns.max(columns_of(&shown));
+            }
             // A whole number of something with a unit is a number like any other.
             Cell::Integer(value) if !self.counts() => self.see_number(*value as f64),
             Cell::Integer(value) => {
@@ -142,7 +157,10 @@ impl ColumnScan {
 
     /// Whether whole numbers are counts and not values with a unit.
     fn counts(&self) -> bool {
-        matches!(self.measure, Measure::Word | Measure::Count | Measure::Ratio)
+        matches!(
+            self.measure,
+            Measure::Word | Measure::Unit | Measure::Various | Measure::Count | Measure::Ratio
+        )
     }
 
     fn see_number(&mut self, value: f64) {
@@ -377,8 +395,8 @@ fn is_difference(key: &str) -> bool {
         "applied",
         "residual",
     ];
-    // The worst of several is a size.
-    let is_size = key.starts_with("worst_");
+    // The worst of several is a size, and so is the smallest.
+    let is_size = key.starts_with("worst_") || key.starts_with("smallest_");
     !is_size && key.split('_').any(|word| DIFFERENCES.contains(&word))
 }
 

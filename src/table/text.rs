@@ -304,7 +304,9 @@ fn push_scalars(
         let format = scan.format(options.unicode);
         let value = match &scalar.value {
             Cell::Absent(why) => format!("- ({why})"),
-            Cell::Number(value) if !value.is_finite() => format!("- ({})", super::NOT_FINITE),
+            Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => {
+                format!("- ({})", super::NOT_FINITE)
+            }
             value => format!("{}{JOINT}{}", format.value(value, "").trim_end(), format.unit()),
         };
         let line = format!("{}: {}", scalar.heading, value.trim_end_matches(JOINT));

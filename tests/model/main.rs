@@ -6,6 +6,8 @@
 // Distributions of errors are shown with `--nocapture`.
 #![allow(clippy::print_stdout)]
 
+mod check;
+mod clocks;
 mod demo_recordings;
 mod history;
 mod identities;
@@ -14,6 +16,7 @@ mod layout_read;
 mod layout_refused;
 mod layout_units;
 mod links;
+mod links_identities;
 mod loads_identities;
 mod loads_layouts;
 mod loads_published;
@@ -22,6 +25,7 @@ mod loads_rules;
 mod pinned;
 mod published;
 mod reach;
+mod reach_identities;
 mod recording;
 mod recording_hostile;
 mod reference;

@@ -30,6 +30,7 @@ pub(crate) mod rays;
 pub(crate) mod series;
 mod shift;
 mod two_way;
+pub(crate) mod way;
 
 pub use extremes::{Extreme, Extremes, Range};
 pub(crate) use one_way::later;

@@ -10,7 +10,7 @@ use std::sync::Arc;
 
 use clockspar::layout::Layout;
 use clockspar::run::Run;
-use clockspar::table::content::{JudgedOver, RuleState, judge};
+use clockspar::table::content::{Check, JudgedOver};
 
 use super::arguments::{Arguments, Command};
 use super::problem::{Problem, STATUS_RULE};
@@ -55,15 +55,12 @@ fn run_of(layout: Layout, file: &str) -> Result<Run, Problem> {
 
 /// One line of warning when a layout breaks a rule the command does not show.
 fn warn_of_broken_rules(layout: &Layout, file: &str) {
-    let judgements = judge(layout, JudgedOver::Plan);
-    let mut broken = judgements.iter().filter(|judgement| judgement.state == RuleState::Broken);
-    let Some(first) = broken.next() else { return };
-    let others = broken.count();
-    let more = if others == 0 { String::new() } else { format!(" and {others} more") };
+    let Some((first, count)) = Check::new(layout, JudgedOver::Plan).broken() else { return };
+    let more = if count == 1 { String::new() } else { format!(" and {} more", count - 1) };
     message(&format!(
-        "warning: {file} breaks the rule `{}` for node `{}`{more}; see `clockspar check`",
+        "warning: {file} breaks the rule `{}` for `{}`{more}; see `clockspar check`",
         first.rule.word(),
-        layout.nodes[first.node].name
+        first.subject.name(layout)
     ));
 }
 

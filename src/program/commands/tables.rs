@@ -7,9 +7,7 @@ use clockspar::layout::Layout;
 use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Run, State};
 use clockspar::table::Report;
-use clockspar::table::content::{
-    JudgedOver, Judgement, RuleState, check_report, judge, offsets_report, rates_report,
-};
+use clockspar::table::content::{Check, JudgedOver, check_report, offsets_report, rates_report};
 
 use super::choice::LineShown;
 use super::show::{Asked, show};
@@ -74,31 +72,24 @@ fn state_at(run: &Run, at: ArrayTime) -> State<'_> {
 
 /// `clockspar check`: over the whole plan, or at the moments asked for.
 pub fn check(arguments: &TableArguments) -> Result<u8, Problem> {
-    let layout = Arc::new(files::load(&arguments.layout)?);
+    let layout = files::load(&arguments.layout)?;
     let asked = arguments.moments.at.is_some() || arguments.moments.every.is_some();
     if !asked {
-        let judgements = judge(&layout, JudgedOver::Plan);
-        let report = |_| check_report(&layout, JudgedOver::Plan, judgements.clone().into());
+        let check = Arc::new(Check::new(&layout, JudgedOver::Plan));
+        let report = |_| check_report(Arc::clone(&check));
         let asked = Asked {
             moments: &Moments::One(ArrayTime::ZERO),
             options: &MomentArguments::default(),
             line: LineShown::of(&layout),
         };
         show(&asked, &arguments.output, &report)?;
-        return Ok(status_of(is_broken(&judgements)));
+        return Ok(status_of(check.broken().is_some()));
     }
     let moments = Moments::of(&arguments.moments, &layout)?;
-    let report = |at| {
-        let span = JudgedOver::Moment(at);
-        check_report(&layout, span, judge(&layout, span).into())
-    };
+    let check = |at| Check::new(&layout, JudgedOver::Moment(at));
+    let report = |at| check_report(Arc::new(check(at)));
     let asked =
         Asked { moments: &moments, options: &arguments.moments, line: LineShown::of(&layout) };
     show(&asked, &arguments.output, &report)?;
-    let broken = moments.iter().any(|at| is_broken(&judge(&layout, JudgedOver::Moment(at))));
-    Ok(status_of(broken))
-}
-
-fn is_broken(judgements: &[Judgement]) -> bool {
-    judgements.iter().any(|judgement| judgement.state == RuleState::Broken)
+    Ok(status_of(moments.iter().any(|at| check(at).broken().is_some())))
 }

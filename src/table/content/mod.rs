@@ -13,7 +13,9 @@ use crate::run::{Aboard, State};
 
 use super::{Cell, Column, Measure, Report};
 
-pub use check::{JudgedOver, Judgement, Rule, RuleState, check_report, judge};
+pub use check::{
+    Check, JudgedOver, Judgement, Rule, RuleState, Subject, Summary, check_report, judge,
+};
 pub use compare::{Difference, compare_report, differences};
 pub use offsets::offsets_report;
 pub use rates::rates_report;
