@@ -2,5 +2,7 @@
 
 mod commands;
 mod desk;
+mod hostile;
 mod readme;
+mod recording_lasts;
 mod terminal_session;
