@@ -93,7 +93,7 @@ fn a_recording_killed_at_any_moment_keeps_every_whole_line() {
                 std::thread::sleep(Duration::from_micros(500));
             }
         }
-        std::thread::sleep(Duration::from_micros(random.below(12_000)));
+        std::thread::sleep(Duration::from_micros(random.below(25_000)));
         child.kill().expect("killed");
         assert_eq!(child.wait().expect("it ends").signal(), Some(9));
         let Ok(bytes) = fs::read(&path) else {
