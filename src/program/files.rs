@@ -55,7 +55,9 @@ fn read_layout(name: &str, text: &str, folder: &Path) -> Result<Layout, Problem>
     let companion = |file: &str| {
         let path = folder.join(file);
         let opened = File::open(&path).map_err(|error| error.to_string())?;
-        read_bounded(opened, file, LARGEST_TABLE).map_err(|problem| problem.text)
+        // The fault of the layout has a rule and a remedy of its own.
+        read_bounded(opened, file, LARGEST_TABLE)
+            .map_err(|problem| problem.text.lines().next().unwrap_or_default().to_owned())
     };
     layout::read(name, text, &companion).map_err(Problem::told)
 }
