@@ -12,7 +12,7 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::run::Run;
 use clockspar::run::recording::{Condition, OpenFault, ReadFault, Reader, Seek, verify};
 use clockspar::table::content::{
-    JudgedOver, check_report, judge, offsets_report, rates_report, replay_report, verify_report,
+    Check, JudgedOver, check_report, offsets_report, rates_report, replay_report, verify_report,
 };
 use clockspar::table::{Report, TextOptions, write_csv, write_json, write_text};
 use sha2::{Digest, Sha256};
@@ -81,8 +81,7 @@ fn flown(layout: Layout) {
     if nodes.len() > MOST_FLOWN {
         return;
     }
-    let judgements = judge(&layout, JudgedOver::Plan);
-    printed(&check_report(&layout, JudgedOver::Plan, judgements.into()));
+    printed(&check_report(Arc::new(Check::new(&layout, JudgedOver::Plan))));
     let end = match &layout.course {
         Course::Thrust(plan) => plan.end(),
         Course::Standing(_) => ArrayTime::from_seconds(86_400),

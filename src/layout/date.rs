@@ -192,7 +192,8 @@ pub fn parse_moment(
 }
 
 /// Whether a text begins like a date: four digits, a hyphen, a digit.
-pub(crate) fn looks_like_a_date(text: &str) -> bool {
+#[must_use]
+pub fn looks_like_a_date(text: &str) -> bool {
     let bytes = text.as_bytes();
     bytes.len() > 5
         && bytes[..4].iter().all(u8::is_ascii_digit)

@@ -4,7 +4,7 @@
 pub mod date;
 pub mod fault;
 pub mod names;
-mod nearest;
+pub(crate) mod nearest;
 pub mod quantity;
 mod read;
 mod written;
@@ -17,6 +17,7 @@ pub use read::{
     FARTHEST_POSITION_M, LARGEST_LAYOUT_BYTES, LARGEST_TABLE_BYTES, MOST_NODES, Source, SourceFile,
     read, sha256,
 };
+pub(crate) use written::parse_toml;
 
 /// A checked layout: every name unique, every reference resolved, rows fore to aft.
 #[derive(Clone, Debug)]

@@ -19,6 +19,7 @@ use number::{Decimal, NotACount};
 pub(crate) use number::{plain, plain_seconds};
 pub use units::Dimension;
 use units::{UNITS, Unit};
+pub(crate) use units::{Unit as UnitFactor, find as find_unit};
 
 /// What is wrong with the text of a quantity.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -77,6 +78,11 @@ pub fn parse(text: &str, dimension: Dimension) -> Result<f64, QuantityFault> {
         "a value stays below 1.8e308 in SI units, the largest number carried",
         format!("write {} such as `{}`", dimension.words(), dimension.example()),
     ))
+}
+
+/// The names of all units.
+pub(crate) fn all_units() -> impl Iterator<Item = &'static str> + Clone {
+    UNITS.iter().map(|unit| unit.name)
 }
 
 /// A moment or length of array time, exactly: a whole number of attoseconds within

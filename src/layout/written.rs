@@ -15,6 +15,7 @@ use crate::model::array_time::ArrayTime;
 
 pub(crate) use document::read_document;
 pub(crate) use nodes::{NodeKey, NodeValues, set_from_text, set_number};
+pub(crate) use syntax::parse as parse_toml;
 
 /// A value that may be absent, or present but faulty (and then reported already).
 #[derive(Clone, Debug, Default, PartialEq)]

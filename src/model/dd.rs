@@ -94,6 +94,16 @@ impl Dd {
         Dd { hi, lo }
     }
 
+    /// The product with a double-double, to 2⁻²⁰⁰, and exactly where four doubles hold it.
+    #[must_use]
+    pub fn wide_product(self, other: Dd) -> Wide {
+        let (ll, ll_error) = two_product(self.lo, other.lo);
+        let (lh, lh_error) = two_product(self.lo, other.hi);
+        let (hl, hl_error) = two_product(self.hi, other.lo);
+        let (hh, hh_error) = two_product(self.hi, other.hi);
+        Wide::sum(&mut [ll_error, ll, lh_error, hl_error, lh, hl, hh_error, hh])
+    }
+
     /// The nearest double.
     #[inline]
     #[must_use]

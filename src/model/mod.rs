@@ -1,6 +1,7 @@
 //! The physics: pure functions of numbers and of a checked layout.
 
 pub mod array_time;
+pub mod clocks;
 pub mod constants;
 pub mod dd;
 pub mod horizon;

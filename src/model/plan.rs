@@ -74,14 +74,20 @@ impl Phase {
         weighted(from_m_s2, left, to_m_s2, gone).to_dd() / Dd::from_i128(length.attoseconds())
     }
 
-    /// `∫ α dτ` from the start of the phase to a moment of it, m/s, to 2⁻¹⁹⁰ of
-    /// `∫ |α| dτ`: the trapezium, which is exact for a straight line.
+    /// `∫ α dτ` from the start of the phase to a moment of it, in m/s² · as, to 2⁻¹⁹⁰ of
+    /// `∫ |α| dτ`: the trapezium, which is exact for a straight line. Counted in attoseconds
+    /// it needs no division over a whole phase, and a logged history is made of those.
     #[must_use]
-    fn velocity_gain(&self, until: ArrayTime) -> Wide {
+    fn gain(&self, until: ArrayTime) -> Wide {
         let Line { origin, length, from_m_s2, to_m_s2 } = self.line;
         let elapsed = Dd::from_i128(until.attoseconds() - self.start.attoseconds());
         if self.is_hold() {
-            return Wide::from(elapsed).times(Dd::new(from_m_s2)).over(Dd::new(1.0e18));
+            return elapsed.wide_product(Dd::new(from_m_s2));
+        }
+        if self.start == origin
+            && until.attoseconds() - origin.attoseconds() == length.attoseconds()
+        {
+            return elapsed.wide_product(Dd::sum(from_m_s2, to_m_s2)).scale(0.5);
         }
         let gone = (self.start.attoseconds() - origin.attoseconds())
             + (until.attoseconds() - origin.attoseconds());
@@ -89,7 +95,6 @@ impl Phase {
         weighted(from_m_s2, left, to_m_s2, gone)
             .times(elapsed)
             .over(Dd::from_i128(2 * length.attoseconds()))
-            .over(Dd::new(1.0e18))
     }
 
     /// `∫ |α| dτ` from the start of the phase to a moment of it, m/s, to 2⁻¹⁰⁰ of itself.
@@ -218,7 +223,8 @@ pub struct Plan {
 /// What has accumulated since array time zero.
 #[derive(Clone, Copy, Debug, Default)]
 struct Integrals {
-    velocity_gain: Wide,
+    /// `∫ α dτ` in m/s² · as.
+    gain: Wide,
     velocity_spent: Dd,
     launch: Launch,
 }
@@ -247,7 +253,7 @@ impl Moment {
     #[must_use]
     pub fn held_always(at: ArrayTime, acceleration_m_s2: f64) -> Moment {
         let elapsed = Dd::from_i128(at.attoseconds());
-        let gain = Wide::from(elapsed).times(Dd::new(acceleration_m_s2)).over(Dd::new(1.0e18));
+        let gain = velocity(Wide::ZERO + elapsed.wide_product(Dd::new(acceleration_m_s2)));
         Moment {
             at,
             phase: None,
@@ -271,14 +277,16 @@ impl Plan {
         let mut spent = RunningSum::default();
         let (mut time, mut position) = (RunningSum::default(), RunningSum::default());
         let mut expected = ArrayTime::ZERO;
+        let mut end_rapidity = Dd::ZERO;
         for (index, phase) in phases.iter().enumerate() {
             check_shape(index, phase, expected)?;
             expected = phase.end;
             until.push(sum);
-            let start_rapidity = rapidity_of(sum.velocity_gain);
+            let start_rapidity = end_rapidity;
             let launch = motion::launch_gain(phase, start_rapidity, phase.end);
-            sum.velocity_gain = sum.velocity_gain + phase.velocity_gain(phase.end);
-            check_rapidity(index, phase, start_rapidity, rapidity_of(sum.velocity_gain))?;
+            sum.gain = sum.gain + phase.gain(phase.end);
+            end_rapidity = near_rapidity_of(sum.gain);
+            check_rapidity(index, phase, start_rapidity, end_rapidity)?;
             spent.add(phase.velocity_spent(phase.end));
             time.add(launch.time_s);
             position.add(launch.position_m);
@@ -301,6 +309,17 @@ impl Plan {
         self.phases.last().map_or(ArrayTime::ZERO, |phase| phase.end)
     }
 
+    /// The rapidity at the start of a phase, by its index; one past the last phase: at the
+    /// end of the plan.
+    ///
+    /// # Panics
+    ///
+    /// If there is no such phase.
+    #[must_use]
+    pub fn rapidity_at_start(&self, phase: usize) -> Dd {
+        rapidity_of(velocity(self.until[phase].gain))
+    }
+
     /// The phase a moment falls in: at a boundary the later one; `None` before array
     /// time zero and from the end of the plan on.
     #[must_use]
@@ -320,13 +339,13 @@ impl Plan {
                 let (phase, before) = (&self.phases[index], &self.until[index]);
                 (
                     phase.acceleration(at),
-                    before.velocity_gain + phase.velocity_gain(at),
+                    velocity(before.gain + phase.gain(at)),
                     before.velocity_spent + phase.velocity_spent(at),
                 )
             }
             None => {
                 let reached = self.reached_outside(at);
-                (Dd::ZERO, reached.velocity_gain, reached.velocity_spent)
+                (Dd::ZERO, velocity(reached.gain), reached.velocity_spent)
             }
         };
         Moment {
@@ -365,7 +384,7 @@ impl Plan {
                 (start, self.reached_outside(at), coast)
             }
         };
-        let rapidity = rapidity_of(before.velocity_gain);
+        let rapidity = near_rapidity_of(before.gain);
         debug_assert!(piece.start == start);
         let gain = motion::launch_gain(&piece, rapidity, at);
         Launch {
@@ -410,6 +429,17 @@ impl Plan {
     }
 }
 
+/// A gain in m/s² · as as a velocity, m/s.
+fn velocity(gain: Wide) -> Wide {
+    gain.over(Dd::new(1.0e18))
+}
+
+/// `φ` of a gain in m/s² · as, to a few units of 2⁻¹⁰⁶ of itself: enough for launch
+/// coordinates, which are carried to the accuracy of a double.
+fn near_rapidity_of(gain: Wide) -> Dd {
+    gain.to_dd() / Dd::product(SPEED_OF_LIGHT_M_S, 1.0e18)
+}
+
 /// `φ` of a velocity gain.
 fn rapidity_of(velocity_gain: Wide) -> Dd {
     velocity_gain.to_dd() * INVERSE_C_S_M
@@ -435,11 +465,14 @@ fn check_shape(index: usize, phase: &Phase, expected: ArrayTime) -> Result<(), P
 
 /// The rapidity is extreme at the ends of a phase and where a ramp passes through zero.
 fn check_rapidity(index: usize, phase: &Phase, start: Dd, end: Dd) -> Result<(), PlanFault> {
-    let turning =
-        (!phase.is_hold()).then(|| phase.moment_of(Dd::ZERO)).flatten().map_or(start, |after| {
-            let first = phase.acceleration(phase.start);
-            start + first * after / (2.0 * SPEED_OF_LIGHT_M_S)
-        });
+    let (first, last) = (phase.acceleration(phase.start), phase.acceleration(phase.end));
+    let turning = if first.is_negative() != last.is_negative() {
+        phase
+            .moment_of(Dd::ZERO)
+            .map_or(start, |after| start + first * after / (2.0 * SPEED_OF_LIGHT_M_S))
+    } else {
+        start
+    };
     for rapidity in [turning, end] {
         if rapidity.abs() > Dd::new(LARGEST_RAPIDITY) {
             return Err(PlanFault::TooFast { phase: index, rapidity: rapidity.to_f64() });

@@ -55,15 +55,20 @@ impl Instant {
     /// steering that would make its clock show array time.
     #[must_use]
     pub fn redshift(&self, position_m: Dd) -> Dd {
-        let excess = self.rate_minus_one(position_m);
-        -excess / (excess + 1.0)
+        redshift_of(self.rate_minus_one(position_m))
     }
 
     /// Proper acceleration the node feels, m/s², with the sign of `α`.
     #[must_use]
     pub fn felt_acceleration_m_s2(&self, position_m: Dd) -> Dd {
+        self.felt_at_rate_m_s2(position_m, self.rate(position_m))
+    }
+
+    /// The same where the rate `N` is known already.
+    #[must_use]
+    pub fn felt_at_rate_m_s2(&self, position_m: Dd, rate: Dd) -> Dd {
         let local = self.moment.acceleration_m_s2 - position_m * self.gradient_per_s2;
-        local / self.rate(position_m)
+        local / rate
     }
 
     /// Distance from the horizon, m: aft of the node for `α > 0`, fore for `α < 0`.
@@ -71,11 +76,17 @@ impl Instant {
     /// field is not that of a horizon.
     #[must_use]
     pub fn horizon_m(&self, position_m: Dd) -> Option<Dd> {
+        self.horizon_at_rate_m(self.rate(position_m))
+    }
+
+    /// The same where the rate `N` is known already.
+    #[must_use]
+    pub fn horizon_at_rate_m(&self, rate: Dd) -> Option<Dd> {
         let acceleration = self.moment.acceleration_m_s2;
         if acceleration.is_zero() || self.gradient_per_s2 != 0.0 {
             return None;
         }
-        Some(C2_M2_S2 * self.rate(position_m) / acceleration.abs())
+        Some(C2_M2_S2 * rate / acceleration.abs())
     }
 
     /// `τ_h − τ` of a node that has stood at one position since array time zero, s.
@@ -107,6 +118,79 @@ impl Instant {
             return self.clock_offset_s(to_m - from_m);
         }
         self.clock_offset_s(to_m) - self.clock_offset_s(from_m)
+    }
+}
+
+/// `1/N − 1` where `N − 1` is known already.
+#[must_use]
+pub fn redshift_of(rate_minus_one: Dd) -> Dd {
+    -rate_minus_one / (rate_minus_one + 1.0)
+}
+
+/// What the pairs from one node share at a moment, to make their differences quickly.
+///
+/// Purpose: tables of every ordered pair, of which a line of 10⁴ nodes has 10⁸.
+/// Formula: both differences are a factor of the first node times the distance,
+/// `α/(c² N_from)` and `φ/c`; the factors are kept.
+/// Accuracy: the bits are those of [`Instant::rate_difference`] and
+/// [`Instant::clock_offset_difference_s`], rounded. The short product and the long form are
+/// each within 2⁻⁹⁸ of the true value; where that could decide the last bit, about once in
+/// 2⁴⁰ values, the long form is taken.
+#[derive(Clone, Copy, Debug)]
+pub struct PairFactors {
+    from_m: f64,
+    /// Of the rate difference and of the clock offset, per metre.
+    factors: Option<[Dd; 2]>,
+}
+
+impl PairFactors {
+    /// Of the pairs from a node at a position. A line that stands in a gradient has no such
+    /// factors and takes the long form.
+    #[must_use]
+    pub fn new(instant: &Instant, from_m: f64) -> PairFactors {
+        let moment = &instant.moment;
+        let factors = (instant.gradient_per_s2 == 0.0).then(|| {
+            let rate = instant.rate(Dd::new(from_m));
+            [moment.acceleration_m_s2 * INVERSE_C2_S2_M2 / rate, moment.rapidity * INVERSE_C_S_M]
+        });
+        PairFactors { from_m, factors }
+    }
+
+    /// `N_to / N_from − 1`.
+    #[inline]
+    #[must_use]
+    pub fn rate_difference(&self, instant: &Instant, to_m: f64) -> f64 {
+        self.short(0, to_m).unwrap_or_else(|| {
+            instant.rate_difference(Dd::new(self.from_m), Dd::new(to_m)).to_f64()
+        })
+    }
+
+    /// Difference of the clock offsets, to − from, s.
+    #[inline]
+    #[must_use]
+    pub fn clock_offset_s(&self, instant: &Instant, to_m: f64) -> f64 {
+        self.short(1, to_m).unwrap_or_else(|| {
+            let (from, to) = (Dd::new(self.from_m), Dd::new(to_m));
+            instant.clock_offset_difference_s(from, to).to_f64()
+        })
+    }
+
+    /// The product, unless its last bit is in doubt.
+    #[inline]
+    fn short(&self, which: usize, to_m: f64) -> Option<f64> {
+        const DOUBT: f64 = 1.0 / (1_u128 << 94) as f64;
+        let (apart, factor) = (Dd::difference(to_m, self.from_m), self.factors?[which]);
+        if apart.is_zero() || factor.is_zero() {
+            return Some(0.0);
+        }
+        let value = apart * factor;
+        // Far below this the low halves lose bits to underflow.
+        if value.hi.abs() < 1e-250 {
+            return None;
+        }
+        let doubt = value.hi.abs() * DOUBT;
+        let above = value.hi + (value.lo + doubt);
+        (above == value.hi + (value.lo - doubt)).then_some(above)
     }
 }
 
@@ -145,6 +229,12 @@ impl KnownClock {
 /// Whether `1 + α h / c²` is above zero, decided exactly for double inputs.
 #[must_use]
 pub fn is_realisable(acceleration_m_s2: Dd, position_m: f64) -> bool {
+    // A rate clear of zero by far more than doubles can be wrong needs no wide numbers.
+    let drive = acceleration_m_s2.hi * position_m / C2_M2_S2.hi;
+    let unsure = 1e-12 * (1.0 + drive.abs());
+    if (1.0 + drive).abs() > unsure {
+        return drive > -1.0;
+    }
     let rate = Wide::from(acceleration_m_s2).times(Dd::new(position_m)) + Wide::from(C2_M2_S2);
     let rate = rate.to_dd();
     !rate.is_negative() && !rate.is_zero()

@@ -10,7 +10,12 @@ use clap::{Args, Parser, Subcommand, ValueEnum};
 /// Without a command: opens the desk on a built-in layout, or prints that layout's
 /// rates when standard output is no terminal.
 #[derive(Debug, Parser)]
-#[command(name = "clockspar", version, disable_help_subcommand = true)]
+#[command(
+    name = "clockspar",
+    version,
+    disable_help_subcommand = true,
+    args_conflicts_with_subcommands = true
+)]
 pub struct Arguments {
     /// What to do.
     #[command(subcommand)]
@@ -18,6 +23,9 @@ pub struct Arguments {
     /// How the desk looks.
     #[command(flatten)]
     pub look: Look,
+    /// Whose preferences count.
+    #[command(flatten)]
+    pub preferences: PreferenceArguments,
 }
 
 /// The commands.
@@ -31,6 +39,12 @@ pub enum Command {
     Rates(TableArguments),
     /// Clock offsets against the reference, or of every ordered pair
     Offsets(OffsetsArguments),
+    /// Forces, stretch, propellant; peaks over the plan
+    Loads(TableArguments),
+    /// Per link and direction: flight times, shift, received frequency, round trip, two-way error
+    Links(TableArguments),
+    /// Stations, last call, contact tables; released nodes and what they pass
+    Reach(ReachArguments),
     /// Two layouts or recordings: rows of differences
     Compare(CompareArguments),
     /// A run to a recording, without a terminal
@@ -49,6 +63,9 @@ pub struct DeskArguments {
     /// How it looks.
     #[command(flatten)]
     pub look: Look,
+    /// Whose preferences count.
+    #[command(flatten)]
+    pub preferences: PreferenceArguments,
 }
 
 /// How the desk looks.
@@ -63,6 +80,18 @@ pub struct Look {
     /// Draw with Unicode characters whatever the locale says
     #[arg(long)]
     pub unicode: bool,
+}
+
+/// Which file of preferences to use, for display only.
+#[derive(Clone, Debug, Default, Args)]
+pub struct PreferenceArguments {
+    /// Use this file of preferences: units, columns, colour, marks and width of the text form
+    /// [default: clockspar/preferences.toml in the folder for configuration]
+    #[arg(long, value_name = "FILE", conflicts_with = "no_preferences")]
+    pub preferences: Option<PathBuf>,
+    /// Use no preferences
+    #[arg(long)]
+    pub no_preferences: bool,
 }
 
 /// When to use colour.
@@ -123,6 +152,35 @@ pub struct OutputArguments {
     /// Which table, where a command has several
     #[arg(long, value_name = "NAME")]
     pub table: Option<String>,
+    /// Only the rows of these nodes: names and ranges, such as `hub,s2..s7`
+    #[arg(long, value_name = "LIST", allow_hyphen_values = true)]
+    pub nodes: Option<String>,
+    /// Only these columns, in this order: keys of the row, such as `node,clock_offset_s`
+    #[arg(long, value_name = "LIST")]
+    pub columns: Option<String>,
+    /// Unit of a column of the text form, such as `clock_offset=ps`; may be repeated
+    #[arg(long, value_name = "KEY=UNIT")]
+    pub unit: Vec<String>,
+    /// Whose preferences count.
+    #[command(flatten)]
+    pub preferences: PreferenceArguments,
+}
+
+impl OutputArguments {
+    /// The form of the table, text unless another was asked for.
+    pub fn form(&self) -> Form {
+        self.form.unwrap_or(Form::Text)
+    }
+
+    /// Whether anything was asked that only a table can answer.
+    pub fn wants_table(&self) -> bool {
+        self.form.is_some()
+            || self.out.is_some()
+            || self.table.is_some()
+            || self.nodes.is_some()
+            || self.columns.is_some()
+            || !self.unit.is_empty()
+    }
 }
 
 /// Arguments of a table command.
@@ -147,6 +205,20 @@ pub struct OffsetsArguments {
     /// Add the table of every ordered pair
     #[arg(long)]
     pub pairs: bool,
+}
+
+/// Arguments of `reach`.
+#[derive(Clone, Debug, Args)]
+pub struct ReachArguments {
+    /// As for every table.
+    #[command(flatten)]
+    pub table: TableArguments,
+    /// Let this node go at the moment: adds what it passes and how it is heard
+    #[arg(long, value_name = "NODE")]
+    pub release: Option<String>,
+    /// Add the spans of sending time from which nothing arrives before this moment
+    #[arg(long, value_name = "MOMENT", allow_hyphen_values = true)]
+    pub before: Option<String>,
 }
 
 /// Arguments of `compare`.

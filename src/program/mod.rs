@@ -6,6 +6,7 @@ mod desk;
 mod files;
 mod moments;
 mod output;
+mod preferences;
 pub mod problem;
 mod recording_file;
 mod terminal;

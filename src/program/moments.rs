@@ -3,7 +3,7 @@
 use clockspar::layout::quantity::{self, QuantityFault};
 use std::sync::Arc;
 
-use clockspar::layout::date::parse_moment;
+use clockspar::layout::date::{looks_like_a_date, parse_moment};
 use clockspar::layout::{Course, Layout};
 use clockspar::model::array_time::ArrayTime;
 
@@ -45,6 +45,15 @@ impl Moments {
         let from = or("--from", &arguments.from, ArrayTime::ZERO)?;
         let until = or("--until", &arguments.until, plan_end(layout))?;
         every_moment(from, until, step("--every", every)?)
+    }
+
+    /// The first date among the options, as it was given.
+    pub fn date_given(arguments: &MomentArguments) -> Option<&str> {
+        [&arguments.at, &arguments.from, &arguments.until]
+            .into_iter()
+            .flatten()
+            .map(|text| text.trim_matches(' '))
+            .find(|text| looks_like_a_date(text))
     }
 
     /// How many moments there are.

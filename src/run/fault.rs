@@ -79,6 +79,27 @@ pub enum RunFault {
     },
     /// A node would reach the horizon.
     Horizon(Box<HorizonFault>),
+    /// A node would reach the horizon where load puts it.
+    HorizonUnderLoad {
+        /// Name of the node.
+        name: String,
+        /// The acceleration of the reference node at which it would, m/s².
+        acceleration_m_s2: f64,
+    },
+    /// A span would be pushed shorter than nothing.
+    Crushed {
+        /// Names of its ends.
+        between: [String; 2],
+        /// The acceleration of the reference node at which it would, m/s².
+        acceleration_m_s2: f64,
+    },
+    /// No unloaded lengths give the positions as flown.
+    NotInvertible,
+    /// The properties of a part make no line.
+    NoStructure {
+        /// Which part.
+        what: String,
+    },
     /// A node of a standing line would be where the gradient has turned gravity round.
     GravityTurned {
         /// Name of the node.
@@ -168,6 +189,19 @@ impl RunFault {
                 fault.phase.map_or(String::new(), |phase| format!(" in phase {}", phase + 1)),
                 nine_digits(fault.at)
             ),
+            RunFault::HorizonUnderLoad { name, acceleration_m_s2 } => format!(
+                "`{name}` would reach the horizon where load puts it, at {} m/s^2",
+                number(*acceleration_m_s2)
+            ),
+            RunFault::Crushed { between: [first, second], acceleration_m_s2 } => format!(
+                "the span from `{first}` to `{second}` would be pushed shorter than nothing at \
+                 {} m/s^2",
+                number(*acceleration_m_s2)
+            ),
+            RunFault::NotInvertible => {
+                "no lengths without load give the positions as flown".to_owned()
+            }
+            RunFault::NoStructure { what } => what.clone(),
             RunFault::GravityTurned { name, .. } => {
                 format!("the gradient would turn gravity round at `{name}`")
             }
@@ -210,8 +244,14 @@ impl RunFault {
                 "a position is at most {} m from the reference node",
                 number(FARTHEST_POSITION_M)
             ),
-            RunFault::Horizon(_) => {
+            RunFault::Horizon(_) | RunFault::HorizonUnderLoad { .. } => {
                 "the rate of every node is above zero at every moment".to_owned()
+            }
+            RunFault::Crushed { .. } | RunFault::NotInvertible => {
+                "a span keeps a length above zero under every load of the plan".to_owned()
+            }
+            RunFault::NoStructure { .. } => {
+                "masses, lengths and strains are those of a line that can be built".to_owned()
             }
             RunFault::GravityTurned { .. } => {
                 "the gradient times the height is at most the gravity".to_owned()
@@ -264,6 +304,14 @@ impl RunFault {
                     )
                 }
             }
+            RunFault::HorizonUnderLoad { .. } => {
+                "less thrust, a stiffer line, or the node nearer to the reference node".to_owned()
+            }
+            RunFault::Crushed { .. } => "a larger axial stiffness, or less thrust".to_owned(),
+            RunFault::NotInvertible => {
+                "a larger axial stiffness, or positions `unloaded`".to_owned()
+            }
+            RunFault::NoStructure { .. } => "another value for that part".to_owned(),
             RunFault::GravityTurned { farthest_m, .. } => {
                 format!("a height of {} m or nearer to the reference node", number(*farthest_m))
             }

@@ -10,23 +10,28 @@
 mod bounds;
 mod event;
 mod fault;
+mod light;
+mod loaded;
 mod place;
 pub mod recording;
 mod state;
 mod thrust;
 
 use std::collections::BTreeMap;
-use std::sync::Arc;
+use std::sync::{Arc, OnceLock};
 
 use crate::layout::names::is_unsafe;
 use crate::layout::{Course, FARTHEST_POSITION_M, Layout};
 use crate::model::array_time::ArrayTime;
 use crate::model::dd::Dd;
+use crate::model::loads::Loads;
 use crate::model::plan::{Moment, Plan};
 use crate::model::rates::Instant;
 
 pub use event::{Event, EventKind};
 pub use fault::{HorizonFault, RunFault};
+pub use light::{Answer, Light, NoSignal, NodeEnd, Signal};
+pub use loaded::{Stretched, may_stretch};
 pub use place::Place;
 pub use state::{Aboard, NodeState, State};
 
@@ -42,6 +47,11 @@ pub struct Run {
     changed_plan: Option<Plan>,
     /// The hold the plan ends in, if it is held for good.
     open_hold: Option<OpenHold>,
+    /// The loads that displace nodes, with the moment each of them holds from; empty on a
+    /// rigid line.
+    loads: Vec<(ArrayTime, Arc<Loads>)>,
+    /// The loads of a rigid line, once they have been asked for.
+    rigid_loads: OnceLock<Result<Arc<Loads>, RunFault>>,
     /// The nodes that have been moved or released, by row; all others stand where the
     /// layout puts them.
     moved: BTreeMap<usize, Moved>,
@@ -81,16 +91,19 @@ impl Run {
     /// A node that reaches the horizon, or stands where the gradient has turned gravity
     /// round: such a line cannot be flown at all.
     pub fn new(layout: Arc<Layout>) -> Result<Run, RunFault> {
-        let run = Run {
+        let mut run = Run {
             positions_m: layout.nodes.iter().map(|node| node.position_m).collect(),
             layout,
             events: Vec::new(),
             changed_plan: None,
             open_hold: None,
+            loads: Vec::new(),
+            rigid_loads: OnceLock::new(),
             moved: BTreeMap::new(),
             links: BTreeMap::new(),
         };
-        run.check_line(run.plan(), ArrayTime::ZERO)?;
+        let loads = run.check_flight(run.plan(), ArrayTime::ZERO)?;
+        run.loads.extend(loads.map(|loads| (ArrayTime::ZERO, loads)));
         Ok(run)
     }
 
@@ -280,7 +293,10 @@ impl Run {
         if position_m.is_nan() || position_m.abs() > FARTHEST_POSITION_M {
             return Err(RunFault::OutsideLine { position_m });
         }
-        self.check_position(self.plan(), at, row, position_m, true)?;
+        match self.loads.last() {
+            Some((_, loads)) => self.check_under(loads, self.plan(), at, row, position_m, true)?,
+            None => self.check_position(self.plan(), at, row, position_m, true)?,
+        }
         self.moved_entry(row).place.move_to(at, position_m);
         Ok(())
     }

@@ -32,6 +32,12 @@ impl Place {
         self.moves_until(at).last().map_or(self.first_m, |(_, position_m)| *position_m)
     }
 
+    /// Whether the node has been moved up to a moment.
+    #[must_use]
+    pub fn has_moved(&self, at: ArrayTime) -> bool {
+        !self.moves_until(at).is_empty()
+    }
+
     /// The largest distance from the reference node up to a moment, m: the scale of what
     /// rounding can leave in the clock offset.
     #[must_use]
@@ -46,22 +52,29 @@ impl Place {
     /// line that stands in a gradient gathers `Σ (N_k − 1) Δτ_k`. The first stay counts
     /// from array time zero. `now` is the instant asked for, `instant_at` gives that of
     /// any earlier moment. A node that never moved gets the bits of
-    /// [`Instant::clock_offset_s`].
+    /// [`Instant::clock_offset_s`]. `settled_m` is what a line that stands under load adds
+    /// to every place; a line under thrust adds its own share afterwards, since its load
+    /// changes during a stay.
     ///
     /// Accuracy: the rounding of double-double in each term, so 4 units of 2⁻⁵³ of the
     /// value plus 2⁻⁹⁶ of the largest `h Φ / c`. Left out, as the move takes no time: the
     /// motion from one place to the next.
     #[must_use]
-    pub fn clock_offset_s(&self, now: &Instant, instant_at: impl Fn(ArrayTime) -> Instant) -> Dd {
+    pub fn clock_offset_s(
+        &self,
+        now: &Instant,
+        settled_m: Dd,
+        instant_at: impl Fn(ArrayTime) -> Instant,
+    ) -> Dd {
         let at = now.moment.at;
         let done = self.moves_until(at);
         if done.is_empty() {
-            return now.clock_offset_s(Dd::new(self.first_m));
+            return now.clock_offset_s(Dd::new(self.first_m) + settled_m);
         }
         let by_rapidity = now.gradient_per_s2 == 0.0;
         let mut sum = RunningSum::default();
         let mut stay = |begin: &Instant, end: &Instant, position_m: f64| {
-            let position_m = Dd::new(position_m);
+            let position_m = Dd::new(position_m) + settled_m;
             sum.add(if by_rapidity {
                 (end.moment.rapidity - begin.moment.rapidity) * position_m
             } else {

@@ -1,5 +1,7 @@
 //! Changes of thrust: the plan as it is flown, rebuilt from an event on.
 
+use std::sync::OnceLock;
+
 use crate::layout::Course;
 use crate::model::array_time::{ATTOSECONDS_PER_SECOND, ArrayTime};
 use crate::model::constants::SPEED_OF_LIGHT_M_S;
@@ -102,7 +104,9 @@ impl Run {
         plan: Plan,
         open_hold: Option<OpenHold>,
     ) -> Result<(), RunFault> {
-        self.check_line(Some(&plan), from)?;
+        let loads = self.check_flight(Some(&plan), from)?;
+        self.loads.extend(loads.map(|loads| (from, loads)));
+        self.rigid_loads = OnceLock::new();
         self.changed_plan = Some(plan);
         self.open_hold = open_hold;
         Ok(())

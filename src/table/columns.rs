@@ -3,12 +3,13 @@
 use std::io::{self, Write};
 use std::ops::Range;
 
+use super::choose::Units;
 use super::format::ColumnFormat;
 use super::scan::ColumnScan;
 use super::stream::{threads_for, write_rows};
 use super::text::TextOptions;
 use super::width::{columns_of, push_blanks, push_left, push_right, wrapped};
-use super::{Cell, Measure, NOT_FINITE, Table};
+use super::{Cell, Column, Measure, NOT_FINITE, Table};
 
 /// Blanks between columns.
 const GAP: usize = 2;
@@ -24,6 +25,7 @@ const LEAST_WORDS: usize = 4;
 pub(super) fn write_table(
     table: &Table<'_>,
     options: &TextOptions,
+    units: Option<&Units>,
     titled: bool,
     out: &mut dyn Write,
 ) -> io::Result<()> {
@@ -36,7 +38,7 @@ pub(super) fn write_table(
         let order = if table.marked.is_some() { ", fore to aft, * the reference" } else { "" };
         options.push_lines(&mut text, &format!("{}{order}", table.name));
     }
-    let (formats, reasons) = scan(table, options.unicode);
+    let (formats, reasons) = scan(table, units, options.unicode);
     let margin = if table.marked.is_some() { MARK } else { 0 };
     let blocks = blocks(table, &formats, margin, *options);
     for (place, block) in blocks.iter().enumerate() {
@@ -87,7 +89,7 @@ impl Reasons {
     fn mark_of(&self, cell: &Cell<'_>) -> &'static str {
         let why = match cell {
             Cell::Absent(why) => why,
-            Cell::Number(value) if !value.is_finite() => NOT_FINITE,
+            Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => NOT_FINITE,
             _ => return "",
         };
         self.texts.iter().position(|known| known == why).map_or("", |place| self.mark_at(place))
@@ -95,8 +97,10 @@ impl Reasons {
 }
 
 /// The first pass over the rows.
-fn scan(table: &Table<'_>, unicode: bool) -> (Vec<ColumnFormat>, Reasons) {
-    let mut scans: Vec<ColumnScan> = table.columns.iter().map(ColumnScan::new).collect();
+fn scan(table: &Table<'_>, units: Option<&Units>, unicode: bool) -> (Vec<ColumnFormat>, Reasons) {
+    let unit = |column: &Column| units?.of_column(column, &table.columns);
+    let mut scans: Vec<ColumnScan> =
+        table.columns.iter().map(|column| ColumnScan::new(column).in_unit(unit(column))).collect();
     let mut absent = vec![false; scans.len()];
     let mut reasons = Reasons { texts: Vec::new(), more: false };
     let mut cells = Vec::with_capacity(scans.len());
@@ -108,7 +112,7 @@ fn scan(table: &Table<'_>, unicode: bool) -> (Vec<ColumnFormat>, Reasons) {
             scan.see(cell);
             let why = match cell {
                 Cell::Absent(why) => why,
-                Cell::Number(value) if !value.is_finite() => NOT_FINITE,
+                Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => NOT_FINITE,
                 _ => continue,
             };
             *absent = true;
@@ -170,6 +174,8 @@ fn blocks<'t>(
     let mut columns: Vec<Shown<'t>> = formats
         .iter()
         .enumerate()
+        // Measured cells carry their units themselves.
+        .filter(|(index, _)| table.columns[*index].measure != Measure::Unit)
         .map(|(index, format)| Shown::new(table, index, format, options))
         .collect();
     let taken = |columns: &[Shown<'_>]| {

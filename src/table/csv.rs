@@ -132,9 +132,9 @@ fn push_cell(out: &mut Vec<u8>, cell: &Cell<'_>) {
     match cell {
         Cell::Text(text) => push_text(out, text),
         // A number without a form leaves its field empty, as an absent one does.
-        Cell::Number(value) => _ = push_f64(out, *value),
+        Cell::Number(value) | Cell::Measured(value, _) => _ = push_f64(out, *value),
         Cell::Integer(value) => push_i64(out, *value),
-        Cell::Time(time) => push_time(out, *time),
+        Cell::Time(time) | Cell::Computed(time) => push_time(out, *time),
         Cell::Flag(flag) => out.extend_from_slice(flag.to_string().as_bytes()),
         Cell::Absent(_) => {}
     }

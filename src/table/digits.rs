@@ -13,6 +13,13 @@ use std::fmt::{self, Write};
 /// 2⁵⁴, has at most 33 digits.
 const SETTLING_DIGITS: usize = 40;
 
+/// Decimals of the scientific form that every double has at most: with them nothing of it is
+/// left out.
+const ALL_DECIMALS: usize = 766;
+
+/// An attosecond is one part in ten to this power of a second.
+const ATTO: i32 = 18;
+
 /// The most digits that are ever shown.
 pub(super) const MOST_DIGITS: usize = 17;
 
@@ -23,6 +30,8 @@ pub(super) enum Scale {
     Ten(i32),
     /// A whole number (below 2⁵⁴) times a power of ten.
     Whole(u64, i32),
+    /// One part of a whole number (below 2⁵⁴): per day is one part in 86 400 of per second.
+    Part(u64),
 }
 
 /// A decimal magnitude `d₀.d₁d₂… · 10^exponent`; zero has no digits.
@@ -94,11 +103,54 @@ impl Decimal {
         decimal
     }
 
+    /// The magnitude times a whole number, with all its digits: a product that looks like a
+    /// tie need not be one, and no fixed number of digits settles that.
+    fn product(value: f64, factor: u64) -> Decimal {
+        let all = Decimal::read(format!("{:.*e}", ALL_DECIMALS, value.abs()).as_bytes());
+        let mut digits = Vec::with_capacity(all.digits.len() + 20);
+        let mut carry = 0;
+        for &digit in all.digits.iter().rev() {
+            let sum = u64::from(digit) * factor + carry;
+            digits.push((sum % 10) as u8);
+            carry = sum / 10;
+        }
+        let before = digits.len();
+        while carry > 0 {
+            digits.push((carry % 10) as u8);
+            carry /= 10;
+        }
+        let exponent = all.exponent + (digits.len() - before) as i32;
+        digits.reverse();
+        let mut product = Decimal { digits, exponent };
+        product.trim();
+        product
+    }
+
+    /// A count of attoseconds in a unit of time, rounded to a multiple of 10^`position` of
+    /// that unit.
+    pub fn of_attoseconds(count: u128, scale: Scale, position: i32) -> Decimal {
+        let (tens, divisor) = match scale {
+            Scale::Ten(tens) => (tens, 1),
+            Scale::Whole(whole, tens) => (tens, whole),
+            Scale::Part(_) => (0, 1),
+        };
+        let mut full = Decimal::read(count.to_string().as_bytes());
+        full.exponent -= ATTO;
+        let mut rounded =
+            full.divided(divisor).rounded(position + tens, true).unwrap_or(Decimal::ZERO);
+        rounded.exponent -= tens;
+        rounded
+    }
+
     /// The value in a unit, rounded to a multiple of 10^`position` of that unit.
     pub fn at_position(value: f64, scale: Scale, position: i32) -> Decimal {
         let (tens, divisor) = match scale {
             Scale::Ten(tens) => (tens, 1),
             Scale::Whole(whole, tens) => (tens, whole),
+            Scale::Part(parts) => {
+                let product = Decimal::product(value, parts);
+                return product.rounded(position, true).unwrap_or(Decimal::ZERO);
+            }
         };
         if divisor == 1 {
             // Seventeen digits settle all roundings but those that look like a tie.
@@ -124,15 +176,22 @@ impl Decimal {
             }
             Scale::Whole(whole, tens) => {
                 let full = Decimal::with_digits(value, SETTLING_DIGITS).divided(whole);
-                let place = full.exponent + 1 - count as i32;
-                let mut rounded = full.rounded(place, true).unwrap_or(Decimal::ZERO);
-                // A carry into a new first digit leaves one digit too many.
-                let digits = if rounded.digits.is_empty() { 0 } else { count };
-                rounded.digits.resize(digits, 0);
+                let mut rounded = full.cut_to(count);
                 rounded.exponent -= tens;
                 rounded
             }
+            Scale::Part(parts) => Decimal::product(value, parts).cut_to(count),
         }
+    }
+
+    /// All the digits there are, rounded to a number of them.
+    fn cut_to(self, count: usize) -> Decimal {
+        let place = self.exponent + 1 - count as i32;
+        let mut rounded = self.rounded(place, true).unwrap_or(Decimal::ZERO);
+        // A carry into a new first digit leaves one digit too many.
+        let digits = if rounded.digits.is_empty() { 0 } else { count };
+        rounded.digits.resize(digits, 0);
+        rounded
     }
 
     /// Power of ten of the last digit.
@@ -301,6 +360,31 @@ mod tests {
                 assert_eq!(shown.fixed(decimals), format!("{value:.decimals$}"));
             }
         }
+    }
+
+    #[test]
+    fn products_agree_with_whole_numbers() {
+        let mut state = 3;
+        for _ in 0..5_000 {
+            let count = next(&mut state) >> (12 + next(&mut state) % 40);
+            let halvings = (next(&mut state) % 40) as u32;
+            let value = count as f64 / (1_u64 << halvings) as f64;
+            for factor in [86_400_u64, 31_557_600] {
+                for decimals in 0..6_u32 {
+                    let parts = u128::from(count) * u128::from(factor) * 10_u128.pow(decimals);
+                    let size = 1_u128 << halvings;
+                    let (quotient, rest) = (parts / size, parts % size);
+                    let up = 2 * rest > size || (2 * rest == size && quotient % 2 == 1);
+                    let wanted = quotient + u128::from(up);
+                    let shown =
+                        Decimal::at_position(value, Scale::Part(factor), -(decimals as i32));
+                    let shown = shown.fixed(decimals as usize).replace('.', "");
+                    assert_eq!(shown.parse(), Ok(wanted), "{value} * {factor} to {decimals}");
+                }
+            }
+        }
+        let shown = Decimal::significant(1e-16, Scale::Part(86_400), 4);
+        assert_eq!(shown.scientific(), ("8.640".to_owned(), "e-12".to_owned()));
     }
 
     #[test]

@@ -2,9 +2,9 @@
 
 use super::digits::{Decimal, Scale, exponent_of};
 use super::scan::ColumnScan;
-use super::unit::Unit;
+use super::unit::{SECOND, Unit, measured};
 use super::width::{push_blanks, push_left, push_right};
-use super::{Cell, Column};
+use super::{Cell, Column, Measure};
 use crate::model::array_time::ArrayTime;
 
 /// Digits under which a value that has more is not shown in plain notation.
@@ -41,6 +41,9 @@ pub(super) enum Form {
     Scientific { digits: usize, exponent_width: usize },
     /// Exact times with the same number of decimals, in a unit of so many attoseconds.
     Exact { size: u128, decimals: usize },
+    /// Exact times rounded to that many decimals, in a unit that was asked for and in which
+    /// they are no short decimals.
+    Rounded { scale: Scale, decimals: usize },
 }
 
 /// Chooses the form of a column for some of its cells, in the order of their rows.
@@ -106,7 +109,10 @@ impl ColumnFormat {
         match cell {
             Cell::Text(text) => text.clone().into_owned(),
             Cell::Absent(_) => format!("-{mark}"),
-            Cell::Number(value) if !value.is_finite() => format!("-{mark}"),
+            Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => {
+                format!("-{mark}")
+            }
+            Cell::Measured(value, measure) => measured(*value, *measure, self.unicode),
             Cell::Number(value) => self.number_in_width(*value),
             Cell::Integer(value) => match self.form {
                 Form::Counts | Form::Words => self.count(*value),
@@ -114,6 +120,7 @@ impl ColumnFormat {
                 _ => self.number_in_width(*value as f64),
             },
             Cell::Time(time) => self.time(time.attoseconds()),
+            Cell::Computed(time) => measured(time.to_f64(), Measure::Time, self.unicode),
             Cell::Flag(flag) => yes_or_no(*flag).to_owned(),
         }
     }
@@ -145,11 +152,13 @@ impl ColumnFormat {
             }
             Form::Scientific { digits, exponent_width } => {
                 let (mantissa, exponent) =
-                    Decimal::significant(value, Scale::Ten(0), digits).scientific();
+                    Decimal::significant(value, self.unit.scale, digits).scientific();
                 format!("{sign}{mantissa}{exponent:exponent_width$}")
             }
             // A number in a column of another kind: all its digits.
-            Form::Words | Form::Counts | Form::Exact { .. } => format!("{sign}{}", value.abs()),
+            Form::Words | Form::Counts | Form::Exact { .. } | Form::Rounded { .. } => {
+                format!("{sign}{}", value.abs())
+            }
         }
     }
 
@@ -183,7 +192,7 @@ impl ColumnFormat {
         let last = -(decimals as i32);
         let shift = match scale {
             Scale::Ten(tens) => tens,
-            Scale::Whole(..) => {
+            Scale::Whole(..) | Scale::Part(_) => {
                 return Decimal::significant(value, scale, 17).exponent - last + 1 >= LEAST_DIGITS;
             }
         };
@@ -195,12 +204,20 @@ impl ColumnFormat {
     pub(super) fn time(&self, count: i128) -> String {
         let sign = self.sign(count < 0);
         let magnitude = count.unsigned_abs();
-        let Form::Exact { size, decimals } = self.form else {
-            return format!(
-                "{}{}",
-                if count > 0 { sign } else { "" },
-                ArrayTime::from_attoseconds(count)
-            );
+        let (size, decimals) = match self.form {
+            Form::Exact { size, decimals } => (size, decimals),
+            Form::Rounded { decimals, .. } if magnitude == 0 => return zero(decimals, 0),
+            // Beside numbers in a unit that was asked for, times are told in it as well.
+            Form::Rounded { scale, decimals } | Form::Fixed { scale, decimals }
+                if scale != SECOND.scale =>
+            {
+                let decimal = Decimal::of_attoseconds(magnitude, scale, -(decimals as i32));
+                return format!("{sign}{}", decimal.fixed(decimals));
+            }
+            _ => {
+                let sign = if count > 0 { sign } else { "" };
+                return format!("{sign}{}", ArrayTime::from_attoseconds(count));
+            }
         };
         if magnitude == 0 {
             return zero(decimals, 0);

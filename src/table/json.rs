@@ -212,9 +212,9 @@ fn push_pair(out: &mut Vec<u8>, keys: &ColumnKeys, cell: &Cell<'_>) {
     let why = match cell {
         Cell::Text(text) => return push_string(out, text),
         Cell::Integer(value) => return push_i64(out, *value),
-        Cell::Time(time) => return push_time(out, *time),
+        Cell::Time(time) | Cell::Computed(time) => return push_time(out, *time),
         Cell::Flag(flag) => return out.extend_from_slice(flag.to_string().as_bytes()),
-        Cell::Number(value) => {
+        Cell::Number(value) | Cell::Measured(value, _) => {
             if push_f64(out, *value) {
                 return;
             }

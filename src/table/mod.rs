@@ -39,6 +39,7 @@
 //! # Ok::<(), std::io::Error>(())
 //! ```
 
+pub mod choose;
 mod columns;
 pub mod content;
 mod csv;
@@ -46,6 +47,7 @@ mod digits;
 mod format;
 mod json;
 pub mod number;
+pub mod preferences;
 mod scan;
 mod stream;
 mod text;
@@ -61,7 +63,10 @@ pub use csv::{write_csv, write_csv_series};
 pub use format::{ColumnFormat, fit};
 pub use json::{write_json, write_json_series};
 pub use scan::ColumnScan;
-pub use text::{TextOptions, TextWriter, write_text, write_text_series};
+pub use text::{
+    TextChoice, TextOptions, TextWriter, write_text, write_text_as, write_text_series,
+    write_text_series_as,
+};
 pub use unit::readable_time;
 
 /// Raised whenever a change of the model may change any printed bit.
@@ -83,10 +88,16 @@ pub enum Cell<'a> {
     Text(Cow<'a, str>),
     /// An SI value, finite.
     Number(f64),
+    /// An SI value, finite, of what the cell itself says: for columns whose rows measure
+    /// different things. Text shows it with its unit.
+    Measured(f64, Measure),
     /// A whole number.
     Integer(i64),
     /// An exact moment or length of array time.
     Time(ArrayTime),
+    /// A moment that was computed, to the attosecond, and is not worth so many digits to a
+    /// person: text shows it as a measured cell.
+    Computed(ArrayTime),
     /// Yes or no.
     Flag(bool),
     /// A value that does not exist or overflows, and why.
@@ -118,6 +129,11 @@ impl<'a> From<Result<ArrayTime, &'a str>> for Cell<'a> {
 pub enum Measure {
     /// A name or a word.
     Word,
+    /// The SI unit of the measured cells of a row, for JSON and CSV: text leaves the column
+    /// out, because there each of those cells carries the unit it is shown in.
+    Unit,
+    /// What each measured cell says itself.
+    Various,
     /// A count.
     Count,
     /// A dimensionless number such as a rate difference.

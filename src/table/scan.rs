@@ -3,7 +3,7 @@
 use super::digits::{Decimal, MOST_DIGITS, Scale, exponent_of};
 use super::format::yes_or_no;
 use super::format::{ColumnFormat, Form};
-use super::unit::{LONG_TIMES, SECOND, TIMES, Unit, base_unit, decimal_unit, long_unit};
+use super::unit::{LONG_TIMES, SECOND, TIMES, Unit, base_unit, decimal_unit, long_unit, measured};
 use super::width::columns_of;
 use super::{Cell, Column, Measure};
 
@@ -21,6 +21,10 @@ const MOST_LONG_DECIMALS: i32 = 6;
 const LEAST_FIRST: i32 = -3;
 const MOST_WHOLE: i32 = 11;
 const MOST_BARE: i32 = 6;
+/// Decimals up to which an exact time in a unit asked for is shown exactly, and those it is
+/// rounded to where they do not do.
+const MOST_EXACT_DECIMALS: u32 = 9;
+const ROUNDED_DECIMALS: usize = 9;
 /// Steps between neighbours smaller than this part of the column's spread need not show.
 const LEAST_STEP: f64 = 1e-15;
 /// Digits of a number that a reader takes in, clock readings aside.
@@ -33,8 +37,12 @@ const PLAIN_DIGITS: i32 = 7;
 pub struct ColumnScan {
     measure: Measure,
     signed: bool,
+    /// The unit that was asked for, if any.
+    unit: Option<Unit>,
     least_digits: i32,
     text_columns: usize,
+    /// The measured cell last seen: limits are often the same in many rows.
+    measured: Option<(f64, Measure)>,
     anything_absent: bool,
     /// Numbers, in SI units.
     numbers: usize,
@@ -71,8 +79,10 @@ impl ColumnScan {
         ColumnScan {
             measure,
             signed: is_difference(key),
+            unit: None,
             least_digits: LEAST_DIGITS,
             text_columns: 0,
+            measured: None,
             anything_absent: false,
             numbers: 0,
             lowest: f64::INFINITY,
@@ -99,6 +109,12 @@ impl ColumnScan {
         self
     }
 
+    /// Asks for a unit instead of the one that reads best.
+    pub(super) fn in_unit(mut self, unit: Option<Unit>) -> ColumnScan {
+        self.unit = unit;
+        self
+    }
+
     /// Takes in the cell of the next row.
     pub fn see(&mut self, cell: &Cell<'_>) {
         match cell {
@@ -110,6 +126,18 @@ impl ColumnScan {
             Cell::Absent(_) => self.anything_absent = true,
             Cell::Number(value) if value.is_finite() => self.see_number(*value),
             Cell::Number(_) => self.anything_absent = true,
+            Cell::Measured(value, measure) if self.measured == Some((*value, *measure)) => {}
+            Cell::Measured(value, measure) if value.is_finite() => {
+                self.measured = Some((*value, *measure));
+                // The ASCII label may be the longer one; a column too wide is no harm.
+                let shown = measured(*value, *measure, false);
+                self.text_columns = self.text_columns.max(columns_of(&shown));
+            }
+            Cell::Measured(..) => self.anything_absent = true,
+            Cell::Computed(time) => {
+                let shown = measured(time.to_f64(), Measure::Time, false);
+                self.text_columns = self.text_columns.max(columns_of(&shown));
+            }
             // A whole number of something with a unit is a number like any other.
             Cell::Integer(value) if !self.counts() => self.see_number(*value as f64),
             Cell::Integer(value) => {
@@ -129,7 +157,10 @@ impl ColumnScan {
 
     /// Whether whole numbers are counts and not values with a unit.
     fn counts(&self) -> bool {
-        matches!(self.measure, Measure::Word | Measure::Count | Measure::Ratio)
+        matches!(
+            self.measure,
+            Measure::Word | Measure::Unit | Measure::Various | Measure::Count | Measure::Ratio
+        )
     }
 
     fn see_number(&mut self, value: f64) {
@@ -168,7 +199,8 @@ impl ColumnScan {
         } else if self.measure == Measure::Word {
             (base_unit(Measure::Word), Form::Words)
         } else {
-            (base_unit(self.measure), Form::Fixed { scale: Scale::Ten(0), decimals: 0 })
+            let unit = self.unit.unwrap_or(base_unit(self.measure));
+            (unit, Form::Fixed { scale: unit.scale, decimals: 0 })
         };
         let mut format = ColumnFormat::new(unit, form, self.signed, unicode);
         format.smallest = self.smallest;
@@ -201,7 +233,13 @@ impl ColumnScan {
             (unit, Form::Fixed { scale: unit.scale, decimals })
         };
         if largest == 0.0 {
-            return fixed(base_unit(self.measure), Places { first: 0, span: 0, last: 0 });
+            let unit = self.unit.unwrap_or(base_unit(self.measure));
+            return fixed(unit, Places { first: 0, span: 0, last: 0 });
+        }
+        if let Some(unit) = self.unit {
+            let places = self.places(unit.scale);
+            let readable = places.reads_well(MOST_WHOLE) || self.times > 0;
+            return if readable { fixed(unit, places) } else { self.scientific(unit) };
         }
         // Exact times beside numbers are told in seconds, so the numbers are as well.
         if self.times > 0 {
@@ -217,11 +255,14 @@ impl ColumnScan {
         let unit = decimal_unit(self.measure, largest);
         let places = self.places(unit.scale);
         let most = if unit.label.is_empty() { MOST_BARE } else { MOST_WHOLE };
-        if (LEAST_FIRST..=most).contains(&places.first)
-            && (places.span <= MOST_DECADES || places.digits() <= SHORT_DIGITS)
-        {
+        if places.reads_well(most) {
             return fixed(unit, places);
         }
+        self.scientific(base_unit(self.measure))
+    }
+
+    /// Powers of ten in each cell.
+    fn scientific(&self, unit: Unit) -> (Unit, Form) {
         let told_apart = if self.relative_step.is_finite() {
             1 - exponent_of(self.relative_step / 2.0)
         } else {
@@ -229,10 +270,12 @@ impl ColumnScan {
         };
         let digits = usize::try_from(self.least_digits.max(told_apart)).unwrap_or(MOST_DIGITS);
         let digits = digits.min(self.longest).clamp(1, MOST_DIGITS);
-        let exponents = [exponent_of(self.smallest), exponent_of(largest)];
-        let exponent_width = exponents.map(|power| format!("e{power}").len()).into_iter().max();
-        let exponent_width = exponent_width.unwrap_or(0);
-        (base_unit(self.measure), Form::Scientific { digits, exponent_width })
+        let exponent_width = [self.smallest, self.largest()]
+            .map(|value| Decimal::significant(value, unit.scale, digits).scientific().1.len())
+            .into_iter()
+            .max()
+            .unwrap_or(0);
+        (unit, Form::Scientific { digits, exponent_width })
     }
 
     fn largest(&self) -> f64 {
@@ -262,8 +305,25 @@ impl ColumnScan {
         Places { first, span: first - smallest, last: last.min(0) }
     }
 
+    /// Exact times in a unit that was asked for: exactly where a short decimal does it.
+    fn exact_form_in(&self, unit: Unit) -> (Unit, Form) {
+        let size = unit.attoseconds().unwrap_or(1);
+        let exact = (0..=MOST_EXACT_DECIMALS).find(|&decimals| {
+            let parts = self.common_divisor.checked_mul(10_u128.pow(decimals));
+            parts.is_some_and(|parts| parts.is_multiple_of(size))
+        });
+        let form = match exact {
+            Some(decimals) => Form::Exact { size, decimals: decimals as usize },
+            None => Form::Rounded { scale: unit.scale, decimals: ROUNDED_DECIMALS },
+        };
+        (unit, form)
+    }
+
     /// Exact times: the largest unit in which they all are exact and short.
     fn exact_form(&self) -> (Unit, Form) {
+        if let Some(unit) = self.unit {
+            return self.exact_form_in(unit);
+        }
         let latest = self.earliest.unsigned_abs().max(self.latest.unsigned_abs());
         let second = 10_u128.pow(18);
         for (unit, from) in LONG_TIMES {
@@ -284,7 +344,7 @@ impl ColumnScan {
         }
         let mut place = TIMES.iter().rposition(|unit| match unit.scale {
             Scale::Ten(power) => latest >= 10_u128.pow((power + 18).unsigned_abs()),
-            Scale::Whole(..) => false,
+            Scale::Whole(..) | Scale::Part(_) => false,
         });
         if latest == 0 {
             place = Some(TIMES.len() - 1);
@@ -312,6 +372,12 @@ impl Places {
     fn digits(&self) -> i32 {
         self.first - self.last + 1
     }
+
+    /// Whether plain notation serves, up to a first digit of that power of ten.
+    fn reads_well(&self, most: i32) -> bool {
+        (LEAST_FIRST..=most).contains(&self.first)
+            && (self.span <= MOST_DECADES || self.digits() <= SHORT_DIGITS)
+    }
 }
 
 /// Whether a key names a difference of clocks or rates, whose sign is always shown.
@@ -329,8 +395,8 @@ fn is_difference(key: &str) -> bool {
         "applied",
         "residual",
     ];
-    // The worst of several is a size.
-    let is_size = key.starts_with("worst_");
+    // The worst of several is a size, and so is the smallest.
+    let is_size = key.starts_with("worst_") || key.starts_with("smallest_");
     !is_size && key.split('_').any(|word| DIFFERENCES.contains(&word))
 }
 

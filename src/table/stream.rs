@@ -6,8 +6,9 @@ use std::ops::Range;
 use std::sync::mpsc::{channel, sync_channel};
 use std::thread;
 
-/// Rows formatted into one buffer before it is handed on: some tens of kilobytes.
-const ROWS_PER_CHUNK: usize = 512;
+/// Rows formatted into one buffer before it is handed on: some hundreds of kilobytes at
+/// most, so that handing it on costs little beside making it.
+const ROWS_PER_CHUNK: usize = 2048;
 /// Below this the threads cost more than they save.
 const ROWS_WORTH_THREADS: usize = 20_000;
 /// Chunks a thread may be ahead of the writer.

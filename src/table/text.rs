@@ -2,12 +2,16 @@
 
 use std::io::{self, Write};
 
+use super::choose::Units;
 use super::columns::write_table;
 use super::digits::Scale;
 use super::scan::ColumnScan;
 use super::unit::{acceleration, readable_time, rounded};
 use super::width::{columns_of, in_ascii, push_blanks, wrapped};
 use super::{Cell, Head, Report, Scalar, Series};
+use crate::layout::Epoch;
+use crate::layout::date::format_date;
+use crate::model::array_time::ArrayTime;
 
 /// Digits of a value that stands alone, outside a table.
 const DIGITS_ALONE: i32 = 6;
@@ -53,6 +57,24 @@ impl TextOptions {
     }
 }
 
+/// What a reader chose of the text form: no value depends on it.
+#[derive(Clone, Copy, Debug, Default)]
+pub struct TextChoice<'a> {
+    /// Units for some columns instead of those that read best.
+    pub units: Option<&'a Units>,
+    /// The date of array time zero, when moments are to be told by date as well.
+    pub epoch: Option<&'a Epoch>,
+}
+
+impl TextChoice<'_> {
+    /// The date of a moment.
+    fn date(&self, at: ArrayTime) -> Option<String> {
+        let epoch = self.epoch?;
+        let count = epoch.tai_since_2000.attoseconds().checked_add(at.attoseconds())?;
+        format_date(ArrayTime::from_attoseconds(count), epoch.scale)
+    }
+}
+
 /// Writes a report of one moment as text for people: the head, the scalars, every table
 /// and the remarks.
 ///
@@ -67,17 +89,37 @@ pub fn write_text(
     options: &TextOptions,
     out: &mut dyn Write,
 ) -> io::Result<()> {
+    write_text_as(report, options, TextChoice::default(), out)
+}
+
+/// The same with what the reader chose.
+///
+/// # Errors
+///
+/// Those of the writer.
+pub fn write_text_as(
+    report: &Report<'_>,
+    options: &TextOptions,
+    choice: TextChoice<'_>,
+    out: &mut dyn Write,
+) -> io::Result<()> {
     let mut text = String::new();
     push_head(&mut text, &report.head(), *options);
     for (label, value) in moment_parts(report, *options) {
         options.push_lines(&mut text, &format!("{label}: {value}"));
+        if let ("array time", Ok(at)) = (label, report.at)
+            && let Some(date) = choice.date(at)
+        {
+            let whose = if at > ArrayTime::ZERO { OWN_COUNT } else { "" };
+            options.push_lines(&mut text, &format!("date: {date}{whose}"));
+        }
     }
     options.push_lines(&mut text, UNITS);
-    push_scalars(&mut text, &report.scalars, *options);
+    push_scalars(&mut text, &report.scalars, choice, *options);
     out.write_all(text.as_bytes())?;
     for table in &report.tables {
         out.write_all(b"\n")?;
-        write_table(table, options, true, out)?;
+        write_table(table, options, choice.units, true, out)?;
     }
     text.clear();
     if !report.remarks.is_empty() {
@@ -89,6 +131,9 @@ pub fn write_text(
     out.write_all(text.as_bytes())
 }
 
+/// Whose count a date after the start is.
+const OWN_COUNT: &str = " by the reference clock's own count";
+
 /// Writes a report over time as text: the head once, then a compact block a moment.
 ///
 /// # Errors
@@ -99,7 +144,21 @@ pub fn write_text_series(
     options: &TextOptions,
     out: &mut dyn Write,
 ) -> io::Result<()> {
-    let mut writer = TextWriter::new(*options);
+    write_text_series_as(series, options, TextChoice::default(), out)
+}
+
+/// The same with what the reader chose.
+///
+/// # Errors
+///
+/// Those of the writer.
+pub fn write_text_series_as(
+    series: &Series<'_>,
+    options: &TextOptions,
+    choice: TextChoice<'_>,
+    out: &mut dyn Write,
+) -> io::Result<()> {
+    let mut writer = TextWriter::new(*options).with(choice);
     writer.head(&series.head, out)?;
     for moment in 0..series.moments {
         writer.moment(&(series.report)(moment), out)?;
@@ -109,17 +168,26 @@ pub fn write_text_series(
 
 /// Writes a report over time moment by moment, for a caller who has to wait in between.
 #[derive(Clone, Debug)]
-pub struct TextWriter {
+pub struct TextWriter<'a> {
     options: TextOptions,
+    choice: TextChoice<'a>,
     moments: usize,
     remarks: Vec<String>,
 }
 
-impl TextWriter {
+impl<'a> TextWriter<'a> {
     /// Nothing written yet.
     #[must_use]
-    pub fn new(options: TextOptions) -> TextWriter {
-        TextWriter { options, moments: 0, remarks: Vec::new() }
+    pub fn new(options: TextOptions) -> TextWriter<'a> {
+        let choice = TextChoice::default();
+        TextWriter { options, choice, moments: 0, remarks: Vec::new() }
+    }
+
+    /// The same with what the reader chose.
+    #[must_use]
+    pub fn with(mut self, choice: TextChoice<'a>) -> TextWriter<'a> {
+        self.choice = choice;
+        self
     }
 
     /// Writes what stands on top, once.
@@ -142,17 +210,20 @@ impl TextWriter {
     /// Those of the writer.
     pub fn moment(&mut self, report: &Report<'_>, out: &mut dyn Write) -> io::Result<()> {
         let options = self.options;
-        let parts: Vec<String> = moment_parts(report, options)
+        let mut parts: Vec<String> = moment_parts(report, options)
             .into_iter()
             .map(|(label, value)| format!("{label} {value}"))
             .collect();
+        if let Some(date) = report.at.ok().and_then(|at| self.choice.date(at)) {
+            parts.insert(1, format!("date {date}"));
+        }
         let mut text = String::from("\n");
         options.push_lines(&mut text, &parts.join(", "));
-        push_scalars(&mut text, &report.scalars, options);
+        push_scalars(&mut text, &report.scalars, self.choice, options);
         out.write_all(text.as_bytes())?;
         for table in &report.tables {
             let titled = self.moments == 0 || report.tables.len() > 1;
-            write_table(table, &options, titled, out)?;
+            write_table(table, &options, self.choice.units, titled, out)?;
         }
         text.clear();
         for remark in &report.remarks {
@@ -216,17 +287,26 @@ fn absent_alone(why: &str) -> String {
     format!("- ({why})")
 }
 
-fn push_scalars(text: &mut String, scalars: &[Scalar<'_>], options: TextOptions) {
+fn push_scalars(
+    text: &mut String,
+    scalars: &[Scalar<'_>],
+    choice: TextChoice<'_>,
+    options: TextOptions,
+) {
     if !scalars.is_empty() {
         text.push('\n');
     }
     for scalar in scalars {
-        let mut scan = ColumnScan::of(scalar.key, scalar.measure).with_digits(DIGITS_ALONE);
+        let unit = choice.units.and_then(|units| units.of(scalar.key, scalar.measure));
+        let mut scan = ColumnScan::of(scalar.key, scalar.measure);
+        scan = scan.with_digits(DIGITS_ALONE).in_unit(unit);
         scan.see(&scalar.value);
         let format = scan.format(options.unicode);
         let value = match &scalar.value {
             Cell::Absent(why) => format!("- ({why})"),
-            Cell::Number(value) if !value.is_finite() => format!("- ({})", super::NOT_FINITE),
+            Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => {
+                format!("- ({})", super::NOT_FINITE)
+            }
             value => format!("{}{JOINT}{}", format.value(value, "").trim_end(), format.unit()),
         };
         let line = format!("{}: {}", scalar.heading, value.trim_end_matches(JOINT));

@@ -2,6 +2,7 @@
 
 use super::Measure;
 use super::digits::{Decimal, Scale, exponent_of};
+use crate::layout::quantity::{Dimension, UnitFactor};
 use crate::model::array_time::{ATTOSECONDS_PER_SECOND, ArrayTime};
 
 /// A unit as it stands in a heading.
@@ -11,6 +12,46 @@ pub(super) struct Unit {
     /// The label where only ASCII may be shown, which layouts and sentences also read.
     pub ascii: &'static str,
     pub scale: Scale,
+}
+
+impl Unit {
+    /// How many attoseconds a unit of time has; `None` where that is no whole number.
+    pub(super) fn attoseconds(self) -> Option<u128> {
+        let power = |tens: i32| u32::try_from(tens + 18).ok().map(|tens| 10_u128.pow(tens));
+        match self.scale {
+            Scale::Ten(tens) => power(tens),
+            Scale::Whole(whole, tens) => Some(u128::from(whole) * power(tens)?),
+            Scale::Part(_) => None,
+        }
+    }
+
+    /// A unit as layouts and sentences write it, as one of the text form.
+    pub(super) fn of_factor(unit: UnitFactor) -> Unit {
+        let scale = match unit {
+            UnitFactor { denominator, .. } if denominator != 1 => Scale::Part(denominator),
+            UnitFactor { numerator: 1, power_of_ten, .. } => Scale::Ten(power_of_ten),
+            UnitFactor { numerator, power_of_ten, .. } => Scale::Whole(numerator, power_of_ten),
+        };
+        let signs =
+            [("us", "µs"), ("um", "µm"), ("ug0", "µg0"), ("m/s^2", "m/s²"), ("/s^2", "/s²")];
+        let label = signs.iter().find(|(ascii, _)| *ascii == unit.name);
+        Unit { label: label.map_or(unit.name, |(_, label)| label), ascii: unit.name, scale }
+    }
+}
+
+/// The dimension of what is measured; `None` for what has no unit.
+pub(super) fn dimension_of(measure: Measure) -> Option<Dimension> {
+    match measure {
+        Measure::Word | Measure::Count | Measure::Ratio | Measure::Unit | Measure::Various => None,
+        Measure::Time => Some(Dimension::Time),
+        Measure::Length => Some(Dimension::Length),
+        Measure::Acceleration => Some(Dimension::Acceleration),
+        Measure::Frequency => Some(Dimension::Frequency),
+        Measure::Force => Some(Dimension::Force),
+        Measure::Mass => Some(Dimension::Mass),
+        Measure::Speed => Some(Dimension::Speed),
+        Measure::PerSecond => Some(Dimension::PerTime),
+    }
 }
 
 const fn ten(label: &'static str, power: i32) -> Unit {
@@ -62,7 +103,9 @@ const MICRO_GRAVITY: Unit = Unit { label: "µg0", ascii: "ug0", scale: Scale::Wh
 /// The SI unit, in which values of all sizes stand in scientific notation.
 pub(super) fn base_unit(measure: Measure) -> Unit {
     match measure {
-        Measure::Word | Measure::Count | Measure::Ratio => ten("", 0),
+        Measure::Word | Measure::Unit | Measure::Various | Measure::Count | Measure::Ratio => {
+            ten("", 0)
+        }
         Measure::Time => SECOND,
         Measure::Length => ten("m", 0),
         Measure::Acceleration => METRES_PER_SECOND_SQUARED,
@@ -77,7 +120,12 @@ pub(super) fn base_unit(measure: Measure) -> Unit {
 /// The unit in powers of ten in which the largest value of a column reads well.
 pub(super) fn decimal_unit(measure: Measure, largest: f64) -> Unit {
     match measure {
-        Measure::Word | Measure::Count | Measure::Ratio | Measure::PerSecond => base_unit(measure),
+        Measure::Word
+        | Measure::Unit
+        | Measure::Various
+        | Measure::Count
+        | Measure::Ratio
+        | Measure::PerSecond => base_unit(measure),
         Measure::Time => from_ladder(&TIMES, largest),
         Measure::Length => from_ladder(&LENGTHS, largest),
         Measure::Frequency => from_ladder(&FREQUENCIES, largest),
@@ -124,6 +172,22 @@ pub(super) fn rounded(value: f64, scale: Scale, count: usize) -> String {
     }
     let (mantissa, exponent) = decimal.scientific();
     format!("{sign}{mantissa}{exponent}")
+}
+
+/// Digits of a measured cell, which stands beside others of other units.
+const MEASURED_DIGITS: usize = 7;
+
+/// A value with the unit it reads well in: `0.2 mg0`, `2 h`.
+pub(super) fn measured(value: f64, measure: Measure, unicode: bool) -> String {
+    let largest = value.abs();
+    let unit = if value == 0.0 {
+        base_unit(measure)
+    } else {
+        long_unit(measure, largest).unwrap_or_else(|| decimal_unit(measure, largest))
+    };
+    let shown = rounded(value, unit.scale, MEASURED_DIGITS);
+    let label = if unicode { unit.label } else { unit.ascii };
+    if label.is_empty() { shown } else { format!("{shown} {label}") }
 }
 
 /// An acceleration in m/s² to ten digits and in parts of g0 to seven: `0.196133 m/s² = 0.02 g0`.

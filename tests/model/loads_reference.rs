@@ -13,28 +13,28 @@ use num_traits::Zero;
 
 use crate::tolerance::{Errors, exact_decimal};
 
-type Row = BTreeMap<String, String>;
+pub type Row = BTreeMap<String, String>;
 
-fn rows(name: &str) -> Vec<Row> {
+pub fn rows(name: &str) -> Vec<Row> {
     let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/data/loads").join(name);
     let text = fs::read_to_string(&path).unwrap_or_else(|error| panic!("{path:?}: {error}"));
     let mut reader = csv::ReaderBuilder::new().from_reader(text.as_bytes());
     reader.deserialize().collect::<Result<_, _>>().expect("a table")
 }
 
-fn of_case<'a>(rows: &'a [Row], case: &'a str) -> impl Iterator<Item = &'a Row> {
+pub fn of_case<'a>(rows: &'a [Row], case: &'a str) -> impl Iterator<Item = &'a Row> {
     rows.iter().filter(move |row| row["case"] == case)
 }
 
-fn number(text: &str) -> f64 {
+pub fn number(text: &str) -> f64 {
     text.parse().expect("a number")
 }
 
-fn maybe(text: &str) -> Option<f64> {
+pub fn maybe(text: &str) -> Option<f64> {
     (!text.is_empty()).then(|| number(text))
 }
 
-fn attoseconds(text: &str) -> ArrayTime {
+pub fn attoseconds(text: &str) -> ArrayTime {
     ArrayTime::from_attoseconds(text.parse().expect("a count of attoseconds"))
 }
 
@@ -105,7 +105,7 @@ fn input(row: &Row) -> String {
 }
 
 /// Compares, or asks for exactly zero where the scale is zero.
-fn compare(errors: &mut Errors, got: f64, wanted: &str, scale: &BigRational, row: &Row) {
+pub fn compare(errors: &mut Errors, got: f64, wanted: &str, scale: &BigRational, row: &Row) {
     if scale.is_zero() {
         assert_eq!(got, number(wanted), "{}", input(row));
     } else {

@@ -6,7 +6,10 @@
 // Distributions of errors are shown with `--nocapture`.
 #![allow(clippy::print_stdout)]
 
+mod check;
+mod clocks;
 mod demo_recordings;
+mod history;
 mod hostile;
 mod identities;
 mod layout_random;
@@ -14,6 +17,8 @@ mod layout_read;
 mod layout_refused;
 mod layout_units;
 mod links;
+mod links_identities;
+mod links_tables;
 mod loads_identities;
 mod loads_layouts;
 mod loads_published;
@@ -22,11 +27,14 @@ mod loads_rules;
 mod pinned;
 mod published;
 mod reach;
+mod reach_identities;
 mod recording;
 mod recording_hostile;
+mod recording_models;
 mod reference;
 mod run;
 mod run_refused;
+mod stretch;
 mod table_csv;
 mod table_json;
 mod table_sample;

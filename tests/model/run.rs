@@ -164,7 +164,7 @@ fn a_moved_node_gathers_its_offset_by_stays() {
     // At its own moment the later position counts; before it the earlier one.
     let position = |at| {
         let state = run.state_at(seconds(at)).unwrap();
-        state.node(run.row("s2").unwrap()).aboard().unwrap().position_m
+        state.node(run.row("s2").unwrap()).aboard().unwrap().position_m.to_f64()
     };
     assert_eq!((position("3599.9 s"), position("1 h")), (-10_000.0, -10_500.0));
     assert_eq!(position("2 h").to_bits(), 0);

@@ -22,11 +22,11 @@ hold = "1 g0"
 for = "1 h"
 "#;
 
-fn clockspar(arguments: &[&str]) -> Output {
+pub fn clockspar(arguments: &[&str]) -> Output {
     with_input(arguments, "")
 }
 
-fn with_input(arguments: &[&str], input: &str) -> Output {
+pub fn with_input(arguments: &[&str], input: &str) -> Output {
     let mut child = Command::new(env!("CARGO_BIN_EXE_clockspar"))
         .args(arguments)
         .current_dir(env!("CARGO_MANIFEST_DIR"))
@@ -46,7 +46,7 @@ fn text(bytes: &[u8]) -> String {
 }
 
 /// Status, standard output, standard error.
-fn seen(output: &Output) -> (i32, String, String) {
+pub fn seen(output: &Output) -> (i32, String, String) {
     (output.status.code().unwrap_or(-1), text(&output.stdout), text(&output.stderr))
 }
 
@@ -87,6 +87,35 @@ fn a_broken_rule_is_told_and_decides_the_status_of_check() {
     assert_eq!(status, 0);
     assert_eq!(stderr.lines().count(), 1, "{stderr}");
     assert!(stderr.starts_with("warning: standard input breaks the rule `rating`"), "{stderr}");
+}
+
+#[test]
+fn limits_are_judged_and_the_smallest_margin_is_told_first() {
+    let limit = "[[limit]]\nnode = \"up\"\nclock_offset = \"1 ns\"\nresolve_within = 1\n";
+    let layout = format!("{}{limit}", LINE.replace("0.5 g0", "2 g0"));
+    let (status, stdout, stderr) = seen(&with_input(&["check", "-"], &layout));
+    assert_eq!((status, stderr.as_str()), (0, ""));
+    let head: Vec<&str> = stdout.lines().filter(|line| line.contains(": ")).collect();
+    for line in ["kept: 5", "broken: 0", "not judged: 1", "of the rule: rating", "for: hub"] {
+        assert!(head.contains(&line), "{line}: {stdout}");
+    }
+    assert!(stdout.contains("what would widen it: less thrust"), "{stdout}");
+    // 1000 m · 1 g0 · 1 h / c² = 393 ps.
+    assert!(stdout.contains("392.8093 ps"), "{stdout}");
+    let (_, phases, _) =
+        seen(&with_input(&["check", "-", "--table", "phases", "--as", "csv"], &layout));
+    assert!(phases.starts_with(
+        "at_s,phase,kind,from_s,until_s,from_m_s2,to_m_s2,smallest_rate,smallest_rate_node,\
+         rating_margin,rating_margin_node\n,1,hold,0,3600,9.80665,9.80665,1,hub,0,hub\n"
+    ));
+    // The limit is what breaks, and any other command says so in one line.
+    let broken = layout.replace("1 ns", "100 ps");
+    let (status, _, stderr) = seen(&with_input(&["offsets", "-"], &broken));
+    assert_eq!((status, stderr.lines().count()), (0, 1));
+    assert!(stderr.contains("breaks the rule `clock_offset` for `up`"), "{stderr}");
+    assert_eq!(seen(&with_input(&["check", "-"], &broken)).0, 1);
+    // At a moment before the limit is passed everything is kept.
+    assert_eq!(seen(&with_input(&["check", "-", "--at", "10 min"], &broken)).0, 0);
 }
 
 #[test]

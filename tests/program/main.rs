@@ -1,8 +1,11 @@
 //! The executable: exit status, messages, pipes, pseudo-terminal.
 
+mod choose;
 mod commands;
 mod desk;
 mod hostile;
+mod links;
+mod loads;
 mod readme;
 mod recording_lasts;
 mod terminal_session;

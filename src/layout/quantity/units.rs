@@ -105,12 +105,12 @@ impl Dimension {
 
 /// A unit: its value in SI is `numerator / denominator · 10^power_of_ten`, exactly.
 #[derive(Clone, Copy, Debug)]
-pub(super) struct Unit {
-    pub(super) name: &'static str,
-    pub(super) dimension: Dimension,
-    pub(super) numerator: u64,
-    pub(super) denominator: u64,
-    pub(super) power_of_ten: i32,
+pub(crate) struct Unit {
+    pub(crate) name: &'static str,
+    pub(crate) dimension: Dimension,
+    pub(crate) numerator: u64,
+    pub(crate) denominator: u64,
+    pub(crate) power_of_ten: i32,
 }
 
 const fn decimal(name: &'static str, dimension: Dimension, power_of_ten: i32) -> Unit {
@@ -186,7 +186,7 @@ pub(super) const UNITS: &[Unit] = &[
 ];
 
 /// The unit of a name; `µ`, in either of its two characters, reads as `u`.
-pub(super) fn find(name: &str) -> Option<&'static Unit> {
+pub(crate) fn find(name: &str) -> Option<&'static Unit> {
     let plain = |name: &str| UNITS.iter().find(|unit| unit.name == name);
     if name.contains(['\u{b5}', '\u{3bc}']) {
         return plain(&name.replace(['\u{b5}', '\u{3bc}'], "u"));

@@ -51,14 +51,19 @@ impl<'t> Rows<'t> {
     /// skipped.
     pub(super) fn next(&mut self, faults: &mut Collector) -> Option<Row<'_, 't>> {
         loop {
-            let line_end = self.line_end(self.at);
-            if self.at >= self.text.len() {
-                return None;
-            }
-            let line = self.text[self.at..line_end].trim();
-            if line.is_empty() || line.starts_with('#') {
-                self.at = line_end + 1;
-                continue;
+            // Nearly every line begins with what is neither a blank nor a remark, and is gone
+            // through only once.
+            match self.text.as_bytes().get(self.at) {
+                None => return None,
+                Some(first) if first.is_ascii_graphic() && *first != b'#' => {}
+                Some(_) => {
+                    let line_end = self.line_end(self.at);
+                    let line = self.text[self.at..line_end].trim();
+                    if line.is_empty() || line.starts_with('#') {
+                        self.at = line_end + 1;
+                        continue;
+                    }
+                }
             }
             match self.split() {
                 Ok(()) => break,

@@ -22,7 +22,7 @@ const OPEN_LIST: &str = "unexpected `=` in array";
 
 /// Parses a text, noting what is not TOML in it. What could be understood all the same is
 /// returned.
-pub(super) fn parse<'i>(text: &'i str, faults: &mut Collector) -> Spanned<DeTable<'i>> {
+pub(crate) fn parse<'i>(text: &'i str, faults: &mut Collector) -> Spanned<DeTable<'i>> {
     let (root, errors) = if text.len() <= ALL_SYNTAX_UP_TO {
         DeTable::parse_recoverable(text)
     } else {

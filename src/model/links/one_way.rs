@@ -5,7 +5,7 @@ use std::fmt;
 use super::rays::{Landing, Place, Ray, Rays};
 use super::shift::{self, Side};
 use crate::model::array_time::ArrayTime;
-use crate::model::constants::SPEED_OF_LIGHT_M_S;
+use crate::model::constants::{INVERSE_C_S_M, SPEED_OF_LIGHT_M_S};
 use crate::model::dd::Dd;
 
 /// How far an end stands from its position at rest, at one moment of array time.
@@ -62,7 +62,7 @@ impl<'a> End<'a> {
     pub(crate) fn light_time(&self, moved: &Moved) -> Dd {
         let position =
             if self.moved.is_some() { self.rest_m + moved.displacement_m } else { self.rest_m };
-        position / SPEED_OF_LIGHT_M_S
+        position * INVERSE_C_S_M
     }
 }
 
@@ -168,7 +168,7 @@ impl Rays {
         }
         let ray = if apart.is_negative() { Ray::Aft } else { Ray::Fore };
         let sign = ray.sign();
-        let gap = apart.scale(sign) / SPEED_OF_LIGHT_M_S;
+        let gap = apart.scale(sign) * INVERSE_C_S_M;
         let drift = |elapsed: f64| {
             let now = to.moved_at(later(emitted, elapsed));
             let moved = now.displacement_m - to_moved.displacement_m;

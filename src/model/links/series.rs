@@ -194,7 +194,7 @@ mod tests {
     #[test]
     fn a_quadratic_decays_as_its_two_halves() {
         // The stretch 0 … 1 is cut at 1/2; the second half begins with its own slope.
-        let (linear, quadratic) = (Dd::new(0.45), Dd::new(-0.9));
+        let (linear, quadratic) = (Dd::new(0.45), Dd::new(-0.7));
         let whole = decay(linear, quadratic);
         let first = decay(linear.scale(0.5), quadratic.scale(0.25));
         let slope = (linear + quadratic.scale(0.5)).scale(0.5);

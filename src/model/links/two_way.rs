@@ -148,9 +148,12 @@ impl Rays {
             let x = clock.to_f64();
             return 2.0 * x / (rate + libm::sqrt(rate * rate + 2.0 * position.hi * slope * x));
         }
-        let (reached, since) = reach(low);
+        // Else from the edge of the piece that is nearer to the place.
+        let is_earlier = low < from.piece;
+        let (reached, since) = reach(if is_earlier { low + 1 } else { low });
+        let push = if is_earlier { pieces[low].end_push } else { pieces[low].push };
         let slope = pieces[low].slope.hi;
-        let rate = (pieces[low].push * position + 1.0).hi;
+        let rate = (push * position + 1.0).hi;
         let x = (clock - reached).to_f64();
         (since + 2.0 * x / (rate + libm::sqrt(rate * rate + 2.0 * position.hi * slope * x)))
             .to_f64()

@@ -220,6 +220,18 @@ impl Compliance {
         own.iter().zip(values).fold(Dd::ZERO, |sum, (c, value)| sum + *c * *value)
     }
 
+    /// `Σ c_t c_u v_tu` of a row's terms, for products of all pairs of terms.
+    pub fn square(&self, row: usize, products: &[f64]) -> f64 {
+        let count = self.terms.len();
+        let own = &self.coefficients[row * count..(row + 1) * count];
+        let rows = own.iter().zip(products.chunks(count));
+        rows.map(|(c, products)| {
+            let along: f64 = own.iter().zip(products).map(|(c, product)| c.hi * product).sum();
+            c.hi * along
+        })
+        .sum()
+    }
+
     /// The same for values that are double-doubles.
     pub fn sum_wide(&self, row: usize, values: &[Dd]) -> Dd {
         let count = self.terms.len();

@@ -9,6 +9,9 @@ use crate::model::horizon::Extremes;
 use crate::model::motion::{NODES_10, WEIGHTS_10};
 use crate::model::plan::{Phase, Plan};
 
+/// Foldings by e of the line's mass after which what is left shows in no double.
+const ALL_GONE: f64 = 46.0;
+
 /// A thrust plan with the stretch of the line tabulated over it.
 #[derive(Clone, Debug)]
 pub(super) struct Flight {
@@ -140,11 +143,28 @@ impl Flight {
         let mut begin = 0.0;
         // |α| has a corner where a ramp passes through zero.
         let corner = sections(phase).filter(|zero| *zero < length);
-        for finish in corner.into_iter().chain([length]) {
-            let alpha = |s: f64| first + slope_m_s3 * s;
-            let (from, to) = (alpha(begin), alpha(finish));
+        let alpha = |s: f64| first + slope_m_s3 * s;
+        let mut ends: Vec<f64> = corner.into_iter().chain([length]).rev().collect();
+        while let Some(mut finish) = ends.pop() {
+            let (from, mut to) = (alpha(begin), alpha(finish));
             let spend = |s: f64| 0.5 * (from + alpha(s)).abs() * (s - begin);
-            let fall = spend(finish) * inverse;
+            let gone = |s: f64| (spent_here + spend(s)) * inverse >= ALL_GONE;
+            let mut fall = spend(finish) * inverse;
+            if gone(begin) {
+                fall = 0.0;
+            } else if gone(finish) {
+                // What is left of a hold for good, say, needs no more pieces: nothing falls.
+                let (mut low, mut high) = (begin, finish);
+                for _ in 0..60 {
+                    let middle = 0.5 * (low + high);
+                    if gone(middle) { high = middle } else { low = middle }
+                }
+                if high < finish {
+                    ends.push(finish);
+                    (finish, to) = (high, alpha(high));
+                    fall = spend(high) * inverse;
+                }
+            }
             let travel = self.compliance.distance(from, to) * degrees.0 as f64;
             let count = (fall + fall * degrees.1 as f64 * 0.2).max(travel * 0.25).ceil().max(1.0);
             let width = (finish - begin) / count;
@@ -214,13 +234,46 @@ pub(super) fn speed(
     if compliance.terms() == 0 {
         return 0.0;
     }
-    let values: Vec<f64> = (0..compliance.terms())
+    let values = speeds(basis, acceleration_m_s2, slope_m_s3, burning_per_s);
+    compliance.sum(row, &values).to_f64()
+}
+
+/// The same term by term, per unit of the row's coefficient.
+fn speeds(basis: &Basis, acceleration_m_s2: f64, slope_m_s3: f64, burning_per_s: f64) -> Vec<f64> {
+    (0..basis.values.len())
         .map(|t| {
             slope_m_s3 * (basis.values[t] + acceleration_m_s2 * basis.by_acceleration[t])
                 + acceleration_m_s2 * burning_per_s * basis.by_burned[t]
         })
-        .collect();
-    compliance.sum(row, &values).to_f64()
+        .collect()
+}
+
+/// `∫ v_t v_u/(2c²) dτ` from array time zero to a moment, of all pairs of terms: the motion
+/// of every row is a sum of these, so a line of many nodes needs one quadrature.
+pub(super) fn motion_products(flight: &Flight, propulsion: &Propulsion, at: ArrayTime) -> Vec<f64> {
+    let compliance = &flight.compliance;
+    let count = compliance.terms();
+    let mut products = vec![0.0; count * count];
+    for (index, phase) in flight.plan.phases().iter().enumerate() {
+        if phase.start >= at || count == 0 {
+            break;
+        }
+        if phase.is_hold() && !propulsion.is_falling() {
+            continue;
+        }
+        flight.pieces(propulsion, index, phase.end.min(at), &mut |point| {
+            let alpha = point.acceleration_m_s2;
+            let basis = compliance.basis(alpha, point.burned);
+            let speeds = speeds(&basis, alpha, point.slope_m_s3, point.burning_per_s);
+            let weight = point.width_s / (2.0 * C2_M2_S2.hi);
+            for (products, first) in products.chunks_mut(count).zip(&speeds) {
+                for (product, second) in products.iter_mut().zip(&speeds) {
+                    *product += weight * first * second;
+                }
+            }
+        });
+    }
+    products
 }
 
 /// `∫ ḣ²/(2 c² N) dτ` of a row from array time zero to a moment, s: what the clock offset

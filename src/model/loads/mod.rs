@@ -77,6 +77,7 @@ use super::constants::INVERSE_C2_S2_M2;
 use super::dd::Dd;
 use super::plan::{Moment, Plan};
 use super::rates::Instant;
+use crate::layout::{self, Layout};
 
 /// A line and what moves or holds it, ready to be asked about any moment.
 #[derive(Clone, Debug)]
@@ -134,7 +135,31 @@ pub struct Offset {
     pub stretch_s: Dd,
 }
 
+/// What the motion of stretching nodes takes from their clocks up to a moment.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct NeglectedMotion {
+    /// `∫ v_t v_u/(2c²) dτ` of every pair of terms of the stretch.
+    products: Vec<f64>,
+}
+
 impl Loads {
+    /// The line of a checked layout, over its plan as filed or in its gravity.
+    ///
+    /// # Errors
+    ///
+    /// As [`Loads::under_thrust`] and [`Loads::standing`].
+    pub fn of_layout(layout: &Layout) -> Result<Loads, LoadsFault> {
+        let structure = Structure::from_layout(layout);
+        match &layout.course {
+            layout::Course::Thrust(plan) => Loads::under_thrust(structure, plan),
+            layout::Course::Standing(standing) => {
+                let (gravity_m_s2, gradient_per_s2) =
+                    (standing.gravity_m_s2, standing.gradient_per_s2);
+                Loads::standing(structure, Gravity { gravity_m_s2, gradient_per_s2 })
+            }
+        }
+    }
+
     /// A line under a thrust plan.
     ///
     /// # Errors
@@ -211,6 +236,22 @@ impl Loads {
             Course::Thrust(thrust) => self.state_of(thrust, thrust.flight.plan.phase_at(at), at),
             Course::Standing(standing) => self.state_standing(standing.gravity, at),
         }
+    }
+
+    /// The line at an instant of the same course, which says itself on which side of a
+    /// boundary it stands.
+    #[must_use]
+    pub fn state_of_instant(&self, instant: Instant) -> State {
+        let Instant { moment, gradient_per_s2 } = instant;
+        let mut state = match &self.course {
+            Course::Thrust(thrust) => self.state_of(thrust, moment.phase, moment.at),
+            Course::Standing(standing) => {
+                debug_assert_eq!(standing.gravity.gradient_per_s2, gradient_per_s2);
+                self.state_standing(standing.gravity, moment.at)
+            }
+        };
+        state.instant = instant;
+        state
     }
 
     /// The line at the end of a phase, as the limit from below; `None` when there is no
@@ -364,6 +405,31 @@ impl Loads {
                 at,
             ),
             Course::Standing(_) => 0.0,
+        }
+    }
+
+    /// The same for any row of the line, found once for a moment: the size of what is left
+    /// out, to `|N − 1|` of itself.
+    #[must_use]
+    pub fn neglected_motion(&self, at: ArrayTime) -> NeglectedMotion {
+        NeglectedMotion {
+            products: match &self.course {
+                Course::Thrust(thrust) => {
+                    flight::motion_products(&thrust.flight, &self.propulsion, at)
+                }
+                Course::Standing(_) => Vec::new(),
+            },
+        }
+    }
+
+    /// What the clock offset of a row leaves out, s, from what was found for the moment.
+    #[must_use]
+    pub fn neglected_of_row_s(&self, motion: &NeglectedMotion, row: usize) -> f64 {
+        match &self.course {
+            Course::Thrust(thrust) if !motion.products.is_empty() => {
+                thrust.flight.compliance.square(row, &motion.products)
+            }
+            _ => 0.0,
         }
     }
 

@@ -20,8 +20,9 @@ use super::station::Absent;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::SPEED_OF_LIGHT_M_S;
 use crate::model::dd::Dd;
-use crate::model::links::rays::{Drift, ENDLESS, Landing, Place, Ray, Rays, advance};
+use crate::model::links::rays::{ENDLESS, Landing, Place, Ray, Rays};
 use crate::model::links::series::exp;
+use crate::model::links::way::{Drift, advance};
 use crate::model::links::{End, NoFlight, later};
 
 /// Rapidity between line and released node up to which meetings are looked for.

@@ -5,8 +5,9 @@ use std::fmt;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::SPEED_OF_LIGHT_M_S;
 use crate::model::dd::Dd;
-use crate::model::links::rays::{Drift, ENDLESS, Piece, Place, Ray, Rays, advance};
+use crate::model::links::rays::{ENDLESS, Piece, Place, Ray, Rays};
 use crate::model::links::series::exp;
+use crate::model::links::way::{Drift, advance};
 use crate::model::links::{End, Moved};
 use crate::model::motion::LAUNCH_SCALE;
 

@@ -7,9 +7,10 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Run, State};
 use clockspar::table::content::{compare_report, differences};
 
-use super::show::show;
+use super::choice::{LineShown, Nodes};
+use super::show::{Asked, show};
 use super::{recordings, run_of};
-use crate::program::arguments::CompareArguments;
+use crate::program::arguments::{CompareArguments, MomentArguments};
 use crate::program::files;
 use crate::program::moments::Moments;
 use crate::program::problem::Problem;
@@ -32,6 +33,7 @@ pub fn compare(arguments: &CompareArguments) -> Result<u8, Problem> {
         ));
     }
     let asked = &arguments.moments;
+    check_epochs(&a, &b, asked)?;
     let moments = match (&a.recorded, &b.recorded) {
         // Two recordings speak for themselves at every moment both hold.
         (Some(first), Some(second)) if asked.at.is_none() && asked.every.is_none() => {
@@ -56,12 +58,29 @@ pub fn compare(arguments: &CompareArguments) -> Result<u8, Problem> {
         }
     }
     let (a, b) = (&a.run, &b.run);
-    show(&moments, asked.paced, &arguments.output, &|at| {
+    let (first, second) = (a.layout(), b.layout());
+    let line = LineShown { nodes: Nodes::OfBoth(first, second), epoch: first.epoch.as_ref() };
+    let asked = Asked { moments: &moments, options: asked, line };
+    show(&asked, &arguments.output, &|at| {
         let (first, second) = (state_at(a, at), state_at(b, at));
         let found = differences(&first, &second);
         compare_report(&first, &second, found)
     })?;
     Ok(0)
+}
+
+/// A date names one moment only where both count from the same one.
+fn check_epochs(a: &Side, b: &Side, asked: &MomentArguments) -> Result<(), Problem> {
+    let Some(date) = Moments::date_given(asked) else { return Ok(()) };
+    let zero = |side: &Side| Some(side.run.layout().epoch.as_ref()?.tai_since_2000);
+    if zero(a) == zero(b) {
+        return Ok(());
+    }
+    Err(Problem::new(
+        format_args!("{date}: the two have not the same epoch"),
+        "lines are compared at one array time, and a date is another one in each of these",
+        "give the moment as a time since array time zero, for example `--at 2h`",
+    ))
 }
 
 /// One side of a comparison.

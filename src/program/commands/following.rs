@@ -4,6 +4,7 @@ use std::fs;
 use std::io::{self, ErrorKind, Write};
 use std::os::unix::fs::MetadataExt;
 use std::path::Path;
+use std::rc::Rc;
 use std::thread;
 use std::time::Duration;
 
@@ -13,14 +14,15 @@ use clockspar::run::Event;
 use clockspar::run::recording::{
     Condition, Frame, Line, OpenFault, Opening, ReadAt, ReadFault, Reader,
 };
-use clockspar::table::TextOptions;
 use clockspar::table::content::replay_report;
 
+use super::choice::{Choice, LineShown, Nodes};
 use super::recordings::{LARGEST_PIPED, open, unopened};
 use super::replay::{empty_report, unread};
-use super::show::{Blocks, chosen_table};
-use crate::program::arguments::{Form, ReplayArguments};
-use crate::program::output::{Output, locale_is_unicode};
+use super::show::{Asked, Blocks};
+use crate::program::arguments::ReplayArguments;
+use crate::program::moments::Moments;
+use crate::program::output::Output;
 use crate::program::problem::Problem;
 use crate::program::recording_file::{RecordingSource, open_recording};
 use crate::program::{files, message};
@@ -36,16 +38,22 @@ pub fn follow(arguments: &ReplayArguments) -> Result<u8, Problem> {
     let opening = reader.opening().clone();
     let layout = reader.layout().ok();
     let output = Output::open(None, false)?;
-    let only = {
-        let report = empty_report(&opening, layout.as_ref(), opening.from);
-        chosen_table(&arguments.output, &report)?
+    let asked = Asked {
+        moments: &Moments::One(opening.from),
+        options: &arguments.moments,
+        line: LineShown {
+            nodes: Nodes::Listed(&opening.nodes),
+            epoch: layout.as_ref().and_then(|layout| layout.epoch.as_ref()),
+        },
     };
-    let options = TextOptions { width: output.width(), unicode: locale_is_unicode() };
-    let form = arguments.output.form.unwrap_or(Form::Text);
+    let mut choice = Choice::of(&arguments.output, &asked)?;
+    choice.settle(empty_report(&opening, layout.as_ref(), opening.from))?;
+    let choice = Rc::new(choice);
+    let options = choice.text_options(&output);
     let printer = Printer {
         opening: &opening,
         layout: layout.as_ref(),
-        blocks: Blocks::new(form, options, only, "--follow")?,
+        blocks: Blocks::new(arguments.output.form(), options, &choice, "--follow")?,
         events: Vec::new(),
         next_byte: 0,
     };
@@ -147,7 +155,7 @@ fn is_same_file(file: &fs::File, path: &Path) -> bool {
 struct Printer<'a> {
     opening: &'a Opening,
     layout: Option<&'a Layout>,
-    blocks: Blocks,
+    blocks: Blocks<'a>,
     /// Events read since the last frame.
     events: Vec<Event>,
     /// Where the first line begins that has not been read.

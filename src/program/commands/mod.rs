@@ -1,5 +1,6 @@
 //! One function a command.
 
+mod choice;
 mod compare;
 mod following;
 mod recordings;
@@ -11,22 +12,26 @@ use std::sync::Arc;
 
 use clockspar::layout::Layout;
 use clockspar::run::Run;
-use clockspar::table::content::{JudgedOver, RuleState, judge};
+use clockspar::table::content::{Check, JudgedOver};
 
 use super::arguments::{Arguments, Command};
 use super::problem::{Problem, STATUS_RULE};
-use super::{desk, files, message};
+use super::{desk, files, message, preferences};
 
 /// Runs the command; the result is the exit status.
 pub fn run(arguments: Arguments) -> Result<u8, Problem> {
     match arguments.command {
-        None => built_in(&arguments.look),
+        None => built_in(&arguments),
         Some(Command::Desk(arguments)) => {
-            desk::run(files::load(&arguments.layout)?, &arguments.look)
+            let look = preferences::look(&arguments.look, &arguments.preferences);
+            desk::run(files::load(&arguments.layout)?, &look)
         }
         Some(Command::Check(arguments)) => tables::check(&arguments),
         Some(Command::Rates(arguments)) => tables::rates(&arguments),
         Some(Command::Offsets(arguments)) => tables::offsets(&arguments),
+        Some(Command::Loads(arguments)) => tables::loads(&arguments),
+        Some(Command::Links(arguments)) => tables::links(&arguments),
+        Some(Command::Reach(arguments)) => tables::reach(&arguments),
         Some(Command::Compare(arguments)) => compare::compare(&arguments),
         Some(Command::Record(arguments)) => recordings::record(&arguments),
         Some(Command::Replay(arguments)) => replay::replay(&arguments),
@@ -35,13 +40,14 @@ pub fn run(arguments: Arguments) -> Result<u8, Problem> {
 }
 
 /// Without a command: the desk, or a table when there is no terminal to draw on.
-fn built_in(look: &super::arguments::Look) -> Result<u8, Problem> {
+fn built_in(arguments: &Arguments) -> Result<u8, Problem> {
     use std::io::IsTerminal;
     let layout = files::built_in()?;
     if std::io::stdout().is_terminal() {
-        return desk::run(layout, look);
+        let look = preferences::look(&arguments.look, &arguments.preferences);
+        return desk::run(layout, &look);
     }
-    tables::print_rates(layout)
+    tables::print_rates(layout, &arguments.preferences)
 }
 
 /// The run of a layout; one in which a node reaches the horizon is refused, because its
@@ -53,16 +59,17 @@ fn run_of(layout: Layout, file: &str) -> Result<Run, Problem> {
 }
 
 /// One line of warning when a layout breaks a rule the command does not show.
-fn warn_of_broken_rules(layout: &Layout, file: &str) {
-    let judgements = judge(layout, JudgedOver::Plan);
-    let mut broken = judgements.iter().filter(|judgement| judgement.state == RuleState::Broken);
-    let Some(first) = broken.next() else { return };
-    let others = broken.count();
-    let more = if others == 0 { String::new() } else { format!(" and {others} more") };
+fn warn_of_broken_rules(run: &Run, file: &str) {
+    let layout = run.layout();
+    // Those of a rigid line are built only when a rule asks for them.
+    let built = if run.is_rigid() { None } else { run.loads().ok() };
+    let check = Check::with_loads(layout, JudgedOver::Plan, built);
+    let Some((first, count)) = check.broken() else { return };
+    let more = if count == 1 { String::new() } else { format!(" and {} more", count - 1) };
     message(&format!(
-        "warning: {file} breaks the rule `{}` for node `{}`{more}; see `clockspar check`",
+        "warning: {file} breaks the rule `{}` for `{}`{more}; see `clockspar check`",
         first.rule.word(),
-        layout.nodes[first.node].name
+        first.subject.name(layout)
     ));
 }
 

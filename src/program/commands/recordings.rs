@@ -14,9 +14,12 @@ use clockspar::run::recording::{
 use clockspar::table::content::verify_report;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 
-use super::show::show;
+use super::choice::{LineShown, Nodes};
+use super::show::{Asked, show};
 use super::{run_of, warn_of_broken_rules};
-use crate::program::arguments::{Form, OutputArguments, RecordArguments, VerifyArguments};
+use crate::program::arguments::{
+    Form, MomentArguments, OutputArguments, RecordArguments, VerifyArguments,
+};
 use crate::program::moments::{self, Moments};
 use crate::program::problem::{Problem, STATUS_RULE, room_for};
 use crate::program::recording_file::{CreateFault, RecordingFile, RecordingSource, open_recording};
@@ -31,7 +34,7 @@ pub fn record(arguments: &RecordArguments) -> Result<u8, Problem> {
     let layout = files::load(&arguments.layout)?;
     let name = files::shown_name(&arguments.layout);
     let run = run_of(layout, &name)?;
-    warn_of_broken_rules(run.layout(), &name);
+    warn_of_broken_rules(&run, &name);
     let from = match &arguments.from {
         Some(text) => moments::moment("--from", text, run.layout())?,
         None => ArrayTime::ZERO,
@@ -175,12 +178,16 @@ pub fn verify(arguments: &VerifyArguments) -> Result<u8, Problem> {
         recording::verify(reader.source(), None).map_err(|fault| unopened(&shown, &fault))?;
     let mut output: OutputArguments = arguments.output.clone();
     let opening = reader.opening();
-    let is_text = output.form.unwrap_or(Form::Text) == Form::Text;
-    if is_text && output.table.is_none() {
+    if output.form() == Form::Text && output.table.is_none() && output.columns.is_none() {
         // As text the verdict already stands above the table.
         output.table = Some("findings".to_owned());
     }
     let report = |_| verify_report(opening, layout.as_ref(), &verdict);
-    show(&Moments::One(ArrayTime::ZERO), false, &output, &report)?;
+    let asked = Asked {
+        moments: &Moments::One(ArrayTime::ZERO),
+        options: &MomentArguments::default(),
+        line: LineShown { nodes: Nodes::None, epoch: None },
+    };
+    show(&asked, &output, &report)?;
     Ok(if verdict.is_good() { 0 } else { STATUS_RULE })
 }

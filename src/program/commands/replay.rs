@@ -10,14 +10,15 @@ use clockspar::run::recording::{Condition, Frame, Line, Opening, ReadFault, Read
 use clockspar::table::Report;
 use clockspar::table::content::replay_report;
 
+use super::choice::{LineShown, Nodes};
 use super::following;
 use super::recordings::open;
-use super::show::show;
+use super::show::{Asked, show};
 use crate::program::arguments::ReplayArguments;
 use crate::program::moments::Moments;
 use crate::program::problem::{Problem, STATUS_RULE};
 use crate::program::recording_file::RecordingSource;
-use crate::program::{desk, files, message};
+use crate::program::{desk, files, message, preferences};
 
 /// `clockspar replay`: the desk on a terminal, a table elsewhere or when asked for.
 pub fn replay(arguments: &ReplayArguments) -> Result<u8, Problem> {
@@ -26,13 +27,10 @@ pub fn replay(arguments: &ReplayArguments) -> Result<u8, Problem> {
     }
     let reader = open(&arguments.file)?;
     let (output, moments) = (&arguments.output, &arguments.moments);
-    let wants_table = output.form.is_some()
-        || output.out.is_some()
-        || output.table.is_some()
-        || moments.at.is_some()
-        || moments.every.is_some();
+    let wants_table = output.wants_table() || moments.at.is_some() || moments.every.is_some();
     if !wants_table && std::io::stdout().is_terminal() {
-        return desk::replay(reader, &files::shown_name(&arguments.file), &arguments.look);
+        let look = preferences::look(&arguments.look, &output.preferences);
+        return desk::replay(reader, &files::shown_name(&arguments.file), &look);
     }
     replay_table(&reader, arguments)
 }
@@ -76,7 +74,10 @@ fn replay_table(
                 }
             }
         };
-        show(&moments, asked.paced, &arguments.output, &report)?;
+        let epoch = layout.as_ref().and_then(|layout| layout.epoch.as_ref());
+        let line = LineShown { nodes: Nodes::Listed(&opening.nodes), epoch };
+        let asked = Asked { moments: &moments, options: asked, line };
+        show(&asked, &arguments.output, &report)?;
     }
     if let Some(damage) = damage.into_inner() {
         message(&format!("{shown}: {damage}; shown up to there"));

@@ -5,19 +5,22 @@ use std::sync::Arc;
 
 use clockspar::layout::Layout;
 use clockspar::model::array_time::ArrayTime;
-use clockspar::run::{Run, State};
+use clockspar::run::{Event, EventKind, Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
-    JudgedOver, Judgement, RuleState, check_report, judge, offsets_report, rates_report,
+    Check, JudgedOver, LoadsOverPlan, Reach, check_report, links_report, loads_report,
+    offsets_report, rates_report, reach_report,
 };
 
-use super::show::show;
+use super::choice::LineShown;
+use super::show::{Asked, show};
 use super::{run_of, status_of, warn_of_broken_rules};
 use crate::program::arguments::{
-    MomentArguments, OffsetsArguments, OutputArguments, TableArguments,
+    MomentArguments, OffsetsArguments, OutputArguments, PreferenceArguments, ReachArguments,
+    TableArguments,
 };
 use crate::program::files;
-use crate::program::moments::Moments;
+use crate::program::moments::{Moments, moment};
 use crate::program::problem::Problem;
 
 /// `clockspar rates`.
@@ -33,10 +36,54 @@ pub fn offsets(arguments: &OffsetsArguments) -> Result<u8, Problem> {
     })
 }
 
+/// `clockspar loads`: status 1 when the plan breaks strength, a rating, slack or propellant.
+pub fn loads(arguments: &TableArguments) -> Result<u8, Problem> {
+    let run = run_of(files::load(&arguments.layout)?, &files::shown_name(&arguments.layout))?;
+    let loads = run
+        .loads()
+        .map_err(|fault| Problem::new(format_args!("{fault}"), fault.rule(), fault.remedy()))?;
+    let over_plan = LoadsOverPlan::new(run.layout(), loads);
+    show_run(&run, &arguments.moments, &arguments.output, |state| loads_report(state, &over_plan))?;
+    Ok(status_of(over_plan.fails()))
+}
+
+/// `clockspar links`. The summary spans the plan, so a table over time has it only when it
+/// is asked for by name.
+pub fn links(arguments: &TableArguments) -> Result<u8, Problem> {
+    let is_named = arguments.output.table.as_deref() == Some("summary");
+    let with_summary = is_named || arguments.moments.every.is_none();
+    table_of_run(&arguments.layout, &arguments.moments, &arguments.output, move |state| {
+        links_report(state, with_summary)
+    })
+}
+
+/// `clockspar reach`.
+pub fn reach(arguments: &ReachArguments) -> Result<u8, Problem> {
+    let table = &arguments.table;
+    let layout = files::load(&table.layout)?;
+    let name = files::shown_name(&table.layout);
+    let run = run_of(layout, &name)?;
+    let before = arguments.before.as_deref();
+    let before = before.map(|text| moment("--before", text, run.layout())).transpose()?;
+    let released = arguments.release.as_deref().map(|node| node_to_release(&run, node));
+    let asked = Reach { released: released.transpose()?, before };
+    warn_of_broken_rules(&run, &name);
+    show_run(&run, &table.moments, &table.output, move |state| reach_report(state, asked))
+}
+
+/// The row of a node that can be let go: any but the reference.
+fn node_to_release(run: &Run, node: &str) -> Result<usize, Problem> {
+    let event = Event { at: ArrayTime::ZERO, kind: EventKind::Release { node: node.to_owned() } };
+    run.clone().apply(event).and_then(|()| run.row(node)).map_err(|fault| {
+        Problem::new(format_args!("--release {node}: {fault}"), fault.rule(), fault.remedy())
+    })
+}
+
 /// The rates of the built-in layout, when there is no terminal to open the desk on.
-pub fn print_rates(layout: Layout) -> Result<u8, Problem> {
+pub fn print_rates(layout: Layout, preferences: &PreferenceArguments) -> Result<u8, Problem> {
     let run = run_of(layout, files::BUILT_IN_NAME)?;
-    show_run(&run, &MomentArguments::default(), &OutputArguments::default(), rates_report)
+    let output = OutputArguments { preferences: preferences.clone(), ..Default::default() };
+    show_run(&run, &MomentArguments::default(), &output, rates_report)
 }
 
 /// Reads a layout, refuses one that cannot be flown, warns of broken rules, and shows.
@@ -49,7 +96,7 @@ fn table_of_run(
     let layout = files::load(path)?;
     let name = files::shown_name(path);
     let run = run_of(layout, &name)?;
-    warn_of_broken_rules(run.layout(), &name);
+    warn_of_broken_rules(&run, &name);
     show_run(&run, moments, output, report)
 }
 
@@ -60,7 +107,8 @@ fn show_run(
     report: impl for<'a> Fn(State<'a>) -> Report<'a>,
 ) -> Result<u8, Problem> {
     let asked = Moments::of(moments, run.layout())?;
-    show(&asked, moments.paced, output, &|at| report(state_at(run, at)))?;
+    let asked = Asked { moments: &asked, options: moments, line: LineShown::of(run.layout()) };
+    show(&asked, output, &|at| report(state_at(run, at)))?;
     Ok(0)
 }
 
@@ -71,24 +119,24 @@ fn state_at(run: &Run, at: ArrayTime) -> State<'_> {
 
 /// `clockspar check`: over the whole plan, or at the moments asked for.
 pub fn check(arguments: &TableArguments) -> Result<u8, Problem> {
-    let layout = Arc::new(files::load(&arguments.layout)?);
+    let layout = files::load(&arguments.layout)?;
     let asked = arguments.moments.at.is_some() || arguments.moments.every.is_some();
     if !asked {
-        let judgements = judge(&layout, JudgedOver::Plan);
-        let report = |_| check_report(&layout, JudgedOver::Plan, judgements.clone().into());
-        show(&Moments::One(ArrayTime::ZERO), false, &arguments.output, &report)?;
-        return Ok(status_of(is_broken(&judgements)));
+        let check = Arc::new(Check::new(&layout, JudgedOver::Plan));
+        let report = |_| check_report(Arc::clone(&check));
+        let asked = Asked {
+            moments: &Moments::One(ArrayTime::ZERO),
+            options: &MomentArguments::default(),
+            line: LineShown::of(&layout),
+        };
+        show(&asked, &arguments.output, &report)?;
+        return Ok(status_of(check.broken().is_some()));
     }
     let moments = Moments::of(&arguments.moments, &layout)?;
-    let report = |at| {
-        let span = JudgedOver::Moment(at);
-        check_report(&layout, span, judge(&layout, span).into())
-    };
-    show(&moments, arguments.moments.paced, &arguments.output, &report)?;
-    let broken = moments.iter().any(|at| is_broken(&judge(&layout, JudgedOver::Moment(at))));
-    Ok(status_of(broken))
-}
-
-fn is_broken(judgements: &[Judgement]) -> bool {
-    judgements.iter().any(|judgement| judgement.state == RuleState::Broken)
+    let check = |at| Check::new(&layout, JudgedOver::Moment(at));
+    let report = |at| check_report(Arc::new(check(at)));
+    let asked =
+        Asked { moments: &moments, options: &arguments.moments, line: LineShown::of(&layout) };
+    show(&asked, &arguments.output, &report)?;
+    Ok(status_of(moments.iter().any(|at| check(at).broken().is_some())))
 }

@@ -1,12 +1,12 @@
 //! The line itself, drawn down the left margin: nodes, what joins them, the horizon.
 
 use clockspar::layout::SpanKind;
-use clockspar::model::dd::Dd;
 use clockspar::run::NodeState;
 use clockspar::table::Measure;
+use clockspar::table::content::SpanLoad;
 use ratatui::layout::Rect;
 
-use super::painter::{PLAIN, Painter, QUIET, STRONG};
+use super::painter::{PLAIN, Painter, QUIET, STRONG, state_style};
 use super::state::Desk;
 use super::words;
 
@@ -37,16 +37,31 @@ pub fn draw_row(
         return;
     }
     let span = layout.spans.binary_search_by_key(&row, |span| span.fore).ok();
-    let joined = match span.map(|index| layout.spans[index].kind) {
-        Some(SpanKind::Tether) => glyphs.tether_down,
-        Some(SpanKind::Boom) => glyphs.boom_down,
-        None => glyphs.gap_down,
+    let (joined, style) = match (span_load(desk, row), span.map(|index| layout.spans[index].kind)) {
+        (Some(SpanLoad::Slack), _) => (glyphs.slack, state_style("slack")),
+        (Some(SpanLoad::Over), _) => (glyphs.over, state_style("over")),
+        (_, Some(SpanKind::Tether)) => (glyphs.tether_down, QUIET),
+        (_, Some(SpanKind::Boom)) => (glyphs.boom_down, QUIET),
+        (_, None) => (glyphs.gap_down, QUIET),
     };
     if is_spread {
-        painter.put(area, area.x + NODE, y + 1, joined, QUIET);
+        painter.put(area, area.x + NODE, y + 1, joined, style);
     } else {
-        painter.put(area, area.x + GAP, y, joined, QUIET);
+        painter.put(area, area.x + GAP, y, joined, style);
     }
+}
+
+/// How the span aft of a row stands; `None` on a line without spans, whose loads are not
+/// worked out for a mark, and where there is nothing between the two.
+fn span_load(desk: &Desk, row: usize) -> Option<SpanLoad> {
+    if desk.layout().spans.is_empty() {
+        return None;
+    }
+    let state = desk.state()?;
+    state.node(row).aboard()?;
+    state.node(row + 1).aboard()?;
+    let loads = desk.run.loads().ok()?;
+    Some(SpanLoad::of(&loads, &loads.state_of_instant(*state.instant()), row))
 }
 
 /// The horizon of the line at the present moment.
@@ -72,7 +87,7 @@ pub fn horizon(desk: &Desk) -> Option<Horizon> {
         (0..state.rows()).rev().find(is_aboard)
     }?;
     let position_m = state.node(row).aboard()?.position_m;
-    let distance = state.instant().horizon_m(Dd::new(position_m))?.to_f64();
+    let distance = state.instant().horizon_m(position_m)?.to_f64();
     let side = if is_fore { "fore" } else { "aft" };
     let name = &desk.layout().nodes[row].name;
     let text = format!("horizon {} {side} of {name}", words::value(Measure::Length, distance));

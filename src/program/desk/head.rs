@@ -1,6 +1,7 @@
 //! The head: what is shown, when, and how things stand.
 
 use clockspar::table::Measure;
+use clockspar::table::content::SpanLoad;
 use ratatui::layout::Rect;
 
 use super::geometry::{Extent, Geometry};
@@ -105,11 +106,40 @@ pub fn states(desk: &Desk) -> Vec<String> {
     if desk.is_what_if() {
         states.push("what-if".to_owned());
     }
+    states.extend(load_words(desk).map(str::to_owned));
     if let Some(running) = &desk.running {
         let slower = if running.is_behind { ", slower for every frame" } else { "" };
         states.push(format!("running at pace {}{slower}", words::rounded(desk.pace)));
     }
     states
+}
+
+/// Longest line whose loads are looked through for every picture.
+const MOST_WATCHED: usize = 5_000;
+
+/// `slack` and `over`, when some span or node of the line is so at this moment.
+fn load_words(desk: &Desk) -> impl Iterator<Item = &'static str> {
+    let (mut is_slack, mut is_over) = (false, false);
+    let layout = desk.layout();
+    if !layout.spans.is_empty()
+        && layout.nodes.len() <= MOST_WATCHED
+        && let Some(state) = desk.state()
+        && let Ok(loads) = desk.run.loads()
+    {
+        let now = loads.state_of_instant(*state.instant());
+        let nodes: Vec<_> = state.nodes().map(|node| node.aboard()).collect();
+        for (row, aboard) in nodes.iter().enumerate() {
+            let Some(aboard) = aboard else { continue };
+            let felt = state.instant().felt_acceleration_m_s2(aboard.position_m).to_f64().abs();
+            is_over |= layout.nodes[row].rating_m_s2.is_some_and(|rating| felt > rating);
+            if nodes.get(row + 1).is_some_and(Option::is_some) {
+                let load = SpanLoad::of(&loads, &now, row);
+                is_slack |= load == SpanLoad::Slack;
+                is_over |= load == SpanLoad::Over;
+            }
+        }
+    }
+    is_slack.then_some("slack").into_iter().chain(is_over.then_some("over"))
 }
 
 /// The phase: its number among those in force.

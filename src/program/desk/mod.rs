@@ -21,6 +21,7 @@ mod entry;
 mod geometry;
 mod head;
 mod keys;
+mod launch_chart;
 mod message;
 mod outside;
 mod painter;

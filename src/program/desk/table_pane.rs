@@ -7,7 +7,7 @@ use ratatui::style::Style;
 use super::drawn_line;
 use super::geometry::{Geometry, HEADINGS};
 use super::keys::Focus;
-use super::painter::{CHOSEN, PLAIN, Painter, QUIET, STRONG, width_of};
+use super::painter::{CHOSEN, PLAIN, Painter, QUIET, STRONG, state_style, width_of};
 use super::state::Desk;
 
 /// Columns between two columns.
@@ -187,6 +187,13 @@ fn draw_row(
     let mut x = body.x;
     for shown in columns {
         if let Some(cell) = cells.get(shown.place) {
+            // A state that asks for attention has its colour behind the word.
+            let style = match cell {
+                Cell::Text(word) if ["slack", "over"].contains(&word.as_ref()) => {
+                    style.patch(state_style(word))
+                }
+                _ => style,
+            };
             put_cell(shown, &shown.format.cell(cell), body, x, y, style, painter);
         }
         x += shown.width + GAP;

@@ -249,7 +249,7 @@ impl Check {
             compared.number(Some(row), "rate_minus_one", *rate, wanted, || 0.0);
             let wanted = aboard.map(|aboard| aboard.clock_offset_s.to_f64());
             compared.number(Some(row), "clock_offset_s", *offset, wanted, || {
-                let farthest_m = state.run().place(row).farthest_m(state.at());
+                let farthest_m = state.farthest_m(row);
                 farthest_m * total / SPEED_OF_LIGHT_M_S
             });
         }

@@ -1,25 +1,51 @@
 //! `check`: every rule a layout must meet, with margins.
+//!
+//! One file a rule or a group of rules. Judgements are made when they are asked for, from
+//! what the plan has been boiled down to, so a line of a million nodes is neither held
+//! twice nor told in strings nobody reads.
+
+mod limits;
+mod line;
+mod offset;
+mod phases;
+mod placed;
+mod report;
+mod resolve;
+mod words;
 
 use std::borrow::Cow;
-use std::sync::Arc;
+use std::sync::{Arc, OnceLock};
 
-use super::column;
-use crate::layout::{Course, Layout};
+use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
-use crate::model::constants::{C2_M2_S2, STANDARD_GRAVITY_M_S2};
-use crate::model::dd::Dd;
-use crate::model::horizon::{self, Extreme, Extremes, HorizonReached};
-use crate::model::plan::Plan;
-use crate::model::rates::{Instant, is_realisable};
-use crate::table::{Cell, Column, Measure, Report, Scalar, Table};
+use crate::model::loads::Loads;
+use crate::table::Measure;
 
-/// A rule of a layout.
+use limits::Limits;
+use line::Line;
+use placed::Placed;
+
+pub use report::check_report;
+
+/// A rule of a layout, in the order of the table.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub enum Rule {
     /// No node reaches the horizon.
     Horizon,
     /// No node feels more than it is built for.
     Rating,
+    /// No span carries more than its strength over its safety factor.
+    Strength,
+    /// No tether is pushed.
+    Slack,
+    /// No ramp is shorter than the line's lowest axial period asks for.
+    Ramp,
+    /// No engine runs dry.
+    Propellant,
+    /// The rates of a pair are told apart within an averaging time.
+    Resolve,
+    /// The clocks of a pair do not part farther than a limit.
+    ClockOffset,
 }
 
 impl Rule {
@@ -29,6 +55,23 @@ impl Rule {
         match self {
             Rule::Horizon => "horizon",
             Rule::Rating => "rating",
+            Rule::Strength => "strength",
+            Rule::Slack => "slack",
+            Rule::Ramp => "ramp",
+            Rule::Propellant => "propellant",
+            Rule::Resolve => "resolve",
+            Rule::ClockOffset => "clock_offset",
+        }
+    }
+
+    /// The SI unit of its value and its limit, and what they measure.
+    #[must_use]
+    pub fn unit(self) -> (&'static str, Measure) {
+        match self {
+            Rule::Horizon | Rule::Rating => ("m/s^2", Measure::Acceleration),
+            Rule::Strength | Rule::Slack => ("N", Measure::Force),
+            Rule::Ramp | Rule::Resolve | Rule::ClockOffset => ("s", Measure::Time),
+            Rule::Propellant => ("kg", Measure::Mass),
         }
     }
 }
@@ -36,10 +79,12 @@ impl Rule {
 /// Whether a rule is met.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
 pub enum RuleState {
-    /// It is met.
+    /// It is met; a value exactly at its limit is.
     Kept,
     /// It is not.
     Broken,
+    /// The layout does not say enough, or this version does not judge the rule.
+    NotJudged,
 }
 
 impl RuleState {
@@ -49,7 +94,13 @@ impl RuleState {
         match self {
             RuleState::Kept => "kept",
             RuleState::Broken => "broken",
+            RuleState::NotJudged => "not_judged",
         }
+    }
+
+    /// The state of a rule that is judged.
+    fn of(kept: bool) -> RuleState {
+        if kept { RuleState::Kept } else { RuleState::Broken }
     }
 }
 
@@ -62,318 +113,305 @@ pub enum JudgedOver {
     Moment(ArrayTime),
 }
 
-/// One rule, judged for one node.
+/// What a rule binds.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Subject {
+    /// A node, by its row; limits of its clock are against the reference.
+    Node(usize),
+    /// A pair of nodes, from the first to the second.
+    Pair([usize; 2]),
+    /// The whole line, at a change of thrust.
+    Line,
+    /// The engine at a row.
+    Engine(usize),
+    /// So many parts of the line together, with the word for one of them.
+    Parts(usize, &'static str),
+}
+
+impl Subject {
+    /// Its name in the tables.
+    #[must_use]
+    pub fn name(self, layout: &Layout) -> Cow<'_, str> {
+        let name = |row: usize| layout.nodes[row].name.as_str();
+        match self {
+            Subject::Node(row) => Cow::Borrowed(name(row)),
+            Subject::Pair([from, to]) => Cow::Owned(format!("{} to {}", name(from), name(to))),
+            Subject::Line => Cow::Borrowed("the line"),
+            Subject::Engine(row) => Cow::Owned(format!("engine at {}", name(row))),
+            Subject::Parts(1, word) => Cow::Owned(format!("1 {word}")),
+            Subject::Parts(count, word) => Cow::Owned(format!("{count} {word}s")),
+        }
+    }
+
+    /// The rows of the two clocks a limit compares.
+    fn ends(self, layout: &Layout) -> [usize; 2] {
+        match self {
+            Subject::Node(row) => [layout.reference, row],
+            Subject::Pair(pair) => pair,
+            Subject::Line | Subject::Engine(_) | Subject::Parts(..) => {
+                unreachable!("a limit binds a node or a pair")
+            }
+        }
+    }
+}
+
+/// One rule, judged for one subject.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Judgement {
     /// The rule.
     pub rule: Rule,
-    /// Row of the node.
-    pub node: usize,
-    /// Index of the phase in which the value occurs first; `None` outside every phase.
-    pub phase: Option<usize>,
+    /// What it binds.
+    pub subject: Subject,
+    /// Index of the phase in which the value occurs first, or why there is none.
+    pub phase: Result<usize, &'static str>,
     /// The moment it does, or at which the rule is broken first.
-    pub at: ArrayTime,
-    /// The value nearest to the limit.
-    pub value: f64,
-    /// The limit; `None` where nothing limits it.
-    pub limit: Option<f64>,
-    /// `1 − value/limit`; for the horizon the smallest `N`.
-    pub margin: f64,
+    pub at: Result<ArrayTime, &'static str>,
+    /// The value nearest to the limit, in the unit of the rule, or why there is none.
+    pub value: Result<f64, Cow<'static, str>>,
+    /// The limit, or why there is none.
+    pub limit: Result<f64, &'static str>,
+    /// `1 − value/limit`, for the horizon the smallest `N`; minus infinity for a pair that
+    /// is never resolved. `None` for a rule that is not judged.
+    pub margin: Option<f64>,
     /// Whether the rule is met.
     pub state: RuleState,
-    /// What would mend it; empty when it is kept.
-    pub remedy: String,
 }
 
-/// The accelerations the line is judged under, and the gradient it stands in.
-struct Judged<'a> {
-    extremes: Extremes,
-    phases: bool,
-    gradient_per_s2: f64,
-    plan: Option<&'a Plan>,
+const NO_PHASE: &str = "outside every phase of a plan";
+
+impl Judgement {
+    fn not_judged(rule: Rule, subject: Subject, why: impl Into<Cow<'static, str>>) -> Judgement {
+        Judgement {
+            rule,
+            subject,
+            phase: Err("not judged"),
+            at: Err("not judged"),
+            value: Err(why.into()),
+            limit: Err("not judged"),
+            margin: None,
+            state: RuleState::NotJudged,
+        }
+    }
 }
 
-impl Judged<'_> {
-    fn of(layout: &Layout, span: JudgedOver) -> Judged<'_> {
-        let single = |acceleration_m_s2, at| {
-            let extreme = Extreme { acceleration_m_s2, phase: 0, at };
-            Extremes { largest: extreme, smallest: extreme }
-        };
-        match (&layout.course, span) {
-            (Course::Standing(standing), _) => Judged {
-                extremes: single(Dd::new(standing.gravity_m_s2), ArrayTime::ZERO),
-                phases: false,
-                gradient_per_s2: standing.gradient_per_s2,
-                plan: None,
-            },
-            (Course::Thrust(plan), JudgedOver::Moment(at)) => {
-                let moment = plan.moment(at);
-                let mut extremes = single(moment.acceleration_m_s2, at);
-                extremes.largest.phase = moment.phase.unwrap_or(0);
-                extremes.smallest.phase = extremes.largest.phase;
-                let phases = moment.phase.is_some();
-                Judged { extremes, phases, gradient_per_s2: 0.0, plan: None }
+/// How many rules are kept, and which is nearest to being broken.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Summary {
+    /// Rules kept.
+    pub kept: usize,
+    /// Rules broken.
+    pub broken: usize,
+    /// Rules not judged.
+    pub not_judged: usize,
+    /// The smallest margin of all that are judged; the first of equals.
+    pub smallest: Judgement,
+}
+
+/// Every rule of a layout, judged over its plan or at a moment.
+///
+/// Rows are in the order of [`Rule`], then fore to aft; parts and limits of equal place in
+/// the order of the file.
+pub struct Check<'a> {
+    layout: &'a Layout,
+    span: JudgedOver,
+    line: Line<'a>,
+    /// Rows of the nodes with a rating.
+    rated: Vec<usize>,
+    /// Where the nodes are judged, and the rules on loads.
+    placed: Placed,
+    limits: Limits<'a>,
+    /// Made once, when it is asked for.
+    summary: OnceLock<Summary>,
+}
+
+impl<'a> Check<'a> {
+    /// Prepares the judgement: in a time that grows with the nodes and the phases, not with
+    /// their product.
+    #[must_use]
+    pub fn new(layout: &'a Layout, span: JudgedOver) -> Check<'a> {
+        Check::with_loads(layout, span, None)
+    }
+
+    /// The same with the loads of the layout over its plan, when they have been built.
+    #[must_use]
+    pub fn with_loads(
+        layout: &'a Layout,
+        span: JudgedOver,
+        loads: Option<Arc<Loads>>,
+    ) -> Check<'a> {
+        let line = Line::of(layout, span);
+        let placed = Placed::of(layout, span, &line, loads);
+        let rated = layout.nodes.iter().enumerate().filter(|(_, node)| node.rating_m_s2.is_some());
+        Check {
+            layout,
+            span,
+            rated: rated.map(|(row, _)| row).collect(),
+            limits: Limits::judge(layout, span, &line, &placed),
+            placed,
+            line,
+            summary: OnceLock::new(),
+        }
+    }
+
+    /// The layout judged.
+    #[must_use]
+    pub fn layout(&self) -> &'a Layout {
+        self.layout
+    }
+
+    /// What it is judged over.
+    #[must_use]
+    pub fn span(&self) -> JudgedOver {
+        self.span
+    }
+
+    /// Number of judgements.
+    #[must_use]
+    pub fn rows(&self) -> usize {
+        self.layout.nodes.len()
+            + self.rated.len()
+            + self.placed.judgements.len()
+            + self.limits.judgements.len()
+    }
+
+    /// A judgement by its row.
+    ///
+    /// # Panics
+    ///
+    /// If there is no such row.
+    #[must_use]
+    pub fn judgement(&self, row: usize) -> Judgement {
+        let nodes = self.layout.nodes.len();
+        if row < nodes {
+            return self.line.horizon(row, self.placed.position_m(self.layout, row));
+        }
+        let row = row - nodes;
+        if let Some(&node) = self.rated.get(row) {
+            return self.rating(node);
+        }
+        let row = row - self.rated.len();
+        if let Some((judgement, _)) = self.placed.judgements.get(row) {
+            return judgement.clone();
+        }
+        self.limits.judgements[row - self.placed.judgements.len()].clone()
+    }
+
+    fn rating(&self, row: usize) -> Judgement {
+        let rating = self.layout.nodes[row].rating_m_s2.unwrap_or(f64::INFINITY);
+        self.line.rating(row, self.placed.position_m(self.layout, row), rating)
+    }
+
+    /// Counts and the smallest margin.
+    #[must_use]
+    pub fn summary(&self) -> &Summary {
+        self.summary.get_or_init(|| self.summarised())
+    }
+
+    fn summarised(&self) -> Summary {
+        let mut summary =
+            Summary { kept: 0, broken: 0, not_judged: 0, smallest: self.judgement(0) };
+        for row in 0..self.rows() {
+            let judgement = self.judgement(row);
+            match judgement.state {
+                RuleState::Kept => summary.kept += 1,
+                RuleState::Broken => summary.broken += 1,
+                RuleState::NotJudged => summary.not_judged += 1,
             }
-            (Course::Thrust(plan), JudgedOver::Plan) => {
-                let extremes = Extremes::of(plan);
-                Judged {
-                    extremes: extremes.unwrap_or_else(|| single(Dd::ZERO, ArrayTime::ZERO)),
-                    phases: extremes.is_some(),
-                    gradient_per_s2: 0.0,
-                    plan: Some(plan),
-                }
+            let margin = judgement.margin.unwrap_or(f64::INFINITY);
+            if margin < summary.smallest.margin.unwrap_or(f64::INFINITY) {
+                summary.smallest = judgement;
+            }
+        }
+        summary
+    }
+
+    /// The first broken rule and how many there are; `None` when there is none.
+    ///
+    /// Nodes that keep their rules by more than rounding are passed over without being
+    /// judged, so this costs a few nanoseconds a node.
+    #[must_use]
+    pub fn broken(&self) -> Option<(Judgement, usize)> {
+        let nodes = &self.layout.nodes;
+        let mut found: Option<(Judgement, usize)> = None;
+        let mut see = |judgement: Judgement| {
+            if judgement.state == RuleState::Broken {
+                found.get_or_insert((judgement, 0)).1 += 1;
+            }
+        };
+        // `N` is linear in position and rows go fore to aft: when the ends fly, all do.
+        let ends = [0, nodes.len() - 1];
+        if ends.iter().any(|&row| self.judgement(row).state == RuleState::Broken) {
+            (0..nodes.len()).map(|row| self.judgement(row)).for_each(&mut see);
+        }
+        for &row in &self.rated {
+            let node = &nodes[row];
+            let rating = node.rating_m_s2.unwrap_or(f64::INFINITY);
+            let position_m = self.placed.position_m(self.layout, row);
+            if !self.line.surely_keeps_rating(position_m, rating) {
+                see(self.rating(row));
+            }
+        }
+        let loads = self.placed.judgements.iter().map(|(judgement, _)| judgement);
+        loads.chain(&self.limits.judgements).cloned().for_each(see);
+        found
+    }
+
+    /// What would mend a broken rule; `None` for one that is kept or not judged for a
+    /// reason that no key of the layout mends.
+    #[must_use]
+    pub fn remedy(&self, judgement: &Judgement) -> Option<String> {
+        match (judgement.state, judgement.subject) {
+            (RuleState::Kept, _) | (_, Subject::Parts(..)) => None,
+            (RuleState::Broken, Subject::Node(row)) if judgement.rule == Rule::Horizon => {
+                Some(self.line.horizon_remedy(self.placed.position_m(self.layout, row)))
+            }
+            (RuleState::Broken, Subject::Node(row)) if judgement.rule == Rule::Rating => {
+                Some(self.line.rating_remedy(&self.layout.nodes[row]))
+            }
+            _ if judgement.rule == Rule::ClockOffset => {
+                self.limits.offset_remedy(self.layout, &self.placed, judgement)
+            }
+            _ if judgement.rule == Rule::Resolve => {
+                self.limits.resolve_remedy(self.layout, judgement)
+            }
+            _ => {
+                let same = |(known, _): &&(Judgement, String)| known == judgement;
+                self.placed.judgements.iter().find(same).map(|(_, remedy)| remedy.clone())
             }
         }
     }
 
-    fn phase(&self, extreme: &Extreme) -> Option<usize> {
-        self.phases.then_some(extreme.phase)
-    }
-
-    /// The felt acceleration of a node at an extreme, m/s².
-    fn felt(&self, extreme: &Extreme, position_m: f64) -> f64 {
-        let moment = crate::model::plan::Moment {
-            acceleration_m_s2: extreme.acceleration_m_s2,
-            ..crate::model::plan::Moment::held_always(extreme.at, 0.0)
-        };
-        let instant = Instant { moment, gradient_per_s2: self.gradient_per_s2 };
-        instant.felt_acceleration_m_s2(Dd::new(position_m)).to_f64()
-    }
-
-    fn horizon(&self, row: usize, position_m: f64) -> Judgement {
-        let worst = self.extremes.worst_for(position_m);
-        let drive = worst.acceleration_m_s2 * position_m / C2_M2_S2;
-        // A node whose rate never falls below one is nearest to the horizon while it coasts.
-        let (rate, value) = if drive.is_negative() {
-            (drive + 1.0, worst.acceleration_m_s2.abs().to_f64())
-        } else {
-            (Dd::ONE, 0.0)
-        };
-        let limit = (position_m != 0.0).then(|| (C2_M2_S2 / Dd::new(position_m)).abs().to_f64());
-        let kept = is_realisable(worst.acceleration_m_s2, position_m);
-        let mut judgement = Judgement {
-            rule: Rule::Horizon,
-            node: row,
-            phase: self.phase(&worst),
-            at: worst.at,
-            value,
-            limit,
-            margin: rate.to_f64(),
-            state: if kept { RuleState::Kept } else { RuleState::Broken },
-            remedy: String::new(),
-        };
-        if !kept {
-            let reached = self
-                .plan
-                .and_then(|plan| horizon::reached(plan, &self.extremes, position_m))
-                .unwrap_or_else(|| horizon::partners(worst, position_m));
-            judgement.phase = self.phases.then_some(reached.phase);
-            judgement.at = ArrayTime::nearest(reached.at_s).unwrap_or(worst.at);
-            judgement.remedy = horizon_remedy(&reached);
+    /// One sentence: what brings the subject of a judgement to its limit, and so what
+    /// widens its margin.
+    #[must_use]
+    pub fn widen(&self, judgement: &Judgement) -> String {
+        if let Some(remedy) = self.remedy(judgement) {
+            return remedy;
         }
-        judgement
-    }
-
-    fn rating(&self, row: usize, position_m: f64, rating: f64) -> Option<Judgement> {
-        let (worst, felt) = [self.extremes.largest, self.extremes.smallest]
-            .into_iter()
-            .filter(|extreme| is_realisable(extreme.acceleration_m_s2, position_m))
-            .map(|extreme| (extreme, self.felt(&extreme, position_m)))
-            .max_by(|(_, a), (_, b)| a.abs().total_cmp(&b.abs()))?;
-        let value = felt.abs();
-        let kept = value <= rating;
-        let mut judgement = Judgement {
-            rule: Rule::Rating,
-            node: row,
-            phase: self.phase(&worst),
-            at: worst.at,
-            value,
-            limit: Some(rating),
-            margin: 1.0 - value / rating,
-            state: if kept { RuleState::Kept } else { RuleState::Broken },
-            remedy: String::new(),
-        };
-        if !kept {
-            judgement.remedy = self.rating_remedy(felt, position_m, rating);
-            if let Some((phase, at)) = self.first_over(position_m, rating) {
-                (judgement.phase, judgement.at) = (Some(phase), at);
+        let node = |row: usize| &self.layout.nodes[row];
+        let way = match (judgement.rule, judgement.subject) {
+            (Rule::Horizon, Subject::Node(row)) => Some(self.line.horizon_widen(node(row))),
+            (Rule::Rating, Subject::Node(row)) => Some(self.line.rating_widen(node(row))),
+            (Rule::ClockOffset, _) => {
+                self.limits.offset_widen(self.layout, &self.placed, judgement)
             }
-        }
-        Some(judgement)
-    }
-
-    fn rating_remedy(&self, felt: f64, position_m: f64, rating: f64) -> String {
-        if !self.phases {
-            return format!("build the node for {}", amount(felt.abs()));
-        }
-        // α/(1 + αh/c²) = r at α = r/(1 − rh/c²), with the sign of the thrust.
-        let bound = Dd::new(rating.copysign(felt));
-        let most = (bound / (Dd::ONE - bound * position_m / C2_M2_S2)).to_f64();
-        format!(
-            "hold no more than {} at the reference, or build the node for {}",
-            amount(most.abs()),
-            amount(felt.abs())
-        )
-    }
-
-    /// The first phase and moment at which a node feels more than it is built for.
-    fn first_over(&self, position_m: f64, rating: f64) -> Option<(usize, ArrayTime)> {
-        let over = |acceleration: Dd| {
-            let extreme =
-                Extreme { acceleration_m_s2: acceleration, phase: 0, at: ArrayTime::ZERO };
-            self.felt(&extreme, position_m).abs() > rating
+            (Rule::Strength, _) => {
+                Some("less thrust, less mass beyond the span, or a stronger one".to_owned())
+            }
+            (Rule::Ramp, _) => Some("a longer ramp, or a stiffer line".to_owned()),
+            (Rule::Propellant, _) => {
+                Some("more propellant, a higher exhaust speed, or less thrust".to_owned())
+            }
+            (Rule::Resolve, _) => self.limits.resolve_widen(self.layout, judgement),
+            _ => None,
         };
-        for (index, phase) in self.plan?.phases().iter().enumerate() {
-            if over(phase.acceleration(phase.start)) {
-                return Some((index, phase.start));
-            }
-            let last = phase.acceleration(phase.end);
-            if over(last) {
-                let bound = Dd::new(rating.copysign(last.hi));
-                let limit = bound / (Dd::ONE - bound * position_m / C2_M2_S2);
-                let after = phase.moment_of(limit).unwrap_or(Dd::ZERO);
-                let at = ArrayTime::nearest(phase.start.seconds() + after)?;
-                return Some((index, at.max(phase.start)));
-            }
-        }
-        None
+        way.unwrap_or_else(|| "nothing that this version judges".to_owned())
     }
 }
 
-fn horizon_remedy(reached: &HorizonReached) -> String {
-    format!(
-        "hold no more than {:?} m/s^2 at the reference, or place the node no farther than {:?} m",
-        reached.largest_acceleration_m_s2.abs(),
-        reached.nearest_position_m
-    )
-}
-
-/// An acceleration for a sentence.
-fn amount(acceleration_m_s2: f64) -> String {
-    format!("{acceleration_m_s2:.6} m/s^2 ({:.6} g0)", acceleration_m_s2 / STANDARD_GRAVITY_M_S2)
-}
-
-/// Judges every rule: the horizon for each node, then the rating of each node that has one.
+/// Judges every rule of a layout.
 #[must_use]
 pub fn judge(layout: &Layout, span: JudgedOver) -> Vec<Judgement> {
-    let judged = Judged::of(layout, span);
-    let mut judgements: Vec<Judgement> = Vec::with_capacity(layout.nodes.len());
-    for (row, node) in layout.nodes.iter().enumerate() {
-        judgements.push(judged.horizon(row, node.position_m));
-    }
-    for (row, node) in layout.nodes.iter().enumerate() {
-        let rated = node.rating_m_s2.and_then(|rating| judged.rating(row, node.position_m, rating));
-        judgements.extend(rated);
-    }
-    judgements
-}
-
-const COLUMNS: [Column; 10] = [
-    column("rule", "rule", Measure::Word),
-    column("subject", "subject", Measure::Word),
-    column("phase", "phase", Measure::Count),
-    column("at_s", "at", Measure::Time),
-    column("value", "value", Measure::Acceleration),
-    column("limit", "limit", Measure::Acceleration),
-    column("unit", "unit", Measure::Word),
-    column("margin", "margin", Measure::Ratio),
-    column("state", "state", Measure::Word),
-    column("remedy", "remedy", Measure::Word),
-];
-
-/// The check report of a layout, from its judgements.
-#[must_use]
-pub fn check_report(layout: &Layout, span: JudgedOver, judgements: Arc<[Judgement]>) -> Report<'_> {
-    let mut report = head(layout, span);
-    let broken = judgements.iter().filter(|judgement| judgement.state == RuleState::Broken).count();
-    let smallest = judgements.iter().min_by(|a, b| a.margin.total_cmp(&b.margin));
-    let scalar = |key, heading, measure, value| Scalar { key, heading, measure, value };
-    let count = |number: usize| Cell::Integer(i64::try_from(number).unwrap_or(i64::MAX));
-    report.scalars = vec![
-        scalar("kept", "kept", Measure::Count, count(judgements.len() - broken)),
-        scalar("broken", "broken", Measure::Count, count(broken)),
-    ];
-    if let Some(smallest) = smallest {
-        report.scalars.extend([
-            scalar(
-                "smallest_margin",
-                "smallest margin",
-                Measure::Ratio,
-                Cell::Number(smallest.margin),
-            ),
-            scalar(
-                "smallest_margin_rule",
-                "of the rule",
-                Measure::Word,
-                Cell::Text(smallest.rule.word().into()),
-            ),
-            scalar(
-                "smallest_margin_subject",
-                "for",
-                Measure::Word,
-                Cell::Text(Cow::Borrowed(&layout.nodes[smallest.node].name)),
-            ),
-        ]);
-    }
-    report.tables.push(Table {
-        name: "rules",
-        columns: COLUMNS.to_vec(),
-        rows: judgements.len(),
-        marked: None,
-        fill: Box::new(move |row, cells| fill(layout, &judgements[row], cells)),
-    });
-    report
-}
-
-/// The head: a line that reaches the horizon has no state, so it is made from the plan.
-fn head(layout: &Layout, span: JudgedOver) -> Report<'_> {
-    const WHOLE: &str = "the rules are judged over the whole plan";
-    let (at, acceleration, rapidity) = match (span, &layout.course) {
-        (JudgedOver::Plan, _) => (Err(WHOLE), Err(WHOLE), Err(WHOLE)),
-        (JudgedOver::Moment(at), Course::Thrust(plan)) => {
-            let moment = plan.moment(at);
-            let acceleration = moment.acceleration_m_s2.to_f64();
-            (Ok(at), Ok(acceleration), Ok(moment.rapidity.to_f64()))
-        }
-        (JudgedOver::Moment(at), Course::Standing(standing)) => {
-            (Ok(at), Ok(standing.gravity_m_s2), Err(super::NO_RAPIDITY))
-        }
-    };
-    Report {
-        command: "check",
-        schema_version: 1,
-        layout: &layout.name,
-        revision: layout.revision.as_deref(),
-        layout_sha256: &layout.source.sha256,
-        at,
-        reference_acceleration_m_s2: acceleration,
-        rapidity,
-        scalars: Vec::new(),
-        tables: Vec::new(),
-        remarks: Vec::new(),
-    }
-}
-
-fn fill<'a>(layout: &'a Layout, judgement: &Judgement, cells: &mut Vec<Cell<'a>>) {
-    let word = |word: &'static str| Cell::Text(Cow::Borrowed(word));
-    cells.push(word(judgement.rule.word()));
-    cells.push(Cell::Text(Cow::Borrowed(&layout.nodes[judgement.node].name)));
-    cells.push(match judgement.phase {
-        Some(phase) => Cell::Integer(i64::try_from(phase + 1).unwrap_or(i64::MAX)),
-        None => Cell::Absent("outside every phase of a plan".into()),
-    });
-    cells.push(Cell::Time(judgement.at));
-    cells.push(Cell::Number(judgement.value));
-    cells.push(match judgement.limit {
-        Some(limit) => Cell::finite(limit, super::OVERFLOW),
-        None => Cell::Absent("the reference node is never at the horizon".into()),
-    });
-    cells.push(word("m/s^2"));
-    cells.push(Cell::finite(judgement.margin, super::OVERFLOW));
-    cells.push(word(judgement.state.word()));
-    cells.push(if judgement.remedy.is_empty() {
-        Cell::Absent("nothing to mend".into())
-    } else {
-        Cell::Text(Cow::Owned(judgement.remedy.clone()))
-    });
+    let check = Check::new(layout, span);
+    (0..check.rows()).map(|row| check.judgement(row)).collect()
 }

@@ -70,7 +70,7 @@ const QUANTITIES: [&str; 5] =
 
 fn values(state: &State<'_>, row: usize) -> Option<[Dd; 5]> {
     let aboard = state.node(row).aboard()?;
-    let position = Dd::new(aboard.position_m);
+    let position = aboard.position_m;
     let instant = state.instant();
     Some([
         position,

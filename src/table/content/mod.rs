@@ -2,22 +2,35 @@
 
 mod check;
 mod compare;
+mod links;
+mod loads;
 mod offsets;
 mod rates;
+mod reach;
 mod recording;
+mod released;
 
-use crate::layout::Layout;
+use crate::layout::{Course, Layout};
 use crate::model::dd::Dd;
 use crate::model::rates::{Instant, KnownClock};
 use crate::run::{Aboard, State};
 
 use super::{Cell, Column, Measure, Report};
 
-pub use check::{JudgedOver, Judgement, Rule, RuleState, check_report, judge};
+pub use check::{
+    Check, JudgedOver, Judgement, Rule, RuleState, Subject, Summary, check_report, judge,
+};
 pub use compare::{Difference, compare_report, differences};
+pub use links::{link_way, links_report};
+pub use loads::{
+    CAUTION, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad, judge_loads,
+    loads_report, sentence as load_sentence,
+};
 pub use offsets::offsets_report;
 pub use rates::rates_report;
+pub use reach::{Reach, reach_report, station_row};
 pub use recording::{detail, events_table, replay_report, verify_report};
+pub use released::CAUTION as CAUTION_OF_SPEEDS;
 
 /// Why a released node has no number.
 pub const RELEASED: &str = "released: the node no longer belongs to the line";
@@ -48,9 +61,25 @@ fn head<'a>(state: &State<'a>, command: &'static str) -> Report<'a> {
     }
 }
 
+/// How far the first-order form of a standing line's gradient holds; `None` under thrust.
+fn standing_warning(state: &State<'_>) -> Option<String> {
+    let layout = state.run().layout();
+    let Course::Standing(standing) = &layout.course else { return None };
+    if standing.gradient_per_s2 == 0.0 {
+        return None;
+    }
+    let loads = state.run().loads().ok()?;
+    loads::standing_remark(layout, loads.gradient_warning())
+}
+
 /// A number, or its absence when it overflows.
 fn number(value: Dd) -> Cell<'static> {
     Cell::finite(value.to_f64(), OVERFLOW)
+}
+
+/// The same for a double.
+fn double(value: f64) -> Cell<'static> {
+    Cell::finite(value, OVERFLOW)
 }
 
 /// Reading less array time of the real clock of a node, s; a node without a clock is given
@@ -68,7 +97,7 @@ fn predicted_reading_s(layout: &Layout, instant: &Instant, row: usize, aboard: &
     let velocity = if instant.gradient_per_s2 == 0.0 {
         instant.moment.velocity_gain_m_s
     } else {
-        instant.felt_acceleration_m_s2(Dd::new(aboard.position_m)) * (at_s + aboard.clock_offset_s)
+        instant.felt_acceleration_m_s2(aboard.position_m) * (at_s + aboard.clock_offset_s)
     };
     known.reading_less_array_time_s(at_s, aboard.clock_offset_s, velocity)
 }

@@ -3,8 +3,7 @@
 use std::borrow::Cow;
 
 use super::{OVERFLOW, RELEASED, STANDING, column, head, number, predicted_reading_s};
-use crate::model::dd::Dd;
-use crate::model::rates::LaunchFrame;
+use crate::model::rates::{LaunchFrame, redshift_of};
 use crate::run::State;
 use crate::table::{Cell, Column, Measure, Report, Table};
 
@@ -30,6 +29,7 @@ pub fn rates_report(state: State<'_>) -> Report<'_> {
     let moment = state.instant().moment;
     let frame =
         state.run().plan().map(|plan| LaunchFrame::new(plan.launch(moment.at), moment.rapidity));
+    report.remarks.extend(super::standing_warning(&state));
     report.tables.push(Table {
         name: "nodes",
         columns: COLUMNS.to_vec(),
@@ -41,18 +41,20 @@ pub fn rates_report(state: State<'_>) -> Report<'_> {
                 cells.extend((1..COLUMNS.len()).map(|_| Cell::Absent(RELEASED.into())));
                 return;
             };
-            let (instant, position) = (state.instant(), Dd::new(aboard.position_m));
+            let (instant, position) = (state.instant(), aboard.position_m);
+            // The rate is the same in all that follows, so it is made once.
+            let rate = aboard.rate_minus_one + 1.0;
             cells.push(number(position));
-            cells.push(match instant.horizon_m(position) {
+            cells.push(match instant.horizon_at_rate_m(rate) {
                 Some(horizon) => number(horizon),
                 None if instant.gradient_per_s2 != 0.0 => {
                     Cell::Absent("gravity with a gradient has no such horizon".into())
                 }
                 None => Cell::Absent("no thrust, no horizon".into()),
             });
-            cells.push(number(instant.felt_acceleration_m_s2(position)));
+            cells.push(number(instant.felt_at_rate_m_s2(position, rate)));
             cells.push(number(aboard.rate_minus_one));
-            cells.push(number(instant.redshift(position)));
+            cells.push(number(redshift_of(aboard.rate_minus_one)));
             cells.push(number(aboard.clock_offset_s));
             cells.push(number(moment.at.seconds() + aboard.clock_offset_s));
             cells.push(number(predicted_reading_s(layout, instant, row, &aboard)));

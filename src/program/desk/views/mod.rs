@@ -2,12 +2,18 @@
 
 mod events;
 mod keys;
+mod links;
+mod loads;
 mod offsets;
 mod rates;
+mod reach;
 
 use clockspar::run::recording::Frame;
 use clockspar::table::{Cell, Column, Measure, Table};
 
+use ratatui::layout::Rect;
+
+use super::painter::Painter;
 use super::state::Desk;
 
 /// What a view shows.
@@ -22,15 +28,19 @@ pub struct View {
     pub first: &'static [&'static str],
     /// Whether the rows are the nodes, fore to aft, so that the line is drawn beside them.
     pub nodes: bool,
+    /// What is drawn to the right of the table where there is room.
+    pub beside: Option<fn(&Desk, Rect, &mut Painter<'_>)>,
+    /// What has to stand under the table, if anything.
+    pub note: Option<fn(&Desk) -> Option<String>>,
 }
 
 /// All views, in the order in which their names are shown.
 pub static VIEWS: [&View; 10] = [
     &rates::VIEW,
     &offsets::VIEW,
-    &to_come('3', "links"),
-    &to_come('4', "reach"),
-    &to_come('5', "loads"),
+    &links::VIEW,
+    &reach::VIEW,
+    &loads::VIEW,
     &to_come('6', "steer"),
     &to_come('7', "budget"),
     &to_come('8', "reconcile"),
@@ -40,7 +50,7 @@ pub static VIEWS: [&View; 10] = [
 
 /// A view whose name and digit are settled, and which is not there yet.
 const fn to_come(digit: char, name: &'static str) -> View {
-    View { digit, name, table: None, first: &[], nodes: false }
+    View { digit, name, table: None, first: &[], nodes: false, beside: None, note: None }
 }
 
 /// A table of nodes with rates and clock offsets as they are to be shown: those recorded
@@ -57,6 +67,7 @@ fn adapted<'a>(desk: &'a Desk, table: Table<'a>) -> Option<Table<'a>> {
 }
 
 const RATE: &str = "rate_minus_one";
+const FROM_STRETCH: &str = "clock_offset_from_stretch_s";
 const OFFSET: &str = "clock_offset_s";
 
 fn place_of(columns: &[Column], key: &str) -> Option<usize> {
@@ -83,7 +94,7 @@ fn recorded<'a>(frame: &'a Frame, table: Table<'a>) -> Table<'a> {
 /// The table with differences from one node in the places of rates and clock offsets.
 /// What would still be against the reference is left out.
 fn against<'a>(desk: &'a Desk, from: usize, table: Table<'a>) -> Option<Table<'a>> {
-    const LEFT_OUT: [&str; 2] = ["redshift", "predicted_reading_s"];
+    const LEFT_OUT: [&str; 3] = ["redshift", "predicted_reading_s", FROM_STRETCH];
     let kept: Vec<usize> = (0..table.columns.len())
         .filter(|place| !LEFT_OUT.contains(&table.columns[*place].key))
         .collect();
@@ -121,8 +132,8 @@ fn differences_from<'a>(desk: &'a Desk, from: usize) -> Option<Differences<'a>> 
         let frame = replay.frame.as_ref()?;
         return Some(Box::new(move |row| recorded_differences(frame, from, row)));
     }
-    let mut pairs = clockspar::table::content::offsets_report(desk.state()?, true);
-    let pairs = pairs.tables.pop()?;
+    let pairs = clockspar::table::content::offsets_report(desk.state()?, true);
+    let pairs = pairs.tables.into_iter().find(|table| table.name == "pairs")?;
     let others = desk.layout().nodes.len() - 1;
     Some(Box::new(move |row| {
         if row == from {

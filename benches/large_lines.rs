@@ -1,0 +1,182 @@
+//! Large inputs and outputs: a survey of a million nodes read, every ordered pair printed,
+//! a logged history of a million points made ready. `cargo bench --bench large_lines`.
+//!
+//! Each stands beside `straightforward.py`, which does the same work as one would write it
+//! down in plain Python, in the same run and by processor time, so that the ratio depends
+//! little on the machine and on what else it does.
+//! Where there is no `python3`, only the figures of the program are printed.
+#![allow(clippy::print_stdout, reason = "a benchmark prints what it found")]
+
+use std::fmt::Write as _;
+use std::hint::black_box;
+use std::io::{self, Write as _};
+use std::path::Path;
+use std::process::Command;
+use std::sync::Arc;
+use std::time::Duration;
+
+use clockspar::layout;
+use clockspar::model::array_time::ArrayTime;
+use clockspar::model::plan::{Phase, Plan};
+use clockspar::run::Run;
+use clockspar::table::content::offsets_report;
+use clockspar::table::write_csv;
+use criterion::{Criterion, Throughput, criterion_group, criterion_main};
+use rustix::time::{ClockId, clock_gettime};
+
+const NODES: usize = 999_999;
+const POINTS: usize = 1_000_000;
+const PAIRED: usize = 3_000;
+const PAIRED_BY_SCRIPT: usize = 500;
+
+/// The seconds of processor time the script takes, the best of three; `None` without Python.
+fn script(work: &str, argument: &str) -> Option<f64> {
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("benches/straightforward.py");
+    let once = || {
+        let output = Command::new("python3").arg(&path).args([work, argument]).output().ok()?;
+        assert!(output.status.success(), "{}", String::from_utf8_lossy(&output.stderr));
+        String::from_utf8_lossy(&output.stdout).trim().parse::<f64>().ok()
+    };
+    (0..3).filter_map(|_| once()).reduce(f64::min)
+}
+
+/// The seconds of processor time of the fastest of some runs, on all threads together: other
+/// work on the machine changes the wall clock far more.
+fn best(mut work: impl FnMut()) -> f64 {
+    let now = || {
+        let now = clock_gettime(ClockId::ProcessCPUTime);
+        now.tv_sec as f64 + now.tv_nsec as f64 / 1e9
+    };
+    let once = |work: &mut dyn FnMut()| {
+        let begun = now();
+        work();
+        now() - begun
+    };
+    (0..5).map(|_| once(&mut work)).fold(f64::INFINITY, f64::min)
+}
+
+/// Prints both speeds and their ratio.
+fn beside(what: &str, unit: &str, ours: f64, script: Option<f64>) {
+    match script {
+        Some(script) => println!(
+            "{what}: {ours:.4} {unit} of processor time, straightforward script \
+             {script:.4}, {:.1} times as fast",
+            ours / script
+        ),
+        None => println!("{what}: {ours:.4} {unit} of processor time; no python3 to compare with"),
+    }
+}
+
+fn survey(criterion: &mut Criterion) {
+    let mut table = String::from("name,position_m,u_position_m\n");
+    for k in 1..=NODES {
+        let _ = writeln!(table, "n{k},{:?},0.002", -40_000.0 * k as f64 / 1e6);
+    }
+    let toml = "name = \"surveyed\"\n[[node]]\nname = \"hub\"\n[survey]\nfile = \"s.csv\"\n\
+                [[phase]]\nhold = \"0.3 g0\"\nfor = \"12 h\"\n";
+    // The text is handed over as the program hands it over: read already.
+    let read = || {
+        let files = |_: &str| Ok(table.clone());
+        black_box(layout::read("bench.toml", toml, &files).expect("a layout without a fault"));
+    };
+    let mut group = criterion.benchmark_group("a survey of a million nodes");
+    group.sample_size(10).throughput(Throughput::Bytes(table.len() as u64));
+    group.bench_function("read", |bench| bench.iter(read));
+    group.bench_function("copied", |bench| bench.iter(|| black_box(table.clone())));
+    group.finish();
+
+    let mut file = tempfile::NamedTempFile::new().expect("a file");
+    file.write_all(table.as_bytes()).expect("written");
+    let megabytes = table.len() as f64 / 1e6;
+    let by_script = script("survey", &file.path().to_string_lossy());
+    beside("survey read", "MB/s", megabytes / best(read), by_script.map(|s| megabytes / s));
+}
+
+fn line_of(nodes: usize) -> Run {
+    let text = format!(
+        "name = \"bench line\"\n[[node]]\nname = \"hub\"\n[[series]]\nprefix = \"n\"\n\
+         count = {}\nfrom = \"-4 m\"\nto = \"-40 km\"\n[[phase]]\nhold = \"0.3 g0\"\n\
+         for = \"12 h\"\n",
+        nodes - 1
+    );
+    let none = |_: &str| Err("no file".to_owned());
+    let layout = layout::read("bench.toml", &text, &none).expect("a layout without a fault");
+    Run::new(Arc::new(layout)).expect("a line that can be flown")
+}
+
+fn pairs(criterion: &mut Criterion) {
+    let run = line_of(PAIRED);
+    let rows = PAIRED * (PAIRED - 1);
+    let print = || {
+        let state = run.state_at(ArrayTime::from_seconds(7200)).expect("in the domain");
+        write_csv(&offsets_report(state, true), 1, &mut io::sink()).expect("written");
+    };
+    let mut group = criterion.benchmark_group("every ordered pair of 3000 nodes");
+    group.sample_size(10).throughput(Throughput::Elements(rows as u64));
+    group.bench_function("as CSV", |bench| bench.iter(print));
+    group.finish();
+
+    let script_rows = (PAIRED_BY_SCRIPT * (PAIRED_BY_SCRIPT - 1)) as f64;
+    let by_script = script("pairs", &PAIRED_BY_SCRIPT.to_string());
+    let million = |rows: f64, seconds: f64| rows / seconds / 1e6;
+    let by_script = by_script.map(|seconds| million(script_rows, seconds));
+    beside("pairs as CSV", "million rows/s", million(rows as f64, best(print)), by_script);
+}
+
+fn history(criterion: &mut Criterion) {
+    let mut table = String::from("at_s,acceleration_m_s2\n");
+    let mut state = 5_u64;
+    for k in 0..POINTS {
+        state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1);
+        let acceleration = 0.2 + (state >> 40) as f64 * 1e-8 / 2.0;
+        let _ = writeln!(table, "{}.{},{acceleration:.6}", k / 10, k % 10);
+    }
+    let toml = "name = \"logged\"\n[[node]]\nname = \"hub\"\n[acceleration]\nhistory = \"h.csv\"\n";
+    let read = || {
+        let files = |_: &str| Ok(table.clone());
+        layout::read("bench.toml", toml, &files).expect("a layout without a fault")
+    };
+    let layout = read();
+    let layout::Course::Thrust(plan) = &layout.course else { unreachable!("a history") };
+    let phases: Vec<Phase> = plan.phases().to_vec();
+    let mut group = criterion.benchmark_group("a history of a million points");
+    group.sample_size(10).throughput(Throughput::Elements(POINTS as u64));
+    group.bench_function("read and made ready", |bench| bench.iter(|| black_box(read())));
+    group.bench_function("made ready", |bench| {
+        bench.iter(|| black_box(Plan::new(phases.clone()).expect("a plan")));
+    });
+    group.throughput(Throughput::Elements(1));
+    let mut k = 0_i64;
+    group.bench_function("one moment of it", |bench| {
+        bench.iter(|| {
+            k = (k + 7_919) % 99_999;
+            let at = ArrayTime::from_seconds(k);
+            black_box((plan.moment(at), plan.launch(at)))
+        });
+    });
+    group.finish();
+
+    let mut file = tempfile::NamedTempFile::new().expect("a file");
+    file.write_all(table.as_bytes()).expect("written");
+    let by_script = script("history", &file.path().to_string_lossy());
+    let million = |seconds: f64| POINTS as f64 / seconds / 1e6;
+    let ours = best(|| {
+        black_box(read());
+    });
+    beside(
+        "history read and made ready",
+        "million points/s",
+        million(ours),
+        by_script.map(million),
+    );
+}
+
+criterion_group! {
+    name = benches;
+    // Each run is long, so few of them say enough.
+    config = Criterion::default()
+        .warm_up_time(Duration::from_secs(1))
+        .measurement_time(Duration::from_secs(3));
+    targets = survey, pairs, history
+}
+criterion_main!(benches);
