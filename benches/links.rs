@@ -5,11 +5,16 @@
 //! time of one solution (flight times on three clocks, shift and shift rate).
 
 use std::hint::black_box;
+use std::sync::Arc;
 
+use clockspar::layout;
 use clockspar::model::array_time::ArrayTime;
 use clockspar::model::constants::SPEED_OF_LIGHT_M_S;
 use clockspar::model::links::{End, Rays};
 use clockspar::model::plan::{Phase, Plan};
+use clockspar::run::{Light, Run};
+use clockspar::table::content::links_report;
+use clockspar::table::write_csv;
 use criterion::{Criterion, Throughput, criterion_group, criterion_main};
 
 /// A thousand phases of ten minutes: ramps, holds and steps, with reversals.
@@ -120,5 +125,46 @@ fn links(criterion: &mut Criterion) {
     });
 }
 
-criterion_group!(benches, links);
+/// The table of a long line, every neighbour pair both ways: what the physics takes, and
+/// what it takes with the printing.
+fn tables(criterion: &mut Criterion) {
+    const NODES: usize = 100_000;
+    let text = format!(
+        "name = \"bench line\"\n[[node]]\nname = \"hub\"\n[[series]]\nprefix = \"s\"\n\
+         count = {}\nfrom = \"-1 m\"\nto = \"-40 km\"\n[[phase]]\n\
+         ramp = [\"0 g0\", \"0.3 g0\"]\nfor = \"10 min\"\n[[phase]]\nhold = \"0.3 g0\"\n\
+         for = \"12 h\"\n",
+        NODES - 1
+    );
+    let none = |_: &str| Err("no file".to_owned());
+    let layout = layout::read("bench.toml", &text, &none).expect("a layout without a fault");
+    let run = Run::new(Arc::new(layout)).expect("a line that can be flown");
+    let light = Light::of(&run);
+    let mut group = criterion.benchmark_group("links of 100000 nodes");
+    group.throughput(Throughput::Elements(2 * (NODES as u64 - 1)));
+    group.sample_size(10);
+    for (name, seconds) in [("ramp", 300), ("hold", 7200)] {
+        let at = ArrayTime::from_seconds(seconds);
+        group.bench_function(format!("{name}, signals alone, one core"), |bencher| {
+            bencher.iter(|| {
+                for row in 1..NODES {
+                    for way in [[row - 1, row], [row, row - 1]] {
+                        black_box(light.signal(way, at).expect("it arrives"));
+                    }
+                }
+            });
+        });
+        let mut csv = Vec::new();
+        group.bench_function(format!("{name}, CSV, all cores"), |bencher| {
+            bencher.iter(|| {
+                csv.clear();
+                let state = run.state_at(at).expect("in the domain");
+                write_csv(&links_report(state, false), 0, &mut csv).expect("memory");
+            });
+        });
+    }
+    group.finish();
+}
+
+criterion_group!(benches, links, tables);
 criterion_main!(benches);

@@ -11,6 +11,7 @@ use program::arguments::Arguments;
 
 fn main() -> ExitCode {
     let arguments = Arguments::parse();
+    program::outlive_the_limit_on_file_sizes();
     match program::commands::run(arguments) {
         Ok(status) => ExitCode::from(status),
         Err(problem) => {

@@ -79,13 +79,18 @@ pub fn launch_gain(phase: &Phase, start_rapidity: Dd, until: ArrayTime) -> Launc
         if swing < 3e-7 { (&NODES_3, &WEIGHTS_3) } else { (&NODES_10, &WEIGHTS_10) };
     // Three points leave φ² / 2400 of the position where a ramp starts from rest.
     let slope = (last - first) / elapsed;
-    let width = elapsed / pieces;
+    // A point of a logged history is one piece, which needs none of the divisions below.
+    let width = if pieces > 1.0 { elapsed / pieces } else { elapsed };
     let mut sum = Launch::default();
     let mut index = 0.0;
     while index < pieces {
-        let begin = width * index;
-        let here = first + slope * begin;
-        let rapidity = start_rapidity + (first + here) * begin / (2.0 * SPEED_OF_LIGHT_M_S);
+        let (here, rapidity) = if index > 0.0 {
+            let begin = width * index;
+            let here = first + slope * begin;
+            (here, start_rapidity + (first + here) * begin / (2.0 * SPEED_OF_LIGHT_M_S))
+        } else {
+            (first, start_rapidity)
+        };
         let (mut time, mut position) = (0.0, 0.0);
         for (node, weight) in nodes.iter().zip(weights) {
             let gone = node * width.hi;

@@ -41,6 +41,10 @@ pub enum Command {
     Offsets(OffsetsArguments),
     /// Forces, stretch, propellant; peaks over the plan
     Loads(TableArguments),
+    /// Per link and direction: flight times, shift, received frequency, round trip, two-way error
+    Links(TableArguments),
+    /// Stations, last call, contact tables; released nodes and what they pass
+    Reach(ReachArguments),
     /// Two layouts or recordings: rows of differences
     Compare(CompareArguments),
     /// A run to a recording, without a terminal
@@ -203,6 +207,20 @@ pub struct OffsetsArguments {
     pub pairs: bool,
 }
 
+/// Arguments of `reach`.
+#[derive(Clone, Debug, Args)]
+pub struct ReachArguments {
+    /// As for every table.
+    #[command(flatten)]
+    pub table: TableArguments,
+    /// Let this node go at the moment: adds what it passes and how it is heard
+    #[arg(long, value_name = "NODE")]
+    pub release: Option<String>,
+    /// Add the spans of sending time from which nothing arrives before this moment
+    #[arg(long, value_name = "MOMENT", allow_hyphen_values = true)]
+    pub before: Option<String>,
+}
+
 /// Arguments of `compare`.
 #[derive(Clone, Debug, Args)]
 pub struct CompareArguments {
@@ -245,6 +263,9 @@ pub struct RecordArguments {
 pub struct ReplayArguments {
     /// Recording file
     pub file: PathBuf,
+    /// Print every frame, then those that are appended, until the recording is closed
+    #[arg(long, conflicts_with_all = ["at", "from", "until", "every", "paced", "out", "replace"])]
+    pub follow: bool,
     /// Which moments.
     #[command(flatten)]
     pub moments: MomentArguments,

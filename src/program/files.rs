@@ -14,8 +14,12 @@ pub const BUILT_IN_NAME: &str = "built-in layout";
 /// Its text; the same file stands in `layouts/`.
 pub const BUILT_IN_TEXT: &str = include_str!("../../layouts/towed-array.toml");
 
-/// Largest input that is read into memory whole, bytes.
-const LARGEST_INPUT: u64 = 256 << 20;
+/// How every recording begins, whatever its format.
+pub const BEGINNING_OF_RECORDING: &[u8] = b"{\"opening\":\"clockspar.recording/";
+
+/// Largest layout and largest table that are read into memory whole, bytes.
+const LARGEST_LAYOUT: u64 = layout::LARGEST_LAYOUT_BYTES as u64;
+const LARGEST_TABLE: u64 = layout::LARGEST_TABLE_BYTES as u64;
 
 /// The built-in layout.
 pub fn built_in() -> Result<Layout, Problem> {
@@ -26,20 +30,20 @@ pub fn built_in() -> Result<Layout, Problem> {
 /// Reads a layout from a file, or from standard input for `-`.
 pub fn load(path: &Path) -> Result<Layout, Problem> {
     if path == Path::new("-") {
-        let text = read_bounded(io::stdin().lock(), "standard input")?;
+        let text = read_bounded(io::stdin().lock(), "standard input", LARGEST_LAYOUT)?;
         return read_layout("standard input", &text, Path::new("."));
     }
     let name = shown_name(path);
     let file = File::open(path).map_err(|error| unreadable(&name, &error))?;
-    let text = read_bounded(file, &name)?;
+    let text = read_bounded(file, &name, LARGEST_LAYOUT)?;
     read_layout(&name, &text, path.parent().unwrap_or(Path::new(".")))
 }
 
 /// Whether a file begins as recordings do.
 pub fn looks_like_recording(path: &Path) -> bool {
-    const BEGINNING: &[u8] = b"{\"opening\":\"clockspar.recording/";
-    let mut begun = [0; BEGINNING.len()];
-    File::open(path).and_then(|mut file| file.read_exact(&mut begun)).is_ok() && begun == BEGINNING
+    let mut begun = [0; BEGINNING_OF_RECORDING.len()];
+    File::open(path).and_then(|mut file| file.read_exact(&mut begun)).is_ok()
+        && begun == BEGINNING_OF_RECORDING
 }
 
 /// How a path is named in messages.
@@ -51,22 +55,21 @@ fn read_layout(name: &str, text: &str, folder: &Path) -> Result<Layout, Problem>
     let companion = |file: &str| {
         let path = folder.join(file);
         let opened = File::open(&path).map_err(|error| error.to_string())?;
-        read_bounded(opened, file).map_err(|problem| problem.text)
+        // The fault of the layout has a rule and a remedy of its own.
+        read_bounded(opened, file, LARGEST_TABLE)
+            .map_err(|problem| problem.text.lines().next().unwrap_or_default().to_owned())
     };
     layout::read(name, text, &companion).map_err(Problem::told)
 }
 
 /// Reads a whole text, refusing one that is too long before it fills the memory.
-fn read_bounded(source: impl Read, name: &str) -> Result<String, Problem> {
+fn read_bounded(source: impl Read, name: &str, most: u64) -> Result<String, Problem> {
     let mut bytes = Vec::new();
-    source
-        .take(LARGEST_INPUT + 1)
-        .read_to_end(&mut bytes)
-        .map_err(|error| unreadable(name, &error))?;
-    if bytes.len() as u64 > LARGEST_INPUT {
+    source.take(most + 1).read_to_end(&mut bytes).map_err(|error| unreadable(name, &error))?;
+    if bytes.len() as u64 > most {
         return Err(Problem::new(
-            format_args!("{name} is longer than {LARGEST_INPUT} bytes"),
-            "an input that is read whole has at most 256 MiB",
+            format_args!("{name} is longer than {most} bytes"),
+            format_args!("an input of this kind is read whole and has at most {} MiB", most >> 20),
             "put nodes or histories into a table named by the layout, or make it shorter",
         ));
     }

@@ -46,7 +46,16 @@ impl Problem {
         Problem::new(
             format_args!("{target} could not be written: {error}"),
             "results are written whole or not at all",
-            "make room or choose another place with --out",
+            format_args!("{} or choose another place with --out", room_for(error)),
         )
+    }
+}
+
+/// What makes room for a write that was refused.
+pub fn room_for(error: &io::Error) -> &'static str {
+    match error.kind() {
+        io::ErrorKind::FileTooLarge => "raise the limit on the size of files (`ulimit -f`)",
+        io::ErrorKind::QuotaExceeded => "make room within your quota",
+        _ => "make room",
     }
 }

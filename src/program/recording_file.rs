@@ -10,8 +10,16 @@ use std::time::{Duration, Instant};
 use clockspar::run::recording::{OpenFault, ReadAt, Reader};
 use tempfile::TempPath;
 
+use super::files::BEGINNING_OF_RECORDING;
+
 /// The longest a line waits to be on the disk.
 const SYNC_EVERY: Duration = Duration::from_secs(1);
+
+/// Bytes of a pipe that are looked at before more of them is taken in.
+const FIRST_LOOK: u64 = 1 << 20;
+
+/// The longest first line taken in from a pipe, in bytes.
+const LONGEST_PIPED_OPENING: u64 = 256 << 20;
 
 /// A file a recording is being written to. Each call of `write` takes one whole line;
 /// when it fails, the file ends after the line before.
@@ -170,14 +178,43 @@ impl RecordingSource {
     }
 
     /// Takes in all that a reader gives, up to `most` bytes.
-    pub fn take_in(source: impl Read, most: u64) -> io::Result<RecordingSource> {
+    ///
+    /// What does not begin as recordings do is not taken in beyond its beginning, and of a
+    /// first line without an end not more than a layout with its tables can be: both are
+    /// refused in less memory than a whole recording may need.
+    pub fn take_in(mut source: impl Read, most: u64) -> io::Result<RecordingSource> {
         let mut bytes = Vec::new();
-        source.take(most.saturating_add(1)).read_to_end(&mut bytes)?;
-        if bytes.len() as u64 > most {
-            return Err(io::ErrorKind::FileTooLarge.into());
+        take_more(&mut source, &mut bytes, FIRST_LOOK.min(most))?;
+        if !bytes.starts_with(BEGINNING_OF_RECORDING) {
+            return Ok(RecordingSource::Memory(bytes));
+        }
+        let mut searched = 0;
+        while !bytes[searched..].contains(&b'\n') {
+            if bytes.len() as u64 > LONGEST_PIPED_OPENING {
+                return Err(io::Error::new(
+                    io::ErrorKind::FileTooLarge,
+                    format!("its first line has no end within {LONGEST_PIPED_OPENING} bytes"),
+                ));
+            }
+            searched = bytes.len();
+            if take_more(&mut source, &mut bytes, FIRST_LOOK)? == 0 {
+                return Ok(RecordingSource::Memory(bytes));
+            }
+        }
+        let left = most.saturating_sub(bytes.len() as u64);
+        if take_more(&mut source, &mut bytes, left.saturating_add(1))? > left {
+            return Err(io::Error::new(
+                io::ErrorKind::FileTooLarge,
+                format!("a recording that comes through a pipe has at most {most} bytes"),
+            ));
         }
         Ok(RecordingSource::Memory(bytes))
     }
+}
+
+/// Reads up to `most` more bytes; says how many came.
+fn take_more(source: &mut impl Read, bytes: &mut Vec<u8>, most: u64) -> io::Result<u64> {
+    Ok(source.by_ref().take(most).read_to_end(bytes)? as u64)
 }
 
 impl ReadAt for RecordingSource {
@@ -272,19 +309,32 @@ mod tests {
     fn files_and_pipes_read_alike() {
         let folder = tempfile::tempdir().unwrap();
         let path = folder.path().join("bytes");
-        fs::write(&path, "0123456789").unwrap();
+        let beginning = std::str::from_utf8(BEGINNING_OF_RECORDING).unwrap();
+        let recording = format!("{beginning}\n0123456789");
+        fs::write(&path, &recording).unwrap();
+        let size = recording.len() as u64;
         let sources = [
             RecordingSource::open(&path, 0).unwrap(),
-            RecordingSource::take_in(&b"0123456789"[..], 10).unwrap(),
+            RecordingSource::take_in(recording.as_bytes(), size).unwrap(),
         ];
         for source in sources {
             let mut buffer = [0; 4];
-            assert_eq!(source.size().unwrap(), 10);
-            assert_eq!(source.read_at(8, &mut buffer).unwrap(), 2);
+            assert_eq!(source.size().unwrap(), size);
+            assert_eq!(source.read_at(size - 2, &mut buffer).unwrap(), 2);
             assert_eq!(&buffer[..2], b"89");
-            assert_eq!(source.read_at(10, &mut buffer).unwrap(), 0);
+            assert_eq!(source.read_at(size, &mut buffer).unwrap(), 0);
         }
-        assert!(RecordingSource::take_in(&b"0123456789"[..], 9).is_err());
+        assert!(RecordingSource::take_in(recording.as_bytes(), size - 1).is_err());
         assert!(RecordingSource::open(folder.path(), 10).is_err());
+    }
+
+    #[test]
+    fn a_pipe_that_is_no_recording_is_not_taken_in() {
+        let other = io::repeat(b'a').take(1 << 40);
+        let source = RecordingSource::take_in(other, 1 << 30).unwrap();
+        assert_eq!(source.size().unwrap(), FIRST_LOOK);
+        let endless = BEGINNING_OF_RECORDING.chain(io::repeat(b'a'));
+        let error = RecordingSource::take_in(endless, 1 << 30).unwrap_err();
+        assert!(error.to_string().contains("first line has no end"), "{error}");
     }
 }

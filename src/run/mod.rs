@@ -10,6 +10,7 @@
 mod bounds;
 mod event;
 mod fault;
+mod light;
 mod loaded;
 mod place;
 pub mod recording;
@@ -29,6 +30,7 @@ use crate::model::rates::Instant;
 
 pub use event::{Event, EventKind};
 pub use fault::{HorizonFault, RunFault};
+pub use light::{Answer, Light, NoSignal, NodeEnd, Signal};
 pub use loaded::{Stretched, may_stretch};
 pub use place::Place;
 pub use state::{Aboard, NodeState, State};

@@ -98,7 +98,7 @@ impl Reasons {
 
 /// The first pass over the rows.
 fn scan(table: &Table<'_>, units: Option<&Units>, unicode: bool) -> (Vec<ColumnFormat>, Reasons) {
-    let unit = |column: &Column| units?.of_column(column, &table.columns);
+    let unit = |column: &Column| units?.of(column.key, column.measure);
     let mut scans: Vec<ColumnScan> =
         table.columns.iter().map(|column| ColumnScan::new(column).in_unit(unit(column))).collect();
     let mut absent = vec![false; scans.len()];

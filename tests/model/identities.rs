@@ -4,8 +4,8 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::model::constants::{C2_M2_S2, SPEED_OF_LIGHT_M_S};
 use clockspar::model::dd::Dd;
 use clockspar::model::motion::LAUNCH_SCALE;
-use clockspar::model::plan::{Phase, Plan};
-use clockspar::model::rates::{Instant, LaunchFrame};
+use clockspar::model::plan::{Moment, Phase, Plan};
+use clockspar::model::rates::{Instant, LaunchFrame, PairFactors};
 use proptest::prelude::*;
 
 /// Phases as (acceleration from, to, length in attoseconds).
@@ -141,5 +141,54 @@ proptest! {
         let felt = here.felt_acceleration_m_s2(nodes[0]);
         let again = moved.felt_acceleration_m_s2(nodes[0] - nodes[2]);
         prop_assert!(close(felt, again, 64.0 * felt.hi.abs()));
+    }
+}
+
+#[test]
+fn pairs_from_a_node_have_the_bits_of_the_long_form() {
+    let mut state = 11_u64;
+    let mut next = || {
+        state =
+            state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+        (state >> 11) as f64 / (1_u64 << 53) as f64
+    };
+    let mut power = |least: f64, most: f64| {
+        let size = 10_f64.powf(least + (most - least) * next());
+        if next() < 0.5 { size } else { -size }
+    };
+    let (mut compared, mut small) = (0, 0);
+    for _ in 0..300 {
+        let length = ArrayTime::from_attoseconds(power(18.0, 27.0).abs() as i128);
+        let (first, last) = (power(-12.0, 1.0), power(-12.0, 1.0));
+        let plan = Plan::new(vec![Phase::whole(ArrayTime::ZERO, length, first, last)]);
+        let plan = plan.expect("a plan");
+        let at = ArrayTime::from_attoseconds(length.attoseconds() / 3);
+        let here = Instant { moment: plan.moment(at), gradient_per_s2: 0.0 };
+        for _ in 0..100 {
+            let (from, to) = (power(-3.0, 12.0), power(-3.0, 12.0));
+            let factors = PairFactors::new(&here, from);
+            for to in [to, from, from.next_up(), from + 1e-3, 0.0] {
+                let (a, b) = (Dd::new(from), Dd::new(to));
+                let long = [here.rate_difference(a, b), here.clock_offset_difference_s(a, b)];
+                let short = [factors.rate_difference(&here, to), factors.clock_offset_s(&here, to)];
+                for (short, long) in short.into_iter().zip(long) {
+                    let long = long.to_f64();
+                    compared += 1;
+                    small += usize::from(long != 0.0 && long.abs() < 1e-30);
+                    assert!(short == long, "from {from:e} to {to:e}: {short:e} {long:e}");
+                }
+            }
+        }
+    }
+    assert!(compared == 300_000 && small > 100, "{compared} {small}");
+    // A coasting line and one that stands in a gradient.
+    for gradient_per_s2 in [0.0, 3e-6] {
+        let moment = Moment::held_always(ArrayTime::from_seconds(7), gradient_per_s2 * 1e6);
+        let here = Instant { moment, gradient_per_s2 };
+        let factors = PairFactors::new(&here, 12.5);
+        let (a, b) = (Dd::new(12.5), Dd::new(-300.0));
+        assert_eq!(factors.rate_difference(&here, -300.0), here.rate_difference(a, b).to_f64());
+        let offset = here.clock_offset_difference_s(a, b).to_f64();
+        assert_eq!(factors.clock_offset_s(&here, -300.0), offset);
     }
 }

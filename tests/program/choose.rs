@@ -110,6 +110,11 @@ fn pairs_are_chosen_by_both_ends() {
 fn rules_and_differences_are_chosen_by_their_subject() {
     let rules = table(&["check", "-", "--as", "csv", "--nodes", "s2"]);
     assert_eq!(column(&rules, "subject"), ["s2"]);
+    let limited = ["check", TOWED, "--as", "csv", "--nodes"];
+    let both = table(&[&limited[..], &["pod1,pod8"]].concat());
+    assert!(column(&both, "subject").contains(&"pod1 to pod8".to_owned()), "{both}");
+    let one = table(&[&limited[..], &["pod1"]].concat());
+    assert!(column(&one, "subject").iter().all(|subject| subject == "pod1"), "{one}");
     let folder = tempfile::tempdir().expect("a folder");
     let paths = ["a.toml", "b.toml"].map(|name| folder.path().join(name));
     fs::write(&paths[0], LINE).expect("written");

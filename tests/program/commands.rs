@@ -31,6 +31,7 @@ pub fn with_input(arguments: &[&str], input: &str) -> Output {
         .args(arguments)
         .current_dir(env!("CARGO_MANIFEST_DIR"))
         .env("LC_ALL", "C.UTF-8")
+        .env("XDG_CONFIG_HOME", "/nonexistent")
         .stdin(Stdio::piped())
         .stdout(Stdio::piped())
         .stderr(Stdio::piped())

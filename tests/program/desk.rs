@@ -70,8 +70,10 @@ fn keys_step_choose_and_leave() {
     session.wait_until("the next row to be chosen", || session.is_inverse(row + 1, 6));
     session.send("2");
     session.wait_text("predicted reading");
+    session.send("8");
+    session.wait_text("the view `reconcile` is not there yet");
     session.send("3");
-    session.wait_text("the view `links` is not there yet");
+    session.wait_text("launch frame");
     session.send(keys::TAB);
     session.wait_text("Enter starts and stops");
     session.send(keys::RIGHT);

@@ -3,6 +3,9 @@
 mod choose;
 mod commands;
 mod desk;
+mod hostile;
+mod links;
 mod loads;
 mod readme;
+mod recording_lasts;
 mod terminal_session;

@@ -30,6 +30,7 @@ fn check(root: &Path, arguments: &str, expected: &str) {
         .current_dir(root)
         .env("CLOCKSPAR", env!("CARGO_BIN_EXE_clockspar"))
         .env("LC_ALL", "C.UTF-8")
+        .env("XDG_CONFIG_HOME", "/nonexistent")
         .output()
         .expect("a shell");
     let got = String::from_utf8(output.stdout).expect("text");

@@ -9,12 +9,18 @@ use std::ops::Range;
 
 use crate::layout::fault::{Collector, Spot};
 
+/// Most fields of a row that are kept; more than any table here has columns. The others are
+/// counted, so that a row of a hundred million commas costs no memory.
+const MOST_FIELDS: usize = 256;
+
 /// A table being split.
 pub(super) struct Rows<'t> {
     text: &'t str,
     at: usize,
     pub(super) file: u32,
     fields: Vec<Cell>,
+    /// How many fields the row has, kept or not.
+    count: usize,
 }
 
 /// A field: the bytes of its content.
@@ -32,26 +38,32 @@ pub(super) struct Row<'r, 't> {
     text: &'t str,
     file: u32,
     fields: &'r [Cell],
+    count: usize,
 }
 
 impl<'t> Rows<'t> {
     pub(super) fn new(file: u32, text: &'t str) -> Rows<'t> {
         let at = if text.starts_with('\u{feff}') { '\u{feff}'.len_utf8() } else { 0 };
-        Rows { text, at, file, fields: Vec::new() }
+        Rows { text, at, file, fields: Vec::new(), count: 0 }
     }
 
     /// The next row that is neither blank nor a remark; a malformed one is noted and
     /// skipped.
     pub(super) fn next(&mut self, faults: &mut Collector) -> Option<Row<'_, 't>> {
         loop {
-            let line_end = self.line_end(self.at);
-            if self.at >= self.text.len() {
-                return None;
-            }
-            let line = self.text[self.at..line_end].trim();
-            if line.is_empty() || line.starts_with('#') {
-                self.at = line_end + 1;
-                continue;
+            // Nearly every line begins with what is neither a blank nor a remark, and is gone
+            // through only once.
+            match self.text.as_bytes().get(self.at) {
+                None => return None,
+                Some(first) if first.is_ascii_graphic() && *first != b'#' => {}
+                Some(_) => {
+                    let line_end = self.line_end(self.at);
+                    let line = self.text[self.at..line_end].trim();
+                    if line.is_empty() || line.starts_with('#') {
+                        self.at = line_end + 1;
+                        continue;
+                    }
+                }
             }
             match self.split() {
                 Ok(()) => break,
@@ -60,7 +72,7 @@ impl<'t> Rows<'t> {
                 }
             }
         }
-        Some(Row { text: self.text, file: self.file, fields: &self.fields })
+        Some(Row { text: self.text, file: self.file, fields: &self.fields, count: self.count })
     }
 
     fn line_end(&self, from: usize) -> usize {
@@ -71,6 +83,7 @@ impl<'t> Rows<'t> {
     /// Splits the record that begins here and moves behind it.
     fn split(&mut self) -> Result<(), (Range<usize>, &'static str, &'static str)> {
         self.fields.clear();
+        self.count = 0;
         let bytes = self.text.as_bytes();
         let mut at = self.at;
         loop {
@@ -88,7 +101,7 @@ impl<'t> Rows<'t> {
                 while end > start && matches!(bytes[end - 1], b' ' | b'\t' | b'\r') {
                     end -= 1;
                 }
-                self.fields.push(Cell { start, end, doubled: false });
+                self.keep(Cell { start, end, doubled: false });
             }
             match bytes.get(at) {
                 Some(b',') => at += 1,
@@ -97,6 +110,13 @@ impl<'t> Rows<'t> {
                     return Ok(());
                 }
             }
+        }
+    }
+
+    fn keep(&mut self, field: Cell) {
+        self.count += 1;
+        if self.fields.len() < MOST_FIELDS {
+            self.fields.push(field);
         }
     }
 
@@ -121,7 +141,7 @@ impl<'t> Rows<'t> {
                 }
             }
         }
-        self.fields.push(Cell { start, end: at, doubled });
+        self.keep(Cell { start, end: at, doubled });
         at += 1;
         while matches!(bytes.get(at), Some(b' ' | b'\t' | b'\r')) {
             at += 1;
@@ -137,7 +157,12 @@ impl<'t> Rows<'t> {
 
 impl<'t> Row<'_, 't> {
     pub(super) fn len(self) -> usize {
-        self.fields.len()
+        self.count
+    }
+
+    /// Whether the row has more fields than are kept.
+    pub(super) fn is_too_wide(self) -> bool {
+        self.count > self.fields.len()
     }
 
     /// The content of a field; empty when the row is too short.
@@ -203,6 +228,18 @@ mod tests {
         for (row, expected) in rows.iter().zip(expected) {
             assert_eq!(row, expected);
         }
+    }
+
+    #[test]
+    fn fields_beyond_the_widest_table_are_counted() {
+        let mut faults = Collector::default();
+        let text = ",".repeat(1_000_000);
+        let mut rows = Rows::new(1, &text);
+        let row = rows.next(&mut faults).expect("a row");
+        assert_eq!((row.len(), row.fields.len(), row.is_too_wide()), (1_000_001, 256, true));
+        assert_eq!(row.field(1_000_000), "");
+        assert!(!row.is_as_wide_as(2, &mut faults));
+        assert!(rows.next(&mut faults).is_none());
     }
 
     #[test]

@@ -76,7 +76,8 @@ pub(super) fn read(file: u32, text: &str, faults: &mut Collector) -> Option<Hist
 }
 
 fn read_header(header: Row<'_, '_>, faults: &mut Collector) -> Option<[usize; 2]> {
-    let find = |wanted: &str| (0..header.len()).find(|index| header.field(*index) == wanted);
+    let looked_at = header.len().min(2);
+    let find = |wanted: &str| (0..looked_at).find(|index| header.field(*index) == wanted);
     if let (Some(at), Some(acceleration), 2) =
         (find("at_s"), find("acceleration_m_s2"), header.len())
     {

@@ -2,59 +2,68 @@
 
 use std::hash::{BuildHasher, RandomState};
 
-const FREE: u32 = u32::MAX;
+/// Bits of a key that hold the index; the others hold the beginning of the hash.
+const INDEX_BITS: u32 = 24;
+const INDEX_MASK: u64 = (1 << INDEX_BITS) - 1;
 
-/// A hash table of indices into a list whose elements have names. Open addressing with
-/// linear steps, at most half full.
+/// Hashes of names with the indices of their rows, in order. Names are hashed one after the
+/// other and the list is sorted once, which stays in the near memory where a table of a
+/// million slots would not.
 pub(super) struct NameIndex {
-    slots: Vec<u32>,
+    keys: Vec<u64>,
     hasher: RandomState,
 }
 
 impl NameIndex {
-    /// A table with room for a number of names.
-    pub(super) fn with_room_for(count: usize) -> NameIndex {
-        let size = (count.max(4) * 2).next_power_of_two();
-        NameIndex { slots: vec![FREE; size], hasher: RandomState::new() }
-    }
-
-    /// Adds an index under its name, unless the name is there: then its index is returned.
-    pub(super) fn add<'n>(
-        &mut self,
-        name: &str,
-        index: u32,
+    /// The index of a list of fewer than 2²⁴ names, and those that stand in it twice: the
+    /// later and the first index of each.
+    pub(super) fn of<'n>(
+        count: usize,
         name_of: impl Fn(u32) -> &'n str,
-    ) -> Option<u32> {
-        let slot = self.slot(name, name_of);
-        if self.slots[slot] != FREE {
-            return Some(self.slots[slot]);
+    ) -> (NameIndex, Vec<(u32, u32)>) {
+        debug_assert!(count as u64 <= INDEX_MASK);
+        let hasher = RandomState::new();
+        let mut keys: Vec<u64> = (0_u32..)
+            .take(count)
+            .map(|index| (hasher.hash_one(name_of(index)) & !INDEX_MASK) | u64::from(index))
+            .collect();
+        keys.sort_unstable();
+        let mut twice = Vec::new();
+        for (place, &key) in keys.iter().enumerate() {
+            let same_hash =
+                keys[..place].iter().rev().take_while(|other| hash_of(**other) == hash_of(key));
+            let name = |key: u64| name_of(index_of(key));
+            // The first of several stands farthest in front.
+            if let Some(first) = same_hash.filter(|other| name(**other) == name(key)).last() {
+                twice.push((index_of(key), index_of(*first)));
+            }
         }
-        self.slots[slot] = index;
-        None
+        (NameIndex { keys, hasher }, twice)
     }
 
     /// The index of a name.
     pub(super) fn find<'n>(&self, name: &str, name_of: impl Fn(u32) -> &'n str) -> Option<u32> {
-        let found = self.slots[self.slot(name, name_of)];
-        (found != FREE).then_some(found)
+        let hash = hash_of(self.hasher.hash_one(name));
+        let first = self.keys.partition_point(|key| hash_of(*key) < hash);
+        let same_hash = self.keys[first..].iter().take_while(|key| hash_of(**key) == hash);
+        same_hash.map(|key| index_of(*key)).find(|index| name_of(*index) == name)
     }
 
-    /// Replaces every index by another, after the list was put into another order.
+    /// Replaces every index by another, after the list was put into another order. Of a name
+    /// that stands there twice any row may be found from then on.
     pub(super) fn renumber(&mut self, new: impl Fn(u32) -> u32) {
-        for slot in self.slots.iter_mut().filter(|slot| **slot != FREE) {
-            *slot = new(*slot);
+        for key in &mut self.keys {
+            *key = (*key & !INDEX_MASK) | u64::from(new(index_of(*key)));
         }
     }
+}
 
-    /// Where a name is, or would be put.
-    fn slot<'n>(&self, name: &str, name_of: impl Fn(u32) -> &'n str) -> usize {
-        let mask = self.slots.len() - 1;
-        let mut slot = self.hasher.hash_one(name) as usize & mask;
-        while self.slots[slot] != FREE && name_of(self.slots[slot]) != name {
-            slot = (slot + 1) & mask;
-        }
-        slot
-    }
+fn hash_of(key: u64) -> u64 {
+    key >> INDEX_BITS
+}
+
+fn index_of(key: u64) -> u32 {
+    (key & INDEX_MASK) as u32
 }
 
 #[cfg(test)]
@@ -63,15 +72,13 @@ mod tests {
 
     #[test]
     fn finds_every_name_and_no_other() {
-        let names: Vec<String> = (0..1000).map(|number| format!("n{}", number % 900)).collect();
+        let names: Vec<String> = (0..2000).map(|number| format!("n{}", number % 900)).collect();
         let name_of = |index: u32| names[index as usize].as_str();
-        let mut index = NameIndex::with_room_for(names.len());
-        for (number, name) in (0_u32..).zip(&names) {
-            let first = (number >= 900).then(|| number - 900);
-            assert_eq!(index.add(name, number, name_of), first);
-        }
+        let (index, mut twice) = NameIndex::of(names.len(), name_of);
+        twice.sort_unstable();
+        assert!(twice.iter().copied().eq((900..2000).map(|number| (number, number % 900))));
         assert_eq!(index.find("n7", name_of), Some(7));
         assert_eq!(index.find("n900", name_of), None);
-        assert_eq!(NameIndex::with_room_for(0).find("", |_| ""), None);
+        assert_eq!(NameIndex::of(0, |_| "").0.find("", |_| ""), None);
     }
 }

@@ -33,15 +33,15 @@ impl Rows {
         faults: &mut Collector,
     ) -> Option<Rows> {
         let Gathered { mut nodes, places, default_reference, hides_nodes } = gathered;
-        let mut by_name = NameIndex::with_room_for(nodes.len());
-        for (index, node) in nodes.iter().enumerate() {
-            let number = u32::try_from(index).ok()?;
-            let name_of = |number: u32| nodes[number as usize].name.as_str();
-            if let Some(first) = by_name.add(&node.name, number, name_of) {
-                let rule = format!("names are unique; `{}` names two nodes", node.name);
-                let remedy = places[index].remedy_for_same_name(&places[first as usize]);
-                faults.fault(places[index].spot, rule, remedy);
-            }
+        let (by_name, mut twice) =
+            NameIndex::of(nodes.len(), |number| nodes[number as usize].name.as_str());
+        twice.sort_unstable();
+        for (later, first) in twice {
+            let place = &places[later as usize];
+            let rule =
+                format!("names are unique; `{}` names two nodes", nodes[later as usize].name);
+            let remedy = place.remedy_for_same_name(&places[first as usize]);
+            faults.fault(place.spot, rule, remedy);
         }
         let mut rows = Rows { nodes: Vec::new(), reference: 0, by_name, hides_nodes };
         let reference = match named(&written.reference) {

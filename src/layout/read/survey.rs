@@ -47,11 +47,7 @@ pub(super) fn read(
     let Some(columns) = columns else {
         return Gathered::default();
     };
-    let by_name: HashMap<String, usize> = listed
-        .iter()
-        .enumerate()
-        .filter_map(|(index, node)| Some((node.name.value()?.clone(), index)))
-        .collect();
+    let by_name = Listed::of(listed);
     let mut surveyed = vec![false; listed.len()];
     let lines = text.bytes().filter(|byte| *byte == b'\n').count();
     let mut new = Gathered::with_room_for((lines + listed.len()).min(MOST_NODES));
@@ -62,7 +58,7 @@ pub(super) fn read(
         let Some(node) = read_row(row, &columns, faults) else {
             continue;
         };
-        let known = node.name.value().and_then(|name| by_name.get(name)).copied();
+        let known = node.name.value().and_then(|name| by_name.find(name));
         match known {
             None if new.nodes.len() == MOST_NODES => {
                 faults.fault(
@@ -87,11 +83,47 @@ pub(super) fn read(
     new
 }
 
+/// The nodes of the layout by name. A few are compared one by one, which costs less than to
+/// hash a million names of a survey.
+enum Listed {
+    Few(Vec<(String, usize)>),
+    Many(HashMap<String, usize>),
+}
+
+impl Listed {
+    fn of(listed: &[WrittenNode]) -> Listed {
+        const FEW: usize = 8;
+        let named = listed
+            .iter()
+            .enumerate()
+            .filter_map(|(index, node)| Some((node.name.value()?.clone(), index)));
+        // Of a name that stands there twice the later counts either way.
+        if listed.len() <= FEW {
+            Listed::Few(named.rev().collect())
+        } else {
+            Listed::Many(named.collect())
+        }
+    }
+
+    fn find(&self, name: &str) -> Option<usize> {
+        match self {
+            Listed::Few(few) => few.iter().find(|(known, _)| known == name).map(|(_, at)| *at),
+            Listed::Many(many) => many.get(name).copied(),
+        }
+    }
+}
+
 fn row_name(node: &WrittenNode) -> &str {
     node.name.value().map_or("", String::as_str)
 }
 
 fn read_header(header: Row<'_, '_>, faults: &mut Collector) -> Option<Vec<Column>> {
+    if header.is_too_wide() {
+        let rule = format!("a survey has one column a quantity; this header has {}", header.len());
+        let remedy = "the columns are name, position_m, u_position_m and the keys of [[node]]";
+        faults.fault(header.whole(), rule, remedy);
+        return None;
+    }
     let mut columns = Vec::with_capacity(header.len());
     let before = faults.total();
     for index in 0..header.len() {

@@ -29,6 +29,7 @@ mod one_way;
 pub(crate) mod rays;
 pub(crate) mod series;
 mod shift;
+mod standing;
 mod two_way;
 pub(crate) mod way;
 
@@ -36,4 +37,5 @@ pub use extremes::{Extreme, Extremes, Range};
 pub(crate) use one_way::later;
 pub use one_way::{End, Flight, Moved, NoFlight};
 pub use rays::{Ray, Rays};
+pub use standing::{StandingFlight, standing_flight};
 pub use two_way::RoundTrip;

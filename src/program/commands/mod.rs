@@ -2,7 +2,9 @@
 
 mod choice;
 mod compare;
+mod following;
 mod recordings;
+mod replay;
 mod show;
 mod tables;
 
@@ -28,9 +30,11 @@ pub fn run(arguments: Arguments) -> Result<u8, Problem> {
         Some(Command::Rates(arguments)) => tables::rates(&arguments),
         Some(Command::Offsets(arguments)) => tables::offsets(&arguments),
         Some(Command::Loads(arguments)) => tables::loads(&arguments),
+        Some(Command::Links(arguments)) => tables::links(&arguments),
+        Some(Command::Reach(arguments)) => tables::reach(&arguments),
         Some(Command::Compare(arguments)) => compare::compare(&arguments),
         Some(Command::Record(arguments)) => recordings::record(&arguments),
-        Some(Command::Replay(arguments)) => recordings::replay(&arguments),
+        Some(Command::Replay(arguments)) => replay::replay(&arguments),
         Some(Command::Verify(arguments)) => recordings::verify(&arguments),
     }
 }

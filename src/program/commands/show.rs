@@ -44,7 +44,7 @@ pub fn show<'a>(
     let output = Output::open(arguments.out.as_deref(), arguments.replace)?;
     let options = shown.choice.text_options(&output);
     if asked.options.paced {
-        return show_paced(moments, options, output, arguments, shown);
+        return show_paced(moments, options, output, arguments, &shown);
     }
     let form = arguments.form();
     match moments {
@@ -98,35 +98,67 @@ fn show_paced(
     options: TextOptions,
     output: Output,
     arguments: &OutputArguments,
-    shown: Shown<'_>,
+    shown: &Shown<'_>,
 ) -> Result<(), Problem> {
-    let form = arguments.form();
-    if form == Form::Json {
-        return Err(Problem::new(
-            "--paced --as json: one object is whole only at its end",
-            "a paced table is lines appended as they come",
-            "use --as csv or --as text",
-        ));
-    }
+    let mut blocks = Blocks::new(arguments.form(), options, &shown.choice, "--paced")?;
     output.write(arguments.replace, |out| {
         let begun = Instant::now();
-        let mut text = TextWriter::new(options).with(shown.choice.text());
         for index in 0..moments.count() {
             let at = moments.nth(index);
             wait_until(begun, at.seconds_since(moments.nth(0)).to_f64());
-            if form == Form::Csv {
-                write_rows(&series(&Moments::One(at), shown.clone()), index == 0, out)?;
-            } else {
-                let report = shown.report(at);
-                if index == 0 {
-                    text.head(&report.head(), out)?;
-                }
-                text.moment(&report, out)?;
-            }
-            out.flush()?;
+            blocks.append(at, shown.reporter, out)?;
         }
         Ok(())
     })
+}
+
+/// A table over time of which one block after the other is appended, as text or CSV.
+pub struct Blocks<'c> {
+    form: Form,
+    choice: &'c Rc<Choice>,
+    text: TextWriter<'c>,
+    is_begun: bool,
+}
+
+impl<'c> Blocks<'c> {
+    /// Nothing appended yet; `option` is what was asked for, in case it cannot be.
+    pub fn new(
+        form: Form,
+        options: TextOptions,
+        choice: &'c Rc<Choice>,
+        option: &str,
+    ) -> Result<Blocks<'c>, Problem> {
+        if form == Form::Json {
+            return Err(Problem::new(
+                format_args!("{option} --as json: one object is whole only at its end"),
+                "what is printed as it comes is lines appended",
+                "use --as csv or --as text",
+            ));
+        }
+        let text = TextWriter::new(options).with(choice.text());
+        Ok(Blocks { form, choice, text, is_begun: false })
+    }
+
+    /// Appends the block of a moment, in one piece.
+    pub fn append(
+        &mut self,
+        at: ArrayTime,
+        reporter: Reporter<'_>,
+        out: &mut dyn Write,
+    ) -> io::Result<()> {
+        let shown = Shown { reporter, choice: Rc::clone(self.choice) };
+        let is_first = !std::mem::replace(&mut self.is_begun, true);
+        if self.form == Form::Csv {
+            write_rows(&series(&Moments::One(at), shown), is_first, out)?;
+        } else {
+            let report = shown.report(at);
+            if is_first {
+                self.text.head(&report.head(), out)?;
+            }
+            self.text.moment(&report, out)?;
+        }
+        out.flush()
+    }
 }
 
 fn wait_until(begun: Instant, seconds: f64) {

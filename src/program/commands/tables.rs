@@ -5,20 +5,22 @@ use std::sync::Arc;
 
 use clockspar::layout::Layout;
 use clockspar::model::array_time::ArrayTime;
-use clockspar::run::{Run, State};
+use clockspar::run::{Event, EventKind, Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
-    Check, JudgedOver, LoadsOverPlan, check_report, loads_report, offsets_report, rates_report,
+    Check, JudgedOver, LoadsOverPlan, Reach, check_report, links_report, loads_report,
+    offsets_report, rates_report, reach_report,
 };
 
 use super::choice::LineShown;
 use super::show::{Asked, show};
 use super::{run_of, status_of, warn_of_broken_rules};
 use crate::program::arguments::{
-    MomentArguments, OffsetsArguments, OutputArguments, PreferenceArguments, TableArguments,
+    MomentArguments, OffsetsArguments, OutputArguments, PreferenceArguments, ReachArguments,
+    TableArguments,
 };
 use crate::program::files;
-use crate::program::moments::Moments;
+use crate::program::moments::{Moments, moment};
 use crate::program::problem::Problem;
 
 /// `clockspar rates`.
@@ -43,6 +45,38 @@ pub fn loads(arguments: &TableArguments) -> Result<u8, Problem> {
     let over_plan = LoadsOverPlan::new(run.layout(), loads);
     show_run(&run, &arguments.moments, &arguments.output, |state| loads_report(state, &over_plan))?;
     Ok(status_of(over_plan.fails()))
+}
+
+/// `clockspar links`. The summary spans the plan, so a table over time has it only when it
+/// is asked for by name.
+pub fn links(arguments: &TableArguments) -> Result<u8, Problem> {
+    let is_named = arguments.output.table.as_deref() == Some("summary");
+    let with_summary = is_named || arguments.moments.every.is_none();
+    table_of_run(&arguments.layout, &arguments.moments, &arguments.output, move |state| {
+        links_report(state, with_summary)
+    })
+}
+
+/// `clockspar reach`.
+pub fn reach(arguments: &ReachArguments) -> Result<u8, Problem> {
+    let table = &arguments.table;
+    let layout = files::load(&table.layout)?;
+    let name = files::shown_name(&table.layout);
+    let run = run_of(layout, &name)?;
+    let before = arguments.before.as_deref();
+    let before = before.map(|text| moment("--before", text, run.layout())).transpose()?;
+    let released = arguments.release.as_deref().map(|node| node_to_release(&run, node));
+    let asked = Reach { released: released.transpose()?, before };
+    warn_of_broken_rules(&run, &name);
+    show_run(&run, &table.moments, &table.output, move |state| reach_report(state, asked))
+}
+
+/// The row of a node that can be let go: any but the reference.
+fn node_to_release(run: &Run, node: &str) -> Result<usize, Problem> {
+    let event = Event { at: ArrayTime::ZERO, kind: EventKind::Release { node: node.to_owned() } };
+    run.clone().apply(event).and_then(|()| run.row(node)).map_err(|fault| {
+        Problem::new(format_args!("--release {node}: {fault}"), fault.rule(), fault.remedy())
+    })
 }
 
 /// The rates of the built-in layout, when there is no terminal to open the desk on.

@@ -5,10 +5,12 @@ use std::sync::Arc;
 use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Event, EventKind, Run, RunFault};
 
+use super::launch_chart::Frame;
 use super::message::{Effect, Notice, Wanted};
 use super::saving;
-use super::sentences::Sentence;
-use super::state::{Desk, Question, Recording};
+use super::sentences::{Sentence, Shift};
+use super::state::{Cursor, Desk, Question, Recording};
+use super::views::VIEWS;
 use super::words;
 
 impl Desk {
@@ -30,6 +32,8 @@ impl Desk {
                 self.notice = Some(Notice::said(format!("a step is {told}")));
             }
             Sentence::Against(row) => self.show_against(row),
+            Sentence::Chart(shift) => self.move_chart(shift),
+            Sentence::ReachOf(row) => self.show_reach_of(row),
             Sentence::Pace(pace) => {
                 if self.running.is_some() {
                     self.start_running();
@@ -92,6 +96,35 @@ impl Desk {
             None => "the reference".to_owned(),
         };
         self.notice = Some(Notice::said(format!("rates and clock offsets are against {name}")));
+    }
+
+    fn move_chart(&mut self, shift: Shift) {
+        if self.view().beside.is_none() {
+            self.notice = Some(Notice::refused(
+                format!("the view `{}` has no chart of the launch frame", self.view().name),
+                "links and reach have one",
+                "press 3 or 4 first",
+            ));
+            return;
+        }
+        self.chart = match shift {
+            Shift::Zoom(by) => self.chart.zoomed(by),
+            Shift::All => Frame::default(),
+            Shift::Fore(fore_m) => self.chart.panned(fore_m, 0.0),
+            Shift::Later(later_s) => self.chart.panned(0.0, later_s),
+        };
+    }
+
+    fn show_reach_of(&mut self, row: Option<usize>) {
+        if row == Some(self.layout().reference) {
+            let name = self.layout().nodes[self.layout().reference].name.clone();
+            self.notice = Some(RunFault::Reference { name }.into());
+            return;
+        }
+        self.reach_of = row;
+        let place = VIEWS.iter().position(|view| view.name == "reach");
+        self.view = place.unwrap_or(self.view);
+        *self.cursor_mut() = Cursor::default();
     }
 
     /// Applies a change, unless it has to be asked about.

@@ -2,6 +2,7 @@
 
 use ratatui::layout::Rect;
 
+use super::painter::width_of;
 use super::state::Desk;
 
 /// How much of the desk there is room for.
@@ -22,6 +23,9 @@ const NARROW: (u16, u16) = (60, 16);
 /// Rows of headings: names and units.
 pub const HEADINGS: u16 = 2;
 
+/// The most rows a note takes.
+const NOTE_ROWS: u16 = 3;
+
 /// The parts of the screen; each lies inside the area, and may be empty.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub struct Geometry {
@@ -31,8 +35,10 @@ pub struct Geometry {
     pub head: Rect,
     /// The table with its headings and the drawn line.
     pub table: Rect,
-    /// The line of caution under the table; empty where the view has none.
-    pub caution: Rect,
+    /// What a view draws beside its table; empty where there is no room.
+    pub beside: Rect,
+    /// What a view has to say under its table.
+    pub note: Rect,
     /// The thrust plan.
     pub plan: Rect,
     /// The entry line; a message stands there too, or above it.
@@ -63,8 +69,6 @@ impl Geometry {
             Extent::OneLine => (area.height.min(1), 0),
         };
         let plan = plan.min(12);
-        let is_cautioned = desk.view().caution(area.width).is_some();
-        let caution = u16::from(is_cautioned && extent != Extent::OneLine);
         let bottom = if extent == Extent::OneLine { 0 } else { 1 };
         let mut y = area.y;
         let mut take = |rows: u16| {
@@ -75,16 +79,38 @@ impl Geometry {
         let head = take(head);
         let table = match extent {
             Extent::OneLine => take(0),
-            _ => take(area.height - head.height - plan - bottom - caution),
+            _ => take(area.height - head.height - plan - bottom),
         };
-        let caution = take(caution);
+        let note = match (extent, desk.note()) {
+            (Extent::OneLine, _) | (_, None) => 0,
+            (_, Some(note)) => (width_of(&note) / table.width.max(1) + 1).min(NOTE_ROWS),
+        };
+        let (table, note) = split_rows(table, table.height.saturating_sub(note));
+        // A square of the launch frame is a column wide and half a row high.
+        let beside = match (extent, desk.view().beside) {
+            (Extent::Full, Some(_)) => (2 * table.height + 8).min(table.width * 9 / 20),
+            _ => 0,
+        };
+        let (table, beside) = split_columns(table, table.width - beside);
         let plan = take(plan);
         let entry = take(bottom);
-        Geometry { extent, head, table, caution, plan, entry, has_horizon: desk.view().nodes }
+        Geometry { extent, head, table, beside, note, plan, entry, has_horizon: desk.view().nodes }
     }
 
     /// How many rows of the table are seen at once.
     pub fn visible_rows(&self) -> u16 {
         self.table.height.saturating_sub(HEADINGS + u16::from(self.has_horizon))
     }
+}
+
+/// The upper rows of an area and the rest.
+fn split_rows(area: Rect, rows: u16) -> (Rect, Rect) {
+    let upper = Rect { height: rows, ..area };
+    (upper, Rect { y: area.y + rows, height: area.height - rows, ..area })
+}
+
+/// The left columns of an area and the rest.
+fn split_columns(area: Rect, columns: u16) -> (Rect, Rect) {
+    let left = Rect { width: columns, ..area };
+    (left, Rect { x: area.x + columns, width: area.width - columns, ..area })
 }

@@ -23,6 +23,9 @@ pub enum Message {
         /// Rows.
         height: u16,
     },
+    /// The terminal has been given another size. A recording that is still being written
+    /// may have grown since it was last looked at.
+    Resized,
     /// So much wall time has passed since the last such message, while running.
     Elapsed(Duration),
     /// A recording was opened under this name.
@@ -100,6 +103,8 @@ pub enum Wanted {
     Before(ArrayTime),
     /// The one at a moment, else the last one before it.
     At(ArrayTime),
+    /// The last one.
+    Newest,
 }
 
 /// What was read of a recording.

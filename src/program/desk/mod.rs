@@ -21,6 +21,7 @@ mod entry;
 mod geometry;
 mod head;
 mod keys;
+mod launch_chart;
 mod message;
 mod outside;
 mod painter;
@@ -174,7 +175,7 @@ fn take_in(desk: &mut Desk, outside: &mut Outside, news: Incoming) -> Heard {
     let message = match news {
         Incoming::Key(key) => Message::Key(key),
         Incoming::Paste(text) => Message::Paste(text),
-        Incoming::Resized => return Heard::Nothing,
+        Incoming::Resized => Message::Resized,
         Incoming::Resumed => return Heard::Resumed,
         Incoming::Ended(ended) => return Heard::Ended(ended),
     };

@@ -10,6 +10,7 @@ use clockspar::run::recording::{
 };
 
 use crate::program::output::Output;
+use crate::program::problem::room_for;
 use crate::program::recording_file::{CreateFault, RecordingFile, RecordingSource};
 
 use super::message::{Effect, Made, Message, Notice, Reading, Wanted};
@@ -167,6 +168,7 @@ impl Outside {
             Wanted::After(at) => reader.frame(Seek::After, at),
             Wanted::Before(at) => reader.frame(Seek::Before, at),
             Wanted::At(at) => reader.frame(Seek::AtOrBefore, at),
+            Wanted::Newest => reader.last_frame(),
         };
         match found {
             Ok(frame) => reading.frame = frame,
@@ -234,10 +236,14 @@ fn not_created(path: &str, fault: &CreateFault) -> Notice {
 }
 
 fn not_written(path: &str, fault: &WriteFault) -> Notice {
+    let room = match fault {
+        WriteFault::Io(error) => room_for(error),
+        _ => "make room",
+    };
     Notice::refused(
         format!("{path} could not be written on: {fault}"),
         "lines written before are whole and stay; the recording ends there",
-        "make room, then `record to FILE` with another name",
+        format!("{room}, then `record to FILE` with another name"),
     )
 }
 

@@ -2,11 +2,22 @@
 
 use clockspar::run::{Event, EventKind};
 
-use super::message::{Notice, Reading};
+use super::message::{Effect, Notice, Reading, Wanted};
 use super::state::Desk;
 use super::words;
 
 impl Desk {
+    /// Looks whether a recording without a closing line has grown. Whoever looks at its
+    /// last frame is shown the new last one.
+    pub(super) fn look_again(&mut self, effects: &mut Vec<Effect>) {
+        let Some(replay) = &self.replay else { return };
+        if replay.condition != "cut" || replay.is_reading {
+            return;
+        }
+        let is_at_end = replay.last.is_none_or(|last| self.at >= last);
+        self.read(if is_at_end { Wanted::Newest } else { Wanted::At(self.at) }, effects);
+    }
+
     /// Takes in what was read of the recording.
     pub(super) fn take_reading(&mut self, reading: Reading) {
         let Some(replay) = &mut self.replay else { return };

@@ -30,13 +30,24 @@ pub fn view(desk: &Desk, area: Rect, buffer: &mut Buffer) -> Option<Position> {
     }
     head::draw(desk, &geometry, &mut painter);
     let cut = table_pane::draw(desk, &geometry, &mut painter);
-    if let Some(caution) = desk.view().caution(area.width) {
-        painter.put(geometry.caution, geometry.caution.x, geometry.caution.y, caution, ASKED);
+    if let Some(draw) = desk.view().beside {
+        draw(desk, geometry.beside, &mut painter);
+    }
+    if let Some(note) = desk.note() {
+        draw_note(&note, geometry.note, &mut painter);
     }
     chart::draw(desk, &geometry, &mut painter);
     let message = message(desk).or_else(|| Some((cut?, QUIET)));
     draw_message(desk, message.as_ref(), geometry.entry, area, &mut painter);
     draw_entry(desk, message.as_ref(), geometry.entry, &mut painter)
+}
+
+/// What has to stand under a table.
+fn draw_note(text: &str, area: Rect, painter: &mut Painter<'_>) {
+    let lines = wrapped(&painter.signs(text), Some(usize::from(area.width)));
+    for (place, line) in lines.iter().take(usize::from(area.height)).enumerate() {
+        painter.put(area, area.x, area.y + place as u16, line, QUIET);
+    }
 }
 
 /// One line of text: what is being typed, else what was said, else how things stand.

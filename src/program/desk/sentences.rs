@@ -21,6 +21,10 @@ pub enum Sentence {
     Against(Option<usize>),
     /// Run at this many seconds of array time per second.
     Pace(f64),
+    /// Show this part of the launch frame.
+    Chart(Shift),
+    /// Show what a node passes once it is let go, or the stations.
+    ReachOf(Option<usize>),
     /// Change the run at the present moment.
     Change(EventKind),
     /// Take the last change back.
@@ -31,6 +35,19 @@ pub enum Sentence {
     RecordClose,
     /// Write the layout as flown to a new file.
     SaveAs(String),
+}
+
+/// How the chart of the launch frame is moved.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub enum Shift {
+    /// Twice as near, or half as near.
+    Zoom(i32),
+    /// Everything in sight again.
+    All,
+    /// So many metres towards the fore end.
+    Fore(f64),
+    /// So many seconds later.
+    Later(f64),
 }
 
 /// A part of a sentence.
@@ -210,6 +227,66 @@ pub static FORMS: &[Form] = &[
             let between = [name(filled[0], layout)?, name(filled[1], layout)?];
             Ok(Sentence::Change(EventKind::Mend { between }))
         },
+    },
+    Form {
+        parts: &[W("reach"), W("of"), W("stations")],
+        example: "reach of stations",
+        does: "the stations again",
+        make: |_, _| Ok(Sentence::ReachOf(None)),
+    },
+    Form {
+        parts: &[W("reach"), W("of"), S(Slot::Node)],
+        example: "reach of s8",
+        does: "what it passes once let go",
+        make: |filled, layout| row(filled[0], layout).map(|row| Sentence::ReachOf(Some(row))),
+    },
+    Form {
+        parts: &[W("zoom"), W("in")],
+        example: "zoom in",
+        does: "the launch frame twice as large",
+        make: |_, _| Ok(Sentence::Chart(Shift::Zoom(1))),
+    },
+    Form {
+        parts: &[W("zoom"), W("out")],
+        example: "zoom out",
+        does: "half as large",
+        make: |_, _| Ok(Sentence::Chart(Shift::Zoom(-1))),
+    },
+    Form {
+        parts: &[W("zoom"), W("all")],
+        example: "zoom all",
+        does: "so that the signal just fits",
+        make: |_, _| Ok(Sentence::Chart(Shift::All)),
+    },
+    Form {
+        parts: &[W("pan"), W("fore"), S(Slot::Position)],
+        example: "pan fore 1 ly",
+        does: "look farther fore in the launch frame",
+        make: |filled, _| {
+            let length_m = quantity(filled[0], Dimension::Length)?;
+            Ok(Sentence::Chart(Shift::Fore(length_m)))
+        },
+    },
+    Form {
+        parts: &[W("pan"), W("aft"), S(Slot::Position)],
+        example: "pan aft 1 ly",
+        does: "farther aft",
+        make: |filled, _| {
+            let length_m = quantity(filled[0], Dimension::Length)?;
+            Ok(Sentence::Chart(Shift::Fore(-length_m)))
+        },
+    },
+    Form {
+        parts: &[W("pan"), W("later"), S(Slot::Time)],
+        example: "pan later 1 h",
+        does: "at later launch times",
+        make: |filled, _| Ok(Sentence::Chart(Shift::Later(length(filled[0])?.to_f64()))),
+    },
+    Form {
+        parts: &[W("pan"), W("earlier"), S(Slot::Time)],
+        example: "pan earlier 1 h",
+        does: "at earlier launch times",
+        make: |filled, _| Ok(Sentence::Chart(Shift::Later(-length(filled[0])?.to_f64()))),
     },
     Form {
         parts: &[W("note"), S(Slot::Text)],

@@ -2,7 +2,7 @@
 
 use clockspar::layout::{Course, Layout};
 use clockspar::model::array_time::ArrayTime;
-use clockspar::run::recording::Frame;
+use clockspar::run::recording;
 use clockspar::run::{Event, EventKind, Run, State};
 
 use crate::program::moments::default_moment;
@@ -11,6 +11,7 @@ use crate::program::terminal::Glyphs;
 use super::entry::Entry;
 use super::geometry::Geometry;
 use super::keys::Focus;
+use super::launch_chart::Frame;
 use super::message::{Made, Notice};
 use super::sentences::{Sentence, end_of_plan};
 use super::step::Step;
@@ -46,6 +47,10 @@ pub struct Desk {
     pub nodes: Cursor,
     /// The chosen row of each view whose rows are not the nodes.
     pub lists: [Cursor; VIEWS.len()],
+    /// The part of the launch frame that is drawn.
+    pub chart: Frame,
+    /// The row of the node whose release the reach view shows, instead of the stations.
+    pub reach_of: Option<usize>,
     /// The entry line.
     pub entry: Entry,
     /// What the message line says.
@@ -134,7 +139,7 @@ pub struct Replay {
     /// The name of its file.
     pub path: String,
     /// The frame that is shown.
-    pub frame: Option<Frame>,
+    pub frame: Option<recording::Frame>,
     /// `whole`, `cut` or `damaged`.
     pub condition: &'static str,
     /// The particulars.
@@ -205,6 +210,8 @@ impl Desk {
             focus_before: Focus::Table,
             nodes: Cursor { row: reference, top: 0 },
             lists: [Cursor::default(); VIEWS.len()],
+            chart: Frame::default(),
+            reach_of: None,
             entry: Entry::default(),
             notice: None,
             question: None,
@@ -240,6 +247,12 @@ impl Desk {
 
     /// Finds again what is kept about the run.
     pub fn run_has_changed(&mut self) {
+        // A node that has just been let go is what the reach view is wanted for.
+        self.reach_of = match self.run.events().last().map(|event| &event.kind) {
+            Some(EventKind::Release { node }) => self.run.row(node).ok(),
+            Some(_) => self.reach_of,
+            None => None,
+        };
         self.plan_shape = PlanShape::of(&self.run);
         // The journal of a replay is what the recording holds.
         if self.replay.is_none() {
@@ -260,6 +273,11 @@ impl Desk {
     /// The view.
     pub fn view(&self) -> &'static View {
         VIEWS[self.view]
+    }
+
+    /// What has to stand under the table of the view.
+    pub fn note(&self) -> Option<String> {
+        self.view().note.and_then(|note| note(self))
     }
 
     /// The cursor of the view.

@@ -24,6 +24,7 @@ impl Desk {
             Message::Key(key) => self.press(key, &mut effects),
             Message::Paste(text) => self.paste(&text),
             Message::Sized { width, height } => self.size = (width, height),
+            Message::Resized => self.look_again(&mut effects),
             Message::Elapsed(elapsed) => self.run_on(elapsed, &mut effects),
             Message::RecordingOpened { path } => {
                 if let Some(recording) = &mut self.recording {
@@ -52,7 +53,17 @@ impl Desk {
                 self.close_recording(&mut effects);
             }
         }
+        self.keep_row_in_table();
         effects
+    }
+
+    /// What a released node passes, and so the number of rows, changes with the moment.
+    fn keep_row_in_table(&mut self) {
+        if self.reach_of.is_some() && self.cursor().row > 0 {
+            let last = self.rows().saturating_sub(1);
+            let cursor = self.cursor_mut();
+            cursor.row = cursor.row.min(last);
+        }
     }
 
     fn press(&mut self, key: KeyEvent, effects: &mut Vec<Effect>) {

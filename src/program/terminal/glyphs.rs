@@ -114,6 +114,20 @@ glyph_table! {
     absent: "–", "-";
     /// Between two parts of one line of text.
     between: "·", "|";
+    /// A dot of a horizon on a launch-frame chart.
+    horizon_dot: "×", "x";
+    /// The upper half of a worldline's cell.
+    track_upper: "▀", "\"";
+    /// The lower half of a worldline's cell.
+    track_lower: "▄", "_";
+    /// A cell a worldline runs through from top to bottom.
+    track_both: "█", "#";
+    /// The upper half of a light ray's cell.
+    ray_upper: "'", "'";
+    /// The lower half of a light ray's cell.
+    ray_lower: ".", ".";
+    /// A cell a light ray runs through from top to bottom.
+    ray_both: ":", ":";
     /// A measured point on a chart.
     point: "•", "*";
     /// The filled part of a bar.

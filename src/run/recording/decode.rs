@@ -9,7 +9,14 @@ use super::scan::{Malformed, Scanner};
 use super::{COLUMNS, Closing, EmbeddedFile, FORMAT, Frame, Line, Opening, READING_COLUMN};
 
 /// Length of `,"crc32":"xxxxxxxx"}`.
-const TAIL: usize = 20;
+pub(super) const TAIL: usize = 20;
+
+/// What follows a body of some CRC.
+pub(super) fn tail(crc: u32) -> [u8; TAIL] {
+    let mut tail = *b",\"crc32\":\"00000000\"}";
+    tail[10..18].copy_from_slice(super::hex(&crc.to_be_bytes()).as_bytes());
+    tail
+}
 
 /// The most files a layout names.
 const MOST_FILES: usize = 16;
@@ -76,7 +83,7 @@ pub(super) fn opening(body: &[u8]) -> Result<Opening, Malformed> {
     scanner.key("layout_text")?;
     let layout_text = scanner.text()?;
     scanner.key("layout_sha256")?;
-    let layout_sha256 = scanner.text()?;
+    let layout_sha256 = sha256(&mut scanner)?;
     scanner.key("files")?;
     let files = scanner.list(MOST_FILES, embedded_file)?;
     scanner.key("seed")?;
@@ -121,13 +128,25 @@ fn name(scanner: &mut Scanner<'_>) -> Result<String, Malformed> {
     }
 }
 
+/// A hash: it is shown as it stands, so it has to be one.
+fn sha256(scanner: &mut Scanner<'_>) -> Result<String, Malformed> {
+    let at = scanner.clone();
+    let hash = scanner.text()?;
+    let is_digit = |byte: u8| matches!(byte, b'0'..=b'9' | b'a'..=b'f');
+    if hash.len() == 64 && hash.bytes().all(is_digit) {
+        Ok(hash)
+    } else {
+        at.fail("a hash is 64 digits")
+    }
+}
+
 fn embedded_file(scanner: &mut Scanner<'_>) -> Result<EmbeddedFile, Malformed> {
     scanner.expect("{\"name\":")?;
     let name = scanner.text()?;
     scanner.key("text")?;
     let text = scanner.text()?;
     scanner.key("sha256")?;
-    let sha256 = scanner.text()?;
+    let sha256 = sha256(scanner)?;
     scanner.expect("}")?;
     Ok(EmbeddedFile { name, text, sha256 })
 }
@@ -139,15 +158,23 @@ fn format(scanner: &mut Scanner<'_>) -> Result<(), Malformed> {
 
 /// The moment of a frame or an event, from the first bytes of its line.
 pub(super) fn moment(line: &[u8]) -> Result<ArrayTime, Malformed> {
+    head(line).map(|(_, at)| at)
+}
+
+/// The number of a frame, `None` for an event, and the moment, from the first bytes of
+/// the line.
+pub(super) fn head(line: &[u8]) -> Result<(Option<u64>, ArrayTime), Malformed> {
     let mut scanner = Scanner::new(line);
-    if scanner.passes("{\"frame\":") {
-        scanner.whole()?;
-    } else {
-        scanner.expect("{\"event\":")?;
+    let index = if scanner.passes("{\"frame\":") {
+        Some(scanner.whole()?)
+    } else if scanner.passes("{\"event\":") {
         scanner.text()?;
-    }
+        None
+    } else {
+        return scanner.fail("neither a frame nor an event");
+    };
     scanner.key("at_s")?;
-    scanner.time()
+    Ok((index, scanner.time()?))
 }
 
 /// A frame or an event, from its body.
@@ -225,13 +252,13 @@ fn event(body: &[u8]) -> Result<Event, Malformed> {
         "plan" => EventKind::Plan,
         "move" => {
             scanner.key("node")?;
-            let node = scanner.text()?;
+            let node = name(&mut scanner)?;
             scanner.key("position_m")?;
             EventKind::Move { node, position_m: scanner.double()? }
         }
         "release" => {
             scanner.key("node")?;
-            EventKind::Release { node: scanner.text()? }
+            EventKind::Release { node: name(&mut scanner)? }
         }
         "fail" => EventKind::Fail { between: between(&mut scanner)? },
         "mend" => EventKind::Mend { between: between(&mut scanner)? },
@@ -249,7 +276,7 @@ fn event(body: &[u8]) -> Result<Event, Malformed> {
 fn between(scanner: &mut Scanner<'_>) -> Result<[String; 2], Malformed> {
     scanner.key("between")?;
     let at = scanner.clone();
-    let ends = scanner.list(2, Scanner::text)?;
+    let ends = scanner.list(2, name)?;
     ends.try_into().or_else(|_| at.fail("a link has two ends"))
 }
 
@@ -265,7 +292,7 @@ pub(super) fn closing(body: &[u8]) -> Result<Closing, Malformed> {
     scanner.key("last_at_s")?;
     let last_at = scanner.time_or_null()?;
     scanner.key("sha256")?;
-    let sha256 = scanner.text()?;
+    let sha256 = sha256(&mut scanner)?;
     scanner.end()?;
     Ok(Closing { frames, events, last_at, sha256 })
 }

@@ -57,6 +57,9 @@ pub enum OpenFault {
     NoOpening {
         /// What is wrong with it.
         what: String,
+        /// Whether it may be one that is still being written: what is there is how an
+        /// opening begins, and has no end yet.
+        is_unfinished: bool,
     },
     /// A later format than this program knows.
     Newer {
@@ -130,7 +133,7 @@ impl fmt::Display for Damage {
 impl fmt::Display for OpenFault {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
-            OpenFault::NoOpening { what } => {
+            OpenFault::NoOpening { what, .. } => {
                 write!(f, "no readable opening line of a recording: {what}")
             }
             OpenFault::Newer { format } => write!(

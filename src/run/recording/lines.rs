@@ -20,10 +20,7 @@ pub struct Lines<'r, R> {
     offset: u64,
     /// Number of the next line, once it is known.
     number: Option<u64>,
-    /// The moment of the last line, and whether it was a frame.
-    last: Option<(ArrayTime, bool)>,
-    /// Number of the next frame, once it is known.
-    next_frame: Option<u64>,
+    order: Order,
 }
 
 impl<'r, R: ReadAt> Lines<'r, R> {
@@ -34,8 +31,7 @@ impl<'r, R: ReadAt> Lines<'r, R> {
             window: Window::new(reader.source()),
             offset,
             number: is_start.then_some(2),
-            last: None,
-            next_frame: is_start.then_some(0),
+            order: Order::new(is_start),
         }
     }
 
@@ -59,39 +55,140 @@ impl<'r, R: ReadAt> Lines<'r, R> {
         self.number = number.map(|number| number + 1);
         let parsed = match found.held {
             Some(range) => parse(self.window.held(range), self.reader),
-            None => Err("it is longer than a line can be".to_owned()),
+            None => Err(TOO_LONG.to_owned()),
         };
-        let checked = parsed.and_then(|line| match self.follow(&line) {
-            Some(what) => Err(what),
-            None => Ok(line),
+        let checked = parsed.and_then(|line| {
+            let index = match &line {
+                Line::Frame(frame) => Some(frame.index),
+                Line::Event(_) => None,
+            };
+            self.order.follow(line.at(), index).map_or(Ok(line), Err)
         });
         checked.map_err(|what| {
-            // Which frame comes next is not known after a line that cannot be read.
-            self.next_frame = None;
+            self.order.lose_count();
             damaged(self.reader.source(), number, byte, what)
         })
     }
+}
 
-    /// Takes a line as the one before the next; says what is wrong with its place.
-    fn follow(&mut self, line: &Line) -> Option<String> {
-        let at = line.at();
-        let last = self.last.replace((at, matches!(line, Line::Frame(_))));
+/// Whether lines stand in the order of the format.
+#[derive(Debug)]
+struct Order {
+    /// The moment of the last line, and whether it was a frame.
+    last: Option<(ArrayTime, bool)>,
+    /// Number of the next frame, once it is known.
+    next_frame: Option<u64>,
+}
+
+impl Order {
+    fn new(is_start: bool) -> Order {
+        Order { last: None, next_frame: is_start.then_some(0) }
+    }
+
+    /// After a line that cannot be read it is not known which frame comes next.
+    fn lose_count(&mut self) {
+        self.next_frame = None;
+    }
+
+    /// Takes a line as the one before the next, a frame with its number; says what is
+    /// wrong with its place.
+    fn follow(&mut self, at: ArrayTime, frame: Option<u64>) -> Option<String> {
+        let last = self.last.replace((at, frame.is_some()));
         if let Some((last, _)) = last
             && at < last
         {
             return Some(format!("its moment, {at} s, is before the one above, {last} s"));
         }
-        match line {
-            Line::Event(_) => (last == Some((at, true)))
+        match frame {
+            None => (last == Some((at, true)))
                 .then(|| format!("an event at {at} s after the frame of that moment")),
-            Line::Frame(frame) => {
-                let due = self.next_frame.replace(frame.index.saturating_add(1));
-                let due = due.filter(|due| *due != frame.index)?;
-                Some(format!("it is frame {}, where frame {due} is due", frame.index))
+            Some(index) => {
+                let due = self.next_frame.replace(index.saturating_add(1));
+                let due = due.filter(|due| *due != index)?;
+                Some(format!("it is frame {index}, where frame {due} is due"))
             }
         }
     }
 }
+
+/// What the beginning of a line tells.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct LineHead {
+    /// Where the line begins.
+    pub byte: u64,
+    /// Its moment.
+    pub at: ArrayTime,
+    /// The number of the frame; `None` for an event.
+    pub frame: Option<u64>,
+}
+
+/// The beginnings of all lines in the order of the file. The CRC of every line and its
+/// place are checked, but no number beyond its moment is read: a long recording is listed
+/// at the speed of its bytes.
+#[derive(Debug)]
+pub struct Heads<'r, R> {
+    reader: &'r Reader<R>,
+    window: Window<'r, R>,
+    offset: u64,
+    number: u64,
+    order: Order,
+}
+
+impl<'r, R: ReadAt> Heads<'r, R> {
+    pub(super) fn new(reader: &'r Reader<R>) -> Heads<'r, R> {
+        Heads {
+            reader,
+            window: Window::new(reader.source()),
+            offset: reader.data_start(),
+            number: 2,
+            order: Order::new(true),
+        }
+    }
+
+    /// Where the line that comes next begins.
+    #[must_use]
+    pub fn next_byte(&self) -> u64 {
+        self.offset
+    }
+
+    fn read(&mut self) -> Result<LineHead, ReadFault> {
+        let (byte, number) = (self.offset, self.number);
+        let end = self.reader.data_end();
+        let found = self.window.line(byte, end, self.reader.longest_line())?;
+        self.offset = found.end;
+        self.number += 1;
+        let head = match found.held {
+            Some(range) => decode::body(self.window.held(range))
+                .and_then(|body| decode::head(body).map_err(|malformed| malformed.text())),
+            None => Err(TOO_LONG.to_owned()),
+        };
+        let checked = head.and_then(|(frame, at)| {
+            self.order.follow(at, frame).map_or(Ok(LineHead { byte, at, frame }), Err)
+        });
+        checked.map_err(|what| {
+            self.order.lose_count();
+            damaged(self.reader.source(), Some(number), byte, what)
+        })
+    }
+}
+
+impl<R: ReadAt> Iterator for Heads<'_, R> {
+    type Item = Result<LineHead, ReadFault>;
+
+    fn next(&mut self) -> Option<Self::Item> {
+        if self.offset >= self.reader.data_end() {
+            return None;
+        }
+        let head = self.read();
+        if let Err(ReadFault::Io(_)) = head {
+            self.offset = self.reader.data_end();
+        }
+        Some(head)
+    }
+}
+
+/// What is wrong with a line of more bytes than any line of the recording has.
+pub(super) const TOO_LONG: &str = "it is longer than a line can be";
 
 /// What a line without its line feed says.
 pub(super) fn parse<R: ReadAt>(line: &[u8], reader: &Reader<R>) -> Result<Line, String> {
@@ -155,7 +252,7 @@ impl<'r, R: ReadAt> Events<'r, R> {
             }
             let parsed = match found.held {
                 Some(range) => parse(self.window.held(range), self.reader),
-                None => Err("it is longer than a line can be".to_owned()),
+                None => Err(TOO_LONG.to_owned()),
             };
             match parsed {
                 Ok(Line::Event(event)) => return Ok(Some(event)),

@@ -37,7 +37,7 @@ use crate::model::array_time::ArrayTime;
 use crate::table::{MODEL, PROGRAM};
 
 pub use fault::{Condition, Cut, Damage, Missing, OpenFault, ReadFault, WriteFault};
-pub use lines::{Events, Lines};
+pub use lines::{Events, Heads, LineHead, Lines};
 pub use reader::{Reader, Seek};
 pub use record::{Ended, RecordFault, Recorder, Schedule, ScheduleFault, record};
 pub use verify::{Basis, Finding, Verdict, allowed_difference, verify};

@@ -10,14 +10,17 @@ use crate::layout::{self, Faults, Layout};
 use crate::model::array_time::ArrayTime;
 
 use super::decode::{self, Kind};
-use super::lines::{Events, Lines, damaged, parse};
-use super::window::{ReadAt, Window, line_start, read_full};
+use super::lines::{Events, Heads, Lines, TOO_LONG, damaged, parse};
+use super::window::{ReadAt, Window, feed_after, for_each_chunk, line_start, read_full};
 use super::{
     Condition, Cut, FORMAT, Frame, LONGEST_NOTE, Line, Missing, OpenFault, Opening, ReadFault,
 };
 
 /// The longest opening line that is read, in bytes: it is held in memory.
-const LONGEST_OPENING: usize = 1 << 30;
+const LONGEST_OPENING: u64 = 1 << 30;
+
+/// The longest opening line that is held in memory before its CRC has been found good.
+const HELD_UNCHECKED: u64 = 1 << 20;
 
 /// A recording opened for reading. It may still be growing: see [`Reader::refresh`].
 #[derive(Debug)]
@@ -111,6 +114,19 @@ impl<R: ReadAt> Reader<R> {
     #[must_use]
     pub fn lines(&self) -> Lines<'_, R> {
         Lines::new(self, self.data_start)
+    }
+
+    /// Frames and events from a byte on at which a line begins, as told by
+    /// [`Lines::next_byte`] or [`Heads::next_byte`].
+    #[must_use]
+    pub fn lines_at(&self, byte: u64) -> Lines<'_, R> {
+        Lines::new(self, byte.max(self.data_start))
+    }
+
+    /// The moments of all frames and events, from the first one on.
+    #[must_use]
+    pub fn heads(&self) -> Heads<'_, R> {
+        Heads::new(self)
     }
 
     /// Frames and events from the first one at or after a moment on.
@@ -304,7 +320,7 @@ impl<R: ReadAt> Reader<R> {
                 let found = window.line(start, end, self.longest_line())?;
                 let parsed = match found.held {
                     Some(range) => parse(window.held(range), self),
-                    None => Err("it is longer than a line can be".to_owned()),
+                    None => Err(TOO_LONG.to_owned()),
                 };
                 match parsed {
                     Ok(Line::Frame(frame)) => return Ok(Some(frame)),
@@ -363,9 +379,11 @@ impl Opening {
 
 /// The opening and the byte after it.
 fn read_opening<R: ReadAt>(source: &R, size: u64) -> Result<(Opening, u64), OpenFault> {
-    let no_opening = |what: &str| OpenFault::NoOpening { what: what.to_owned() };
+    let fault = |what: &str, is_unfinished| {
+        Err(OpenFault::NoOpening { what: what.to_owned(), is_unfinished })
+    };
     if size == 0 {
-        return Err(no_opening("it is empty"));
+        return fault("it is empty", true);
     }
     let mut window = Window::new(source);
     // Looked at first, so that a large file of another kind is not read as one line.
@@ -373,17 +391,42 @@ fn read_opening<R: ReadAt>(source: &R, size: u64) -> Result<(Opening, u64), Open
     match decode::claimed_format(head) {
         Some(format) if format == FORMAT => {}
         Some(format) if is_newer(&format) => return Err(OpenFault::Newer { format }),
-        _ => return Err(no_opening("the first line is not one")),
+        _ => {
+            let beginning = format!("{{\"opening\":\"{FORMAT}\"");
+            return fault("the first line is not one", beginning.as_bytes().starts_with(head));
+        }
     }
-    let found = window.line(0, size, LONGEST_OPENING)?;
-    let Some(range) = found.held else {
-        return Err(no_opening("the first line has no end"));
+    // Its end is looked for without holding it: a line that has none costs no memory.
+    let Some(feed) = feed_after(source, 0, size.min(LONGEST_OPENING))? else {
+        let is_unfinished = size < LONGEST_OPENING;
+        return fault("the first line has no end", is_unfinished);
     };
-    let line = window.held(range);
-    let body = decode::body(line).map_err(|what| OpenFault::NoOpening { what })?;
-    let opening = decode::opening(body)
-        .map_err(|malformed| OpenFault::NoOpening { what: malformed.text() })?;
+    if feed > HELD_UNCHECKED && !has_good_crc(source, feed)? {
+        return fault("it does not agree with its CRC", false);
+    }
+    let found = window.line(0, feed + 1, usize::try_from(feed).unwrap_or(usize::MAX))?;
+    let line = found.held.map(|range| window.held(range)).unwrap_or_default();
+    let body =
+        decode::body(line).map_err(|what| OpenFault::NoOpening { what, is_unfinished: false })?;
+    let opening = decode::opening(body).map_err(|malformed| OpenFault::NoOpening {
+        what: malformed.text(),
+        is_unfinished: false,
+    })?;
     Ok((opening, found.end))
+}
+
+/// Whether the line of the first `length` bytes agrees with its CRC, found without holding
+/// it in memory.
+fn has_good_crc<R: ReadAt>(source: &R, length: u64) -> io::Result<bool> {
+    let Some(body_end) = length.checked_sub(decode::TAIL as u64) else { return Ok(false) };
+    let mut hasher = crc32fast::Hasher::new();
+    for_each_chunk(source, 0, body_end, |_, bytes| {
+        hasher.update(bytes);
+        true
+    })?;
+    let mut tail = [0; decode::TAIL];
+    let count = read_full(source, body_end, &mut tail)?;
+    Ok(tail[..count] == decode::tail(hasher.finalize()))
 }
 
 /// Whether a format is a later one of this kind.

@@ -159,8 +159,11 @@ impl Check {
         let layout = match opening.read_layout() {
             Ok(layout) => layout,
             Err(faults) => {
-                let what = format!("the layout in the recording cannot be read:\n{faults}");
-                self.differs(1, what);
+                for fault in faults.shown() {
+                    let crate::layout::Fault { file, line, column, rule, .. } = fault;
+                    self.differs(1, format!("{file}, line {line}, column {column}: {rule}"));
+                }
+                self.verdict.more_findings += (faults.count() - faults.shown().len()) as u64;
                 return None;
             }
         };

@@ -186,7 +186,11 @@ pub(super) fn for_each_chunk<R: ReadAt + ?Sized>(
 }
 
 /// The first line feed in `[from, end)`.
-fn feed_after<R: ReadAt + ?Sized>(source: &R, from: u64, end: u64) -> io::Result<Option<u64>> {
+pub(super) fn feed_after<R: ReadAt + ?Sized>(
+    source: &R,
+    from: u64,
+    end: u64,
+) -> io::Result<Option<u64>> {
     let mut found = None;
     for_each_chunk(source, from, end, |at, bytes| {
         found = feed_in(bytes).map(|index| at + index as u64);
@@ -203,7 +207,7 @@ pub(super) fn line_start<R: ReadAt + ?Sized>(source: &R, low: u64, at: u64) -> i
         let length = usize::try_from(end - low).unwrap_or(usize::MAX).min(chunk.len());
         let start = end - length as u64;
         let count = read_full(source, start, &mut chunk[..length])?;
-        if let Some(index) = chunk[..count].iter().rposition(|byte| *byte == b'\n') {
+        if let Some(index) = last_feed_in(&chunk[..count]) {
             return Ok(start + index as u64 + 1);
         }
         end = start;
@@ -235,6 +239,19 @@ fn feed_in(bytes: &[u8]) -> Option<usize> {
             return block.iter().position(|byte| *byte == b'\n').map(|index| passed + index);
         }
         passed += block.len();
+    }
+    None
+}
+
+/// The last line feed of some bytes.
+fn last_feed_in(bytes: &[u8]) -> Option<usize> {
+    const BLOCK: usize = 1024;
+    let mut left = bytes.len();
+    for block in bytes.rchunks(BLOCK) {
+        left -= block.len();
+        if block.contains(&b'\n') {
+            return block.iter().rposition(|byte| *byte == b'\n').map(|index| left + index);
+        }
     }
     None
 }

@@ -77,18 +77,20 @@ impl NodeChoice {
         (self.rows.len(), self.of)
     }
 
-    /// Whether a cell that names nodes names chosen ones: a node, or a pair as `a - b`.
+    /// Whether a cell that names nodes names chosen ones: a node, or a pair as `a to b`.
     fn is_about(&self, named: &str) -> bool {
-        let both_ends = |place: usize| {
-            let (first, last) = (&named[..place], &named[place + PAIR.len()..]);
-            self.names.contains(first) && self.names.contains(last)
+        let is_pair = |between: &str| {
+            named.match_indices(between).any(|(place, _)| {
+                let (first, last) = (&named[..place], &named[place + between.len()..]);
+                self.names.contains(first) && self.names.contains(last)
+            })
         };
-        self.names.contains(named) || named.match_indices(PAIR).any(|(place, _)| both_ends(place))
+        self.names.contains(named) || PAIRED_BY.into_iter().any(is_pair)
     }
 }
 
-/// What stands between the two nodes of a pair in a cell.
-const PAIR: &str = " - ";
+/// What may stand between the two nodes of a pair in a cell.
+const PAIRED_BY: [&str; 2] = [" to ", " - "];
 
 /// Every way to read an item as a range: names may hold the same two points.
 fn ways_to_split(item: &str) -> impl Iterator<Item = (&str, &str)> {

@@ -6,7 +6,7 @@ use super::{ChoiceFault, SI_ENDINGS, bare_key};
 use crate::layout::nearest::nearest;
 use crate::layout::quantity::{UnitFactor, find_unit, short};
 use crate::table::unit::{Unit, dimension_of};
-use crate::table::{Column, Measure, Report};
+use crate::table::{Measure, Report};
 
 /// Units asked for, by the keys of columns.
 #[derive(Clone, Debug, Default)]
@@ -138,15 +138,6 @@ impl Units {
         let (_, unit) = self.chosen.iter().find(|(wanted, _)| is_meant(wanted, key, measure))?;
         (Some(unit.dimension) == dimension_of(measure)).then(|| Unit::of_factor(*unit))
     }
-
-    /// The unit asked for a column of a table. Beside a column `unit` the rows say
-    /// themselves what their values and limits are in.
-    pub(in crate::table) fn of_column(&self, column: &Column, columns: &[Column]) -> Option<Unit> {
-        if self.chosen.is_empty() || states_unit(column.key, columns) {
-            return None;
-        }
-        self.of(column.key, column.measure)
-    }
 }
 
 enum Fault {
@@ -168,27 +159,15 @@ fn is_meant(wanted: &str, key: &str, measure: Measure) -> bool {
     wanted == key || bare_key(key, measure) == Some(wanted)
 }
 
-/// Whether the rows of a table state the unit of a column themselves.
-fn states_unit(key: &str, columns: &[Column]) -> bool {
-    matches!(key, "value" | "limit") && columns.iter().any(|column| column.key == "unit")
-}
-
 fn fault_of(key: &str, unit: UnitFactor, report: &Report<'_>) -> Option<Fault> {
-    let mut known: Vec<(&str, Measure, bool)> = report
-        .tables
-        .iter()
-        .flat_map(|table| {
-            let columns = &table.columns;
-            columns
-                .iter()
-                .map(|column| (column.key, column.measure, states_unit(column.key, columns)))
-        })
-        .collect();
-    known.extend(report.scalars.iter().map(|scalar| (scalar.key, scalar.measure, false)));
-    let meant = known.iter().find(|(column, measure, _)| is_meant(key, column, *measure));
-    let Some((column, measure, stated)) = meant else {
-        let with_unit = known.iter().filter(|(_, measure, _)| dimension_of(*measure).is_some());
-        let mut keys: Vec<&str> = with_unit.map(|(column, ..)| *column).collect();
+    let columns = report.tables.iter().flat_map(|table| &table.columns);
+    let mut known: Vec<(&str, Measure)> =
+        columns.map(|column| (column.key, column.measure)).collect();
+    known.extend(report.scalars.iter().map(|scalar| (scalar.key, scalar.measure)));
+    let meant = known.iter().find(|(column, measure)| is_meant(key, column, *measure));
+    let Some((column, measure)) = meant else {
+        let with_unit = known.iter().filter(|(_, measure)| dimension_of(*measure).is_some());
+        let mut keys: Vec<&str> = with_unit.map(|(column, _)| *column).collect();
         keys.dedup();
         let remedy = match nearest(key, keys.iter().copied()) {
             Some(meant) => format!("write `{meant}`"),
@@ -198,9 +177,9 @@ fn fault_of(key: &str, unit: UnitFactor, report: &Report<'_>) -> Option<Fault> {
         let rule = format!("no column has the key `{}`", short(key));
         return Some(Fault::Unknown(UnitFault { rule, remedy }));
     };
-    if *stated {
+    if *measure == Measure::Various {
         return Some(Fault::Unfit(UnitFault {
-            rule: format!("the unit of `{column}` stands in a column of its own, row by row"),
+            rule: format!("the unit of `{column}` is stated row by row"),
             remedy: "leave this unit out".to_owned(),
         }));
     }

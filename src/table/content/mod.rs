@@ -2,10 +2,13 @@
 
 mod check;
 mod compare;
+mod links;
 mod loads;
 mod offsets;
 mod rates;
+mod reach;
 mod recording;
+mod released;
 
 use crate::layout::{Course, Layout};
 use crate::model::dd::Dd;
@@ -18,13 +21,16 @@ pub use check::{
     Check, JudgedOver, Judgement, Rule, RuleState, Subject, Summary, check_report, judge,
 };
 pub use compare::{Difference, compare_report, differences};
+pub use links::{link_way, links_report};
 pub use loads::{
     CAUTION, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad, judge_loads,
     loads_report, sentence as load_sentence,
 };
 pub use offsets::offsets_report;
 pub use rates::rates_report;
+pub use reach::{Reach, reach_report, station_row};
 pub use recording::{detail, events_table, replay_report, verify_report};
+pub use released::CAUTION as CAUTION_OF_SPEEDS;
 
 /// Why a released node has no number.
 pub const RELEASED: &str = "released: the node no longer belongs to the line";
@@ -69,6 +75,11 @@ fn standing_warning(state: &State<'_>) -> Option<String> {
 /// A number, or its absence when it overflows.
 fn number(value: Dd) -> Cell<'static> {
     Cell::finite(value.to_f64(), OVERFLOW)
+}
+
+/// The same for a double.
+fn double(value: f64) -> Cell<'static> {
+    Cell::finite(value, OVERFLOW)
 }
 
 /// Reading less array time of the real clock of a node, s; a node without a clock is given

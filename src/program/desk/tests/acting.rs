@@ -397,6 +397,9 @@ fn every_example_in_the_list_of_sentences_is_one() {
         if form.example.starts_with("mend") {
             say(&mut desk, "fail hub and s1");
         }
+        if form.example.starts_with("zoom") || form.example.starts_with("pan") {
+            press(&mut desk, KeyCode::Char('3'));
+        }
         if form.example == "record close" {
             say(&mut desk, "record to t.jsonl");
         }

@@ -7,7 +7,7 @@ use proptest::prelude::*;
 use super::*;
 use crate::program::terminal::ASCII;
 
-const SENTENCES: [&str; 30] = [
+const SENTENCES: [&str; 42] = [
     "to 12 h",
     "to end",
     "to -1e11 s",
@@ -37,6 +37,18 @@ const SENTENCES: [&str; 30] = [
     "record close",
     "save as flown.toml",
     "undo",
+    "reach of pod8",
+    "reach of stations",
+    "zoom in",
+    "zoom out",
+    "zoom all",
+    "pan fore 1 ly",
+    "pan aft 9e18 m",
+    "pan later 1 h",
+    "pan earlier 1e11 s",
+    "fail tug and drogue",
+    "release pod1",
+    "to 37195 s",
     "nonsense",
 ];
 

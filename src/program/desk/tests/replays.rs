@@ -33,7 +33,10 @@ fn recording() -> Vec<u8> {
 }
 
 fn open(bytes: Vec<u8>) -> (Desk, Outside) {
-    let reader = Reader::open(RecordingSource::Memory(bytes)).expect("a recording");
+    open_reader(Reader::open(RecordingSource::Memory(bytes)).expect("a recording"))
+}
+
+fn open_reader(reader: Reader<RecordingSource>) -> (Desk, Outside) {
     let layout = reader.layout().expect("its layout");
     let run = Run::new(Arc::new(layout)).expect("a line that can be flown");
     let mut desk = Desk::on_recording(run, "run.jsonl".to_owned(), &UNICODE);
@@ -136,4 +139,38 @@ fn damage_is_named_and_said() {
     assert!(text.contains("damaged recording"), "{text}");
     assert!(text.contains("is damaged"), "{text}");
     assert!(desk.replay.is_some_and(|replay| replay.is_damaged));
+}
+
+#[test]
+fn a_recording_still_being_written_shows_its_new_frames() {
+    let bytes = recording();
+    let folder = tempfile::tempdir().expect("a folder");
+    let path = folder.path().join("run.jsonl");
+    let feeds: Vec<usize> = bytes
+        .iter()
+        .enumerate()
+        .filter(|(_, byte)| **byte == b'\n')
+        .map(|(at, _)| at + 1)
+        .collect();
+    // The opening, the note of the layout and frame 0.
+    std::fs::write(&path, &bytes[..feeds[2]]).expect("written");
+    let reader = crate::program::recording_file::open_recording(&path, 0).expect("a recording");
+    let (mut desk, mut outside) = open_reader(reader);
+    let text = drawn(&desk, 80, 24);
+    assert!(text.contains("cut recording run.jsonl, frame 0"), "{text}");
+    key(&mut desk, &mut outside, KeyCode::Right);
+    assert_eq!(desk.at, ArrayTime::ZERO);
+    std::fs::write(&path, &bytes[..feeds[feeds.len() - 3]]).expect("written");
+    key(&mut desk, &mut outside, KeyCode::Right);
+    assert_eq!(desk.at, ArrayTime::from_seconds(600), "a step meets what has come");
+    // In the middle nothing moves when the size changes; at the end the newest is shown.
+    tell(&mut desk, &mut outside, Message::Resized);
+    assert_eq!(desk.at, ArrayTime::from_seconds(600));
+    do_sentence(&mut desk, &mut outside, "to 1 h");
+    let last_but_one = desk.at;
+    std::fs::write(&path, &bytes).expect("written");
+    tell(&mut desk, &mut outside, Message::Resized);
+    assert_eq!(desk.at, ArrayTime::from_seconds(3_600));
+    assert!(last_but_one < desk.at);
+    assert!(drawn(&desk, 80, 24).contains("whole recording run.jsonl, frame 6"));
 }

@@ -87,6 +87,33 @@ fn loads_show_at_once_what_a_thrust_does() {
 }
 
 #[test]
+fn links_and_reach_with_the_launch_frame_beside_them() {
+    let far = std::fs::read_to_string("layouts/near-horizon.toml").expect("an example");
+    for (marks, glyphs) in [("unicode", &UNICODE), ("ascii", &ASCII)] {
+        let mut desk = desk_on(BUILT_IN_TEXT, glyphs);
+        press(&mut desk, KeyCode::Char('3'));
+        compare(&format!("links_80x24_{marks}"), &drawn(&desk, 80, 24));
+        compare(&format!("links_120x40_{marks}"), &drawn(&desk, 120, 40));
+        compare(&format!("links_60x16_{marks}"), &drawn(&desk, 60, 16));
+        let mut desk = desk_on(&far, glyphs);
+        press(&mut desk, KeyCode::Char('4'));
+        compare(&format!("reach_80x24_{marks}"), &drawn(&desk, 80, 24));
+        compare(&format!("reach_120x40_{marks}"), &drawn(&desk, 120, 40));
+        compare(&format!("reach_60x16_{marks}"), &drawn(&desk, 60, 16));
+        say(&mut desk, "release deep1");
+        compare(&format!("released_120x40_{marks}"), &drawn(&desk, 120, 40));
+        say(&mut desk, "zoom out");
+        say(&mut desk, "pan later 2 a");
+        compare(&format!("released_zoomed_80x24_{marks}"), &drawn(&desk, 80, 24));
+        say(&mut desk, "reach of stations");
+        for _ in 0..16 {
+            press(&mut desk, KeyCode::Down);
+        }
+        compare(&format!("reach_of_far_light_80x24_{marks}"), &drawn(&desk, 80, 24));
+    }
+}
+
+#[test]
 fn a_standing_line_has_no_plan() {
     let desk = desk_on(
         "name = \"tower\"\n[[node]]\nname = \"foot\"\n[[node]]\nname = \"top\"\nposition = \"120 m\"\n\

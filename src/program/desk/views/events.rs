@@ -7,8 +7,15 @@ use crate::program::desk::state::Desk;
 use crate::program::desk::words;
 
 /// The view.
-pub static VIEW: View =
-    View { digit: '9', name: "events", table: Some(table), first: &[], nodes: false };
+pub static VIEW: View = View {
+    digit: '9',
+    name: "events",
+    table: Some(table),
+    first: &[],
+    nodes: false,
+    beside: None,
+    note: None,
+};
 
 const COLUMNS: [Column; 4] = [
     Column { key: "moment", heading: "moment", measure: Measure::Word },

@@ -8,8 +8,15 @@ use crate::program::desk::sentences::FORMS;
 use crate::program::desk::state::Desk;
 
 /// The view.
-pub static VIEW: View =
-    View { digit: '0', name: "keys", table: Some(table), first: &[], nodes: false };
+pub static VIEW: View = View {
+    digit: '0',
+    name: "keys",
+    table: Some(table),
+    first: &[],
+    nodes: false,
+    beside: None,
+    note: None,
+};
 
 const COLUMNS: [Column; 2] = [
     Column { key: "key", heading: "key or sentence", measure: Measure::Word },

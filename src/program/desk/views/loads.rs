@@ -25,6 +25,8 @@ pub static VIEW: View = View {
         "stretch_m",
     ],
     nodes: true,
+    beside: None,
+    note: Some(caution),
 };
 
 const fn column(key: &'static str, heading: &'static str, measure: Measure) -> Column {
@@ -107,11 +109,12 @@ fn push_span(
     cells.push(Cell::finite(loads.span_stretch_m(now, gap), OVERFLOW));
 }
 
-/// One line of caution under everything that shows forces, as long as there is room for.
-pub fn caution(width: u16) -> &'static str {
-    if width >= 80 {
+/// The caution under everything that shows forces, as short as the room asks for.
+fn caution(desk: &Desk) -> Option<String> {
+    let text = if desk.size.0 >= 80 {
         "Caution: for planning; dynamics left out; qualified safety staff must review."
     } else {
         "Caution: for planning; qualified staff must review."
-    }
+    };
+    Some(text.to_owned())
 }

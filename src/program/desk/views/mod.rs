@@ -2,13 +2,18 @@
 
 mod events;
 mod keys;
+mod links;
 mod loads;
 mod offsets;
 mod rates;
+mod reach;
 
 use clockspar::run::recording::Frame;
 use clockspar::table::{Cell, Column, Measure, Table};
 
+use ratatui::layout::Rect;
+
+use super::painter::Painter;
 use super::state::Desk;
 
 /// What a view shows.
@@ -23,21 +28,18 @@ pub struct View {
     pub first: &'static [&'static str],
     /// Whether the rows are the nodes, fore to aft, so that the line is drawn beside them.
     pub nodes: bool,
-}
-
-impl View {
-    /// The line of caution that stands under the table, where it shows what can hurt.
-    pub fn caution(&self, width: u16) -> Option<&'static str> {
-        (self.name == loads::VIEW.name).then(|| loads::caution(width))
-    }
+    /// What is drawn to the right of the table where there is room.
+    pub beside: Option<fn(&Desk, Rect, &mut Painter<'_>)>,
+    /// What has to stand under the table, if anything.
+    pub note: Option<fn(&Desk) -> Option<String>>,
 }
 
 /// All views, in the order in which their names are shown.
 pub static VIEWS: [&View; 10] = [
     &rates::VIEW,
     &offsets::VIEW,
-    &to_come('3', "links"),
-    &to_come('4', "reach"),
+    &links::VIEW,
+    &reach::VIEW,
     &loads::VIEW,
     &to_come('6', "steer"),
     &to_come('7', "budget"),
@@ -48,7 +50,7 @@ pub static VIEWS: [&View; 10] = [
 
 /// A view whose name and digit are settled, and which is not there yet.
 const fn to_come(digit: char, name: &'static str) -> View {
-    View { digit, name, table: None, first: &[], nodes: false }
+    View { digit, name, table: None, first: &[], nodes: false, beside: None, note: None }
 }
 
 /// A table of nodes with rates and clock offsets as they are to be shown: those recorded

@@ -20,6 +20,8 @@ pub static VIEW: View = View {
         FROM_STRETCH,
     ],
     nodes: true,
+    beside: None,
+    note: None,
 };
 
 fn table(desk: &Desk) -> Option<Table<'_>> {

@@ -24,6 +24,8 @@ pub static VIEW: View = View {
         "predicted_reading_s",
     ],
     nodes: true,
+    beside: None,
+    note: None,
 };
 
 fn table(desk: &Desk) -> Option<Table<'_>> {

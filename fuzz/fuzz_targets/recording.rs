@@ -1,0 +1,7 @@
+#![no_main]
+//! Any bytes to the reader of a recording.
+
+#[path = "../readers.rs"]
+mod readers;
+
+libfuzzer_sys::fuzz_target!(|bytes: &[u8]| readers::recording(bytes));
