@@ -8,8 +8,8 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::run::{Event, EventKind, Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
-    Check, JudgedOver, LoadsOverPlan, Reach, check_report, links_report, loads_report,
-    offsets_report, rates_report, reach_report,
+    Check, JudgedOver, LoadsOverPlan, Reach, check_report, has_short_summary, links_report,
+    loads_report, offsets_report, rates_report, reach_report,
 };
 
 use super::choice::LineShown;
@@ -47,13 +47,14 @@ pub fn loads(arguments: &TableArguments) -> Result<u8, Problem> {
     Ok(status_of(over_plan.fails()))
 }
 
-/// `clockspar links`. The summary spans the plan, so a table over time has it only when it
-/// is asked for by name.
+/// `clockspar links`. The summary spans the plan and looks through all of it for every row,
+/// so a table over time and a long line have it only when it is asked for by name.
 pub fn links(arguments: &TableArguments) -> Result<u8, Problem> {
     let is_named = arguments.output.table.as_deref() == Some("summary");
-    let with_summary = is_named || arguments.moments.every.is_none();
+    let is_one = arguments.moments.every.is_none();
     table_of_run(&arguments.layout, &arguments.moments, &arguments.output, move |state| {
-        links_report(state, with_summary)
+        let is_short = is_one && has_short_summary(state.run().layout());
+        links_report(state, is_named || is_short)
     })
 }
 

@@ -5,15 +5,20 @@
 //! own, counted on the clock of the receiver.
 
 use std::borrow::Cow;
-use std::sync::Arc;
+use std::sync::{Arc, OnceLock};
 
-use super::{column, double as number, head};
+use super::{column, double as number, head, on_all_cores};
 use crate::layout::{Layout, Link};
-use crate::model::links::Extreme;
+use crate::model::links::{Extreme, Extremes};
 use crate::run::{Light, NoSignal, Signal, State};
 use crate::table::{Cell, Column, Measure, Report, Table};
 
 const NO_CARRIER: &str = "the layout states no carrier for this link";
+
+/// Rows of a summary that nobody minds waiting for.
+const SHORT_SUMMARY: usize = 200;
+/// Rows of a summary that are found together on all cores, and kept for the next pass.
+const MOST_KEPT: usize = 10_000;
 
 const LINKS: [Column; 13] = [
     column("from", "from", Measure::Word),
@@ -73,12 +78,22 @@ pub fn links_report(state: State<'_>, with_summary: bool) -> Report<'_> {
     report.tables.push(links_table(&state, &ways, &light));
     if with_summary {
         report.tables.push(summary_table(layout, &ways, &light));
+    } else {
+        let left_out = "the table `summary`, the extremes over the plan, has to be asked for here";
+        report.remarks.push(left_out.to_owned());
     }
     report.tables.push(delay_table(&state, &ways, &light));
     report.remarks.push(
         "flights are of light on the axis and in vacuum; an answer leaves at once".to_owned(),
     );
     report
+}
+
+/// Whether the summary of a line takes no longer than a reader waits: every row looks through
+/// the whole plan.
+#[must_use]
+pub fn has_short_summary(layout: &Layout) -> bool {
+    Ways::of(layout).rows() <= SHORT_SUMMARY
 }
 
 /// The two rows that a row of the table `links` goes between.
@@ -221,6 +236,8 @@ fn summary_table<'a>(
     light: &Arc<Light<'a>>,
 ) -> Table<'a> {
     let (ways, light) = (Arc::clone(ways), Arc::clone(light));
+    let kept: OnceLock<Vec<Result<Extremes, NoSignal>>> = OnceLock::new();
+    let rows = ways.rows();
     Table {
         name: "summary",
         columns: SUMMARY.to_vec(),
@@ -230,7 +247,13 @@ fn summary_table<'a>(
             let way = ways.way(row);
             way.names(layout, cells);
             let carrier = way.link.and_then(|link| link.carrier_hz);
-            let extremes = match light.extremes(way.rows()) {
+            let find = |row: usize| light.extremes(ways.way(row).rows());
+            let found = if rows <= MOST_KEPT {
+                kept.get_or_init(|| on_all_cores(rows, 2, find))[row]
+            } else {
+                find(row)
+            };
+            let extremes = match found {
                 Ok(extremes) => extremes,
                 Err(why) => {
                     cells.extend((2..SUMMARY.len()).map(|_| absent(why)));

@@ -10,6 +10,9 @@ mod reach;
 mod recording;
 mod released;
 
+use std::num::NonZero;
+use std::thread;
+
 use crate::layout::{Course, Layout};
 use crate::model::dd::Dd;
 use crate::model::rates::{Instant, KnownClock};
@@ -21,7 +24,7 @@ pub use check::{
     Check, JudgedOver, Judgement, Rule, RuleState, Subject, Summary, check_report, judge,
 };
 pub use compare::{Difference, compare_report, differences};
-pub use links::{link_way, links_report};
+pub use links::{has_short_summary, link_way, links_report};
 pub use loads::{
     CAUTION, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad, judge_loads,
     loads_report, sentence as load_sentence,
@@ -75,6 +78,35 @@ fn standing_warning(state: &State<'_>) -> Option<String> {
 /// A number, or its absence when it overflows.
 fn number(value: Dd) -> Cell<'static> {
     Cell::finite(value.to_f64(), OVERFLOW)
+}
+
+/// Something about each of a number of things, found on all cores where they are many.
+fn on_all_cores<T: Send>(count: usize, worth: usize, find: impl Fn(usize) -> T + Sync) -> Vec<T> {
+    let threads =
+        if count < worth { 1 } else { thread::available_parallelism().map_or(1, NonZero::get) };
+    if threads == 1 {
+        return (0..count).map(find).collect();
+    }
+    let share = count.div_ceil(threads);
+    let find = &find;
+    thread::scope(|scope| {
+        let workers: Vec<_> = (0..count)
+            .step_by(share)
+            .map(|start| {
+                let end = count.min(start + share);
+                scope.spawn(move || (start..end).map(find).collect::<Vec<T>>())
+            })
+            .collect();
+        let mut found = Vec::with_capacity(count);
+        for worker in workers {
+            match worker.join() {
+                Ok(part) => found.extend(part),
+                // What went wrong there goes wrong here.
+                Err(panic) => std::panic::resume_unwind(panic),
+            }
+        }
+        found
+    })
 }
 
 /// The same for a double.

@@ -1,15 +1,13 @@
 //! A node that is let go: what it passes, how it is heard, and how long.
 
 use std::borrow::Cow;
-use std::num::NonZero;
 use std::sync::Arc;
-use std::thread;
 
-use super::{column, double as number};
+use super::{column, double as number, on_all_cores};
 use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
 use crate::model::reach::{Pass, Passes, Released};
-use crate::run::{Light, State};
+use crate::run::{Light, NoSignal, NodeEnd, State};
 use crate::table::{Cell, Column, Measure, Report, Scalar, Table};
 
 /// What stands beside every closing speed.
@@ -115,27 +113,24 @@ pub(super) fn push_released<'a>(
 struct LetGo<'a> {
     light: Arc<Light<'a>>,
     row: usize,
-    position_m: f64,
+    end: Result<NodeEnd<'a>, NoSignal>,
     since: ArrayTime,
 }
 
 impl<'a> LetGo<'a> {
     fn of(state: &State<'a>, light: &Arc<Light<'a>>, row: usize) -> LetGo<'a> {
         let at = state.at();
-        let (position_m, since) = match light.released_end(row, at) {
-            Some((end, since)) => (end.position_m(since).to_f64(), since),
-            None => {
-                let end = light.end(row, at).map(|end| end.position_m(at).to_f64());
-                (end.unwrap_or(state.run().layout().nodes[row].position_m), at)
-            }
+        let (end, since) = match light.released_end(row, at) {
+            Some((end, since)) => (Ok(end), since),
+            None => (light.end(row, at), at),
         };
-        LetGo { light: Arc::clone(light), row, position_m, since }
+        LetGo { light: Arc::clone(light), row, end, since }
     }
 
     fn released(&self) -> Result<Released<'_>, Cow<'static, str>> {
         let rays = self.light.rays().ok_or(GRADIENT)?;
-        let end = crate::model::links::End::fixed(self.position_m);
-        rays.release(end, self.since).map_err(|why| why.to_string().into())
+        let end = self.end.as_ref().map_err(|why| why.why())?;
+        rays.release(end.end(), self.since).map_err(|why| why.to_string().into())
     }
 }
 
@@ -212,27 +207,10 @@ fn all_passes(
             Err(_) => Passes::default(),
         }
     };
-    let threads = if nodes < NODES_WORTH_THREADS {
-        1
-    } else {
-        thread::available_parallelism().map_or(1, NonZero::get)
-    };
-    let share = nodes.div_ceil(threads).max(1);
-    let parts: Vec<Vec<(usize, Passes)>> = thread::scope(|scope| {
-        let search = |start: usize| {
-            let end = nodes.min(start + share);
-            (start..end).map(|node| (node, of(node))).collect::<Vec<_>>()
-        };
-        if threads == 1 {
-            return vec![search(0)];
-        }
-        let workers: Vec<_> =
-            (0..nodes).step_by(share).map(|start| scope.spawn(move || search(start))).collect();
-        workers.into_iter().map(|worker| worker.join().unwrap_or_default()).collect()
-    });
     let mut met = Vec::new();
     let mut is_cut = false;
-    for (node, passes) in parts.into_iter().flatten() {
+    let all = on_all_cores(nodes, NODES_WORTH_THREADS, of);
+    for (node, passes) in all.into_iter().enumerate() {
         is_cut |= passes.is_cut;
         met.extend(passes.passes.into_iter().map(|pass| (node, pass)));
     }
