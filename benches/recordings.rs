@@ -4,6 +4,8 @@
 //! The recordings are made in a temporary folder first, which takes their room and about a
 //! minute. `CLOCKSPAR_BENCH_BYTES` asks for another size. The peak of the memory the process
 //! took stands beside each step: it does not grow with the recording.
+// Times and memory of single steps are told as they come.
+#![allow(clippy::print_stderr)]
 
 use std::fs::{self, File};
 use std::io::{self, BufRead, BufReader};

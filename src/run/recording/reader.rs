@@ -22,6 +22,12 @@ const LONGEST_OPENING: u64 = 1 << 30;
 /// The longest opening line that is held in memory before its CRC has been found good.
 const HELD_UNCHECKED: u64 = 1 << 20;
 
+/// Lines that may be longer than this are not read whole on the way to a moment.
+const WHOLE_WHILE_SEEKING: usize = 1 << 20;
+
+/// The most bytes from the start of a line to the end of its moment.
+const LONGEST_HEAD: usize = 256;
+
 /// A recording opened for reading. It may still be growing: see [`Reader::refresh`].
 #[derive(Debug)]
 pub struct Reader<R> {
@@ -340,6 +346,11 @@ impl<R: ReadAt> Reader<R> {
     /// A damaged line has no moment that could be trusted: it goes with the next good line,
     /// so that whoever reads on from there meets it.
     fn first_line_where(&self, is_past: impl Fn(ArrayTime) -> bool) -> io::Result<u64> {
+        if self.longest_line() > WHOLE_WHILE_SEEKING
+            && let Some(found) = self.first_line_by_heads(&is_past)?
+        {
+            return Ok(found);
+        }
         let mut window = Window::new(&self.source);
         let (mut low, mut high) = (self.data_start, self.data_end);
         while low < high {
@@ -358,6 +369,44 @@ impl<R: ReadAt> Reader<R> {
             }
         }
         Ok(high)
+    }
+}
+
+impl<R: ReadAt> Reader<R> {
+    /// The same, reading no more than the beginning of each line on the way: for lines so
+    /// long that reading them is what takes the time. `None` when that does not tell.
+    ///
+    /// Beginnings are believed without their CRC on the way, and that is made good at the
+    /// end: among good lines moments never fall, so two good neighbours on either side of
+    /// the bound are the place whatever led to it.
+    fn first_line_by_heads(&self, is_past: &impl Fn(ArrayTime) -> bool) -> io::Result<Option<u64>> {
+        let mut window = Window::new(&self.source);
+        let (mut low, mut high) = (self.data_start, self.data_end);
+        while low < high {
+            let middle = low + (high - low) / 2;
+            let start = line_start(&self.source, low, middle)?;
+            let Ok(moment) = decode::moment(window.head(start, high, LONGEST_HEAD)?) else {
+                return Ok(None);
+            };
+            if is_past(moment) {
+                high = start;
+            } else {
+                low = feed_after(&self.source, middle, high)?.map_or(high, |feed| feed + 1);
+            }
+        }
+        let mut good_moment = |start: u64| -> io::Result<Option<ArrayTime>> {
+            let found = window.line(start, self.data_end, self.longest_line())?;
+            let body = found.held.and_then(|range| decode::body(window.held(range)).ok());
+            Ok(body.and_then(|body| decode::moment(body).ok()))
+        };
+        if high > self.data_start {
+            let before = line_start(&self.source, self.data_start, high - 1)?;
+            if good_moment(before)?.is_none_or(is_past) {
+                return Ok(None);
+            }
+        }
+        let is_bound = high >= self.data_end || good_moment(high)?.is_some_and(is_past);
+        Ok(is_bound.then_some(high))
     }
 }
 

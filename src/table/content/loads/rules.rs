@@ -390,13 +390,20 @@ fn amount(acceleration_m_s2: f64) -> String {
 /// Six digits that are enough: a figure offered as a remedy is itself accepted.
 fn at_least(value: f64) -> f64 {
     let near = six(value);
-    if near >= value { near } else { six(value * (1.0 + 1e-5)) }
+    if near >= value { near } else { six(near + sixth_digit(value)) }
 }
 
 /// Six digits that are not too much.
 fn at_most(value: f64) -> f64 {
     let near = six(value);
-    if near <= value { near } else { six(value * (1.0 - 1e-5)) }
+    if near <= value { near } else { six(near - sixth_digit(value)) }
+}
+
+/// One in the sixth digit of a value.
+fn sixth_digit(value: f64) -> f64 {
+    let written = format!("{value:e}");
+    let power = written.split_once('e').and_then(|(_, power)| power.parse::<i32>().ok());
+    format!("1e{}", power.unwrap_or(0) - 5).parse().unwrap_or(0.0)
 }
 
 fn six(value: f64) -> f64 {
