@@ -98,6 +98,8 @@ pub(crate) struct Course {
     pub swing: Dd,
     /// Flight on the clocks of the emitter and of the receiver, s.
     pub on_clocks: [Dd; 2],
+    /// One thrust is held all the way, between ends that stand still.
+    pub is_one_hold: bool,
 }
 
 /// Why a link has no flight.
@@ -206,7 +208,9 @@ impl Rays {
         if is_beyond(sides[1].rate) {
             return Err(NoFlight::Horizon);
         }
-        let is_one_hold = !is_moving
+        // Ends that could move but do not, as on a stretched tether while the thrust is held.
+        let is_still = sides.iter().all(|side| side.tilt == 0.0 && side.tilt_speed == 0.0);
+        let is_one_hold = is_still
             && landing.place.piece == place.piece
             && self.pieces()[place.piece].slope.is_zero();
         let shift = shift::shift(landing.change, &sides[0], &sides[1]);
@@ -230,6 +234,7 @@ impl Rays {
                 elapsed: landing.elapsed,
                 swing,
                 on_clocks,
+                is_one_hold,
             },
         })
     }
@@ -301,6 +306,7 @@ fn at_one_place(emitted: ArrayTime, place: Place) -> Flight {
             elapsed: Dd::ZERO,
             swing: Dd::ZERO,
             on_clocks: [Dd::ZERO; 2],
+            is_one_hold: false,
         },
     }
 }

@@ -58,6 +58,10 @@ impl Rays {
         let turn = out.course.arrival;
         let piece = |place: Place| &self.pieces()[place.piece];
         let is_one_line = piece(out.course.departure).line == piece(back.course.arrival).line;
+        // Nothing changes during the trip, and both ways take the same time.
+        if is_one_line && out.course.is_one_hold && back.course.is_one_hold {
+            return 0.0;
+        }
         let is_moving = from.moved.is_some();
         let [before, after] = [out.course.on_clocks[0], back.course.on_clocks[1]];
         let position = from.light_time(&from.moved_at(received));
