@@ -14,7 +14,7 @@ use clockspar::run::recording::{
 use clockspar::table::content::verify_report;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 
-use super::choice::{LineShown, Nodes};
+use super::choice::{DATE_NOTE, LineShown, Nodes};
 use super::show::{Asked, show};
 use super::{run_of, warn_of_broken_rules};
 use crate::program::arguments::{
@@ -64,6 +64,14 @@ pub fn record(arguments: &RecordArguments) -> Result<u8, Problem> {
         die_by(i32::try_from(interrupted.load(Ordering::Relaxed)).unwrap_or(SIGTERM));
     }
     message(&format!("{shown}: {frames} frames, {events} events"));
+    let dates = MomentArguments {
+        from: arguments.from.clone(),
+        until: Some(arguments.until.clone()),
+        ..MomentArguments::default()
+    };
+    if Moments::date_given(&dates).is_some() {
+        message(&format!("{shown}: {DATE_NOTE}"));
+    }
     Ok(0)
 }
 
