@@ -30,6 +30,7 @@
 #![forbid(unsafe_code)]
 #![warn(missing_docs)]
 
+mod cores;
 pub mod layout;
 pub mod model;
 pub mod run;

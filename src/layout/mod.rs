@@ -9,6 +9,8 @@ pub mod quantity;
 mod read;
 mod written;
 
+use compact_str::CompactString;
+
 use crate::model::array_time::ArrayTime;
 use crate::model::plan::Plan;
 
@@ -60,6 +62,14 @@ pub struct Layout {
     pub source: Source,
 }
 
+impl Layout {
+    /// The kind of clock a node of this layout has.
+    #[must_use]
+    pub fn clock_of(&self, node: &Node) -> Option<&Clock> {
+        self.clocks.get(node.clock? as usize)
+    }
+}
+
 /// The date of array time zero, as written; the scale is always stated.
 #[derive(Clone, Debug, PartialEq, Eq)]
 pub struct Epoch {
@@ -92,18 +102,21 @@ pub enum Positions {
 }
 
 /// One node of the line.
-#[derive(Clone, Debug)]
+///
+/// A line may have a million of them, so each is kept small and in one piece: what a node
+/// costs is mostly the memory it is written to.
+#[derive(Clone, Debug, Default)]
 pub struct Node {
     /// Unique name.
-    pub name: String,
+    pub name: CompactString,
     /// Proper distance from the reference node, m, + towards the fore end.
     pub position_m: f64,
     /// Standard uncertainty of the position and its distribution.
     pub u_position_m: Uncertainty,
     /// Mass without propellant, kg.
     pub mass_kg: f64,
-    /// Index of its clock in [`Layout::clocks`].
-    pub clock: Option<usize>,
+    /// Number of its kind of clock in [`Layout::clocks`]; see [`Layout::clock_of`].
+    pub clock: Option<u32>,
     /// Acceleration it is built for, m/s².
     pub rating_m_s2: Option<f64>,
     /// Known fractional frequency bias of its clock.
@@ -115,14 +128,20 @@ pub struct Node {
 }
 
 /// A standard uncertainty, its degrees of freedom and its distribution.
-#[derive(Clone, Copy, Debug, Default, PartialEq)]
+#[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Uncertainty {
     /// Standard uncertainty, in the unit of the quantity; 0 when nothing was said.
     pub u: f64,
-    /// Degrees of freedom; `None` is infinitely many.
-    pub dof: Option<f64>,
+    /// Degrees of freedom; infinite when nothing was said.
+    pub dof: f64,
     /// Shape of the distribution.
     pub shape: Shape,
+}
+
+impl Default for Uncertainty {
+    fn default() -> Uncertainty {
+        Uncertainty { u: 0.0, dof: f64::INFINITY, shape: Shape::Normal }
+    }
 }
 
 /// Shape of a distribution.

@@ -17,6 +17,7 @@ use super::fault::{Collector, Faults, Spot};
 use super::quantity::short;
 use super::written::{self, Field, Written};
 use super::{Layout, Positions};
+use survey::{Reading, Table};
 
 /// Most nodes a line may have.
 pub const MOST_NODES: usize = 1_000_000;
@@ -99,7 +100,27 @@ pub fn read(
     let survey = survey_name.and_then(|name| open(name, files, &mut named, &mut faults));
     let history = history_name.and_then(|name| open(name, files, &mut named, &mut faults));
 
-    let layout = check(&mut written, survey, history, &named, &mut faults);
+    let reading = survey_reading(survey, &named, &faults);
+    // What a fast reading of the survey finds wrong is looked for again with its places.
+    let again = (reading == Reading::OnAllCores).then(|| written.clone());
+    let mut judge =
+        || check(&mut written, survey.map(|file| (file, reading)), history, &named, &mut faults);
+    let digest = || named.iter().map(|file| sha256(&file.text)).collect::<Vec<String>>();
+    let (mut layout, digests) = if reading == Reading::OnAllCores {
+        rayon::join(judge, digest)
+    } else {
+        (judge(), digest())
+    };
+    if let Some(mut written) = again
+        && (layout.is_none() || !faults.is_empty())
+    {
+        faults = Collector::default();
+        let survey = survey.map(|file| (file, Reading::RowByRow));
+        layout = check(&mut written, survey, history, &named, &mut faults);
+    }
+    for (file, sha256) in named.iter_mut().zip(digests) {
+        file.sha256 = sha256;
+    }
     if let Some(mut layout) = layout
         && faults.is_empty()
     {
@@ -114,6 +135,19 @@ pub fn read(
     let mut texts = vec![(file_name, text)];
     texts.extend(named.iter().map(|file| (file.name.as_str(), file.text.as_str())));
     Err(faults.into_faults(&texts).unwrap_or_default())
+}
+
+/// How to read the survey: fast, as long as nothing is wrong.
+fn survey_reading(survey: Option<u32>, named: &[SourceFile], faults: &Collector) -> Reading {
+    match survey.and_then(|file| text_of(named, file)) {
+        Some(text) if faults.is_empty() => Reading::of(text),
+        _ => Reading::RowByRow,
+    }
+}
+
+/// The text of a file the layout names, by its number from 1.
+fn text_of(named: &[SourceFile], file: u32) -> Option<&str> {
+    named.get((file as usize).checked_sub(1)?).map(|file| file.text.as_str())
 }
 
 /// About how many pieces the parser will cut a text into.
@@ -137,8 +171,8 @@ fn open(
 ) -> Option<u32> {
     match files(name) {
         Ok(text) if text.len() <= LARGEST_TABLE_BYTES => {
-            let sha256 = sha256(&text);
-            named.push(SourceFile { name: name.clone(), text, sha256 });
+            // The digest takes its time, and is made while the text is read.
+            named.push(SourceFile { name: name.clone(), text, sha256: String::new() });
             u32::try_from(named.len()).ok()
         }
         Ok(_) => {
@@ -158,15 +192,17 @@ fn open(
 }
 
 /// Compares the parts of a layout with each other; `None` when a part is missing that
-/// the rest needs.
+/// the rest needs, or the survey has to be read in another way.
 fn check(
     written: &mut Written,
-    survey: Option<u32>,
+    survey: Option<(u32, Reading)>,
     history: Option<u32>,
     named: &[SourceFile],
     faults: &mut Collector,
 ) -> Option<Layout> {
-    let text_of = |file: Option<u32>| Some((file?, named.get(file? as usize - 1)?.text.as_str()));
+    let survey = survey
+        .and_then(|(file, reading)| Some(Table { file, text: text_of(named, file)?, reading }));
+    let history = history.and_then(|file| Some((file, text_of(named, file)?)));
     let positions = written.positions.value().copied().unwrap_or(Positions::Unloaded);
     if let (Positions::AsFlown, Some(spot)) = (positions, written.positions.spot())
         && written.design_acceleration.is_absent()
@@ -177,8 +213,8 @@ fn check(
             "add for example `design_acceleration = \"0.02 g0\"`, or write `unloaded`",
         );
     }
-    let course = course::check(written, text_of(history), faults);
-    let gathered = nodes::gather(written, text_of(survey), faults);
+    let course = course::check(written, history, faults);
+    let gathered = nodes::gather(written, survey, faults)?;
     let line = rows::Rows::arrange(gathered, written, faults)?;
     course::check_gradient(written, &line, faults);
 

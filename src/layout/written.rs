@@ -9,6 +9,8 @@ mod section;
 mod syntax;
 mod tables;
 
+use compact_str::CompactString;
+
 use super::fault::Spot;
 use super::{AccelerationUncertainty, Clock, Epoch, Note, Positions, Shape, SpanKind, Uncertainty};
 use crate::model::array_time::ArrayTime;
@@ -48,6 +50,14 @@ impl<T> Field<T> {
         }
     }
 
+    pub(crate) fn map<U>(self, change: impl FnOnce(T) -> U) -> Field<U> {
+        match self {
+            Field::Stated(value, spot) => Field::Stated(change(value), spot),
+            Field::Faulty => Field::Faulty,
+            Field::Absent => Field::Absent,
+        }
+    }
+
     pub(crate) fn spot(&self) -> Option<Spot> {
         self.stated().map(|(_, spot)| spot)
     }
@@ -58,7 +68,7 @@ impl<T> Field<T> {
 }
 
 /// A layout as written.
-#[derive(Debug, Default)]
+#[derive(Clone, Debug, Default)]
 pub(crate) struct Written {
     pub(crate) name: Field<String>,
     pub(crate) revision: Option<String>,
@@ -87,16 +97,16 @@ pub(crate) struct Written {
 }
 
 /// A `[[node]]`.
-#[derive(Debug)]
+#[derive(Clone, Debug, Default)]
 pub(crate) struct WrittenNode {
     pub(crate) spot: Spot,
-    pub(crate) name: Field<String>,
+    pub(crate) name: Field<CompactString>,
     pub(crate) position_m: Field<f64>,
     pub(crate) values: NodeValues,
 }
 
 /// A `[[series]]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenSeries {
     pub(crate) prefix: Field<String>,
     pub(crate) count: Field<usize>,
@@ -116,13 +126,13 @@ pub(crate) enum Spacing {
 }
 
 /// A `[survey]`: the name of its table.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenTable {
     pub(crate) file: Field<String>,
 }
 
 /// A `[[span]]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenSpan {
     pub(crate) along: Field<[(String, Spot); 2]>,
     /// The span, without its place.
@@ -145,7 +155,7 @@ pub(crate) struct SpanValues {
 }
 
 /// An `[[engine]]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenEngine {
     pub(crate) spot: Spot,
     pub(crate) node: Field<String>,
@@ -155,7 +165,7 @@ pub(crate) struct WrittenEngine {
 }
 
 /// A `[[phase]]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenPhase {
     pub(crate) spot: Spot,
     /// Acceleration at its start and at its end, m/s².
@@ -164,7 +174,7 @@ pub(crate) struct WrittenPhase {
 }
 
 /// An `[acceleration]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenAcceleration {
     pub(crate) spot: Spot,
     pub(crate) history: Field<String>,
@@ -172,7 +182,7 @@ pub(crate) struct WrittenAcceleration {
 }
 
 /// A `[standing]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenStanding {
     pub(crate) spot: Spot,
     pub(crate) gravity_m_s2: Field<f64>,
@@ -182,7 +192,7 @@ pub(crate) struct WrittenStanding {
 }
 
 /// A `[[link]]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenLink {
     pub(crate) between: Field<[(String, Spot); 2]>,
     pub(crate) carrier_hz: Option<f64>,
@@ -192,14 +202,14 @@ pub(crate) struct WrittenLink {
 }
 
 /// A `[[station]]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenStation {
     pub(crate) name: Field<String>,
     pub(crate) position_m: Field<f64>,
 }
 
 /// A `[[limit]]`.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub(crate) struct WrittenLimit {
     pub(crate) node: Field<String>,
     pub(crate) pair: Field<[(String, Spot); 2]>,

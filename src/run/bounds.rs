@@ -44,7 +44,7 @@ impl Run {
         };
         let offered = horizon::partners(Extreme { acceleration_m_s2, phase: 0, at }, position_m);
         Err(RunFault::Horizon(Box::new(HorizonFault {
-            name: self.layout.nodes[row].name.clone(),
+            name: self.layout.nodes[row].name.to_string(),
             position_m,
             phase,
             at,
@@ -65,7 +65,7 @@ impl Run {
         let (gravity, gradient) = (standing.gravity_m_s2, standing.gradient_per_s2);
         if (gradient * position_m).abs() > gravity.abs() {
             return Err(RunFault::GravityTurned {
-                name: self.layout.nodes[row].name.clone(),
+                name: self.layout.nodes[row].name.to_string(),
                 farthest_m: (gravity / gradient).abs().next_down(),
             });
         }

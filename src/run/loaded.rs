@@ -177,7 +177,7 @@ impl Run {
     }
 
     fn told(&self, fault: LoadsFault) -> RunFault {
-        let name = |row: usize| self.layout.nodes[row].name.clone();
+        let name = |row: usize| self.layout.nodes[row].name.to_string();
         match fault {
             LoadsFault::Horizon { row, acceleration_m_s2 } => {
                 RunFault::HorizonUnderLoad { name: name(row), acceleration_m_s2 }

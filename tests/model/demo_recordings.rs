@@ -50,7 +50,7 @@ fn the_tow_as_filed() {
 #[test]
 fn the_braking_run_with_what_was_changed_on_the_way() {
     let mut run = flown("braking-run.toml");
-    let names: Vec<String> = run.layout().nodes.iter().map(|node| node.name.clone()).collect();
+    let names: Vec<String> = run.layout().nodes.iter().map(|node| node.name.to_string()).collect();
     let (next_to_last, last) = (&names[names.len() - 2], &names[names.len() - 1]);
     for (second, kind) in [
         (600, EventKind::Note { text: "chamber two reads low, holding less".to_owned() }),

@@ -137,7 +137,7 @@ fn what_is_not_said_has_its_default() {
     assert_eq!(layout.positions, Positions::Unloaded);
     let node = &layout.nodes[0];
     assert_eq!((node.mass_kg, node.clock, node.rating_m_s2), (0.0, None, None));
-    assert_eq!((node.u_position_m.u, node.u_position_m.dof, node.bias), (0.0, None, 0.0));
+    assert_eq!((node.u_position_m.u, node.u_position_m.dof, node.bias), (0.0, f64::INFINITY, 0.0));
     let span = &layout.spans[0];
     assert_eq!((span.kind, span.fore, span.safety_factor), (SpanKind::Boom, 0, 1.0));
     assert_eq!((span.axial_stiffness_n, span.strength_n), (None, None));
@@ -234,9 +234,9 @@ text = "a note"
     );
     let mast = &layout.nodes[0];
     assert_eq!((mast.mass_kg, mast.clock, mast.rating_m_s2), (60.0, Some(0), Some(19.6133)));
-    assert_eq!((mast.u_position_m.u, mast.u_position_m.dof), (2e-3, Some(9.0)));
+    assert_eq!((mast.u_position_m.u, mast.u_position_m.dof), (2e-3, 9.0));
     assert_eq!(mast.u_position_m.shape, Shape::Rectangular);
-    assert_eq!((mast.bias, mast.u_bias.u, mast.u_bias.dof), (-3e-15, 1e-16, Some(4.5)));
+    assert_eq!((mast.bias, mast.u_bias.u, mast.u_bias.dof), (-3e-15, 1e-16, 4.5));
     assert_eq!((mast.reading_at_start_s, layout.nodes[1].mass_kg), (-1.5e-6, 1800.0));
     let clock = &layout.clocks[0];
     assert_eq!((clock.name.as_str(), clock.white_pm, clock.flicker_pm), ("a", 1e-13, 2e-13));
@@ -306,6 +306,33 @@ fn a_survey_places_listed_and_new_nodes() {
     assert_eq!(layout.nodes[2].clock, None);
     assert_eq!(layout.source.files[0].name, "as-built.csv");
     assert_eq!(layout.source.files[0].text, table);
+}
+
+/// A long survey is read in another way than a short one, until something is wrong.
+#[test]
+fn faults_of_a_long_survey_have_their_places() {
+    let text = "name = \"A\"\n[[node]]\nname = \"hub\"\n[survey]\nfile = \"x\"\n";
+    let mut table = String::from("name,position_m\n# as built\nhub,\n");
+    (0..100_000).for_each(|index| table.push_str(&format!("head-{index},{}.25\n", -index)));
+    let layout = read_with(text, &table);
+    assert_eq!((layout.nodes.len(), layout.nodes[0].name.as_str()), (100_001, "head-0"));
+    assert_eq!(layout.source.files[0].sha256, layout::sha256(&table));
+    for (row, column, rule) in [
+        ("head-7,3", 1, "names are unique; `head-7` names two nodes"),
+        ("hub,0", 1, "a survey has one row a node; `hub` has two"),
+        ("spare,2 m", 7, "the column `position_m` holds bare numbers, in metres"),
+        ("spare,", 1, "`spare` states its position"),
+        ("spare", 1, "each row has 2 fields, like the header; this has 1"),
+    ] {
+        let table = format!("{table}{row}\n");
+        let faults = layout::read("a.toml", text, &|_| Ok(table.clone())).expect_err(row);
+        let [fault] = faults.shown() else { panic!("{faults}") };
+        assert_eq!((fault.line, fault.column, fault.rule.as_str()), (100_004, column, rule));
+        assert_eq!(fault.source_line, row);
+    }
+    // What is written in another way than plainly is read all the same.
+    let quoted = read_with(text, &format!("{table}\"spare \"\"x\"\"\",2\n"));
+    assert_eq!(quoted.nodes[0].name, "spare \"x\"");
 }
 
 #[test]

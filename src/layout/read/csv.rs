@@ -14,9 +14,12 @@ use crate::layout::fault::{Collector, Spot};
 const MOST_FIELDS: usize = 256;
 
 /// A table being split.
+#[derive(Clone)]
 pub(super) struct Rows<'t> {
     text: &'t str,
+    /// Where the next row begins, and where the last one ends.
     at: usize,
+    end: usize,
     pub(super) file: u32,
     fields: Vec<Cell>,
     /// How many fields the row has, kept or not.
@@ -44,7 +47,28 @@ pub(super) struct Row<'r, 't> {
 impl<'t> Rows<'t> {
     pub(super) fn new(file: u32, text: &'t str) -> Rows<'t> {
         let at = if text.starts_with('\u{feff}') { '\u{feff}'.len_utf8() } else { 0 };
-        Rows { text, at, file, fields: Vec::new(), count: 0 }
+        Rows { text, at, end: text.len(), file, fields: Vec::new(), count: 0 }
+    }
+
+    /// The whole text.
+    pub(super) fn text(&self) -> &'t str {
+        self.text
+    }
+
+    /// Where the next row begins.
+    pub(super) fn at(&self) -> usize {
+        self.at
+    }
+
+    /// Goes to the rows of a part of the text.
+    pub(super) fn turn_to(&mut self, part: Range<usize>) {
+        self.at = part.start;
+        self.end = part.end.min(self.text.len());
+    }
+
+    /// The bytes up to where the last row ends.
+    fn bytes(&self) -> &'t [u8] {
+        &self.text.as_bytes()[..self.end]
     }
 
     /// The next row that is neither blank nor a remark; a malformed one is noted and
@@ -53,7 +77,7 @@ impl<'t> Rows<'t> {
         loop {
             // Nearly every line begins with what is neither a blank nor a remark, and is gone
             // through only once.
-            match self.text.as_bytes().get(self.at) {
+            match self.bytes().get(self.at) {
                 None => return None,
                 Some(first) if first.is_ascii_graphic() && *first != b'#' => {}
                 Some(_) => {
@@ -76,15 +100,15 @@ impl<'t> Rows<'t> {
     }
 
     fn line_end(&self, from: usize) -> usize {
-        let rest = self.text.as_bytes().get(from..).unwrap_or(&[]);
-        rest.iter().position(|byte| *byte == b'\n').map_or(self.text.len(), |at| from + at)
+        let rest = self.bytes().get(from..).unwrap_or(&[]);
+        memchr::memchr(b'\n', rest).map_or(self.end, |at| from + at)
     }
 
     /// Splits the record that begins here and moves behind it.
     fn split(&mut self) -> Result<(), (Range<usize>, &'static str, &'static str)> {
         self.fields.clear();
         self.count = 0;
-        let bytes = self.text.as_bytes();
+        let bytes = self.bytes();
         let mut at = self.at;
         loop {
             while matches!(bytes.get(at), Some(b' ' | b'\t')) {
@@ -122,7 +146,7 @@ impl<'t> Rows<'t> {
 
     /// Reads a quoted field; returns where its comma or line end stands.
     fn quoted(&mut self, open: usize) -> Result<usize, (Range<usize>, &'static str, &'static str)> {
-        let bytes = self.text.as_bytes();
+        let bytes = self.bytes();
         let start = open + 1;
         let mut at = start;
         let mut doubled = false;

@@ -2,6 +2,8 @@
 
 use std::hash::{BuildHasher, RandomState};
 
+use crate::cores;
+
 /// Bits of a key that hold the index; the others hold the beginning of the hash.
 const INDEX_BITS: u32 = 24;
 const INDEX_MASK: u64 = (1 << INDEX_BITS) - 1;
@@ -19,15 +21,14 @@ impl NameIndex {
     /// later and the first index of each.
     pub(super) fn of<'n>(
         count: usize,
-        name_of: impl Fn(u32) -> &'n str,
+        name_of: impl Fn(u32) -> &'n str + Sync,
     ) -> (NameIndex, Vec<(u32, u32)>) {
         debug_assert!(count as u64 <= INDEX_MASK);
         let hasher = RandomState::new();
-        let mut keys: Vec<u64> = (0_u32..)
-            .take(count)
-            .map(|index| (hasher.hash_one(name_of(index)) & !INDEX_MASK) | u64::from(index))
-            .collect();
-        keys.sort_unstable();
+        let mut keys = cores::map(count, cores::MANY, |index| {
+            (hasher.hash_one(name_of(index as u32)) & !INDEX_MASK) | index as u64
+        });
+        cores::sort(&mut keys);
         let mut twice = Vec::new();
         for (place, &key) in keys.iter().enumerate() {
             let same_hash =

@@ -1,6 +1,9 @@
 //! All nodes of a layout in one list: those written, those of the survey, those of series.
 
 use std::collections::HashMap;
+use std::ops::Range;
+
+use compact_str::CompactString;
 
 use super::rows::not_found;
 use super::{MOST_NODES, series, survey};
@@ -13,12 +16,20 @@ use crate::layout::written::{NodeValues, Written, WrittenNode};
 pub(super) struct Gathered {
     pub(super) nodes: Vec<Node>,
     /// Where each was written.
-    pub(super) places: Vec<Place>,
+    pub(super) places: Places,
     /// The reference when none is named.
     pub(super) default_reference: Option<usize>,
     /// Whether a faulty part may have hidden nodes, so that a name that is not found is
     /// not reported.
     pub(super) hides_nodes: bool,
+}
+
+/// What a node comes from.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Origin {
+    Node,
+    Survey,
+    Series,
 }
 
 /// Where a node was written.
@@ -32,15 +43,16 @@ pub(super) struct Place {
     pub(super) origin: Origin,
 }
 
-/// What a node comes from.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
-pub(super) enum Origin {
-    Node,
-    Survey,
-    Series,
-}
-
 impl Place {
+    pub(super) fn of(written: &WrittenNode, origin: Origin) -> Place {
+        Place {
+            spot: written.name.spot().unwrap_or(written.spot),
+            position: written.position_m.spot(),
+            has_no_position: written.position_m.is_absent(),
+            origin,
+        }
+    }
+
     pub(super) fn remedy_for_no_position(&self) -> &'static str {
         match self.origin {
             Origin::Survey => "fill in its `position_m`, metres ahead of the reference",
@@ -59,64 +71,63 @@ impl Place {
     }
 }
 
-impl Gathered {
-    /// Adds a node as written.
-    pub(super) fn add(
-        &mut self,
-        written: WrittenNode,
-        origin: Origin,
-        clocks: &Clocks<'_>,
-        faults: &mut Collector,
-    ) {
-        let clock = clocks.index(&written.values, faults);
-        let place = Place {
-            spot: written.name.spot().unwrap_or(written.spot),
-            position: written.position_m.spot(),
-            has_no_position: written.position_m.is_absent(),
-            origin,
-        };
-        let position_m = written.position_m.into_value().unwrap_or(0.0);
-        if let Some(name) = written.name.into_value() {
-            self.push(node(name, position_m, &written.values, clock), place);
-        } else {
-            self.hides_nodes = true;
+/// Where the nodes were written, by their number; many in a row may share one place.
+#[derive(Default)]
+pub(super) struct Places {
+    /// The number of the first node of each run, and its place.
+    runs: Vec<(u32, Place)>,
+    count: u32,
+}
+
+impl Places {
+    /// Adds the place of so many nodes; a line has fewer than 2³².
+    pub(super) fn push(&mut self, place: Place, count: usize) {
+        if count > 0 {
+            self.runs.push((self.count, place));
+            self.count = self.count.saturating_add(u32::try_from(count).unwrap_or(u32::MAX));
         }
     }
 
-    /// Adds the nodes of a survey behind those listed, of which there are few as a rule.
-    fn append(&mut self, mut new: Gathered) {
-        new.nodes.splice(0..0, self.nodes.drain(..));
-        new.places.splice(0..0, self.places.drain(..));
-        (self.nodes, self.places) = (new.nodes, new.places);
+    /// Adds the places of the nodes behind these.
+    fn append(&mut self, behind: Places) {
+        let moved = behind.runs.into_iter().map(|(first, place)| (self.count + first, place));
+        self.runs.extend(moved);
+        self.count += behind.count;
     }
 
-    /// A list with room for a number of nodes.
-    pub(super) fn with_room_for(count: usize) -> Gathered {
-        let (nodes, places) = (Vec::with_capacity(count), Vec::with_capacity(count));
-        Gathered { nodes, places, ..Gathered::default() }
+    /// The place of a node; `None` when there is no node of this number.
+    pub(super) fn of(&self, number: u32) -> Option<&Place> {
+        let run = self.runs.partition_point(|(first, _)| *first <= number).checked_sub(1)?;
+        (number < self.count).then(|| &self.runs[run].1)
     }
 
-    pub(super) fn push(&mut self, node: Node, place: Place) {
-        self.nodes.push(node);
-        self.places.push(place);
+    /// How many nodes there are.
+    fn count(&self) -> usize {
+        self.count as usize
+    }
+
+    /// The nodes that share a place, as ranges of their numbers.
+    pub(super) fn runs(&self) -> impl Iterator<Item = (Range<u32>, &Place)> {
+        let ends = self.runs.iter().skip(1).map(|(first, _)| *first).chain([self.count]);
+        self.runs.iter().zip(ends).map(|((first, place), end)| (*first..end, place))
     }
 }
 
 /// Looks up clocks by name.
 pub(super) struct Clocks<'w> {
     names: Vec<&'w str>,
-    by_name: HashMap<&'w str, usize>,
+    by_name: HashMap<&'w str, u32>,
     whole: bool,
 }
 
 impl<'w> Clocks<'w> {
     pub(super) fn new(written: &'w Written) -> Clocks<'w> {
         let names: Vec<&str> = written.clocks.iter().map(|clock| clock.name.as_str()).collect();
-        let by_name = names.iter().enumerate().map(|(index, name)| (*name, index)).collect();
+        let by_name = names.iter().copied().zip(0..).collect();
         Clocks { names, by_name, whole: written.clocks_are_whole && written.tables_are_known }
     }
 
-    pub(super) fn index(&self, values: &NodeValues, faults: &mut Collector) -> Option<usize> {
+    pub(super) fn index(&self, values: &NodeValues, faults: &mut Collector) -> Option<u32> {
         let (name, spot) = values.clock.stated()?;
         let index = self.by_name.get(name.as_str()).copied();
         if index.is_none() && self.whole {
@@ -126,12 +137,18 @@ impl<'w> Clocks<'w> {
     }
 }
 
+/// A node as written, with its clock found; `None` without a name.
+pub(super) fn node_as_written(written: &WrittenNode, clock: Option<u32>) -> Option<Node> {
+    let position_m = written.position_m.value().copied().unwrap_or(0.0);
+    Some(node(written.name.value()?.clone(), position_m, &written.values, clock))
+}
+
 /// A node of its parts.
 pub(super) fn node(
-    name: String,
+    name: CompactString,
     position_m: f64,
     values: &NodeValues,
-    clock: Option<usize>,
+    clock: Option<u32>,
 ) -> Node {
     Node {
         name,
@@ -147,35 +164,51 @@ pub(super) fn node(
 }
 
 /// Gathers every node.
+///
+/// `None` when the survey was read fast and has something that is better read with care.
 pub(super) fn gather(
     written: &mut Written,
-    survey: Option<(u32, &str)>,
+    survey: Option<survey::Table<'_>>,
     faults: &mut Collector,
-) -> Gathered {
+) -> Option<Gathered> {
     let mut listed = std::mem::take(&mut written.nodes);
     let listed_count = listed.len();
     let clocks = Clocks::new(written);
-    let before_survey = faults.total();
-    let new = survey.map(|(file, text)| survey::read(file, text, &mut listed, &clocks, faults));
-    let new = new.unwrap_or_default();
     let survey_is_lost = written.survey.is_some() && survey.is_none();
-    let mut gathered = Gathered {
-        hides_nodes: survey_is_lost || faults.total() > before_survey || !written.tables_are_known,
-        ..Gathered::default()
+    let mut hides_nodes = survey_is_lost || !written.tables_are_known;
+    listed.retain(|node| {
+        let is_named = node.name.value().is_some();
+        if !is_named {
+            hides_nodes = true;
+            clocks.index(&node.values, faults);
+        }
+        is_named
+    });
+    // The survey may add to what a listed node states, so the nodes listed only keep their
+    // places in front while it is read.
+    let mut gathered =
+        Gathered { nodes: vec![Node::default(); listed.len()], hides_nodes, ..Gathered::default() };
+    let before_survey = faults.total();
+    let surveyed = match survey {
+        Some(table) => survey::read(table, &mut listed, &clocks, &mut gathered.nodes, faults)?,
+        None => Places::default(),
     };
-    if let Some(spot) = too_many(written, listed_count, new.nodes.len()) {
+    gathered.hides_nodes |= faults.total() > before_survey;
+    if let Some(spot) = too_many(written, listed_count, surveyed.count()) {
         faults.fault(
             spot,
             format!("a line has at most {MOST_NODES} nodes"),
             "lower the count of a series, or divide the line",
         );
         gathered.hides_nodes = true;
-        return gathered;
+        return Some(gathered);
     }
-    for node in listed {
-        gathered.add(node, Origin::Node, &clocks, faults);
+    for (kept, node) in gathered.nodes.iter_mut().zip(listed) {
+        gathered.places.push(Place::of(&node, Origin::Node), 1);
+        let clock = clocks.index(&node.values, faults);
+        *kept = node_as_written(&node, clock).unwrap_or_default();
     }
-    gathered.append(new);
+    gathered.places.append(surveyed);
     let first_of_series = gathered.nodes.len();
     for series in &written.series {
         let clock = clocks.index(&series.values, faults);
@@ -197,7 +230,7 @@ pub(super) fn gather(
             "add a [[node]], a [[series]] or a [survey]",
         );
     }
-    gathered
+    Some(gathered)
 }
 
 /// The place to blame when the line has too many nodes.

@@ -3,6 +3,7 @@
 use super::index::NameIndex;
 use super::nodes::{Gathered, Place};
 use super::{Named, named};
+use crate::cores;
 use crate::layout::Node;
 use crate::layout::fault::{Collector, Spot};
 use crate::layout::nearest::nearest;
@@ -37,11 +38,11 @@ impl Rows {
             NameIndex::of(nodes.len(), |number| nodes[number as usize].name.as_str());
         twice.sort_unstable();
         for (later, first) in twice {
-            let place = &places[later as usize];
-            let rule =
-                format!("names are unique; `{}` names two nodes", nodes[later as usize].name);
-            let remedy = place.remedy_for_same_name(&places[first as usize]);
-            faults.fault(place.spot, rule, remedy);
+            if let (Some(place), Some(other)) = (places.of(later), places.of(first)) {
+                let rule =
+                    format!("names are unique; `{}` names two nodes", nodes[later as usize].name);
+                faults.fault(place.spot, rule, place.remedy_for_same_name(other));
+            }
         }
         let mut rows = Rows { nodes: Vec::new(), reference: 0, by_name, hides_nodes };
         let reference = match named(&written.reference) {
@@ -51,8 +52,15 @@ impl Rows {
         };
         // Only a known reference tells which node may go without a position.
         if let Some(reference) = reference {
-            for (index, (node, place)) in nodes.iter().zip(&places).enumerate() {
-                judge_position(node, place, index == reference, faults);
+            for (range, place) in places.runs() {
+                if place.has_no_position {
+                    let others = range.clone().filter(|index| *index as usize != reference);
+                    others
+                        .for_each(|index| tell_no_position(&nodes[index as usize], place, faults));
+                }
+                if range.contains(&(reference as u32)) {
+                    judge_reference(&nodes[reference], place, faults);
+                }
             }
         }
         let reference = reference?;
@@ -105,15 +113,14 @@ impl Rows {
     }
 }
 
-/// Every node but the reference states its position; the reference stands at 0.
-fn judge_position(node: &Node, place: &Place, is_reference: bool, faults: &mut Collector) {
-    if !is_reference {
-        if place.has_no_position {
-            let rule = format!("`{}` states its position", node.name);
-            faults.fault(place.spot, rule, place.remedy_for_no_position());
-        }
-        return;
-    }
+/// Every node but the reference states its position.
+fn tell_no_position(node: &Node, place: &Place, faults: &mut Collector) {
+    let rule = format!("`{}` states its position", node.name);
+    faults.fault(place.spot, rule, place.remedy_for_no_position());
+}
+
+/// The reference stands at 0.
+fn judge_reference(node: &Node, place: &Place, faults: &mut Collector) {
     if let Some(spot) = place.position
         && node.position_m != 0.0
     {
@@ -129,7 +136,8 @@ fn judge_position(node: &Node, place: &Place, is_reference: bool, faults: &mut C
 /// The rows fore to aft as indices, ties in the order given; `None` when they stand in
 /// that order already.
 fn order(nodes: &[Node]) -> Option<Vec<u32>> {
-    if nodes.windows(2).all(|pair| pair[0].position_m >= pair[1].position_m) {
+    let neighbours = nodes.len().saturating_sub(1);
+    if cores::all(neighbours, |row| nodes[row].position_m >= nodes[row + 1].position_m) {
         return None;
     }
     let mut order: Vec<u32> = (0..).take(nodes.len()).collect();

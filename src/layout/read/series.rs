@@ -1,7 +1,9 @@
 //! Many nodes by one rule.
 
+use compact_str::format_compact;
+
 use super::nodes::{Gathered, Origin, Place, node};
-use crate::layout::fault::Collector;
+use crate::layout::fault::{Collector, Spot};
 use crate::layout::names;
 use crate::layout::written::{Field, Spacing, Written, WrittenSeries};
 use crate::model::constants::C2_M2_S2;
@@ -10,7 +12,7 @@ use crate::model::dd::Dd;
 /// Adds the members of a series: prefix followed by 1, 2, …; `None` after a fault.
 pub(super) fn expand(
     series: &WrittenSeries,
-    clock: Option<usize>,
+    clock: Option<u32>,
     written: &Written,
     gathered: &mut Gathered,
     faults: &mut Collector,
@@ -29,13 +31,19 @@ pub(super) fn expand(
     };
     let spacing = series.spacing.value().copied().unwrap_or(Spacing::Even);
     let positions = positions(series, spacing, *count, [*from_m, to_m], written, faults)?;
-    for (index, position_m) in positions.into_iter().enumerate() {
-        let name = format!("{prefix}{}", index + 1);
-        let position = if index == 0 { series.from_m.spot() } else { series.to_m.spot() };
-        let place =
-            Place { spot: prefix_spot, position, has_no_position: false, origin: Origin::Series };
-        gathered.push(node(name, position_m, &series.values, clock), place);
-    }
+    let place = |position: Option<Spot>| Place {
+        spot: prefix_spot,
+        position,
+        has_no_position: false,
+        origin: Origin::Series,
+    };
+    gathered.places.push(place(series.from_m.spot()), 1);
+    gathered.places.push(place(series.to_m.spot()), count.saturating_sub(1));
+    gathered.nodes.reserve(*count);
+    gathered.nodes.extend(positions.into_iter().enumerate().map(|(index, position_m)| {
+        let name = format_compact!("{prefix}{}", index + 1);
+        node(name, position_m, &series.values, clock)
+    }));
     Some(())
 }
 

@@ -1,10 +1,15 @@
 //! Positions from a table.
 
+mod all_cores;
+
 use std::collections::HashMap;
 
+use compact_str::CompactString;
+
 use super::csv::{Row, Rows};
-use super::nodes::{Clocks, Gathered, Origin};
+use super::nodes::{Clocks, Origin, Place, Places, node_as_written};
 use super::{FARTHEST_POSITION_M, MOST_NODES};
+use crate::layout::Node;
 use crate::layout::fault::{Collector, Spot};
 use crate::layout::names;
 use crate::layout::nearest::nearest;
@@ -24,70 +29,130 @@ enum Column {
     Key(NodeKey),
 }
 
-/// Reads a survey: it adds to the nodes already listed, and returns the new ones.
+/// A survey to be read.
+#[derive(Clone, Copy)]
+pub(super) struct Table<'t> {
+    pub(super) file: u32,
+    pub(super) text: &'t str,
+    pub(super) reading: Reading,
+}
+
+/// How a survey is read.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(super) enum Reading {
+    /// On all cores, without keeping where each row stands. Whatever is not as it should be
+    /// only ends the reading, and is then found again row by row.
+    OnAllCores,
+    /// One row after the other, with the place of each.
+    RowByRow,
+}
+
+impl Reading {
+    /// What suits a text: a short one is read before the cores are awake.
+    pub(super) fn of(text: &str) -> Reading {
+        const LONG: usize = 1 << 20;
+        if text.len() < LONG { Reading::RowByRow } else { Reading::OnAllCores }
+    }
+}
+
+/// Reads a survey: it adds to what the nodes already listed state, puts the new ones behind
+/// the others, and returns their places. `None` when it has to be read row by row.
 ///
 /// A row states what it has a value for; an empty field states nothing. What a node
 /// states in the layout, the survey does not state again.
 pub(super) fn read(
-    file: u32,
-    text: &str,
-    listed: &mut [WrittenNode],
+    table: Table<'_>,
+    listed: &mut Vec<WrittenNode>,
     clocks: &Clocks<'_>,
+    nodes: &mut Vec<Node>,
     faults: &mut Collector,
-) -> Gathered {
-    let mut rows = Rows::new(file, text);
+) -> Option<Places> {
+    let mut rows = Rows::new(table.file, table.text);
     let Some(columns) = rows.next(faults).map(|header| read_header(header, faults)) else {
         faults.fault(
-            Spot::new(file, 0..0),
+            Spot::new(table.file, 0..0),
             "a survey begins with a header line",
             "begin with `name,position_m,u_position_m`",
         );
-        return Gathered::default();
+        return Some(Places::default());
     };
     let Some(columns) = columns else {
-        return Gathered::default();
+        return Some(Places::default());
     };
-    let by_name = Listed::of(listed);
-    let mut surveyed = vec![false; listed.len()];
-    let lines = text.bytes().filter(|byte| *byte == b'\n').count();
-    let mut new = Gathered::with_room_for((lines + listed.len()).min(MOST_NODES));
-    while let Some(row) = rows.next(faults) {
-        if !row.is_as_wide_as(columns.len(), faults) {
-            continue;
-        }
-        let Some(node) = read_row(row, &columns, faults) else {
-            continue;
-        };
-        let known = node.name.value().and_then(|name| by_name.find(name));
-        match known {
-            None if new.nodes.len() == MOST_NODES => {
-                faults.fault(
-                    row.whole(),
-                    format!("a line has at most {MOST_NODES} nodes"),
-                    "divide the line",
-                );
-                break;
-            }
-            None => new.add(node, Origin::Survey, clocks, faults),
-            Some(index) if surveyed[index] => faults.fault(
-                row.whole(),
-                format!("a survey has one row a node; `{}` has two", row_name(&node)),
-                "take one of the two away",
-            ),
-            Some(index) => {
-                surveyed[index] = true;
-                join(&mut listed[index], node, row, &columns, faults);
-            }
-        }
+    let survey = Survey { columns, by_name: Listed::of(listed), clocks };
+    match table.reading {
+        Reading::OnAllCores => survey.read_on_all_cores(&rows, listed, nodes),
+        Reading::RowByRow => Some(survey.read_by_row(rows, listed, nodes, faults)),
     }
-    new
+}
+
+/// What the rows of a survey are read by.
+struct Survey<'s> {
+    columns: Vec<Column>,
+    by_name: Listed,
+    clocks: &'s Clocks<'s>,
+}
+
+impl Survey<'_> {
+    fn read_by_row(
+        &self,
+        mut rows: Rows<'_>,
+        listed: &mut [WrittenNode],
+        nodes: &mut Vec<Node>,
+        faults: &mut Collector,
+    ) -> Places {
+        let mut surveyed = vec![false; listed.len()];
+        let mut places = Places::default();
+        let before = nodes.len();
+        while let Some(row) = rows.next(faults) {
+            if !row.is_as_wide_as(self.columns.len(), faults) {
+                continue;
+            }
+            let Some(node) = read_row(row, &self.columns, faults) else {
+                continue;
+            };
+            match self.listed(&node) {
+                None if nodes.len() - before == MOST_NODES => {
+                    faults.fault(
+                        row.whole(),
+                        format!("a line has at most {MOST_NODES} nodes"),
+                        "divide the line",
+                    );
+                    break;
+                }
+                None => {
+                    let place = Place::of(&node, Origin::Survey);
+                    let clock = self.clocks.index(&node.values, faults);
+                    if let Some(node) = node_as_written(&node, clock) {
+                        places.push(place, 1);
+                        nodes.push(node);
+                    }
+                }
+                Some(index) if surveyed[index] => faults.fault(
+                    row.whole(),
+                    format!("a survey has one row a node; `{}` has two", row_name(&node)),
+                    "take one of the two away",
+                ),
+                Some(index) => {
+                    surveyed[index] = true;
+                    join(&mut listed[index], node, row, &self.columns, faults);
+                }
+            }
+        }
+        places
+    }
+
+    /// The number of the listed node a row is about.
+    fn listed(&self, row: &WrittenNode) -> Option<usize> {
+        self.by_name.find(row.name.value()?)
+    }
 }
 
 /// The nodes of the layout by name. A few are compared one by one, which costs less than to
 /// hash a million names of a survey.
 enum Listed {
-    Few(Vec<(String, usize)>),
-    Many(HashMap<String, usize>),
+    Few(Vec<(CompactString, usize)>),
+    Many(HashMap<CompactString, usize>),
 }
 
 impl Listed {
@@ -114,7 +179,7 @@ impl Listed {
 }
 
 fn row_name(node: &WrittenNode) -> &str {
-    node.name.value().map_or("", String::as_str)
+    node.name.value().map_or("", CompactString::as_str)
 }
 
 fn read_header(header: Row<'_, '_>, faults: &mut Collector) -> Option<Vec<Column>> {
@@ -171,12 +236,17 @@ fn same_quantity(a: Column, b: Column) -> bool {
 }
 
 fn read_row(row: Row<'_, '_>, columns: &[Column], faults: &mut Collector) -> Option<WrittenNode> {
-    let mut node = WrittenNode {
-        spot: row.whole(),
-        name: Field::Absent,
-        position_m: Field::Absent,
-        values: NodeValues::default(),
-    };
+    let mut node = WrittenNode { spot: row.whole(), ..WrittenNode::default() };
+    read_row_into(&mut node, row, columns, faults).then_some(node)
+}
+
+/// Reads a row into what states nothing yet; whether it has a name.
+fn read_row_into(
+    node: &mut WrittenNode,
+    row: Row<'_, '_>,
+    columns: &[Column],
+    faults: &mut Collector,
+) -> bool {
     for (index, column) in columns.iter().enumerate() {
         let text = row.field(index);
         let spot = row.spot(index);
@@ -184,9 +254,9 @@ fn read_row(row: Row<'_, '_>, columns: &[Column], faults: &mut Collector) -> Opt
             Column::Name => {
                 if let Err((rule, remedy)) = names::check_name(&text) {
                     faults.fault(spot, rule, remedy);
-                    return None;
+                    return false;
                 }
-                node.name = Field::Stated(text.into_owned(), spot);
+                node.name = Field::Stated(text.into(), spot);
             }
             _ if text.is_empty() => {}
             Column::PositionM => node.position_m = metres(&text, spot, "position_m", faults),
@@ -221,7 +291,7 @@ fn read_row(row: Row<'_, '_>, columns: &[Column], faults: &mut Collector) -> Opt
             );
         }
     }
-    Some(node)
+    true
 }
 
 fn set(values: &mut NodeValues, key: NodeKey, text: &str, spot: Spot, faults: &mut Collector) {

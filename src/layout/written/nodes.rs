@@ -1,5 +1,7 @@
 //! What a node states beside its name and place, in a layout or in a survey.
 
+use compact_str::CompactString;
+
 use super::keys;
 use super::section::{Bound, Section};
 use super::{Field, SHAPES, Spacing, WrittenNode, WrittenSeries};
@@ -70,7 +72,7 @@ pub(crate) struct NodeValues {
     stated: u16,
     pub(crate) u_position_m: Uncertainty,
     pub(crate) mass_kg: f64,
-    pub(crate) clock: Field<String>,
+    pub(crate) clock: Field<CompactString>,
     pub(crate) rating_m_s2: Option<f64>,
     pub(crate) bias: f64,
     pub(crate) u_bias: Uncertainty,
@@ -125,7 +127,7 @@ impl NodeValues {
             stated,
             u_position_m: section.uncertainty(keys::U_POSITION, Dimension::Length),
             mass_kg,
-            clock: section.reference_to("clock", "\"lattice\""),
+            clock: section.reference_to("clock", "\"lattice\"").map(CompactString::from),
             rating_m_s2,
             bias,
             u_bias: section.uncertainty(keys::U_BIAS, Dimension::Number),
@@ -147,7 +149,7 @@ pub(crate) fn set_from_text(
 ) -> Result<(), QuantityFault> {
     values.stated |= key.bit();
     if key == NodeKey::Clock {
-        values.clock = Field::Stated(text.to_owned(), spot);
+        values.clock = Field::Stated(text.into(), spot);
         return Ok(());
     }
     if let NodeKey::ShapePosition | NodeKey::ShapeBias = key {
@@ -189,12 +191,12 @@ pub(crate) fn set_number(
     }
     match key {
         NodeKey::UPosition => values.u_position_m.u = number,
-        NodeKey::DofPosition => values.u_position_m.dof = Some(number),
+        NodeKey::DofPosition => values.u_position_m.dof = number,
         NodeKey::Mass => values.mass_kg = number,
         NodeKey::Rating => values.rating_m_s2 = Some(number),
         NodeKey::Bias => values.bias = number,
         NodeKey::UBias => values.u_bias.u = number,
-        NodeKey::DofBias => values.u_bias.dof = Some(number),
+        NodeKey::DofBias => values.u_bias.dof = number,
         NodeKey::ReadingAtStart => values.reading_at_start_s = number,
         NodeKey::Clock | NodeKey::ShapePosition | NodeKey::ShapeBias => {}
     }
@@ -208,7 +210,7 @@ pub(super) fn read_node(mut section: Section<'_, '_>) -> WrittenNode {
         spot: section.spot,
         position_m: section.quantity("position", Dimension::Length, POSITION),
         values: NodeValues::read(&mut section),
-        name,
+        name: name.map(CompactString::from),
     }
 }
 

@@ -369,7 +369,7 @@ impl<'a, 'i> Section<'a, 'i> {
         }
         Uncertainty {
             u: u.into_value().unwrap_or(0.0),
-            dof: dof.into_value(),
+            dof: dof.into_value().unwrap_or(f64::INFINITY),
             shape: shape.into_value().unwrap_or_default(),
         }
     }

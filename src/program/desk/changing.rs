@@ -117,7 +117,7 @@ impl Desk {
 
     fn show_reach_of(&mut self, row: Option<usize>) {
         if row == Some(self.layout().reference) {
-            let name = self.layout().nodes[self.layout().reference].name.clone();
+            let name = self.layout().nodes[self.layout().reference].name.to_string();
             self.notice = Some(RunFault::Reference { name }.into());
             return;
         }

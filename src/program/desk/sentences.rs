@@ -480,5 +480,5 @@ fn row(text: &str, layout: &Layout) -> Result<usize, Notice> {
 }
 
 fn name(text: &str, layout: &Layout) -> Result<String, Notice> {
-    row(text, layout).map(|row| layout.nodes[row].name.clone())
+    row(text, layout).map(|row| layout.nodes[row].name.to_string())
 }

@@ -174,7 +174,7 @@ impl Opening {
             seed,
             from,
             every,
-            nodes: layout.nodes.iter().map(|node| node.name.clone()).collect(),
+            nodes: layout.nodes.iter().map(|node| node.name.to_string()).collect(),
             has_readings: seed.is_some(),
         }
     }

@@ -7,7 +7,8 @@
 use std::borrow::Cow;
 use std::sync::{Arc, OnceLock};
 
-use super::{column, double as number, head, on_all_cores};
+use super::{column, double as number, head};
+use crate::cores;
 use crate::layout::{Layout, Link};
 use crate::model::links::{Extreme, Extremes};
 use crate::run::{Light, NoSignal, Signal, State};
@@ -249,7 +250,7 @@ fn summary_table<'a>(
             let carrier = way.link.and_then(|link| link.carrier_hz);
             let find = |row: usize| light.extremes(ways.way(row).rows());
             let found = if rows <= MOST_KEPT {
-                kept.get_or_init(|| on_all_cores(rows, 2, find))[row]
+                kept.get_or_init(|| cores::map(rows, 2, find))[row]
             } else {
                 find(row)
             };

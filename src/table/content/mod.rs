@@ -10,9 +10,6 @@ mod reach;
 mod recording;
 mod released;
 
-use std::num::NonZero;
-use std::thread;
-
 use crate::layout::{Course, Layout};
 use crate::model::dd::Dd;
 use crate::model::rates::{Instant, KnownClock};
@@ -80,35 +77,6 @@ fn number(value: Dd) -> Cell<'static> {
     Cell::finite(value.to_f64(), OVERFLOW)
 }
 
-/// Something about each of a number of things, found on all cores where they are many.
-fn on_all_cores<T: Send>(count: usize, worth: usize, find: impl Fn(usize) -> T + Sync) -> Vec<T> {
-    let threads =
-        if count < worth { 1 } else { thread::available_parallelism().map_or(1, NonZero::get) };
-    if threads == 1 {
-        return (0..count).map(find).collect();
-    }
-    let share = count.div_ceil(threads);
-    let find = &find;
-    thread::scope(|scope| {
-        let workers: Vec<_> = (0..count)
-            .step_by(share)
-            .map(|start| {
-                let end = count.min(start + share);
-                scope.spawn(move || (start..end).map(find).collect::<Vec<T>>())
-            })
-            .collect();
-        let mut found = Vec::with_capacity(count);
-        for worker in workers {
-            match worker.join() {
-                Ok(part) => found.extend(part),
-                // What went wrong there goes wrong here.
-                Err(panic) => std::panic::resume_unwind(panic),
-            }
-        }
-        found
-    })
-}
-
 /// The same for a double.
 fn double(value: f64) -> Cell<'static> {
     Cell::finite(value, OVERFLOW)
@@ -118,7 +86,7 @@ fn double(value: f64) -> Cell<'static> {
 /// an ideal one.
 fn predicted_reading_s(layout: &Layout, instant: &Instant, row: usize, aboard: &Aboard) -> Dd {
     let node = &layout.nodes[row];
-    let clock = node.clock.map(|clock| &layout.clocks[clock]);
+    let clock = layout.clock_of(node);
     let known = KnownClock {
         reading_at_start_s: node.reading_at_start_s,
         bias: node.bias,

@@ -3,7 +3,8 @@
 use std::borrow::Cow;
 use std::sync::Arc;
 
-use super::{column, double as number, on_all_cores};
+use super::{column, double as number};
+use crate::cores;
 use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
 use crate::model::reach::{Pass, Passes, Released};
@@ -209,7 +210,7 @@ fn all_passes(
     };
     let mut met = Vec::new();
     let mut is_cut = false;
-    let all = on_all_cores(nodes, NODES_WORTH_THREADS, of);
+    let all = cores::map(nodes, NODES_WORTH_THREADS, of);
     for (node, passes) in all.into_iter().enumerate() {
         is_cut |= passes.is_cut;
         met.extend(passes.passes.into_iter().map(|pass| (node, pass)));

@@ -112,7 +112,7 @@ impl Resolving {
         let ends = subject.ends(layout);
         let noise = |row: usize| {
             let node = &layout.nodes[row];
-            let Some(clock) = node.clock.map(|clock| &layout.clocks[clock]) else {
+            let Some(clock) = layout.clock_of(node) else {
                 return Err(Missing {
                     why: format!("`{}` has no clock", node.name),
                     remedy: format!("give `{}` a `clock`", node.name),
