@@ -266,6 +266,42 @@ fn a_full_disk_is_told() {
     assert!(stderr.contains("remedy: "), "{stderr}");
 }
 
+/// `--replace` is for results of before, not for what they come from, nor for devices.
+#[test]
+fn neither_inputs_nor_devices_are_written_over() {
+    let folder = tempfile::tempdir().expect("a folder");
+    let layout = "name = \"A\"\n[[node]]\nname = \"hub\"\n[survey]\nfile = \"s.csv\"\n\
+                  [[phase]]\nhold = \"1 m/s^2\"\nfor = \"1 h\"\n";
+    fs::write(folder.path().join("line.toml"), layout).expect("written");
+    fs::write(folder.path().join("s.csv"), "name,position_m\nmast,12\n").expect("written");
+    std::os::unix::fs::symlink("line.toml", folder.path().join("other")).expect("a link");
+    let run = |line: &str| {
+        let output = Command::new(env!("CARGO_BIN_EXE_clockspar"))
+            .args(line.split(' '))
+            .current_dir(folder.path())
+            .output()
+            .expect("the program ends");
+        (output.status.code(), text(&output.stderr))
+    };
+    let first = run("record line.toml --until 10 --every 1 --out run.jsonl");
+    assert_eq!(first.0, Some(0), "{}", first.1);
+    for (line, what) in [
+        ("rates line.toml --out line.toml --replace", "line.toml is being read"),
+        ("rates line.toml --out other --replace", "other is being read"),
+        ("rates line.toml --out s.csv --replace", "s.csv is being read"),
+        ("record line.toml --until 10 --every 1 --out s.csv --replace", "s.csv is being read"),
+        ("verify run.jsonl --out run.jsonl --replace", "run.jsonl is being read"),
+        ("rates line.toml --out /dev/null --replace", "/dev/null is no ordinary file"),
+        ("rates line.toml --out . --replace", ". is no ordinary file"),
+    ] {
+        let (status, stderr) = run(line);
+        assert_eq!(status, Some(2), "{line}: {stderr}");
+        assert!(stderr.contains(what) && stderr.contains("rule: results are"), "{line}: {stderr}");
+    }
+    assert_eq!(fs::read_to_string(folder.path().join("line.toml")).expect("a layout"), layout);
+    assert_eq!(run("verify run.jsonl").0, Some(0));
+}
+
 #[test]
 fn an_interrupted_recording_is_closed_and_the_signal_told() {
     let folder = tempfile::tempdir().expect("a folder");

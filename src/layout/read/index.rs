@@ -30,13 +30,18 @@ impl NameIndex {
         });
         cores::sort(&mut keys);
         let mut twice = Vec::new();
-        for (place, &key) in keys.iter().enumerate() {
-            let same_hash =
-                keys[..place].iter().rev().take_while(|other| hash_of(**other) == hash_of(key));
-            let name = |key: u64| name_of(index_of(key));
-            // The first of several stands farthest in front.
-            if let Some(first) = same_hash.filter(|other| name(**other) == name(key)).last() {
-                twice.push((index_of(key), index_of(*first)));
+        // The first of each name among those of one hash, which are one name as a rule.
+        let mut firsts: Vec<u32> = Vec::new();
+        for same_hash in keys.chunk_by(|a, b| hash_of(*a) == hash_of(*b)) {
+            if let [_] = same_hash {
+                continue;
+            }
+            firsts.clear();
+            for index in same_hash.iter().map(|key| index_of(*key)) {
+                match firsts.iter().find(|first| name_of(**first) == name_of(index)) {
+                    Some(first) => twice.push((index, *first)),
+                    None => firsts.push(index),
+                }
             }
         }
         (NameIndex { keys, hasher }, twice)

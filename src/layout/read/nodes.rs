@@ -200,8 +200,7 @@ pub(super) fn gather(
             format!("a line has at most {MOST_NODES} nodes"),
             "lower the count of a series, or divide the line",
         );
-        gathered.hides_nodes = true;
-        return Some(gathered);
+        return Some(Gathered { hides_nodes: true, ..Gathered::default() });
     }
     for (kept, node) in gathered.nodes.iter_mut().zip(listed) {
         gathered.places.push(Place::of(&node, Origin::Node), 1);
