@@ -17,9 +17,9 @@ pub enum Output {
 }
 
 impl Output {
-    /// Opens the place `--out` names, or standard output.
+    /// Opens the place `--out` names, or standard output, which also goes by `-`.
     pub fn open(out: Option<&Path>, replace: bool) -> Result<Output, Problem> {
-        let Some(path) = out else {
+        let Some(path) = out.filter(|path| *path != Path::new("-")) else {
             return Ok(Output::Standard(BufWriter::with_capacity(1 << 16, io::stdout().lock())));
         };
         let (file, place) =

@@ -156,6 +156,7 @@ fn bad_use_ends_with_status_two_and_says_why_on_standard_error() {
         (&["rates", "layouts/towed-array.toml", "--until", "1 h"], "--every"),
         (&["rates", "layouts/towed-array.toml", "--table", "pairs"], "remedy: "),
         (&["rates", "layouts/towed-array.toml", "--as", "xml"], "json"),
+        (&["rates", "layouts/towed-array.toml", "--at", "12", "h"], "stands in quotes"),
         (&["fly", "layouts/towed-array.toml"], "fly"),
         (&["desk", "layouts/towed-array.toml"], "remedy: "),
         (&["replay", "layouts/towed-array.toml"], "remedy: "),
@@ -181,6 +182,7 @@ fn moments_are_durations_the_end_and_dates() {
     assert_eq!(at("-5 s"), "-5");
     assert_eq!(at("1000000000.000000000000000001"), "1000000000.000000000000000001");
     assert_eq!(at("90 min"), "5400");
+    assert_eq!(at("-1 d 3 h 20 min"), "-98400");
     let text = fs::read_to_string("layouts/towed-array.toml").expect("the layout");
     let epoch = text.lines().find_map(|line| line.strip_prefix("epoch = ")).expect("an epoch");
     assert_eq!(at(epoch.split('#').next().unwrap().trim().trim_matches('"')), "0");

@@ -226,7 +226,10 @@ pub(super) fn gather(
         faults.fault(
             Spot::new(0, 0..1),
             "a line has at least one node",
-            "add a [[node]], a [[series]] or a [survey]",
+            match &written.survey {
+                Some(_) => "add rows to the survey",
+                None => "add a [[node]], a [[series]] or a [survey]",
+            },
         );
     }
     Some(gathered)

@@ -205,6 +205,7 @@ fn read_header(header: Row<'_, '_>, faults: &mut Collector) -> Option<Vec<Column
             let known = ["name", "position_m", "u_position_m", "position"];
             let words = known.into_iter().chain(NodeKey::ALL.iter().map(|(name, _)| *name));
             let remedy = match nearest(&word, words) {
+                _ if word.contains([';', '\t']) => "separate the fields by commas".to_owned(),
                 Some(meant) => format!("write `{meant}`"),
                 None => "the columns are name, position_m, u_position_m and the keys of [[node]]"
                     .to_owned(),
@@ -305,15 +306,21 @@ fn metres(text: &str, spot: Spot, column: &str, faults: &mut Collector) -> Field
     match quantity::plain(text) {
         Some(value) => near_enough(value, spot, faults),
         None => {
-            let rule = format!("the column `{column}` holds bare numbers, in metres");
-            let remedy = match quantity::parse(text, Dimension::Length) {
-                Ok(value) => format!("write `{value}`"),
-                Err(_) => "write for example `-5000.25`".to_owned(),
+            let is_number = text.parse::<f64>().is_ok();
+            let example = "write for example `-5000.25`".to_owned();
+            let (rule, remedy) = match quantity::parse(text, Dimension::Length) {
+                Ok(value) => (not_bare(column), format!("write `{value}`")),
+                Err(fault) if is_number => (fault.rule, example),
+                Err(_) => (not_bare(column), example),
             };
             faults.fault(spot, rule, remedy);
             Field::Faulty
         }
     }
+}
+
+fn not_bare(column: &str) -> String {
+    format!("the column `{column}` holds bare numbers, in metres")
 }
 
 fn near_enough(value: f64, spot: Spot, faults: &mut Collector) -> Field<f64> {
