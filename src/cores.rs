@@ -34,3 +34,25 @@ pub(crate) fn sort(numbers: &mut [u64]) {
         numbers.par_sort_unstable();
     }
 }
+
+/// What is gathered over the numbers below a count: `see` adds one, `join` what was gathered
+/// over the numbers behind. The result is that of one after the other.
+pub(crate) fn fold<T: Clone + Send + Sync>(
+    count: usize,
+    worth: usize,
+    nothing: T,
+    see: impl Fn(&mut T, usize) + Sync + Send,
+    join: impl Fn(T, T) -> T + Sync + Send,
+) -> T {
+    if count < worth {
+        let mut all = nothing;
+        (0..count).for_each(|number| see(&mut all, number));
+        return all;
+    }
+    let one_more = |mut part: T, number| {
+        see(&mut part, number);
+        part
+    };
+    let parts = (0..count).into_par_iter().fold(|| nothing.clone(), one_more);
+    parts.reduce(|| nothing.clone(), join)
+}

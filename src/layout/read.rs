@@ -185,7 +185,11 @@ fn open(
                 "a file named in a layout can be read; `{}` could not: {reason}",
                 short(name)
             );
-            faults.fault(spot, rule, "name a file of UTF-8 text that exists, relative to the layout");
+            faults.fault(
+                spot,
+                rule,
+                "name a file of UTF-8 text that exists, relative to the layout",
+            );
             None
         }
     }

@@ -251,9 +251,8 @@ fn not_written(path: &str, fault: &WriteFault) -> Notice {
 
 /// Writes a layout to a new file, whole or not at all.
 fn save(path: &str, text: &str) -> Notice {
-    let saved = Output::open(Some(Path::new(path)), false).and_then(|output| {
-        output.write(|out| std::io::Write::write_all(out, text.as_bytes()))
-    });
+    let saved = Output::open(Some(Path::new(path)), false)
+        .and_then(|output| output.write(|out| std::io::Write::write_all(out, text.as_bytes())));
     match saved {
         Ok(()) => Notice::said(format!("saved as {path}")),
         Err(problem) => {
