@@ -1,6 +1,9 @@
 //! Names of rows, found without a second copy of any of them.
 
+use std::collections::HashMap;
 use std::hash::{BuildHasher, RandomState};
+
+use compact_str::CompactString;
 
 use crate::cores;
 
@@ -64,6 +67,32 @@ impl NameIndex {
     }
 }
 
+/// Numbers of names, of which the later counts where one stands twice. A few are compared one
+/// by one, which costs less than to hash each of a million names that are looked for.
+pub(super) enum ByName {
+    Few(Vec<CompactString>),
+    Many(HashMap<CompactString, usize>),
+}
+
+impl ByName {
+    pub(super) fn of(names: impl ExactSizeIterator<Item = CompactString>) -> ByName {
+        const FEW: usize = 8;
+        if names.len() <= FEW {
+            ByName::Few(names.collect())
+        } else {
+            ByName::Many(names.zip(0..).collect())
+        }
+    }
+
+    /// The number of a name, from 0.
+    pub(super) fn find(&self, name: &str) -> Option<usize> {
+        match self {
+            ByName::Few(few) => few.iter().rposition(|known| known == name),
+            ByName::Many(many) => many.get(name).copied(),
+        }
+    }
+}
+
 fn hash_of(key: u64) -> u64 {
     key >> INDEX_BITS
 }
@@ -86,5 +115,22 @@ mod tests {
         assert_eq!(index.find("n7", name_of), Some(7));
         assert_eq!(index.find("n900", name_of), None);
         assert_eq!(NameIndex::of(0, |_| "").0.find("", |_| ""), None);
+    }
+
+    #[test]
+    fn few_names_are_found_like_many() {
+        for count in [0, 1, 8, 9, 100] {
+            let names = (0..count).map(|number| CompactString::from(format!("n{number}")));
+            let again = ByName::of(names.clone().collect::<Vec<_>>().into_iter());
+            for (number, name) in names.enumerate() {
+                assert_eq!(again.find(&name), Some(number));
+            }
+            assert_eq!(again.find("n"), None);
+        }
+        for others in [0, 20] {
+            let mut names = vec![CompactString::from("a"), "a".into()];
+            names.extend((0..others).map(|number| CompactString::from(format!("n{number}"))));
+            assert_eq!(ByName::of(names.into_iter()).find("a"), Some(1));
+        }
     }
 }

@@ -2,11 +2,10 @@
 
 mod all_cores;
 
-use std::collections::HashMap;
-
 use compact_str::CompactString;
 
 use super::csv::{Row, Rows};
+use super::index::ByName;
 use super::nodes::{Clocks, Origin, Place, Places, node_as_written};
 use super::{FARTHEST_POSITION_M, MOST_NODES};
 use crate::layout::Node;
@@ -79,7 +78,9 @@ pub(super) fn read(
     let Some(columns) = columns else {
         return Some(Places::default());
     };
-    let survey = Survey { columns, by_name: Listed::of(listed), clocks };
+    let names = listed.iter().map(|node| node.name.value().cloned().unwrap_or_default());
+    let known = ByName::of(names);
+    let survey = Survey { columns, listed: known, clocks };
     match table.reading {
         Reading::OnAllCores => survey.read_on_all_cores(&rows, listed, nodes),
         Reading::RowByRow => Some(survey.read_by_row(rows, listed, nodes, faults)),
@@ -89,7 +90,7 @@ pub(super) fn read(
 /// What the rows of a survey are read by.
 struct Survey<'s> {
     columns: Vec<Column>,
-    by_name: Listed,
+    listed: ByName,
     clocks: &'s Clocks<'s>,
 }
 
@@ -144,37 +145,7 @@ impl Survey<'_> {
 
     /// The number of the listed node a row is about.
     fn listed(&self, row: &WrittenNode) -> Option<usize> {
-        self.by_name.find(row.name.value()?)
-    }
-}
-
-/// The nodes of the layout by name. A few are compared one by one, which costs less than to
-/// hash a million names of a survey.
-enum Listed {
-    Few(Vec<(CompactString, usize)>),
-    Many(HashMap<CompactString, usize>),
-}
-
-impl Listed {
-    fn of(listed: &[WrittenNode]) -> Listed {
-        const FEW: usize = 8;
-        let named = listed
-            .iter()
-            .enumerate()
-            .filter_map(|(index, node)| Some((node.name.value()?.clone(), index)));
-        // Of a name that stands there twice the later counts either way.
-        if listed.len() <= FEW {
-            Listed::Few(named.rev().collect())
-        } else {
-            Listed::Many(named.collect())
-        }
-    }
-
-    fn find(&self, name: &str) -> Option<usize> {
-        match self {
-            Listed::Few(few) => few.iter().find(|(known, _)| known == name).map(|(_, at)| *at),
-            Listed::Many(many) => many.get(name).copied(),
-        }
+        self.listed.find(row.name.value()?)
     }
 }
 
