@@ -22,7 +22,8 @@ def survey(name):
             node = row["name"]
             if node in nodes:
                 raise ValueError(node)
-            nodes[node] = (float(row["position_m"]), float(row["u_position_m"]))
+            mass, clock = row.get("mass", "0 kg").split()[0], row.get("clock")
+            nodes[node] = (float(row["position_m"]), float(row["u_position_m"]), float(mass), clock)
     return sorted(nodes.items(), key=lambda item: -item[1][0])
 
 
