@@ -4,6 +4,9 @@
 //! A general JSON reader would round moments to doubles and build a tree of a frame of a
 //! million nodes.
 
+use std::ops::Range;
+
+use super::window::first_of;
 use crate::layout::quantity::parse_duration;
 use crate::model::array_time::ArrayTime;
 
@@ -60,6 +63,25 @@ impl<'a> Scanner<'a> {
         }
         self.at = start;
         self.fail(format!("the key `{key}` is missing"))
+    }
+
+    /// The bytes scanned.
+    pub(super) fn bytes(&self) -> &'a [u8] {
+        self.bytes
+    }
+
+    /// Where the next byte stands.
+    pub(super) fn at(&self) -> usize {
+        self.at
+    }
+
+    /// Passes over a list without lists or texts in it; returns where its entries stand.
+    pub(super) fn passes_flat_list(&mut self) -> Option<Range<usize>> {
+        let rest = self.bytes[self.at..].strip_prefix(b"[")?;
+        let start = self.at + 1;
+        let end = start + first_of(b']', rest)?;
+        self.at = end + 1;
+        Some(start..end)
     }
 
     /// The end of the line.

@@ -231,12 +231,17 @@ pub(super) fn line_number<R: ReadAt + ?Sized>(source: &R, byte: u64) -> io::Resu
 
 /// The first line feed of some bytes.
 fn feed_in(bytes: &[u8]) -> Option<usize> {
+    first_of(b'\n', bytes)
+}
+
+/// Where a byte stands first.
+pub(super) fn first_of(wanted: u8, bytes: &[u8]) -> Option<usize> {
     // `contains` looks at whole words; only the block that has it is looked at bytewise.
     const BLOCK: usize = 1024;
     let mut passed = 0;
     for block in bytes.chunks(BLOCK) {
-        if block.contains(&b'\n') {
-            return block.iter().position(|byte| *byte == b'\n').map(|index| passed + index);
+        if block.contains(&wanted) {
+            return block.iter().position(|byte| *byte == wanted).map(|index| passed + index);
         }
         passed += block.len();
     }
