@@ -41,6 +41,18 @@ pub(super) fn body(line: &[u8]) -> Result<&[u8], String> {
     }
 }
 
+/// Whether a line agrees with its CRC, told by its last bytes and by the CRC of the whole of
+/// it, those bytes included.
+pub(super) fn agrees(crc_of_line: u32, tail: &[u8; TAIL]) -> bool {
+    let digits = std::str::from_utf8(&tail[10..18]).ok();
+    let Some(crc) = digits.and_then(|digits| u32::from_str_radix(digits, 16).ok()) else {
+        return false;
+    };
+    let mut hasher = crc32fast::Hasher::new_with_initial(crc);
+    hasher.update(tail);
+    *tail == self::tail(crc) && hasher.finalize() == crc_of_line
+}
+
 /// What a line is, from its first bytes alone.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) enum Kind {

@@ -26,6 +26,7 @@ mod decode;
 mod encode;
 mod fault;
 mod lines;
+mod long;
 mod reader;
 mod record;
 mod scan;

@@ -46,7 +46,7 @@ impl<T: ReadAt + ?Sized> ReadAt for &T {
 }
 
 /// Bytes read at a time; more once a line has shown to be longer.
-const CHUNK: usize = 64 * 1024;
+pub(super) const CHUNK: usize = 64 * 1024;
 
 /// The most bytes read at a time.
 const LARGEST_CHUNK: usize = 4 * 1024 * 1024;
