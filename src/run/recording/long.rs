@@ -83,7 +83,7 @@ impl<R: ReadAt> Reader<R> {
         };
         let (mut ends, mut frame) = ([None, None], None);
         if let Some(head) = beside[wanted] {
-            let Some((found, end)) = self.frame_at(head)? else { return Ok(None) };
+            let Some((found, end)) = self.frame_at(head.byte)? else { return Ok(None) };
             if found.at == at {
                 return Ok(Some(Some(found)));
             }
@@ -210,15 +210,14 @@ impl<R: ReadAt> Reader<R> {
 
     /// The frame whose line begins at a byte, and the byte after it; `None` when the line
     /// is not good.
-    fn frame_at(&self, head: FrameHead) -> io::Result<Option<(Frame, u64)>> {
+    pub(super) fn frame_at(&self, start: u64) -> io::Result<Option<(Frame, u64)>> {
         let mut bytes = self.shelf().take(self.longest_line() + 1);
-        let length = self.read_line(head.byte, &mut bytes)?;
+        let length = self.read_line(start, &mut bytes)?;
         let kept = Arc::new(bytes);
         self.shelf().keep(&kept);
         let body = length.and_then(|length| decode::body(&kept[..length]).ok());
         let frame = body.and_then(|body| decode::frame(&kept, body.len(), self.opening()).ok());
-        let frame = frame.filter(|frame| frame.index == head.index && frame.at == head.at);
-        Ok(frame.zip(length.map(|length| head.byte + length as u64 + 1)))
+        Ok(frame.zip(length.map(|length| start + length as u64 + 1)))
     }
 
     /// Reads a line into a buffer, and some bytes beyond it; returns the length of the line,

@@ -366,7 +366,7 @@ impl<R: ReadAt> Reader<R> {
     }
 
     /// Whether reading lines whole is what takes the time.
-    fn has_long_lines(&self) -> bool {
+    pub(super) fn has_long_lines(&self) -> bool {
         self.longest_line() > WHOLE_WHILE_SEEKING
     }
 
