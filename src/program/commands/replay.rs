@@ -180,6 +180,9 @@ fn frame_with_events(
     at: ArrayTime,
 ) -> Result<(Frame, Vec<Event>), ReadFault> {
     let frame = reader.frame(Seek::AtOrBefore, at)?.ok_or_else(gone)?;
+    if reader.has_no_event() {
+        return Ok((frame, Vec::new()));
+    }
     let before = reader.frame(Seek::Before, at).ok().flatten();
     let since = before
         .map_or(ArrayTime::from_attoseconds(-ArrayTime::LIMIT.attoseconds()), |before| {

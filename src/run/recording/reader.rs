@@ -179,7 +179,8 @@ impl<R: ReadAt> Reader<R> {
     }
 
     /// Whether the closing line says that there is no event to look for.
-    fn has_no_event(&self) -> bool {
+    #[must_use]
+    pub fn has_no_event(&self) -> bool {
         matches!(&self.condition, Condition::Whole(closing) if closing.events == 0)
     }
 
