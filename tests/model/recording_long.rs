@@ -1,8 +1,11 @@
 //! Recordings whose lines may be long: frames are sought by the beginnings of lines there,
 //! and found to be the same as where every line on the way is read.
 
+use std::cell::Cell;
+use std::io;
+
 use clockspar::model::array_time::ArrayTime;
-use clockspar::run::recording::{Column, Frame, Line, ReadFault, Reader, Seek, verify};
+use clockspar::run::recording::{Column, Frame, Line, ReadAt, ReadFault, Reader, Seek, verify};
 use proptest::prelude::*;
 
 use crate::recording::{TINY, bodies, resealed, sealed, seconds};
@@ -67,9 +70,41 @@ fn long_lines_are_sought_like_short_ones() {
     let moments = moments();
     let (short, long) = (TINY.to_vec(), lengthened(TINY));
     compare(&short, &long, &moments);
-    // Without a closing line, and cut within a line.
-    for cut in [1, 200, 400, 1000] {
-        compare(&short[..short.len() - cut], &long[..long.len() - cut], &moments);
+    // Without a closing line, after an event, and cut within a line.
+    let lines = short.iter().enumerate().filter(|(_, byte)| **byte == b'\n');
+    for whole in lines.map(|(feed, _)| feed + 1).skip(1) {
+        for end in [whole, whole - 30] {
+            compare(&short[..end], &long[..end + long.len() - short.len()], &moments);
+        }
+    }
+}
+
+#[test]
+fn the_newest_frame_of_a_growing_recording_is_found() {
+    struct Growing<'a>(&'a [u8], Cell<usize>);
+    impl ReadAt for Growing<'_> {
+        fn size(&self) -> io::Result<u64> {
+            Ok(self.1.get() as u64)
+        }
+        fn read_at(&self, offset: u64, buffer: &mut [u8]) -> io::Result<usize> {
+            self.0[..self.1.get()].read_at(offset, buffer)
+        }
+    }
+    let nodes = 20_000;
+    let written: Vec<String> =
+        (1..=5).map(|frame| vec![format!("{frame}.5"); nodes].join(",")).collect();
+    let bytes = by_hand(nodes, &written);
+    let first = opening(&bytes);
+    let mut reader = Reader::open(Growing(&bytes, Cell::new(first))).unwrap();
+    assert_eq!(reader.last_frame().unwrap(), None);
+    let feeds = bytes.iter().enumerate().filter(|(_, byte)| **byte == b'\n');
+    for (index, (feed, _)) in feeds.skip(1).enumerate() {
+        for end in [feed, feed + 1] {
+            reader.source().1.set(end);
+            reader.refresh().unwrap();
+            let found = reader.last_frame().unwrap().map(|frame| frame.index);
+            assert_eq!(found, (index + end - feed).checked_sub(1).map(|index| index as u64));
+        }
     }
 }
 

@@ -5,10 +5,11 @@
 //! see that a text is a number costs a fraction of turning it into a double.
 
 use std::fmt;
+use std::io;
 use std::num::NonZero;
 use std::ops::Range;
 use std::sync::Arc;
-use std::thread;
+use std::thread::{self, ScopedJoinHandle};
 
 use super::encode::LineBuffer;
 
@@ -111,7 +112,8 @@ impl Entries {
         let mut commas: u32 = 0;
         let before = text.chunks(BLOCK).map(|block| {
             let before = commas;
-            commas += u32::from(block.iter().map(|byte| u8::from(is_comma(byte))).sum::<u8>());
+            let more: u8 = block.iter().map(|byte| u8::from(is_comma(byte))).sum();
+            commas = commas.saturating_add(u32::from(more));
             before
         });
         let commas_before = before.collect();
@@ -153,11 +155,16 @@ pub(super) fn are_plain(text: &[u8]) -> bool {
     if threads == 1 {
         return is_plain(text);
     }
+    let mut pieces = pieces(text, threads);
+    let own = pieces.next();
     thread::scope(|scope| {
-        let workers: Vec<_> =
-            pieces(text, threads).map(|piece| scope.spawn(move || is_plain(piece))).collect();
-        // A thread that did not come to an end has found nothing plain.
-        workers.into_iter().all(|worker| worker.join().unwrap_or(false))
+        let look = |piece| thread::Builder::new().spawn_scoped(scope, move || is_plain(piece));
+        let others: Vec<_> = pieces.map(look).collect();
+        // Where there is no thread to be had, nothing has been found to be plain.
+        let are_plain = |worker: io::Result<ScopedJoinHandle<'_, bool>>| {
+            worker.is_ok_and(|worker| worker.join().unwrap_or(false))
+        };
+        own.is_none_or(is_plain) && others.into_iter().all(are_plain)
     })
 }
 

@@ -50,7 +50,7 @@ impl<'r, R: ReadAt> Lines<'r, R> {
     /// What the next line says, or what is wrong with it.
     fn parse_next(&mut self) -> io::Result<Result<Line, String>> {
         // A good frame is kept where it is read, which matters where it is long.
-        if self.reader.has_long_lines()
+        if self.reader.has_long_frames()
             && let Some((frame, end)) = self.reader.frame_at(self.offset)?
         {
             self.offset = end;

@@ -7,6 +7,7 @@
 //! led to them. In every other case nothing is said, and the careful way of
 //! [`super::reader`] finds what is wrong and where.
 
+use std::fmt;
 use std::io;
 use std::sync::{Arc, Mutex, PoisonError};
 
@@ -27,7 +28,7 @@ const MOST_EVENTS: usize = 1000;
 const MOST_GUESSES: usize = 4;
 
 /// Bytes read at a time into a line that is kept.
-const PIECE: usize = 1 << 20;
+const PIECE: usize = 256 * 1024;
 
 /// A bound in time.
 #[derive(Clone, Copy, Debug)]
@@ -128,8 +129,7 @@ impl<R: ReadAt> Reader<R> {
         if let Condition::Whole(closing) = self.condition() {
             (high_byte, high_index, high) = (self.data_end(), closing.frames, None);
         } else {
-            let start = self.line_start_before(self.data_end())?;
-            let Some(last) = self.frame_head(start, self.data_end())? else { return Ok(None) };
+            let Some(last) = self.last_frame_head()? else { return Ok(None) };
             if !bound.is_past(last.at) {
                 return Ok(Some([Some(last), None]));
             }
@@ -182,7 +182,26 @@ impl<R: ReadAt> Reader<R> {
             }
             match decode::head(window.head(byte, end, LONGEST_HEAD)?) {
                 Ok((Some(index), at)) => return Ok(Some(FrameHead { byte, index, at })),
-                Ok((None, _)) => byte = window.line(byte, end, PIECE)?.end,
+                Ok((None, _)) => byte = window.line(byte, end, 0)?.end,
+                Err(_) => break,
+            }
+        }
+        Ok(None)
+    }
+
+    /// The beginning of the last frame; `None` when another line than an event comes after
+    /// it.
+    fn last_frame_head(&self) -> io::Result<Option<FrameHead>> {
+        let mut window = Window::new(self.source());
+        let mut end = self.data_end();
+        for _ in 0..MOST_EVENTS {
+            if end <= self.data_start() {
+                break;
+            }
+            let byte = self.line_start_before(end)?;
+            match decode::head(window.head(byte, end, LONGEST_HEAD)?) {
+                Ok((Some(index), at)) => return Ok(Some(FrameHead { byte, index, at })),
+                Ok((None, _)) => end = byte,
                 Err(_) => break,
             }
         }
@@ -211,7 +230,9 @@ impl<R: ReadAt> Reader<R> {
     /// The frame whose line begins at a byte, and the byte after it; `None` when the line
     /// is not good.
     pub(super) fn frame_at(&self, start: u64) -> io::Result<Option<(Frame, u64)>> {
-        let mut bytes = self.shelf().take(self.longest_line() + 1);
+        let lines = self.data_end().saturating_sub(self.data_start());
+        let longest = usize::try_from(lines).unwrap_or(usize::MAX).min(self.longest_line() + 1);
+        let mut bytes = self.shelf().take(longest);
         let length = self.read_line(start, &mut bytes)?;
         let kept = Arc::new(bytes);
         self.shelf().keep(&kept);
@@ -285,19 +306,25 @@ impl<R: ReadAt> Reader<R> {
 
 /// Buffers of lines that were read last. What nobody looks at any more is read into again:
 /// fresh memory costs more than reading the line.
-#[derive(Debug, Default)]
+#[derive(Default)]
 pub(super) struct Shelf(Mutex<Vec<Arc<Vec<u8>>>>);
 
 /// One for the frame that is shown and one for the next.
 const SHELVED: usize = 2;
 
+impl fmt::Debug for Shelf {
+    fn fmt(&self, formatter: &mut fmt::Formatter<'_>) -> fmt::Result {
+        formatter.debug_struct("Shelf").finish_non_exhaustive()
+    }
+}
+
 impl Shelf {
-    /// A buffer of some length that nobody else has.
+    /// A buffer of some length at least that nobody else has.
     fn take(&self, length: usize) -> Vec<u8> {
         let mut shelved = self.0.lock().unwrap_or_else(PoisonError::into_inner);
         let free = shelved.iter().position(|bytes| Arc::strong_count(bytes) == 1);
         let bytes = free.and_then(|index| Arc::into_inner(shelved.swap_remove(index)));
-        bytes.filter(|bytes| bytes.len() == length).unwrap_or_else(|| vec![0; length])
+        bytes.filter(|bytes| bytes.len() >= length).unwrap_or_else(|| vec![0; length])
     }
 
     fn keep(&self, bytes: &Arc<Vec<u8>>) {

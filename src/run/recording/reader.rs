@@ -260,12 +260,15 @@ impl<R: ReadAt> Reader<R> {
     /// The longest line after the opening that can be one: a frame of doubles of 24
     /// characters, or a note.
     pub(super) fn longest_line(&self) -> usize {
-        let columns = if self.opening.has_readings { 3 } else { 2 };
-        let frame = 1024 + 32 * columns * self.opening.nodes.len();
         // The six bytes of an escape for every byte of text; a note of the layout is in
         // the opening, escaped at least as long.
         let note = 1024 + 6 * LONGEST_NOTE.max(self.opening.layout_text.len());
-        frame.max(note)
+        self.longest_frame().max(note)
+    }
+
+    fn longest_frame(&self) -> usize {
+        let columns = if self.opening.has_readings { 3 } else { 2 };
+        1024 + 32 * columns * self.opening.nodes.len()
     }
 
     /// Where whole lines end, and whether a closing line follows there.
@@ -366,9 +369,14 @@ impl<R: ReadAt> Reader<R> {
         &self.shelf
     }
 
-    /// Whether reading lines whole is what takes the time.
-    pub(super) fn has_long_lines(&self) -> bool {
+    /// Whether reading lines whole may be what takes the time.
+    fn has_long_lines(&self) -> bool {
         self.longest_line() > WHOLE_WHILE_SEEKING
+    }
+
+    /// Whether it is frames that are so long.
+    pub(super) fn has_long_frames(&self) -> bool {
+        self.longest_frame() > WHOLE_WHILE_SEEKING
     }
 
     /// The first byte of the first line whose moment is past some bound, by bisection; the
