@@ -20,8 +20,8 @@
 //!
 //! # What the library does not do
 //!
-//! It opens no file, reads no clock and prints nothing; long tables are formatted on
-//! threads that end with the call. Text and
+//! It opens no file, reads no clock and prints nothing; long tables are formatted, and
+//! long lines of recordings checked, on threads that end with the call. Text and
 //! moments come in as arguments, and results go out as data. The program around it
 //! (`src/main.rs`, `src/program`) does the rest and sits behind the feature
 //! `program`.

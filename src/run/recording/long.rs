@@ -9,6 +9,7 @@
 
 use std::fmt;
 use std::io;
+use std::ops::RangeInclusive;
 use std::sync::{Arc, Mutex, PoisonError};
 
 use crate::model::array_time::ArrayTime;
@@ -64,6 +65,41 @@ struct FrameHead {
 
 /// The last frame before a bound and the first one after it.
 type Beside = [Option<FrameHead>; 2];
+
+/// A range of frames a bound lies in.
+#[derive(Debug)]
+struct Gap {
+    /// A frame that is not past the bound.
+    low: FrameHead,
+    /// A frame that is; `None` for the end of the lines.
+    high: Option<FrameHead>,
+    /// Where that frame begins.
+    high_byte: u64,
+    /// Its number, or the one the next frame would have.
+    high_index: u64,
+}
+
+impl Gap {
+    /// The numbers of the frames between; `None` when there is none.
+    fn between(&self) -> Option<RangeInclusive<u64>> {
+        let first = self.low.index.checked_add(1)?;
+        (first < self.high_index).then(|| first..=self.high_index - 1)
+    }
+
+    /// Where a frame between begins if all take the same room.
+    fn byte_of(&self, index: u64) -> u64 {
+        let share = u128::from(index - self.low.index) * u128::from(self.high_byte - self.low.byte)
+            / u128::from(self.high_index - self.low.index);
+        // No more than the difference it is a share of.
+        self.low.byte + u64::try_from(share).unwrap_or(0)
+    }
+
+    /// The frames on both sides, when they follow each other.
+    fn closed(self) -> Option<Beside> {
+        let is_next = self.low.index.checked_add(1) == Some(self.high_index);
+        is_next.then_some([Some(self.low), self.high])
+    }
+}
 
 impl<R: ReadAt> Reader<R> {
     /// The frame a moment means, or that there is none; `None` when the short cut does not
@@ -124,43 +160,44 @@ impl<R: ReadAt> Reader<R> {
         if bound.is_past(first.at) {
             return Ok(Some([None, Some(first)]));
         }
-        let mut low = first;
-        let (mut high_byte, mut high_index, mut high);
-        if let Condition::Whole(closing) = self.condition() {
-            (high_byte, high_index, high) = (self.data_end(), closing.frames, None);
-        } else {
-            let Some(last) = self.last_frame_head()? else { return Ok(None) };
-            if !bound.is_past(last.at) {
-                return Ok(Some([Some(last), None]));
+        let (high_byte, high_index, high) = match self.condition() {
+            Condition::Whole(closing) => (self.data_end(), closing.frames, None),
+            _ => {
+                let Some(last) = self.last_frame_head()? else { return Ok(None) };
+                if !bound.is_past(last.at) {
+                    return Ok(Some([Some(last), None]));
+                }
+                (last.byte, last.index, Some(last))
             }
-            (high_byte, high_index, high) = (last.byte, last.index, Some(last));
-        }
+        };
+        let by_step = self.index_by_step(first, bound);
+        let mut gap = Gap { low: first, high, high_byte, high_index };
         let mut guesses = 0;
-        while high_index > low.index.saturating_add(1) {
-            let between = low.index + 1..=high_index - 1;
-            let wanted = self.index_by_step(first, bound).filter(|_| guesses < MOST_GUESSES);
-            let wanted = wanted.map_or(low.index + (high_index - low.index) / 2, |index| {
-                index.clamp(*between.start(), *between.end())
-            });
+        while let Some(between) = gap.between() {
+            let (start, end) = (*between.start(), *between.end());
+            let wanted = match by_step.filter(|_| guesses < MOST_GUESSES) {
+                Some(index) => index.clamp(start, end),
+                None => start + (end - start) / 2,
+            };
             guesses += 1;
-            let share = u128::from(wanted - low.index) * u128::from(high_byte - low.byte)
-                / u128::from(high_index - low.index);
-            // No more than the difference it is a share of.
-            let guess = low.byte + u64::try_from(share).unwrap_or(0);
-            let Some(start) = self.line_near(guess, low.byte, high_byte)? else {
+            let line = self.line_near(gap.byte_of(wanted), gap.low.byte, gap.high_byte)?;
+            let Some(line) = line else { return Ok(None) };
+            let found = self.frame_head(line, gap.high_byte)?;
+            let Some(found) = found.filter(|found| between.contains(&found.index)) else {
                 return Ok(None);
             };
-            let Some(found) = self.frame_head(start, high_byte)? else { return Ok(None) };
-            if !between.contains(&found.index) {
-                return Ok(None);
-            }
             if bound.is_past(found.at) {
-                (high_byte, high_index, high) = (found.byte, found.index, Some(found));
+                gap = Gap {
+                    high: Some(found),
+                    high_byte: found.byte,
+                    high_index: found.index,
+                    ..gap
+                };
             } else {
-                low = found;
+                gap.low = found;
             }
         }
-        Ok((high_index == low.index.saturating_add(1)).then_some([Some(low), high]))
+        Ok(gap.closed())
     }
 
     /// The number of the last frame that is not past a bound, if frames keep their step.
