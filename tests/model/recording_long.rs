@@ -200,6 +200,48 @@ fn frames_of_many_nodes_are_found_or_refused_at_their_place() {
 }
 
 #[test]
+fn a_long_line_is_read_no_more_than_once() {
+    struct Counting<'a>(&'a [u8], Cell<usize>);
+    impl ReadAt for Counting<'_> {
+        fn size(&self) -> io::Result<u64> {
+            self.0.size()
+        }
+        fn read_at(&self, offset: u64, buffer: &mut [u8]) -> io::Result<usize> {
+            let count = self.0.read_at(offset, buffer)?;
+            self.1.set(self.1.get() + count);
+            Ok(count)
+        }
+    }
+    let nodes = 60_000;
+    let column = |frame: i32| vec![format!("{frame}.23456789012345e-13"); nodes].join(",");
+    let written: Vec<String> = (1..10).map(column).collect();
+    let mut bytes = by_hand(nodes, &written);
+    bytes.extend(sealed(&format!(
+        "{{\"closing\":\"clockspar.recording/1\",\"frames\":9,\"events\":0,\"last_at_s\":8,\
+         \"sha256\":\"{:064}\"",
+        0
+    )));
+    let line = 2 * written[0].len();
+    let reader = Reader::open(Counting(&bytes, Cell::new(0))).unwrap();
+    let read = |seek, at| {
+        reader.source().1.set(0);
+        assert!(reader.frame(seek, seconds(at)).unwrap().is_some());
+        reader.source().1.get()
+    };
+    for at in ["0 s", "3 s", "7 s", "8 s"] {
+        for seek in [Seek::AtOrBefore, Seek::AtOrAfter] {
+            assert!(read(seek, at) < line + line / 2, "{seek:?} {at}");
+        }
+    }
+    // The neighbour on the other side of the moment is read, too.
+    for at in ["0.5 s", "3.5 s", "7.5 s"] {
+        for seek in SEEKS {
+            assert!(read(seek, at) < 2 * line + line / 2, "{seek:?} {at}");
+        }
+    }
+}
+
+#[test]
 fn frames_that_are_kept_stay_what_they_are() {
     let long = lengthened(TINY);
     let reader = Reader::open(&long[..]).unwrap();
