@@ -17,6 +17,7 @@ use super::fault::{Collector, Faults, Spot};
 use super::quantity::short;
 use super::written::{self, Field, Written};
 use super::{Layout, Positions};
+use crate::cores;
 use survey::{Reading, Table};
 
 /// Most nodes a line may have.
@@ -107,7 +108,7 @@ pub fn read(
         || check(&mut written, survey.map(|file| (file, reading)), history, &named, &mut faults);
     let digest = || named.iter().map(|file| sha256(&file.text)).collect::<Vec<String>>();
     let (mut layout, digests) = if reading == Reading::OnAllCores {
-        rayon::join(judge, digest)
+        cores::both(judge, digest)
     } else {
         (judge(), digest())
     };

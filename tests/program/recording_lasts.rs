@@ -204,6 +204,7 @@ fn a_table_that_finds_no_more_room_is_not_written() {
 /// A volume of 256 KiB, in a name space of its own. Where none may be mounted, this says so
 /// and leaves the matter to the two tests above.
 #[test]
+#[allow(clippy::print_stderr, reason = "what was not tested is said")]
 fn a_full_volume_takes_nothing_that_was_whole() {
     let folder = folder();
     let script = r#"

@@ -8,6 +8,7 @@ use super::csv::{Row, Rows};
 use super::index::ByName;
 use super::nodes::{Clocks, Origin, Place, Places, node_as_written};
 use super::{FARTHEST_POSITION_M, MOST_NODES};
+use crate::cores;
 use crate::layout::Node;
 use crate::layout::fault::{Collector, Spot};
 use crate::layout::names;
@@ -50,7 +51,8 @@ impl Reading {
     /// What suits a text: a short one is read before the cores are awake.
     pub(super) fn of(text: &str) -> Reading {
         const LONG: usize = 1 << 20;
-        if text.len() < LONG { Reading::RowByRow } else { Reading::OnAllCores }
+        let is_shared = text.len() >= LONG && cores::threads().is_some();
+        if is_shared { Reading::OnAllCores } else { Reading::RowByRow }
     }
 }
 

@@ -6,7 +6,7 @@ use std::io::IsTerminal;
 use clockspar::layout::Layout;
 use clockspar::model::array_time::ArrayTime;
 use clockspar::run::Event;
-use clockspar::run::recording::{Condition, Frame, Line, Opening, ReadFault, Reader, Seek};
+use clockspar::run::recording::{Column, Condition, Frame, Line, Opening, ReadFault, Reader, Seek};
 use clockspar::table::Report;
 use clockspar::table::content::replay_report;
 
@@ -180,6 +180,9 @@ fn frame_with_events(
     at: ArrayTime,
 ) -> Result<(Frame, Vec<Event>), ReadFault> {
     let frame = reader.frame(Seek::AtOrBefore, at)?.ok_or_else(gone)?;
+    if reader.has_no_event() {
+        return Ok((frame, Vec::new()));
+    }
     let before = reader.frame(Seek::Before, at).ok().flatten();
     let since = before
         .map_or(ArrayTime::from_attoseconds(-ArrayTime::LIMIT.attoseconds()), |before| {
@@ -204,9 +207,9 @@ pub fn empty_report<'a>(
         at,
         reference_acceleration_m_s2: 0.0,
         rapidity: None,
-        rate_minus_one: Vec::new(),
-        clock_offset_s: Vec::new(),
-        reading_s: opening.has_readings.then(Vec::new),
+        rate_minus_one: Column::default(),
+        clock_offset_s: Column::default(),
+        reading_s: opening.has_readings.then(Column::default),
     };
     let mut report = replay_report(opening, layout, frame, Vec::new());
     report.reference_acceleration_m_s2 = Err("the frame cannot be read");
