@@ -18,8 +18,7 @@ use crate::program::preferences;
 use crate::program::problem::Problem;
 
 /// What is said of a date after the start.
-const DATE_NOTE: &str =
-    "a date after the start is the reference clock's own count from the epoch";
+const DATE_NOTE: &str = "a date after the start is the reference clock's own count from the epoch";
 
 /// What is said of dates in UTC besides.
 const UTC_NOTE: &str =

@@ -14,7 +14,7 @@ use clockspar::run::recording::{
 use clockspar::table::content::verify_report;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 
-use super::choice::{date_note, LineShown, Nodes};
+use super::choice::{LineShown, Nodes, date_note};
 use super::show::{Asked, show};
 use super::{run_of, warn_of_broken_rules};
 use crate::program::arguments::{
