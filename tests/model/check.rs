@@ -102,10 +102,14 @@ fn the_first_moment_beyond_a_limit_is_solved_in_every_kind_of_piece() {
         // Beyond what was gained forwards: braking to −2 h and more, 7 h + what is left.
         (7200.0 + 900.0, 3, 14_400.0 + 5400.0 + 8100.0),
     ] {
-        let judgement = one(&run_with(gained_s * per_second), Rule::ClockOffset);
+        let layout = run_with(gained_s * per_second);
+        let judgement = one(&layout, Rule::ClockOffset);
         assert_eq!(judgement.state, RuleState::Broken, "{gained_s}");
-        assert_eq!(judgement.phase, Ok(phase), "{gained_s}");
-        near(judgement.at.unwrap().to_f64(), wanted_s, 4e-15);
+        // What is worst is so at the end of the plan, whatever was passed before.
+        assert_eq!((judgement.phase, judgement.at), (Ok(3), Ok(at(28_800.0))), "{gained_s}");
+        let from = judgement.broken_from.unwrap();
+        near(from.to_f64(), wanted_s, 4e-15);
+        assert_eq!(plan(&layout).phase_at(from), Some(phase), "{gained_s}");
     }
     // Passed on the far side of a turn inside a single ramp.
     let rest =
@@ -113,7 +117,7 @@ fn the_first_moment_beyond_a_limit_is_solved_in_every_kind_of_piece() {
     let layout = two(-3000.0, "", &format!("{rest}clock_offset = {:?}", 5400.0 * per_second));
     let judgement = one(&layout, Rule::ClockOffset);
     // Turn at 1 h with half an hour gained; then back by (t − 1 h)²/2 per hour.
-    near(judgement.at.unwrap().to_f64(), 3600.0 + 7200.0, 1e-14);
+    near(judgement.broken_from.unwrap().to_f64(), 3600.0 + 7200.0, 1e-14);
 }
 
 #[test]
@@ -154,7 +158,7 @@ fn a_pair_parts_by_the_difference_of_its_positions() {
     }
     assert_eq!(judged[0].subject.name(&layout), "b to a");
     // 1 ps is reached after c² · 1 ps / (1500 m · 2.5 m/s²).
-    near(judged[0].at.unwrap().to_f64(), C2_M2_S2.to_f64() * 1e-12 / 3750.0, 1e-14);
+    near(judged[0].broken_from.unwrap().to_f64(), C2_M2_S2.to_f64() * 1e-12 / 3750.0, 1e-14);
 }
 
 #[test]
@@ -214,7 +218,8 @@ fn a_standing_line_is_judged_over_a_day() {
     let judgement = one(&layout, Rule::ClockOffset);
     let rate = 9800.0 / C2_M2_S2.to_f64();
     near(judgement.value.clone().unwrap(), rate * 86_400.0, 1e-15);
-    near(judgement.at.unwrap().to_f64(), 5e-9 / rate, 1e-14);
+    near(judgement.broken_from.unwrap().to_f64(), 5e-9 / rate, 1e-14);
+    assert_eq!(judgement.at, Ok(at(86_400.0)));
     let check = Check::new(&layout, JudgedOver::Plan);
     assert!(check.remedy(&judgement).unwrap().starts_with("set the clocks again within "));
     assert!(check_report(Arc::new(check)).remarks[0].contains("1 d"));
@@ -385,7 +390,7 @@ proptest! {
                 (plan.moment(at).rapidity * position / SPEED_OF_LIGHT_M_S).abs()
             };
             let limit = Dd::new(judgement.limit.unwrap());
-            let at = judgement.at.unwrap();
+            let at = judgement.broken_from.unwrap();
             // Where the rapidity nearly stands still, rounding decides more than an attosecond.
             let slack = limit * 1e-28;
             let near = |count: i128| ArrayTime::from_attoseconds(at.attoseconds() + count);

@@ -63,10 +63,10 @@ fn a_slack_tether_says_from_when_and_what_mends_it() {
     let slack = loads.slack();
     assert_eq!(slack.len(), 2);
     assert_eq!((slack[1].phase, slack[1].at), (Some(0), ArrayTime::ZERO));
-    let Mend::MoveThrust { share, to_row } = slack[1].mends[0] else {
+    let Mend::MoveThrust { share: Some(share), to_row, of } = slack[1].mends[0] else {
         panic!("{:?}", slack[1].mends)
     };
-    assert_eq!(to_row, 1);
+    assert_eq!((to_row, of), (1, 1.0));
     near(share, 1.0 - 150.0 / 1300.0, 1e-14, 1.0, "share");
     // Moved as it says, this tether is taut.
     let mut mended = structure;
