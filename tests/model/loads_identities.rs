@@ -304,7 +304,10 @@ fn peaks_are_above_every_sample() {
             samples.push(loads.state_before_end_of(index).expect("a phase"));
         }
         // From when an engine runs dry on, the forces are not those of the line.
-        let dry = loads.running_dry().first().map_or(ArrayTime::LIMIT, |dry| dry.at);
+        let dry = loads.running_dry().first().map_or(plan.end(), |dry| dry.at);
+        if dry < plan.end() {
+            samples.push(loads.state(dry));
+        }
         for gap in 0..loads.structure().members.len() {
             let peaks = loads.force_peaks(gap).expect("a plan");
             let wet = samples.iter().filter(|state| state.instant.moment.at <= dry);

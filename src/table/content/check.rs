@@ -373,6 +373,14 @@ impl<'a> Check<'a> {
 
     fn rating(&self, row: usize) -> Judgement {
         let rating = self.layout.nodes[row].rating_m_s2.unwrap_or(f64::INFINITY);
+        if self.placed.beyond == Some(row) {
+            let why = "load brings the node to the horizon";
+            let limit = Ok(rating);
+            return Judgement {
+                limit,
+                ..Judgement::not_judged(Rule::Rating, Subject::Node(row), why)
+            };
+        }
         self.line.rating(row, self.placed.position_m(self.layout, row), rating)
     }
 

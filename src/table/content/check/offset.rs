@@ -128,6 +128,15 @@ impl<'a> Parting<'a> {
         }
     }
 
+    /// What a line that stands is judged at: its clocks part evenly.
+    fn standing(&self, layout: &Layout) -> Option<&Instant> {
+        match (self, &layout.course) {
+            (Parting::Standing(instant), _)
+            | (Parting::Moment(_, instant), Course::Standing(_)) => Some(instant),
+            _ => None,
+        }
+    }
+
     /// What would keep a limit. On a line that stretches, a distance is the one to be filed,
     /// found by trial, and a gain is one that any plan of one direction, no stronger than this
     /// one, keeps the limit with.
@@ -142,14 +151,14 @@ impl<'a> Parting<'a> {
         let allow = TIME.at_least(value, |limit| limit >= value);
         let allow = allow.map_or_else(|| "allow more".to_owned(), |allow| format!("allow {allow}"));
         let ends = judgement.subject.ends(layout);
-        if let Parting::Standing(instant) = self {
+        if let Some(instant) = self.standing(layout) {
+            let at = instant.moment.at;
             let offset_s = placed
-                .offset_s(ends, instant.moment.at)
+                .offset_s(ends, at)
                 .unwrap_or_else(|| offset_s(layout, judgement.subject, instant));
-            let often = limit_s * STANDING_FOR.to_f64() / offset_s.abs().to_f64();
-            let often = TIME.at_most(often, |time| {
-                (offset_s.abs() * time / STANDING_FOR.seconds()).to_f64() <= limit_s
-            });
+            let pace = offset_s.abs() / at.seconds().abs();
+            let often = (Dd::new(limit_s) / pace).to_f64();
+            let often = TIME.at_most(often, |time| (pace * time).to_f64() <= limit_s);
             let set = match often {
                 Some(often) => format!("set the clocks again within {often}"),
                 None => "set the clocks again more often".to_owned(),
@@ -176,7 +185,10 @@ impl<'a> Parting<'a> {
         } else {
             // A rigid line may have its two nodes anywhere so far apart.
             let near = (Dd::new(limit_s) * SPEED_OF_LIGHT_M_S / reached.abs()).to_f64();
-            let near = LENGTH.at_most(near, |apart| offset(Dd::new(apart), reached));
+            let near = LENGTH.at_most(near, |near_m| {
+                offset(Dd::new(near_m), reached)
+                    && moved_m(layout, ends, near_m).all(|apart| offset(apart, reached))
+            });
             place(layout, judgement.subject, near.as_deref())
         };
         listed(&[gain, place, allow])
@@ -212,8 +224,8 @@ impl<'a> Parting<'a> {
         if value == 0.0 {
             return format!("nothing needs to: the clocks of `{name}` do not part");
         }
-        if let Parting::Standing(_) = self {
-            let often = TIME.about(limit_s * STANDING_FOR.to_f64() / value);
+        if let Some(instant) = self.standing(layout) {
+            let often = TIME.about(limit_s * instant.moment.at.to_f64().abs() / value);
             return format!(
                 "setting the clocks of `{name}` more often: they part so far in {often}"
             );
@@ -307,8 +319,21 @@ fn standing_at(standing: &Standing, at: ArrayTime) -> Instant {
     }
 }
 
+/// How far apart two nodes stand once either has been put at a distance from the other, as far
+/// as doubles can state where that is, m.
+fn moved_m(layout: &Layout, ends: [usize; 2], distance_m: f64) -> impl Iterator<Item = Dd> {
+    let place = |row: usize| layout.nodes[row].position_m;
+    let [one, other] = ends;
+    let moved = [(one, other), (other, one)].map(|(row, stays)| {
+        let side = if place(row) < place(stays) { -1.0 } else { 1.0 };
+        let moved = place(stays) + side * distance_m;
+        (row != layout.reference).then(|| Dd::difference(moved, place(stays)))
+    });
+    moved.into_iter().flatten()
+}
+
 /// How far apart the two stand, from the first to the second, m.
-pub(super) fn apart_m(layout: &Layout, subject: Subject) -> Dd {
+fn apart_m(layout: &Layout, subject: Subject) -> Dd {
     let [from, to] = subject.ends(layout).map(|row| layout.nodes[row].position_m);
     Dd::difference(to, from)
 }

@@ -7,7 +7,6 @@
 //! away, and neither is told from the effect by it.
 
 use super::line::{Line, why};
-use super::offset::apart_m;
 use super::placed::Placed;
 use super::trial::Trial;
 use super::{JudgedOver, Judgement, KEPT, NO_PHASE, Rule, RuleState, Subject};
@@ -174,8 +173,7 @@ impl Resolving {
             };
             distance(to, from).or_else(|| distance(from, to))
         } else {
-            let found = self.distance_needed(layout, placed, judgement, &comparison);
-            found.map(|apart| (to, from, apart))
+            self.distance_needed(layout, placed, judgement, &comparison)
         };
         let name = |row: usize| match row == layout.reference {
             true => "the reference".to_owned(),
@@ -250,31 +248,35 @@ impl Resolving {
         can_be_flown.then(|| ACCELERATION.at_least(needed.abs(), is_enough)).flatten()
     }
 
-    /// How far apart the two would have to stand, the first of them where it is.
+    /// Which of the two would have to stand how far from the other, on its own side of it.
     fn distance_needed(
         &self,
         layout: &Layout,
         placed: &Placed,
         judgement: &Judgement,
         comparison: &Comparison,
-    ) -> Option<String> {
+    ) -> Option<(usize, usize, String)> {
         let limit_s = judgement.limit.ok().filter(|_| self.instant.gradient_per_s2 == 0.0)?;
-        let from = placed.position_m(layout, judgement.subject.ends(layout)[0]);
+        let [from, to] = judgement.subject.ends(layout);
+        let (moved, stays) = if to == layout.reference { (from, to) } else { (to, from) };
+        let place = |row: usize| placed.position_m(layout, row);
         let thrust = self.instant.moment.acceleration_m_s2;
-        if thrust.is_zero() {
+        if thrust.is_zero() || moved == layout.reference {
             return None;
         }
         let least = RESOLVING_FACTOR * comparison.quietest_within(limit_s).deviation;
-        let rate = C2_M2_S2 + thrust * from;
+        let rate = C2_M2_S2 + thrust * place(from);
         let needed = (rate * least / thrust.abs()).to_f64();
-        let is_enough = |apart: f64| {
-            let difference = (thrust.abs() * apart / rate).to_f64();
-            let resolved = comparison.resolve(difference, RESOLVING_FACTOR);
-            matches!(resolved, Resolved::After(time) if time <= limit_s)
+        let side = if place(moved) < place(stays) { -1.0 } else { 1.0 };
+        let is_enough = |distance_m: f64| {
+            let put = place(stays) + side * distance_m;
+            let (from, to) = if moved == to { (place(from), put) } else { (put, place(to)) };
+            let difference = thrust * Dd::difference(to, from) / (C2_M2_S2 + thrust * from);
+            let resolved = comparison.resolve(difference.to_f64(), RESOLVING_FACTOR);
+            is_realisable(thrust, put)
+                && matches!(resolved, Resolved::After(time) if time <= limit_s)
         };
-        let apart = apart_m(layout, judgement.subject);
-        let farthest = from + needed.copysign(apart.hi);
-        is_realisable(thrust, farthest).then(|| LENGTH.at_least(needed, is_enough)).flatten()
+        LENGTH.at_least(needed, is_enough).map(|distance| (moved, stays, distance))
     }
 }
 

@@ -4,6 +4,7 @@
 use std::borrow::Cow;
 use std::sync::Arc;
 
+use crate::layout::quantity::{Dimension, parse};
 use crate::layout::{Course, Layout, Positions};
 use crate::model::array_time::ArrayTime;
 use crate::model::loads::{Loads, Mend, Peak, Ringing, RunsDry, Slack, State};
@@ -12,6 +13,9 @@ use crate::table::content::thrust::{self, Bound};
 use crate::table::content::words::{ACCELERATION, FORCE, MASS, SECONDS};
 use crate::table::digits::Scale;
 use crate::table::unit::rounded;
+
+/// Nodes and phases up to which a line is built once more to try advice out.
+const MOST_TRIED: usize = 20_000;
 
 /// A rule on loads, in the order of the tables.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, Hash)]
@@ -367,7 +371,8 @@ impl JudgedLoads {
             }
             (LoadRule::Propellant, LoadSubject::Engine(engine)) => {
                 let needed = self.needs.iter().find(|dry| dry.engine == engine);
-                dry_remedy(needed, self.is_moment)
+                let enough = needed.and_then(|dry| self.enough_aboard(layout, dry, judged.at));
+                dry_remedy(needed, enough, self.is_moment)
             }
             _ => String::new(),
         }
@@ -386,6 +391,40 @@ impl JudgedLoads {
             plan.phases().get(phase).is_none_or(|phase| phase.is_hold())
         });
         thrust::rating_advice(most, build, plan.is_some(), is_hold)
+    }
+
+    /// The propellant with which an engine lasts. A line that stretches may not bear a fuller
+    /// tank, and where its lengths are found from a shape under thrust it changes them, so it
+    /// is tried out; `None` where that would take long or there is no such line.
+    fn enough_aboard(
+        &self,
+        layout: &Layout,
+        dry: &RunsDry,
+        until: Option<ArrayTime>,
+    ) -> Option<String> {
+        let Course::Thrust(plan) = &layout.course else { return None };
+        let mut needed_kg = dry.needed_kg;
+        let enough = |needed_kg: f64| MASS.at_least(needed_kg, |aboard| aboard >= needed_kg);
+        if self.loads.is_rigid() {
+            return enough(needed_kg);
+        }
+        if layout.nodes.len() + plan.phases().len() > MOST_TRIED {
+            return None;
+        }
+        for _ in 0..8 {
+            let amount = enough(needed_kg)?;
+            let aboard_kg = parse(&amount, Dimension::Mass).ok()?;
+            let mut structure = self.loads.structure().clone();
+            structure.engines.get_mut(dry.engine)?.propellant_kg = Some(aboard_kg);
+            let loads = Loads::under_thrust(structure, plan).ok()?;
+            let until = until.unwrap_or(plan.end());
+            let still = loads.propulsion().running_dry_until(plan, until);
+            let Some(still) = still.iter().find(|still| still.engine == dry.engine) else {
+                return Some(amount);
+            };
+            needed_kg = still.needed_kg.max(aboard_kg * (1.0 + 1e-5));
+        }
+        None
     }
 
     fn slack_remedy(&self, layout: &Layout, gap: usize, judged: &LoadJudgement) -> String {
@@ -545,12 +584,11 @@ fn propellant(layout: &Layout, loads: &Loads, dry: &[RunsDry]) -> Vec<LoadJudgem
         .collect()
 }
 
-fn dry_remedy(needed: Option<&RunsDry>, is_moment: bool) -> String {
+fn dry_remedy(needed: Option<&RunsDry>, enough: Option<String>, is_moment: bool) -> String {
     let less = if is_moment { "until then" } else { "for a shorter time" };
     let rest = format!("a higher exhaust speed, or less thrust {less}");
     let Some(dry) = needed else { return format!("more propellant aboard, {rest}") };
     if dry.needed_kg.is_finite() && dry.log10_needed_kg < 12.0 {
-        let enough = MASS.at_least(dry.needed_kg, |aboard| aboard >= dry.needed_kg);
         let aboard = enough.unwrap_or_else(|| "more propellant".to_owned());
         return format!("{aboard} aboard, {rest}");
     }
