@@ -79,9 +79,6 @@ impl Flight {
     /// The drive at a moment; in a phase that is named, its end meaning the limit from
     /// below, or wherever the moment falls.
     pub fn drive(&self, propulsion: &Propulsion, phase: Option<usize>, at: ArrayTime) -> Drive {
-        let mass = propulsion;
-        let spent = self.plan.velocity_spent_m_s(at);
-        let burned = if mass.is_falling() { mass.burned_fraction(spent) } else { 0.0 };
         let (acceleration_m_s2, slope_m_s3) = match phase {
             Some(index) => {
                 let phase = &self.plan.phases()[index];
@@ -89,11 +86,14 @@ impl Flight {
             }
             None => (Dd::ZERO, 0.0),
         };
-        let burning_per_s = if mass.is_falling() {
-            acceleration_m_s2.to_f64().abs() * mass.inverse_speed_s_m() * mass.mass_fraction(spent)
-        } else {
-            0.0
-        };
+        if !propulsion.is_falling() {
+            return Drive { acceleration_m_s2, slope_m_s3, burned: 0.0, burning_per_s: 0.0 };
+        }
+        let spent = self.plan.velocity_spent_m_s(at);
+        let burned = propulsion.burned_fraction(spent);
+        let left = propulsion.mass_fraction(spent);
+        let burning_per_s =
+            acceleration_m_s2.to_f64().abs() * propulsion.inverse_speed_s_m() * left;
         Drive { acceleration_m_s2, slope_m_s3, burned, burning_per_s }
     }
 
