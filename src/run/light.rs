@@ -5,6 +5,7 @@
 //! that sends or receives a signal asks it.
 
 use std::borrow::Cow;
+use std::sync::Arc;
 
 use crate::layout::Course;
 use crate::model::array_time::{ATTOSECONDS_PER_SECOND, ArrayTime};
@@ -133,7 +134,7 @@ pub struct Answer {
 /// How light runs along the line.
 enum Way {
     /// Under thrust, or in gravity that is the same everywhere.
-    Thrust(Rays),
+    Thrust(Arc<Rays>),
     /// In gravity with a gradient.
     Gravity { gravity_m_s2: f64, gradient_per_s2: f64 },
 }
@@ -149,13 +150,17 @@ impl<'a> Light<'a> {
     #[must_use]
     pub fn of(run: &'a Run) -> Light<'a> {
         let way = match (run.plan(), &run.layout.course) {
-            (Some(plan), _) => Way::Thrust(Rays::new(plan)),
+            (Some(plan), _) => {
+                Way::Thrust(Arc::clone(run.rays.get_or_init(|| Arc::new(Rays::new(plan)))))
+            }
             (None, Course::Standing(standing)) if standing.gradient_per_s2 != 0.0 => Way::Gravity {
                 gravity_m_s2: standing.gravity_m_s2,
                 gradient_per_s2: standing.gradient_per_s2,
             },
-            (None, Course::Standing(standing)) => Way::Thrust(Rays::held(standing.gravity_m_s2)),
-            (None, Course::Thrust(plan)) => Way::Thrust(Rays::new(plan)),
+            (None, Course::Standing(standing)) => {
+                Way::Thrust(Arc::new(Rays::held(standing.gravity_m_s2)))
+            }
+            (None, Course::Thrust(plan)) => Way::Thrust(Arc::new(Rays::new(plan))),
         };
         Light { run, way }
     }
