@@ -59,6 +59,49 @@ impl Extremes {
     }
 }
 
+/// The ends of phases at which the acceleration goes beyond every one before it, either way:
+/// where anything that grows with the thrust can be passed for the first time.
+#[derive(Clone, Debug, Default)]
+pub struct Records {
+    largest: Vec<Extreme>,
+    smallest: Vec<Extreme>,
+}
+
+impl Records {
+    /// Those of a plan.
+    #[must_use]
+    pub fn of(plan: &Plan) -> Records {
+        let mut records = Records::default();
+        for (index, phase) in plan.phases().iter().enumerate() {
+            for at in [phase.start, phase.end] {
+                let here = Extreme { acceleration_m_s2: phase.acceleration(at), phase: index, at };
+                let last = |all: &[Extreme]| all.last().map(|last| last.acceleration_m_s2);
+                if last(&records.largest).is_none_or(|last| here.acceleration_m_s2 > last) {
+                    records.largest.push(here);
+                }
+                if last(&records.smallest).is_none_or(|last| here.acceleration_m_s2 < last) {
+                    records.smallest.push(here);
+                }
+            }
+        }
+        records
+    }
+
+    /// The first end of a phase whose acceleration is beyond something that, on either side of
+    /// zero, is passed once and for all.
+    #[must_use]
+    pub fn first(&self, is_beyond: impl Fn(Dd) -> bool) -> Option<Extreme> {
+        let first = |all: &[Extreme], sign: f64| {
+            let beyond = |here: &Extreme| {
+                here.acceleration_m_s2.hi * sign > 0.0 && is_beyond(here.acceleration_m_s2)
+            };
+            all.get(all.partition_point(|here| !beyond(here))).copied()
+        };
+        let found = [first(&self.largest, 1.0), first(&self.smallest, -1.0)];
+        found.into_iter().flatten().min_by_key(|here| (here.phase, here.at))
+    }
+}
+
 /// A node that reaches the horizon.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct HorizonReached {
@@ -77,11 +120,22 @@ pub struct HorizonReached {
 /// Finds the first moment at which a node reaches the horizon, if it does.
 #[must_use]
 pub fn reached(plan: &Plan, extremes: &Extremes, position_m: f64) -> Option<HorizonReached> {
+    reached_first(plan, &Records::of(plan), extremes, position_m)
+}
+
+/// The same with the records of the plan, for many nodes.
+#[must_use]
+pub fn reached_first(
+    plan: &Plan,
+    records: &Records,
+    extremes: &Extremes,
+    position_m: f64,
+) -> Option<HorizonReached> {
     let worst = extremes.worst_for(position_m).acceleration_m_s2;
     if is_realisable(worst, position_m) {
         return None;
     }
-    let (phase, at_s) = first_zero(plan, position_m)?;
+    let (phase, at_s) = first_zero(plan, records, position_m)?;
     let offered = partners(extremes.worst_for(position_m), position_m);
     Some(HorizonReached { phase, at_s, ..offered })
 }
@@ -117,18 +171,15 @@ fn towards_zero(value: f64) -> f64 {
     if value > 0.0 { value.next_down() } else { value.next_up() }
 }
 
-fn first_zero(plan: &Plan, position_m: f64) -> Option<(usize, Dd)> {
-    for (index, phase) in plan.phases().iter().enumerate() {
-        if !is_realisable(phase.acceleration(phase.start), position_m) {
-            return Some((index, phase.start.seconds()));
-        }
-        if !is_realisable(phase.acceleration(phase.end), position_m) {
-            let limit = -C2_M2_S2 / Dd::new(position_m);
-            let length = phase.end.seconds_since(phase.start);
-            // Rounding may put the limit a hair outside the ramp whose end passes it.
-            let after = phase.moment_of(limit).unwrap_or(length);
-            return Some((index, phase.start.seconds() + after));
-        }
+fn first_zero(plan: &Plan, records: &Records, position_m: f64) -> Option<(usize, Dd)> {
+    let first = records.first(|acceleration| !is_realisable(acceleration, position_m))?;
+    let phase = plan.phases().get(first.phase)?;
+    if first.at == phase.start {
+        return Some((first.phase, phase.start.seconds()));
     }
-    None
+    let limit = -C2_M2_S2 / Dd::new(position_m);
+    let length = phase.end.seconds_since(phase.start);
+    // Rounding may put the limit a hair outside the ramp whose end passes it.
+    let after = phase.moment_of(limit).unwrap_or(length);
+    Some((first.phase, phase.start.seconds() + after))
 }

@@ -5,6 +5,7 @@
 //! that sends or receives a signal asks it.
 
 use std::borrow::Cow;
+use std::sync::Arc;
 
 use crate::layout::Course;
 use crate::model::array_time::{ATTOSECONDS_PER_SECOND, ArrayTime};
@@ -20,12 +21,17 @@ use super::{LinkState, Run};
 /// What is added to the position of a node at rest, as a function of array time.
 type Displacement<'a> = Box<dyn Fn(ArrayTime) -> Displaced + Send + Sync + 'a>;
 
+/// The same without the second derivative.
+type Placement<'a> = Box<dyn Fn(ArrayTime) -> (f64, f64) + Send + Sync + 'a>;
+
 /// Where a node stands as an end of signals.
 pub struct NodeEnd<'a> {
     /// Its position at rest, m from the reference node, + towards the fore end.
     pub rest_m: Dd,
     /// How a line that stretches displaces it; `None` for a node that stays.
     pub displacement: Option<Displacement<'a>>,
+    /// The same without the second derivative, which costs more than all the rest.
+    placement: Option<Placement<'a>>,
 }
 
 impl NodeEnd<'_> {
@@ -33,7 +39,13 @@ impl NodeEnd<'_> {
     #[must_use]
     pub fn end(&self) -> End<'_> {
         match &self.displacement {
-            Some(displacement) => End::moving(self.rest_m, displacement),
+            Some(displacement) => {
+                let mut end = End::moving(self.rest_m, displacement);
+                if let Some(placement) = &self.placement {
+                    end.placed = Some(placement);
+                }
+                end
+            }
             None => End::fixed(self.rest_m),
         }
     }
@@ -122,7 +134,7 @@ pub struct Answer {
 /// How light runs along the line.
 enum Way {
     /// Under thrust, or in gravity that is the same everywhere.
-    Thrust(Rays),
+    Thrust(Arc<Rays>),
     /// In gravity with a gradient.
     Gravity { gravity_m_s2: f64, gradient_per_s2: f64 },
 }
@@ -138,13 +150,17 @@ impl<'a> Light<'a> {
     #[must_use]
     pub fn of(run: &'a Run) -> Light<'a> {
         let way = match (run.plan(), &run.layout.course) {
-            (Some(plan), _) => Way::Thrust(Rays::new(plan)),
+            (Some(plan), _) => {
+                Way::Thrust(Arc::clone(run.rays.get_or_init(|| Arc::new(Rays::new(plan)))))
+            }
             (None, Course::Standing(standing)) if standing.gradient_per_s2 != 0.0 => Way::Gravity {
                 gravity_m_s2: standing.gravity_m_s2,
                 gradient_per_s2: standing.gradient_per_s2,
             },
-            (None, Course::Standing(standing)) => Way::Thrust(Rays::held(standing.gravity_m_s2)),
-            (None, Course::Thrust(plan)) => Way::Thrust(Rays::new(plan)),
+            (None, Course::Standing(standing)) => {
+                Way::Thrust(Arc::new(Rays::held(standing.gravity_m_s2)))
+            }
+            (None, Course::Thrust(plan)) => Way::Thrust(Arc::new(Rays::new(plan))),
         };
         Light { run, way }
     }
@@ -180,19 +196,29 @@ impl<'a> Light<'a> {
         let run = self.run;
         let placed_m = Dd::new(placed_m);
         let Some(loads) = run.loads_at(at) else {
-            return NodeEnd { rest_m: placed_m, displacement: None };
+            return NodeEnd { rest_m: placed_m, displacement: None, placement: None };
         };
         let filed_m = Dd::new(run.layout.nodes[row].position_m);
         let Some(plan) = run.plan().filter(|_| loads.is_elastic()) else {
             // Gravity never changes, and a temperature that was filed does not either.
             let (position_m, _) = loads.end_motion(None, at, row);
-            return NodeEnd { rest_m: placed_m + (position_m - filed_m), displacement: None };
+            let rest_m = placed_m + (position_m - filed_m);
+            return NodeEnd { rest_m, displacement: None, placement: None };
         };
         let displacement = move |at: ArrayTime| {
             let loads = run.loads_at(at).unwrap_or(loads);
             motion(loads, plan, at, row, filed_m)
         };
-        NodeEnd { rest_m: placed_m, displacement: Some(Box::new(displacement)) }
+        let placement = move |at: ArrayTime| {
+            let loads = run.loads_at(at).unwrap_or(loads);
+            let (position_m, velocity_m_s) = loads.end_motion(plan.phase_at(at), at, row);
+            ((position_m - filed_m).to_f64(), velocity_m_s)
+        };
+        NodeEnd {
+            rest_m: placed_m,
+            displacement: Some(Box::new(displacement)),
+            placement: Some(Box::new(placement)),
+        }
     }
 
     /// Where a released node stood when it was let go, as an end of signals, and when.
@@ -372,5 +398,6 @@ fn constant(signal: &Signal, at: ArrayTime) -> Extremes {
         shift_rate_per_s: range(0.0),
         flight_array_s: range(signal.flight_array_s),
         is_partial: false,
+        is_screened: false,
     }
 }

@@ -24,6 +24,7 @@ use crate::layout::names::is_unsafe;
 use crate::layout::{Course, FARTHEST_POSITION_M, Layout};
 use crate::model::array_time::ArrayTime;
 use crate::model::dd::Dd;
+use crate::model::links::Rays;
 use crate::model::loads::Loads;
 use crate::model::plan::{Moment, Plan};
 use crate::model::rates::Instant;
@@ -52,6 +53,8 @@ pub struct Run {
     loads: Vec<(ArrayTime, Arc<Loads>)>,
     /// The loads of a rigid line, once they have been asked for.
     rigid_loads: OnceLock<Result<Arc<Loads>, RunFault>>,
+    /// How light runs under the plan as it is flown, once it has been asked for.
+    rays: OnceLock<Arc<Rays>>,
     /// The nodes that have been moved or released, by row; all others stand where the
     /// layout puts them.
     moved: BTreeMap<usize, Moved>,
@@ -99,6 +102,7 @@ impl Run {
             open_hold: None,
             loads: Vec::new(),
             rigid_loads: OnceLock::new(),
+            rays: OnceLock::new(),
             moved: BTreeMap::new(),
             links: BTreeMap::new(),
         };

@@ -107,6 +107,7 @@ impl Run {
         let loads = self.check_flight(Some(&plan), from)?;
         self.loads.extend(loads.map(|loads| (from, loads)));
         self.rigid_loads = OnceLock::new();
+        self.rays = OnceLock::new();
         self.changed_plan = Some(plan);
         self.open_hold = open_hold;
         Ok(())

@@ -102,10 +102,14 @@ fn the_first_moment_beyond_a_limit_is_solved_in_every_kind_of_piece() {
         // Beyond what was gained forwards: braking to −2 h and more, 7 h + what is left.
         (7200.0 + 900.0, 3, 14_400.0 + 5400.0 + 8100.0),
     ] {
-        let judgement = one(&run_with(gained_s * per_second), Rule::ClockOffset);
+        let layout = run_with(gained_s * per_second);
+        let judgement = one(&layout, Rule::ClockOffset);
         assert_eq!(judgement.state, RuleState::Broken, "{gained_s}");
-        assert_eq!(judgement.phase, Ok(phase), "{gained_s}");
-        near(judgement.at.unwrap().to_f64(), wanted_s, 4e-15);
+        // What is worst is so at the end of the plan, whatever was passed before.
+        assert_eq!((judgement.phase, judgement.at), (Ok(3), Ok(at(28_800.0))), "{gained_s}");
+        let from = judgement.broken_from.unwrap();
+        near(from.to_f64(), wanted_s, 4e-15);
+        assert_eq!(plan(&layout).phase_at(from), Some(phase), "{gained_s}");
     }
     // Passed on the far side of a turn inside a single ramp.
     let rest =
@@ -113,7 +117,7 @@ fn the_first_moment_beyond_a_limit_is_solved_in_every_kind_of_piece() {
     let layout = two(-3000.0, "", &format!("{rest}clock_offset = {:?}", 5400.0 * per_second));
     let judgement = one(&layout, Rule::ClockOffset);
     // Turn at 1 h with half an hour gained; then back by (t − 1 h)²/2 per hour.
-    near(judgement.at.unwrap().to_f64(), 3600.0 + 7200.0, 1e-14);
+    near(judgement.broken_from.unwrap().to_f64(), 3600.0 + 7200.0, 1e-14);
 }
 
 #[test]
@@ -154,7 +158,7 @@ fn a_pair_parts_by_the_difference_of_its_positions() {
     }
     assert_eq!(judged[0].subject.name(&layout), "b to a");
     // 1 ps is reached after c² · 1 ps / (1500 m · 2.5 m/s²).
-    near(judged[0].at.unwrap().to_f64(), C2_M2_S2.to_f64() * 1e-12 / 3750.0, 1e-14);
+    near(judged[0].broken_from.unwrap().to_f64(), C2_M2_S2.to_f64() * 1e-12 / 3750.0, 1e-14);
 }
 
 #[test]
@@ -214,7 +218,8 @@ fn a_standing_line_is_judged_over_a_day() {
     let judgement = one(&layout, Rule::ClockOffset);
     let rate = 9800.0 / C2_M2_S2.to_f64();
     near(judgement.value.clone().unwrap(), rate * 86_400.0, 1e-15);
-    near(judgement.at.unwrap().to_f64(), 5e-9 / rate, 1e-14);
+    near(judgement.broken_from.unwrap().to_f64(), 5e-9 / rate, 1e-14);
+    assert_eq!(judgement.at, Ok(at(86_400.0)));
     let check = Check::new(&layout, JudgedOver::Plan);
     assert!(check.remedy(&judgement).unwrap().starts_with("set the clocks again within "));
     assert!(check_report(Arc::new(check)).remarks[0].contains("1 d"));
@@ -319,6 +324,141 @@ fn the_report_says_at_a_glance_what_is_nearest() {
     near(phase["rating_margin"].as_f64().unwrap(), 0.2, 1e-14);
 }
 
+/// A layout whose only broken rule is a slack tether, which has no numeric margin.
+const SLACK: &str = r#"
+name = "t"
+reference = "hub"
+[[node]]
+name = "hub"
+mass = "1 t"
+rating = "3 m/s^2"
+[[node]]
+name = "far"
+position = "-1 km"
+mass = "100 kg"
+[[span]]
+along = ["hub", "far"]
+kind = "tether"
+[[engine]]
+node = "far"
+[[phase]]
+ramp = [0, 2]
+for = "10 min"
+[[phase]]
+hold = 2
+for = "1 h"
+"#;
+
+#[test]
+fn a_broken_rule_comes_before_every_kept_one() {
+    let layout = layout(SLACK);
+    let check = Check::new(&layout, JudgedOver::Plan);
+    let summary = check.summary();
+    assert_eq!((summary.broken, summary.smallest.rule), (1, Rule::Slack));
+    let report = check_report(Arc::new(check));
+    let scalar = |key: &str| &report.scalars.iter().find(|scalar| scalar.key == key).unwrap().value;
+    assert_eq!(scalar("smallest_margin_rule"), &Cell::Text("slack".into()));
+    assert_eq!(scalar("smallest_margin_subject"), &Cell::Text("hub to far".into()));
+    assert_eq!(scalar("smallest_margin"), &Cell::Absent("a limit of zero has no margin".into()));
+    let Cell::Text(widen) = scalar("widen") else { panic!() };
+    assert!(widen.starts_with("move 0.9091 of the thrust to `hub`"), "{widen}");
+    // Of two that are broken the one without a margin is the worse, whatever the other's is.
+    let text = SLACK.replace("rating = \"3 m/s^2\"", "rating = \"1 ug0\"");
+    let layout = crate::recording::layout(&text);
+    let check = Check::new(&layout, JudgedOver::Plan);
+    assert_eq!((check.summary().broken, check.summary().smallest.rule), (2, Rule::Slack));
+    // Of those with margins the smallest.
+    let text = text
+        .replace("kind = \"tether\"", "kind = \"boom\"")
+        .replace("[[engine]]", "strength = \"1 N\"\n[[engine]]");
+    let layout = crate::recording::layout(&text);
+    let check = Check::new(&layout, JudgedOver::Plan);
+    let margins = of_rule(&layout, Rule::Rating)[0].margin;
+    assert!(margins > of_rule(&layout, Rule::Strength)[0].margin.map(|margin| margin * 1e3));
+    assert_eq!((check.summary().broken, check.summary().smallest.rule), (2, Rule::Rating));
+}
+
+#[test]
+fn the_moment_is_that_of_the_value_and_the_first_beyond_stands_beside_it() {
+    // Pushed by 2 m/s² · 1000 kg from the end of the ramp on, slack from the start.
+    let slack = one(&layout(SLACK), Rule::Slack);
+    near(slack.value.clone().unwrap(), 2000.0, 1e-12);
+    assert_eq!((slack.phase, slack.at), (Ok(1), Ok(at(600.0))));
+    assert_eq!(slack.broken_from, Ok(ArrayTime::ZERO));
+    // 3 m/s² are felt from the end of a ramp, 2 from two thirds of it.
+    let rest = "[[phase]]\nramp = [0, 3]\nfor = 300\n[[phase]]\nhold = 3\nfor = 60\n";
+    let rated = line(&node("hub", 0.0, "rating = 2"), rest);
+    let rating = one(&rated, Rule::Rating);
+    assert_eq!((rating.value.clone(), rating.at), (Ok(3.0), Ok(at(300.0))));
+    near(rating.broken_from.unwrap().to_f64(), 200.0, 1e-15);
+    // A horizon at 3 m/s² and 10 % more: reached at 10/11 of the ramp.
+    let far = two(-1.1 * C2_M2_S2.to_f64() / 3.0, "", rest);
+    let judged = of_rule(&far, Rule::Horizon);
+    let horizon = judged.iter().find(|judged| judged.state == RuleState::Broken).unwrap();
+    assert_eq!((horizon.value.clone(), horizon.at), (Ok(3.0), Ok(at(300.0))));
+    near(horizon.broken_from.unwrap().to_f64(), 3000.0 / 11.0, 1e-14);
+    // Tension of 100 kg reaches 250 N where the thrust reaches 2.5 m/s².
+    let span = "[[span]]\nalong = [\"hub\", \"far\"]\nkind = \"tether\"\nstrength = 250\n";
+    let strong = two(-10.0, "mass = 100", &format!("{span}{rest}"));
+    let strength = one(&strong, Rule::Strength);
+    near(strength.value.clone().unwrap(), 300.0, 1e-14);
+    assert_eq!(strength.at, Ok(at(300.0)));
+    near(strength.broken_from.unwrap().to_f64(), 250.0, 1e-14);
+    // What is kept is broken from no moment on.
+    assert!(of_rule(&strong, Rule::Horizon).iter().all(|kept| kept.broken_from.is_err()));
+}
+
+#[test]
+fn margins_that_agree_are_told_apart_by_what_is_used() {
+    // At 1 ug0 both rates are one to the last digit.
+    let nodes = node("hub", 0.0, "") + &node("near", -1000.0, "") + &node("far", -2000.0, "");
+    let layout = line(&nodes, "[[phase]]\nhold = \"1 ug0\"\nfor = 1\n");
+    let check = Check::new(&layout, JudgedOver::Plan);
+    let smallest = &check.summary().smallest;
+    assert_eq!((smallest.margin, smallest.subject.name(&layout)), (Some(1.0), "far".into()));
+    let report = check_report(Arc::new(check));
+    let used = report.scalars.iter().find(|scalar| scalar.key == "smallest_margin_used").unwrap();
+    let Cell::Number(used) = used.value else { panic!("{used:?}") };
+    near(used, 2000.0 * 1e-6 * G0 / C2_M2_S2.to_f64(), 1e-15);
+}
+
+#[test]
+fn advice_speaks_of_what_there_is() {
+    let ramp = "[[phase]]\nramp = [0, 3]\nfor = 300\n";
+    let far = two(-1.1 * C2_M2_S2.to_f64() / 3.0, "", ramp);
+    let broken = of_rule(&far, Rule::Horizon);
+    let broken = broken.iter().find(|judged| judged.state == RuleState::Broken).unwrap();
+    assert_eq!(
+        Check::new(&far, JudgedOver::Plan).remedy(broken).unwrap(),
+        "thrust with no more than 0.278104 g0 at the reference, or place the node no farther \
+         than 3.16661 ly from it"
+    );
+    let rest = ramp.replace("ramp = [0, 3]", "hold = 3");
+    let far = two(-1.1 * C2_M2_S2.to_f64() / 3.0, "", &rest);
+    let check = Check::new(&far, JudgedOver::Plan);
+    let (broken, _) = check.broken().unwrap();
+    assert!(check.remedy(&broken).unwrap().starts_with("hold no more than 0.278104 g0"));
+    // The thrust ends with a step, which is in no phase.
+    let span = "[[span]]\nalong = [\"hub\", \"far\"]\nkind = \"boom\"\naxial_stiffness = 1e6\n";
+    let cut = two(-1000.0, "mass = 100", &format!("{span}{ramp}"));
+    let ramps = of_rule(&cut, Rule::Ramp);
+    let last = ramps.last().unwrap();
+    assert_eq!(last.phase, Err("the thrust is cut at the end of the plan"));
+    let remedy = Check::new(&cut, JudgedOver::Plan).remedy(last).unwrap();
+    assert!(remedy.starts_with("let the thrust down at the end of the plan"), "{remedy}");
+    // A line that stands gains nothing: its clocks are set again.
+    let stands = two(
+        1000.0,
+        "",
+        "[standing]\ngravity = 9.8\n[[limit]]\nnode = \"far\"\nclock_offset = 1e-12\n",
+    );
+    let span = JudgedOver::Moment(at(3600.0));
+    let check = Check::new(&stands, span);
+    let (broken, _) = check.broken().unwrap();
+    let remedy = check.remedy(&broken).unwrap();
+    assert!(remedy.starts_with("set the clocks again within 9.1"), "{remedy}");
+}
+
 /// A random line with a random plan and limits, some nodes beyond the horizon.
 fn any_line() -> impl Strategy<Value = String> {
     let position = prop_oneof![-1e4..1e4_f64, -1e16..1e16_f64, Just(0.0)];
@@ -385,7 +525,7 @@ proptest! {
                 (plan.moment(at).rapidity * position / SPEED_OF_LIGHT_M_S).abs()
             };
             let limit = Dd::new(judgement.limit.unwrap());
-            let at = judgement.at.unwrap();
+            let at = judgement.broken_from.unwrap();
             // Where the rapidity nearly stands still, rounding decides more than an attosecond.
             let slack = limit * 1e-28;
             let near = |count: i128| ArrayTime::from_attoseconds(at.attoseconds() + count);

@@ -410,3 +410,55 @@ fn extremes_of_a_ramp_and_a_hold() {
     assert_eq!(extremes.flight_array_s.greatest.value, 1000.0 / C);
     assert!(!extremes.is_partial);
 }
+
+#[test]
+fn a_long_history_is_screened_without_losing_its_extremes() {
+    let mut source = Source(11);
+    let mut last = 0.0;
+    let pieces: Vec<(f64, f64, f64)> = (0..11_000)
+        .map(|_| {
+            let from = last;
+            last = source.between(-1.0, 3.0);
+            (source.between(0.5, 2.0), from, last)
+        })
+        .collect();
+    let plan = plan_of(&pieces);
+    let rays = Rays::new(&plan);
+    assert!(rays.is_screened());
+    // Ends that stay, and ends that follow the thrust, each by its own measure.
+    let follows = |measure: f64| {
+        let plan = &plan;
+        move |at: ArrayTime| {
+            let Some(phase) = plan.phase_at(at) else { return Moved::default() };
+            let phase = &plan.phases()[phase];
+            let rise = phase.line.to_m_s2 - phase.line.from_m_s2;
+            let slope = rise / phase.line.length.seconds_since(ArrayTime::ZERO).to_f64();
+            Moved {
+                displacement_m: -measure * phase.acceleration(at).to_f64(),
+                velocity_m_s: -measure * slope,
+                acceleration_m_s2: 0.0,
+            }
+        }
+    };
+    let (near, far) = (follows(0.04), follows(0.1));
+    let still = (End::fixed(-300.0), End::fixed(-1000.0));
+    let moving = (End::moving(-300.0, &near), End::moving(-1000.0, &far));
+    for (from, to) in [still, (still.1, still.0), moving] {
+        let quick = rays.extremes_over_plan(from, to).expect("it arrives");
+        assert!(quick.is_screened);
+        let first = quick.received_shift.least.emitted.min(ArrayTime::ZERO);
+        // The last piece ends in a step, across which no signal is told of ends that move.
+        let whole = rays.extremes(from, to, first, plan.end()).expect("it arrives");
+        assert!(!whole.is_screened);
+        for (got, wanted) in [
+            (quick.received_shift, whole.received_shift),
+            (quick.shift_rate_per_s, whole.shift_rate_per_s),
+            (quick.flight_array_s, whole.flight_array_s),
+        ] {
+            let size = wanted.greatest.value.abs().max(wanted.least.value.abs());
+            for (got, wanted) in [(got.least, wanted.least), (got.greatest, wanted.greatest)] {
+                assert_close(got.value, wanted.value, size, 1e-12, "an extreme");
+            }
+        }
+    }
+}

@@ -303,9 +303,15 @@ fn peaks_are_above_every_sample() {
             }
             samples.push(loads.state_before_end_of(index).expect("a phase"));
         }
+        // From when an engine runs dry on, the forces are not those of the line.
+        let dry = loads.running_dry().first().map_or(plan.end(), |dry| dry.at);
+        if dry < plan.end() {
+            samples.push(loads.state(dry));
+        }
         for gap in 0..loads.structure().members.len() {
             let peaks = loads.force_peaks(gap).expect("a plan");
-            let forces = samples.iter().flat_map(|state| loads.span_force_n(state, gap));
+            let wet = samples.iter().filter(|state| state.instant.moment.at <= dry);
+            let forces = wet.flat_map(|state| loads.span_force_n(state, gap));
             let (mut high, mut low) = (f64::NEG_INFINITY, f64::INFINITY);
             for force in forces {
                 high = high.max(force);

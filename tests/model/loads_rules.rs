@@ -63,10 +63,10 @@ fn a_slack_tether_says_from_when_and_what_mends_it() {
     let slack = loads.slack();
     assert_eq!(slack.len(), 2);
     assert_eq!((slack[1].phase, slack[1].at), (Some(0), ArrayTime::ZERO));
-    let Mend::MoveThrust { share, to_row } = slack[1].mends[0] else {
+    let Mend::MoveThrust { share: Some(share), to_row, of } = slack[1].mends[0] else {
         panic!("{:?}", slack[1].mends)
     };
-    assert_eq!(to_row, 1);
+    assert_eq!((to_row, of), (1, 1.0));
     near(share, 1.0 - 150.0 / 1300.0, 1e-14, 1.0, "share");
     // Moved as it says, this tether is taut.
     let mut mended = structure;
@@ -84,6 +84,34 @@ fn a_slack_tether_says_from_when_and_what_mends_it() {
     halves.engines.push(Engine { row: 2, share: 2.0 / 3.0, ..halves.engines[0] });
     let loads = Loads::under_thrust(halves, &through_zero).expect("a line");
     assert!(loads.slack().is_empty());
+}
+
+#[test]
+fn forces_are_judged_until_the_propellant_is_gone() {
+    // Taut as long as there is propellant. Beyond, the tank would weigh less than nothing and
+    // the tether be pushed, by a line that is not this one.
+    let mut structure = tether_line(2, Some(400.0));
+    structure.engines[0].share = 0.05;
+    structure.engines.push(Engine {
+        row: 0,
+        share: 0.95,
+        exhaust_speed_m_s: None,
+        propellant_kg: None,
+    });
+    let plan = |seconds: i64| {
+        let phase = Phase::whole(ArrayTime::ZERO, ArrayTime::from_seconds(seconds), 2.0, 2.0);
+        Plan::new(vec![phase]).expect("a plan")
+    };
+    let short = Loads::under_thrust(structure.clone(), &plan(100)).expect("a line");
+    assert!(short.running_dry().is_empty() && short.slack().is_empty());
+    let loads = Loads::under_thrust(structure, &plan(20_000)).expect("a line");
+    let dry = loads.running_dry();
+    assert_eq!(dry.len(), 1);
+    assert_eq!(loads.slack(), []);
+    let late = loads.state(ArrayTime::from_seconds(19_000));
+    assert!(loads.span_force_n(&late, 1)[1] < 0.0, "as reckoned on");
+    let peaks = loads.force_peaks(1).expect("a plan");
+    assert!(peaks.smallest.value > 0.0 && peaks.smallest.at <= dry[0].at, "{peaks:?}");
 }
 
 #[test]

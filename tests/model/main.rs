@@ -7,6 +7,7 @@
 #![allow(clippy::print_stdout)]
 
 mod check;
+mod check_advice;
 mod clocks;
 mod demo_recordings;
 mod history;

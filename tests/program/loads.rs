@@ -113,22 +113,23 @@ fn what_breaks_ends_with_one_and_says_what_would_mend_it() {
             "strength = \"1 kN\"",
             "strength = \"0.2 kN\"",
             "broken: strength",
-            "tug to pod carries 107.873 N of 100 N in phase 2, from 1 min; remedy: a strength of \
-             215.747 N",
+            "tug to pod carries 107.873 N of 100 N in phase 1, from 55.621 s, most at 1 min; \
+             remedy: a strength of 215.747 N",
         ),
         (
             "rating = \"1 g0\"",
             "rating = \"0.05 g0\"",
             "broken: rating",
-            "remedy: hold no more than 0.490332 m/s^2 (0.0499999 g0) at the reference, or build \
-             the node for 0.980666 m/s^2 (0.1 g0)",
+            "pod feels 0.980665 m/s^2 of 0.490333 m/s^2 in phase 1, from 30 s, most at 1 min; \
+             remedy: hold no more than 0.0499999 g0 at the reference, or build the node for \
+             0.100001 g0",
         ),
         (
             "node = \"tug\"\nexhaust",
             "node = \"pod\"\nexhaust",
             "broken: slack",
-            "tug to pod is slack: it would be pushed with 990.472 N in phase 1, from 0 s; remedy: \
-             move 0.7539 of the thrust to `tug` or fore of it, or file the span as a boom",
+            "tug to pod is slack: it would be pushed with 990.472 N in phase 1, from 0 s, most at \
+             1 min; remedy: move thrust to `tug` or fore of it, or file the span as a boom",
         ),
         (
             "propellant = \"400 kg\"",
@@ -153,7 +154,7 @@ fn what_breaks_ends_with_one_and_says_what_would_mend_it() {
 fn what_is_offered_is_accepted() {
     for (from, to, mended) in [
         ("strength = \"1 kN\"", "strength = \"0.2 kN\"", "strength = \"215.747 N\""),
-        ("rating = \"1 g0\"", "rating = \"0.05 g0\"", "rating = \"0.980666 m/s^2\""),
+        ("rating = \"1 g0\"", "rating = \"0.05 g0\"", "rating = \"0.100001 g0\""),
     ] {
         assert_eq!(loads(&LINE.replace(from, to), &[]).0, 1);
         let (status, stdout, _) = loads(&LINE.replace(from, mended), &[]);
@@ -178,6 +179,7 @@ fn a_tether_goes_slack_inside_a_ramp_that_turns_the_thrust() {
     let broken = &object["broken"][0];
     assert_eq!((broken["rule"].as_str(), broken["phase"].as_i64()), (Some("slack"), Some(3)));
     assert_eq!(broken["from_s"].as_f64(), Some(60.0 + 3600.0 + 60.0));
+    assert_eq!(broken["at_s"].as_f64(), Some(60.0 + 3600.0 + 120.0));
     let remedy = broken["remedy"].as_str().expect("a remedy");
     assert!(remedy.starts_with("keep the thrust towards the fore end"), "{remedy}");
 }

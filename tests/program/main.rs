@@ -6,6 +6,7 @@ mod desk;
 mod hostile;
 mod links;
 mod loads;
+mod long_history;
 mod readme;
 mod recording_lasts;
 mod terminal_session;

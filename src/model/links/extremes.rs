@@ -7,7 +7,7 @@
 //! samples are refined by golden section.
 
 use super::one_way::{End, Flight, NoFlight, later};
-use super::rays::Rays;
+use super::rays::{Piece, Rays};
 use crate::model::array_time::ArrayTime;
 use crate::model::dd::Dd;
 
@@ -46,6 +46,9 @@ pub struct Extremes {
     /// Whether emissions were left out because the thrust steps while their signal is under
     /// way on a line that stretches.
     pub is_partial: bool,
+    /// Whether the plan has so many pieces that only those were looked at in which the thrust,
+    /// its slope or a change of its slope is among the most extreme.
+    pub is_screened: bool,
 }
 
 /// Samples inside an interval, as shares of it: the nodes of Chebyshev (DLMF 3.5(v)).
@@ -63,6 +66,12 @@ const REFINED: usize = 4;
 
 /// Steps of a golden section: an interval shrinks by 10⁻¹⁰, the value's error by its square.
 const GOLDEN_STEPS: usize = 48;
+
+/// Pieces of a plan up to which all of it is looked through.
+const MOST_SEARCHED: usize = 10_000;
+
+/// Pieces that are looked at for each thing that makes a piece extreme, either way.
+const SCREENED: usize = 48;
 
 const ATTOSECOND: ArrayTime = ArrayTime::from_attoseconds(1);
 
@@ -95,6 +104,13 @@ impl Rays {
         found.extremes().ok_or(NoFlight::Step)
     }
 
+    /// Whether the plan has so many pieces that [`Rays::extremes_over_plan`] looks only at
+    /// those that may be extreme.
+    #[must_use]
+    pub fn is_screened(&self) -> bool {
+        self.pieces().len() > MOST_SEARCHED
+    }
+
     /// The extremes over the whole plan: emissions from the first whose signal is received in
     /// it to its end.
     ///
@@ -109,8 +125,63 @@ impl Rays {
         let search = Search { rays: self, from, to };
         let first = search.emission_received_at(start)?.unwrap_or(start);
         let end = pieces[pieces.len() - 1].start;
-        self.extremes(from, to, first.min(start), end)
+        let first = first.min(start);
+        if pieces.len() <= MOST_SEARCHED {
+            return self.extremes(from, to, first, end);
+        }
+        let mut found = Found { is_screened: true, ..Found::default() };
+        for (begin, until) in search.runs(first, end)? {
+            for pair in search.moments(begin, until)?.windows(2) {
+                search.interval(pair[0], pair[1], &mut found)?;
+            }
+        }
+        if let Some(sample) = search.sample(end, false, &mut found.is_partial)? {
+            found.add(&[sample]);
+        }
+        search.refine(&mut found)?;
+        found.extremes().ok_or(NoFlight::Step)
     }
+}
+
+/// The pieces in which something is most extreme, either way, in order: the thrust, its slope,
+/// a change of its slope, and the speed at which ends that move part, in a piece and across
+/// its start.
+fn screened(pieces: &[Piece], from: &End<'_>, to: &End<'_>) -> Vec<usize> {
+    let slope = |index: usize| pieces[index].slope.hi;
+    let before = |index: usize| index.checked_sub(1).map_or(0.0, slope);
+    let mut chosen = Vec::new();
+    let mut choose = |score: &dyn Fn(usize) -> f64| {
+        let scores: Vec<f64> = (0..pieces.len()).map(score).collect();
+        for sign in SENSES {
+            let mut order: Vec<u32> = (0..pieces.len() as u32).collect();
+            let first = |a: &u32, b: &u32| {
+                (sign * scores[*b as usize]).total_cmp(&(sign * scores[*a as usize]))
+            };
+            if order.len() > SCREENED {
+                order.select_nth_unstable_by(SCREENED, first);
+                order.truncate(SCREENED);
+            }
+            chosen.extend(order.into_iter().map(|index| index as usize));
+        }
+    };
+    choose(&|index| pieces[index].push.hi);
+    choose(&|index| pieces[index].end_push.hi);
+    choose(&slope);
+    choose(&|index| slope(index) - before(index));
+    if from.moved.is_some() || to.moved.is_some() {
+        choose(&|index| {
+            let start = pieces[index].start;
+            to.placed_at(start).1 - from.placed_at(start).1
+        });
+        choose(&|index| {
+            let start = pieces[index].start;
+            let left = start.checked_sub(ATTOSECOND).unwrap_or(start);
+            to.placed_at(start).1 - from.placed_at(left).1
+        });
+    }
+    chosen.sort_unstable();
+    chosen.dedup();
+    chosen
 }
 
 /// One emission and what became of it.
@@ -145,6 +216,7 @@ struct Found {
     best: [[Option<Sample>; 2]; 3],
     candidates: [[Vec<Candidate>; 2]; 3],
     is_partial: bool,
+    is_screened: bool,
 }
 
 /// −1 for the least value, +1 for the greatest.
@@ -175,11 +247,19 @@ impl Found {
                         at = place;
                     }
                 }
-                self.candidates[quantity][index].push(Candidate {
+                let candidate = Candidate {
                     value: value(&samples[at]),
                     low: samples[at.saturating_sub(1)].emitted,
                     high: samples[(at + 1).min(samples.len() - 1)].emitted,
-                });
+                };
+                // The best few are kept, the first of equals before the later ones: a history
+                // has a million intervals.
+                let kept = &mut self.candidates[quantity][index];
+                let place = kept.partition_point(|other| other.value >= candidate.value);
+                if place < REFINED {
+                    kept.truncate(REFINED - 1);
+                    kept.insert(place, candidate);
+                }
             }
         }
     }
@@ -201,6 +281,7 @@ impl Found {
             shift_rate_per_s: range(1)?,
             flight_array_s: range(2)?,
             is_partial: self.is_partial,
+            is_screened: self.is_screened,
         })
     }
 }
@@ -212,10 +293,55 @@ struct Search<'a> {
 }
 
 impl Search<'_> {
+    /// The stretches of emissions that leave or arrive in pieces in which something is most
+    /// extreme, from the start of the plan to its end.
+    fn runs(
+        &self,
+        first: ArrayTime,
+        last: ArrayTime,
+    ) -> Result<Vec<(ArrayTime, ArrayTime)>, NoFlight> {
+        let pieces = self.rays.pieces();
+        let start = |index: usize| pieces.get(index).map_or(last, |piece| piece.start);
+        let mut runs: Vec<(ArrayTime, ArrayTime)> = Vec::new();
+        let ends = [1, pieces.len() - 1];
+        for index in screened(pieces, &self.from, &self.to).into_iter().chain(ends) {
+            let arrives = match index {
+                0 => None,
+                _ => self.emission_received_at(start(index))?,
+            };
+            // Where that cannot be told, from the piece before.
+            let begin = arrives.unwrap_or(start(index.saturating_sub(1)));
+            let begin = begin.min(start(index)).max(first);
+            let until = start(index + 1).min(last);
+            if begin < until {
+                runs.push((begin, until));
+            }
+        }
+        runs.sort_unstable();
+        let mut joined: Vec<(ArrayTime, ArrayTime)> = Vec::new();
+        for run in runs {
+            match joined.last_mut() {
+                Some(last) if run.0 <= last.1 => last.1 = last.1.max(run.1),
+                _ => joined.push(run),
+            }
+        }
+        Ok(joined)
+    }
+
     /// The moments between which everything is smooth, with both ends of the stretch.
     fn moments(&self, first: ArrayTime, last: ArrayTime) -> Result<Vec<ArrayTime>, NoFlight> {
         let mut moments = vec![first, last];
-        for pair in self.rays.pieces().windows(2) {
+        let pieces = self.rays.pieces();
+        // Nothing sent before the first moment or after the last is of interest, and what is
+        // sent at the last arrives at a moment that bounds the boundaries.
+        let from = pieces.partition_point(|piece| piece.start < first).saturating_sub(1);
+        let arrival = match self.rays.one_way(self.from, self.to, last) {
+            Ok(flight) => flight.received.unwrap_or(ArrayTime::LIMIT),
+            Err(NoFlight::Step) => ArrayTime::LIMIT,
+            Err(why) => return Err(why),
+        };
+        let beyond = pieces.partition_point(|piece| piece.start <= arrival.max(last));
+        for pair in pieces[from..beyond.max(from)].windows(2) {
             if pair[0].line == pair[1].line {
                 continue;
             }
@@ -354,11 +480,8 @@ impl Search<'_> {
         let ratio = 0.5 * (libm::sqrt(5.0) - 1.0);
         for quantity in 0..3 {
             for (index, sense) in SENSES.into_iter().enumerate() {
-                let mut candidates = std::mem::take(&mut found.candidates[quantity][index]);
-                candidates.sort_by(|a, b| {
-                    b.value.partial_cmp(&a.value).unwrap_or(std::cmp::Ordering::Equal)
-                });
-                for candidate in candidates.iter().take(REFINED) {
+                let candidates = std::mem::take(&mut found.candidates[quantity][index]);
+                for candidate in &candidates {
                     let origin = candidate.low;
                     let (mut low, mut high) = (0.0, candidate.high.seconds_since(origin).hi);
                     for _ in 0..GOLDEN_STEPS {

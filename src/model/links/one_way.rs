@@ -28,6 +28,9 @@ pub struct End<'a> {
     ///
     /// The displacement may jump only where the thrust does.
     pub moved: Option<&'a (dyn Fn(ArrayTime) -> Moved + Sync)>,
+    /// The displacement and its first derivative alone, where they cost less: a flight asks for
+    /// them many times, and for the second derivative twice.
+    pub placed: Option<&'a (dyn Fn(ArrayTime) -> (f64, f64) + Sync)>,
 }
 
 impl fmt::Debug for End<'_> {
@@ -41,7 +44,7 @@ impl<'a> End<'a> {
     /// An end that stays at one position.
     #[must_use]
     pub fn fixed(position_m: impl Into<Dd>) -> End<'a> {
-        End { rest_m: position_m.into(), moved: None }
+        End { rest_m: position_m.into(), moved: None, placed: None }
     }
 
     /// An end with a displacement along the line.
@@ -50,7 +53,18 @@ impl<'a> End<'a> {
         rest_m: impl Into<Dd>,
         moved: &'a (dyn Fn(ArrayTime) -> Moved + Sync),
     ) -> End<'a> {
-        End { rest_m: rest_m.into(), moved: Some(moved) }
+        End { rest_m: rest_m.into(), moved: Some(moved), placed: None }
+    }
+
+    /// The displacement and its first derivative at a moment; zero for an end that stays.
+    pub(crate) fn placed_at(&self, at: ArrayTime) -> (f64, f64) {
+        match self.placed {
+            Some(placed) => placed(at),
+            None => {
+                let moved = self.moved_at(at);
+                (moved.displacement_m, moved.velocity_m_s)
+            }
+        }
     }
 
     /// The displacement at a moment; zero for an end that stays.
@@ -172,9 +186,9 @@ impl Rays {
         let sign = ray.sign();
         let gap = apart.scale(sign) * INVERSE_C_S_M;
         let drift = |elapsed: f64| {
-            let now = to.moved_at(later(emitted, elapsed));
-            let moved = now.displacement_m - to_moved.displacement_m;
-            (sign * moved / SPEED_OF_LIGHT_M_S, sign * now.velocity_m_s / SPEED_OF_LIGHT_M_S)
+            let (displacement_m, velocity_m_s) = to.placed_at(later(emitted, elapsed));
+            let moved = displacement_m - to_moved.displacement_m;
+            (sign * moved / SPEED_OF_LIGHT_M_S, sign * velocity_m_s / SPEED_OF_LIGHT_M_S)
         };
         let drift: Option<&dyn Fn(f64) -> (f64, f64)> =
             if to.moved.is_some() { Some(&drift) } else { None };
@@ -249,10 +263,10 @@ impl Rays {
         from: Place,
         landing: &Landing,
     ) -> f64 {
-        let Some(moved) = end.moved else {
+        if end.moved.is_none() {
             return 0.0;
-        };
-        let at_start = moved(emitted).displacement_m;
+        }
+        let at_start = end.placed_at(emitted).0;
         let (mut sum, mut gone, mut place) = (0.0, 0.0, from);
         loop {
             let piece = &self.pieces()[place.piece];
@@ -264,7 +278,7 @@ impl Rays {
             let first = self.push(place).hi;
             for (node, weight) in NODES.into_iter().zip(WEIGHTS) {
                 let push = first + piece.slope.hi * node * width;
-                let away = moved(later(emitted, gone + node * width)).displacement_m - at_start;
+                let away = end.placed_at(later(emitted, gone + node * width)).0 - at_start;
                 sum += weight * width * push * away / SPEED_OF_LIGHT_M_S;
             }
             gone += width;

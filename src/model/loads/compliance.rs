@@ -213,6 +213,17 @@ impl Compliance {
         basis
     }
 
+    /// The values alone.
+    pub fn values(&self, acceleration_m_s2: f64, burned: f64) -> Vec<f64> {
+        if self.terms.is_empty() {
+            return Vec::new();
+        }
+        let (p, q) = self.degrees();
+        let (across, _) = chebyshev(self.map.xi(acceleration_m_s2), p);
+        let (along, _) = chebyshev(self.map.eta(burned), q);
+        self.terms.iter().map(|&(p, q)| across[p] * along[q]).collect()
+    }
+
     /// The sum of a row's terms with given values, m per m/s² times the unit of the values.
     pub fn sum(&self, row: usize, values: &[f64]) -> Dd {
         let count = self.terms.len();

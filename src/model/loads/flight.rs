@@ -2,6 +2,7 @@
 
 use super::compliance::{Basis, Compliance, Range};
 use super::propellant::Propulsion;
+use crate::cores;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::{C2_M2_S2, INVERSE_C2_S2_M2};
 use crate::model::dd::{Dd, RunningSum};
@@ -11,6 +12,9 @@ use crate::model::plan::{Phase, Plan};
 
 /// Foldings by e of the line's mass after which what is left shows in no double.
 const ALL_GONE: f64 = 46.0;
+
+/// Phases whose gains are held before they are summed.
+const AT_ONCE: usize = 1 << 16;
 
 /// A thrust plan with the stretch of the line tabulated over it.
 #[derive(Clone, Debug)]
@@ -49,26 +53,32 @@ impl Flight {
         let terms = compliance.terms();
         let mut flight = Flight { plan, compliance, until: Vec::new() };
         let mut sums = vec![RunningSum::default(); terms];
-        for index in 0..flight.plan.phases().len() {
-            flight.until.extend(sums.iter().map(RunningSum::value));
-            if terms > 0 {
-                let end = flight.plan.phases()[index].end;
-                let gains = flight.gains(propulsion, index, end);
+        let count = flight.plan.phases().len();
+        if terms == 0 {
+            return flight;
+        }
+        let mut until = Vec::with_capacity(terms * (count + 1));
+        // The gains of many phases are found on all cores, and summed in their order.
+        for first in (0..count).step_by(AT_ONCE) {
+            let gains = cores::map((count - first).min(AT_ONCE), cores::MANY, |index| {
+                let index = first + index;
+                flight.gains(propulsion, index, flight.plan.phases()[index].end)
+            });
+            for gains in gains {
+                until.extend(sums.iter().map(RunningSum::value));
                 for (sum, gain) in sums.iter_mut().zip(gains) {
                     sum.add(gain);
                 }
             }
         }
-        flight.until.extend(sums.iter().map(RunningSum::value));
+        until.extend(sums.iter().map(RunningSum::value));
+        flight.until = until;
         flight
     }
 
     /// The drive at a moment; in a phase that is named, its end meaning the limit from
     /// below, or wherever the moment falls.
     pub fn drive(&self, propulsion: &Propulsion, phase: Option<usize>, at: ArrayTime) -> Drive {
-        let mass = propulsion;
-        let spent = self.plan.velocity_spent_m_s(at);
-        let burned = if mass.is_falling() { mass.burned_fraction(spent) } else { 0.0 };
         let (acceleration_m_s2, slope_m_s3) = match phase {
             Some(index) => {
                 let phase = &self.plan.phases()[index];
@@ -76,11 +86,14 @@ impl Flight {
             }
             None => (Dd::ZERO, 0.0),
         };
-        let burning_per_s = if mass.is_falling() {
-            acceleration_m_s2.to_f64().abs() * mass.inverse_speed_s_m() * mass.mass_fraction(spent)
-        } else {
-            0.0
-        };
+        if !propulsion.is_falling() {
+            return Drive { acceleration_m_s2, slope_m_s3, burned: 0.0, burning_per_s: 0.0 };
+        }
+        let spent = self.plan.velocity_spent_m_s(at);
+        let burned = propulsion.burned_fraction(spent);
+        let left = propulsion.mass_fraction(spent);
+        let burning_per_s =
+            acceleration_m_s2.to_f64().abs() * propulsion.inverse_speed_s_m() * left;
         Drive { acceleration_m_s2, slope_m_s3, burned, burning_per_s }
     }
 
@@ -110,14 +123,14 @@ impl Flight {
         if phase.is_hold() && !propulsion.is_falling() {
             let alpha = phase.acceleration(phase.start);
             let weight = alpha * alpha * until.seconds_since(phase.start);
-            let basis = self.compliance.basis(alpha.to_f64(), 0.0);
-            return basis.values.iter().map(|value| weight * *value).collect();
+            let values = self.compliance.values(alpha.to_f64(), 0.0);
+            return values.iter().map(|value| weight * *value).collect();
         }
         let mut sums = vec![RunningSum::default(); terms];
         self.pieces(propulsion, index, until, &mut |point| {
             let weight = point.width_s * point.acceleration_m_s2 * point.acceleration_m_s2;
-            let basis = self.compliance.basis(point.acceleration_m_s2, point.burned);
-            for (sum, value) in sums.iter_mut().zip(&basis.values) {
+            let values = self.compliance.values(point.acceleration_m_s2, point.burned);
+            for (sum, value) in sums.iter_mut().zip(&values) {
                 sum.add(Dd::product(weight, *value));
             }
         });

@@ -66,6 +66,8 @@ pub use slack::{Mend, Slack};
 pub use standing::{GRADIENT_WARNING_SHIFT, GradientWarning, Gravity};
 pub use structure::{Engine, Joint, Member, Structure, StructureFault};
 
+use std::sync::OnceLock;
+
 use self::balance::{Balance, Ends, normalised_shares};
 use self::compliance::{Basis, Compliance, shape};
 use self::flight::Flight;
@@ -75,6 +77,7 @@ use self::standing::{Masses, Standing, mass_balance};
 use super::array_time::ArrayTime;
 use super::constants::INVERSE_C2_S2_M2;
 use super::dd::Dd;
+use super::horizon::Records;
 use super::plan::{Moment, Plan};
 use super::rates::Instant;
 use crate::layout::{self, Layout};
@@ -103,6 +106,13 @@ struct Thrust {
     flight: Flight,
     balance: Balance,
     corners: Corners,
+    /// The same up to the moment at which the first engine runs dry, when one does: beyond
+    /// it the line has not the masses that its forces are reckoned with.
+    corners_with_propellant: Option<Corners>,
+    /// From when the masses mean nothing: the end of the plan, or when an engine runs dry.
+    masses_hold_until: ArrayTime,
+    /// Made when it is first asked for.
+    records: OnceLock<Records>,
 }
 
 /// The line at one moment, from which every quantity of it follows.
@@ -184,11 +194,22 @@ impl Loads {
         let range = flight::range(plan, &propulsion);
         let compliance = Compliance::new(&rods, &balance, &relaxed_m, &range)?;
         let flight = Flight::new(plan.clone(), compliance, &propulsion);
-        let corners = Corners::new(&flight, &propulsion);
+        let end = flight.plan.end();
+        let corners = Corners::new(&flight, &propulsion, end);
+        let dry = propulsion.running_dry(&flight.plan).first().map(|dry| dry.at);
+        let corners_with_propellant = dry.map(|at| Corners::new(&flight, &propulsion, at));
+        let thrust = Thrust {
+            flight,
+            balance,
+            corners,
+            corners_with_propellant,
+            masses_hold_until: dry.unwrap_or(end),
+            records: OnceLock::new(),
+        };
         Ok(Loads {
             unloaded_m: rods.unloaded_m(),
             masses_kg: masses.nodes_kg.iter().map(|mass| mass.to_f64()).collect(),
-            course: Course::Thrust(Box::new(Thrust { flight, balance, corners })),
+            course: Course::Thrust(Box::new(thrust)),
             structure,
             rods,
             relaxed_m,
@@ -477,6 +498,48 @@ impl Loads {
             Course::Standing(standing) => standing.weight_n,
         };
         (whole * self.propulsion.shares()[engine] / rate).to_f64()
+    }
+
+    /// Whether the thrust of the plan never changes its direction; so too on a standing line.
+    #[must_use]
+    pub fn is_one_way(&self) -> bool {
+        match &self.course {
+            Course::Thrust(thrust) => {
+                let range = flight::range(&thrust.flight.plan, &self.propulsion);
+                range.lowest_m_s2 == 0.0 || range.highest_m_s2 == 0.0
+            }
+            Course::Standing(_) => true,
+        }
+    }
+
+    /// Between which positions a row stands under any thrust between the extremes of the plan
+    /// and none, whatever has burned by then of what the plan burns, m.
+    #[must_use]
+    pub fn position_bounds_m(&self, row: usize) -> [Dd; 2] {
+        let relaxed_m = self.relaxed_m[row];
+        let mut bounds = [relaxed_m; 2];
+        match &self.course {
+            Course::Standing(standing) => return [standing.positions_m[row]; 2],
+            Course::Thrust(thrust) if thrust.flight.compliance.terms() == 0 => {}
+            Course::Thrust(thrust) => {
+                let compliance = &thrust.flight.compliance;
+                let range = flight::range(&thrust.flight.plan, &self.propulsion);
+                for acceleration_m_s2 in [range.lowest_m_s2, range.highest_m_s2] {
+                    for burned in [0.0, range.most_burned] {
+                        let values = compliance.values(acceleration_m_s2, burned);
+                        let moved = Dd::new(acceleration_m_s2) * compliance.sum(row, &values);
+                        let here = relaxed_m + moved;
+                        if here > bounds[0] {
+                            bounds[0] = here;
+                        }
+                        if here < bounds[1] {
+                            bounds[1] = here;
+                        }
+                    }
+                }
+            }
+        }
+        bounds
     }
 
     /// The mechanical side of the line as it was given.

@@ -85,10 +85,14 @@ struct Corner {
 }
 
 impl Corners {
-    pub fn new(flight: &Flight, propulsion: &Propulsion) -> Corners {
+    /// The corners of a plan up to a moment, the end of the plan or before it.
+    pub fn new(flight: &Flight, propulsion: &Propulsion, until: ArrayTime) -> Corners {
         let mut found = Vec::new();
-        for index in 0..flight.plan.phases().len() {
-            sample(flight, propulsion, index, &mut found);
+        for (index, phase) in flight.plan.phases().iter().enumerate() {
+            if index > 0 && phase.start >= until {
+                break;
+            }
+            sample(flight, propulsion, index, until, &mut found);
             // A long history is folded into its hull as it comes.
             if found.len() > 4096 {
                 found = hull(found);
@@ -331,44 +335,55 @@ fn summit(corner: &Corner, sign: f64, value: impl Fn(ArrayTime) -> Dd) -> Dd {
     value(ArrayTime::from_attoseconds(low + (high - low) / 2))
 }
 
-/// Adds the states of one phase that may be corners: both ends, and samples of the curve
-/// between them.
-fn sample(flight: &Flight, propulsion: &Propulsion, index: usize, found: &mut Vec<Corner>) {
+/// Adds the states of one phase, up to a moment, that may be corners: both ends, and samples
+/// of the curve between them.
+fn sample(
+    flight: &Flight,
+    propulsion: &Propulsion,
+    index: usize,
+    until: ArrayTime,
+    found: &mut Vec<Corner>,
+) {
     let phase = &flight.plan.phases()[index];
-    let mut moments = vec![phase.start, phase.end];
-    if propulsion.is_falling() && slope(phase) != 0.0 {
-        let spent = |at| flight.plan.velocity_spent_m_s(at).to_f64();
-        let length = phase.end.attoseconds() - phase.start.attoseconds();
-        let fall = (spent(phase.end) - spent(phase.start)) * propulsion.inverse_speed_s_m();
-        // A short piece of a curve has one extreme at most, and one sample finds it.
-        let count = (2.0 + 14.0 * fall.min(1.0) + 8.0 * fall).min(400.0) as i128;
-        for step in 1..count {
-            let at = phase.start.attoseconds() + length * step / count;
-            moments.push(ArrayTime::from_attoseconds(at));
-        }
-        if let Some(zero) = sections(phase) {
-            let at = phase.start.seconds() + zero;
-            moments.extend(ArrayTime::nearest(at));
-        }
-        moments.sort();
-        moments.dedup();
-    }
-    let is_curve = moments.len() > 2;
-    let drives: Vec<(ArrayTime, Drive)> =
-        moments.into_iter().map(|at| (at, flight.drive(propulsion, Some(index), at))).collect();
-    for (place, &(at, drive)) in drives.iter().enumerate() {
-        let before = drives[place.saturating_sub(1)];
-        let after = drives[(place + 1).min(drives.len() - 1)];
-        found.push(Corner {
+    let end = phase.end.min(until);
+    let corner_at =
+        |at: ArrayTime, drive: Drive, bracket: Option<[(ArrayTime, Drive); 2]>| Corner {
             acceleration_m_s2: drive.acceleration_m_s2,
             burned: drive.burned,
             mass: 1.0 - drive.burned,
             phase: index,
             at,
             is_limit: at == phase.end,
-            bracket: is_curve.then_some([before, after]),
+            bracket,
             basis: Basis::default(),
-        });
+        };
+    let drive = |at| flight.drive(propulsion, Some(index), at);
+    if !propulsion.is_falling() || slope(phase) == 0.0 {
+        found.extend([phase.start, end].map(|at| corner_at(at, drive(at), None)));
+        return;
+    }
+    let mut moments = vec![phase.start, end];
+    let spent = |at| flight.plan.velocity_spent_m_s(at).to_f64();
+    let length = end.attoseconds() - phase.start.attoseconds();
+    let fall = (spent(end) - spent(phase.start)) * propulsion.inverse_speed_s_m();
+    // A short piece of a curve has one extreme at most, and one sample finds it.
+    let count = (2.0 + 14.0 * fall.min(1.0) + 8.0 * fall).min(400.0) as i128;
+    for step in 1..count {
+        let at = phase.start.attoseconds() + length * step / count;
+        moments.push(ArrayTime::from_attoseconds(at));
+    }
+    if let Some(zero) = sections(phase) {
+        let at = phase.start.seconds() + zero;
+        moments.extend(ArrayTime::nearest(at).filter(|at| *at < end));
+    }
+    moments.sort();
+    moments.dedup();
+    let is_curve = moments.len() > 2;
+    let drives: Vec<(ArrayTime, Drive)> = moments.into_iter().map(|at| (at, drive(at))).collect();
+    for (place, &(at, drive)) in drives.iter().enumerate() {
+        let before = drives[place.saturating_sub(1)];
+        let after = drives[(place + 1).min(drives.len() - 1)];
+        found.push(corner_at(at, drive, is_curve.then_some([before, after])));
     }
 }
 

@@ -174,10 +174,16 @@ impl Propulsion {
     /// The engines that run dry before the plan ends, in the order of the moments.
     #[must_use]
     pub fn running_dry(&self, plan: &Plan) -> Vec<RunsDry> {
+        self.running_dry_until(plan, plan.end())
+    }
+
+    /// The same by a moment, with what the engines need up to it.
+    #[must_use]
+    pub fn running_dry_until(&self, plan: &Plan, until: ArrayTime) -> Vec<RunsDry> {
         if !self.is_falling() {
             return Vec::new();
         }
-        let spent = plan.velocity_spent_m_s(plan.end());
+        let spent = plan.velocity_spent_m_s(until);
         let mut dry: Vec<RunsDry> = (0..self.engines.len())
             .filter_map(|engine| {
                 let aboard_kg = self.engines[engine].propellant_kg?;

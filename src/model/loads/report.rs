@@ -1,14 +1,17 @@
 //! What spans several moments: peaks over the plan, margins, slack, ringing.
 
 use super::flight;
-use super::peaks::{ForcePeaks, Margin, Peak};
+use super::peaks::{Corners, ForcePeaks, Margin, Peak};
 use super::period::{Period, Ringing, lowest_period_of};
 use super::propellant::RunsDry;
 use super::slack::{self, Mend, Slack};
 use super::standing::{GradientWarning, Standing};
 use super::{Course, Loads, State, Thrust};
+use crate::cores;
 use crate::model::array_time::ArrayTime;
+use crate::model::constants::INVERSE_C2_S2_M2;
 use crate::model::dd::Dd;
+use crate::model::horizon::Records;
 
 /// The strength of a span against the peak force that counts: tension in a tether, either
 /// sign in a boom.
@@ -20,6 +23,17 @@ pub struct Strength {
     pub margin: Margin,
 }
 
+impl Thrust {
+    fn records(&self) -> &Records {
+        self.records.get_or_init(|| Records::of(&self.flight.plan))
+    }
+
+    /// The corners at which forces mean something.
+    fn forced_corners(&self) -> &Corners {
+        self.corners_with_propellant.as_ref().unwrap_or(&self.corners)
+    }
+}
+
 impl Loads {
     fn thrust(&self) -> Option<&Thrust> {
         match &self.course {
@@ -29,11 +43,12 @@ impl Loads {
     }
 
     /// The extremes of the force in a span over the whole plan, at both one-sided values of
-    /// every boundary; `None` for a plan without phases.
+    /// every boundary; where an engine runs dry, up to that moment, from which the masses are
+    /// not those of the line. `None` for a plan without phases.
     #[must_use]
     pub fn force_peaks(&self, gap: usize) -> Option<ForcePeaks> {
         match &self.course {
-            Course::Thrust(thrust) => thrust.corners.forces(
+            Course::Thrust(thrust) => thrust.forced_corners().forces(
                 &thrust.flight,
                 &self.propulsion,
                 &thrust.balance,
@@ -57,6 +72,70 @@ impl Loads {
         let peak = if member.is_tether { peaks.largest } else { peaks.peak() };
         let value = if member.is_tether { peak.value.max(0.0) } else { peak.value.abs() };
         Some(Strength { peak, margin: Margin::new(value, limit) })
+    }
+
+    /// The phase and the moment at which the force that counts for the strength of a span
+    /// first passes a limit: inside a phase to the attosecond. `None` when it does not, and on
+    /// a standing line.
+    ///
+    /// Where masses stay, in a time that grows with the logarithm of the number of phases;
+    /// where they fall, with the number.
+    #[must_use]
+    pub fn force_beyond(&self, gap: usize, limit_n: f64) -> Option<(usize, ArrayTime)> {
+        let thrust = self.thrust()?;
+        let phases = thrust.flight.plan.phases();
+        let is_tether = self.structure.members[gap].is_tether;
+        let counts = |fore: f64, aft: f64| match is_tether {
+            true => fore.max(aft),
+            false => fore.abs().max(aft.abs()),
+        };
+        let is_beyond = |acceleration: Dd, burned: f64| {
+            let ends = thrust.balance.ends(gap, burned);
+            let compliance = &thrust.flight.compliance;
+            let values = compliance.values(acceleration.to_f64(), burned);
+            let force = |pull: Dd, row: usize| {
+                let mut position = self.relaxed_m[row];
+                if compliance.terms() > 0 {
+                    position = position + acceleration * compliance.sum(row, &values);
+                }
+                (acceleration * pull / (acceleration * position * INVERSE_C2_S2_M2 + 1.0)).to_f64()
+            };
+            counts(force(ends.fore, gap), force(ends.aft, gap + 1)) > limit_n
+        };
+        let drive = |index: usize, at: ArrayTime| {
+            let drive = thrust.flight.drive(&self.propulsion, Some(index), at);
+            is_beyond(drive.acceleration_m_s2, drive.burned)
+        };
+        let peak = self.strength(gap)?.peak;
+        let (phase, beyond) = if self.propulsion.is_falling() {
+            let last = peak.phase?;
+            let ends = |index: usize| {
+                let end = phases[index].end.min(thrust.masses_hold_until);
+                [phases[index].start, end].into_iter().find(|at| drive(index, *at))
+            };
+            let found = (0..=last).find_map(|index| Some((index, ends(index)?)));
+            found.unwrap_or((last, peak.at))
+        } else {
+            let found = thrust.records().first(|acceleration| is_beyond(acceleration, 0.0))?;
+            (found.phase, found.at)
+        };
+        let mut low = phases.get(phase)?.start.attoseconds();
+        let mut high = beyond.attoseconds();
+        if drive(phase, ArrayTime::from_attoseconds(low)) {
+            high = low;
+        }
+        while high - low > 1 {
+            let middle = low + (high - low) / 2;
+            let is_over = drive(phase, ArrayTime::from_attoseconds(middle));
+            if is_over { high = middle } else { low = middle }
+        }
+        Some((phase, ArrayTime::from_attoseconds(high)))
+    }
+
+    /// The records of the plan's thrust; `None` on a standing line.
+    #[must_use]
+    pub fn records(&self) -> Option<&Records> {
+        self.thrust().map(Thrust::records)
     }
 
     /// The felt acceleration of a row with the largest modulus over the plan, m/s², at its
@@ -122,7 +201,8 @@ impl Loads {
             (0..self.structure.members.len()).filter(|gap| self.structure.members[*gap].is_tether);
         match &self.course {
             Course::Thrust(thrust) => {
-                let parts = slack::thrust_sections(&thrust.flight, &self.propulsion);
+                let until = thrust.masses_hold_until;
+                let parts = slack::thrust_sections(&thrust.flight, &self.propulsion, until);
                 tethers
                     .filter_map(|gap| {
                         let worst = self.force_peaks(gap)?.smallest;
@@ -159,7 +239,7 @@ impl Loads {
             ends.aft.scale(sign),
             standing.weight_n.abs(),
         );
-        let mends = vec![slack::move_thrust(sign, share, gap), Mend::Boom];
+        let mends = vec![slack::move_thrust(&self.propulsion, sign, Some(share), gap), Mend::Boom];
         Some(Slack { gap, phase: None, at: ArrayTime::ZERO, worst, mends })
     }
 
@@ -184,38 +264,64 @@ impl Loads {
     pub fn ringing(&self, period: &Period) -> Vec<Ringing> {
         let Some(thrust) = self.thrust() else { return Vec::new() };
         let plan = &thrust.flight.plan;
-        let mut found = Vec::new();
         // A history may have many phases and a line many nodes: the nodes that move most in
         // some term of the stretch stand for the rest.
         let rows = thrust.flight.compliance.largest_rows();
-        let moves = |from: &State, to: &State| {
-            rows.iter()
-                .map(|&row| {
-                    let change = self.position_m(to, row) - self.position_m(from, row);
-                    (row, change.to_f64())
-                })
-                .collect::<Vec<_>>()
-        };
-        let mut before = self.state(ArrayTime::from_attoseconds(-1));
-        for (index, phase) in plan.phases().iter().enumerate() {
-            let begin = self.state(phase.start);
-            let end = self.state_of(thrust, Some(index), phase.end);
-            let change = |from: &State, to: &State, ramp_s: f64| {
-                Ringing::new(index, ramp_s, period.period_s, &moves(from, to))
+        let compliance = &thrust.flight.compliance;
+        // Where those nodes stand, and the acceleration, without the clocks of a whole state.
+        let shape = |phase: Option<usize>, at: ArrayTime| -> (Dd, Vec<Dd>) {
+            let drive = thrust.flight.drive(&self.propulsion, phase, at);
+            let alpha = drive.acceleration_m_s2;
+            let values = compliance.values(alpha.to_f64(), drive.burned);
+            let place = |&row: &usize| match compliance.terms() {
+                0 => self.relaxed_m[row],
+                _ => self.relaxed_m[row] + alpha * compliance.sum(row, &values),
             };
-            if before.instant.moment.acceleration_m_s2 != begin.instant.moment.acceleration_m_s2 {
-                found.push(change(&before, &begin, 0.0));
+            (alpha, rows.iter().map(place).collect())
+        };
+        let change = |index: usize, from: &(Dd, Vec<Dd>), to: &(Dd, Vec<Dd>), ramp_s: f64| {
+            let ends = from.1.iter().zip(&to.1);
+            let moves = ends.map(|(from, to)| (*to - *from).to_f64());
+            let changes: Vec<(usize, f64)> = rows.iter().copied().zip(moves).collect();
+            Ringing::new(index, ramp_s, period.period_s, &changes)
+        };
+        let phases = plan.phases();
+        let of_phase = |index: usize| -> [Option<Ringing>; 2] {
+            let phase = &phases[index];
+            let before = match index.checked_sub(1) {
+                Some(last) => phases[last].acceleration(phases[last].end),
+                None => Dd::ZERO,
+            };
+            let is_step = before != phase.acceleration(phase.start);
+            let is_ramp = flight::slope(phase) != 0.0;
+            if !is_step && !is_ramp {
+                return [None, None];
             }
-            if flight::slope(phase) != 0.0 {
+            let begin = shape(Some(index), phase.start);
+            let step = is_step.then(|| {
+                let left = match index.checked_sub(1) {
+                    Some(last) => shape(Some(last), phases[last].end),
+                    None => shape(None, ArrayTime::from_attoseconds(-1)),
+                };
+                change(index, &left, &begin, 0.0)
+            });
+            let ramp = is_ramp.then(|| {
                 let ramp_s = phase.end.seconds_since(phase.start).to_f64();
-                found.push(change(&begin, &end, ramp_s));
+                change(index, &begin, &shape(Some(index), phase.end), ramp_s)
+            });
+            [step, ramp]
+        };
+        let mut found: Vec<Ringing> = cores::map(phases.len(), cores::MANY, of_phase)
+            .into_iter()
+            .flatten()
+            .flatten()
+            .collect();
+        if let Some(last) = phases.len().checked_sub(1) {
+            let left = shape(Some(last), phases[last].end);
+            if !left.0.is_zero() {
+                let after = shape(None, plan.end());
+                found.push(change(phases.len(), &left, &after, 0.0));
             }
-            before = end;
-        }
-        let after = self.state(plan.end());
-        if before.instant.moment.acceleration_m_s2 != after.instant.moment.acceleration_m_s2 {
-            let changes = moves(&before, &after);
-            found.push(Ringing::new(plan.phases().len(), 0.0, period.period_s, &changes));
         }
         found
     }

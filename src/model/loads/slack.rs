@@ -32,10 +32,14 @@ pub enum Mend {
     /// Move at least this share of the thrust (of a standing line: of the support) from
     /// one side of the tether to the other: to this row or beyond, seen from the tether.
     MoveThrust {
-        /// Share to be moved, with the masses as they are.
-        share: f64,
+        /// Share to be moved, above 0 and no more than there is on that side, with the masses
+        /// as they are. `None` where propellant burns: which engine burns how much changes
+        /// with the shares, so none can be promised.
+        share: Option<f64>,
         /// The nearest row it may go to.
         to_row: usize,
+        /// The share there is on the side it would be moved from.
+        of: f64,
     },
     /// Keep the thrust in this direction throughout: the tether is taut there.
     OneDirection {
@@ -46,7 +50,7 @@ pub enum Mend {
     Boom,
 }
 
-/// A part of a phase in which the acceleration keeps its sign.
+/// A part of the plan in which the acceleration keeps its sign.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Section {
     phase: usize,
@@ -56,27 +60,41 @@ pub(super) struct Section {
     burned: [f64; 2],
 }
 
-/// The parts of a plan in which there is thrust, each of one sign.
-pub(super) fn thrust_sections(flight: &Flight, propulsion: &Propulsion) -> Vec<Section> {
-    let mut found = Vec::new();
+/// The parts of a plan, up to a moment, in which there is thrust, each of one sign; neighbours
+/// of one sign are one part, so a long history of one sign is.
+pub(super) fn thrust_sections(
+    flight: &Flight,
+    propulsion: &Propulsion,
+    until: ArrayTime,
+) -> Vec<Section> {
+    let mut found: Vec<Section> = Vec::new();
     for (index, phase) in flight.plan.phases().iter().enumerate() {
+        if index > 0 && phase.start >= until {
+            break;
+        }
+        let last = phase.end.min(until);
         let zero = sections(phase)
             .and_then(|after| ArrayTime::nearest(phase.start.seconds() + after))
-            .filter(|zero| *zero > phase.start && *zero < phase.end);
+            .filter(|zero| *zero > phase.start && *zero < last);
         let mut begin = phase.start;
-        for end in zero.into_iter().chain([phase.end]) {
+        for end in zero.into_iter().chain([last]) {
             // The end that is not the zero tells the sign.
-            let first = phase.acceleration(begin).to_f64();
-            let last = phase.acceleration(end).to_f64();
-            let leading = if first.abs() > last.abs() { first } else { last };
-            if leading != 0.0 {
-                let burned = |at| flight.drive(propulsion, Some(index), at).burned;
-                found.push(Section {
-                    phase: index,
-                    begin,
-                    sign: leading.signum(),
-                    burned: [burned(begin), burned(end)],
-                });
+            let ends = [begin, end].map(|at| phase.acceleration(at).to_f64());
+            let leading = if ends[0].abs() > ends[1].abs() { ends[0] } else { ends[1] };
+            let sign = leading.signum();
+            let burned = |at| match propulsion.is_falling() {
+                true => flight.drive(propulsion, Some(index), at).burned,
+                false => 0.0,
+            };
+            match found.last_mut() {
+                _ if leading == 0.0 => {}
+                Some(Section { sign: same, burned: [_, until], .. }) if *same == sign => {
+                    *until = burned(end);
+                }
+                _ => {
+                    let burned = [burned(begin), burned(end)];
+                    found.push(Section { phase: index, begin, sign, burned });
+                }
             }
             begin = end;
         }
@@ -128,12 +146,9 @@ fn mends(
     let mut mends = Vec::new();
     let flies = |sign: f64| parts.iter().any(|part| part.sign == sign);
     if flies(1.0) && flies(-1.0) {
-        let is_taut = |sign: f64| {
-            !parts
-                .iter()
-                .filter(|part| part.sign == sign)
-                .any(|part| part.burned.iter().any(|burned| is_slack(sign, *burned)))
-        };
+        // The pull is linear in what has burned: it is taut in between when it is at both ends.
+        let last = parts.last().map_or(0.0, |part| part.burned[1]);
+        let is_taut = |sign: f64| ![0.0, last].iter().any(|burned| is_slack(sign, *burned));
         let taut = [1.0, -1.0].into_iter().find(|sign| is_taut(*sign));
         mends.extend(taut.map(|sign| Mend::OneDirection { fore: sign > 0.0 }));
     } else {
@@ -147,7 +162,8 @@ fn mends(
                 share_to_move(sign, ends.fore, ends.aft, mass)
             })
             .fold(0.0, f64::max);
-        mends.push(move_thrust(sign, share, gap));
+        let share = (!propulsion.is_falling()).then_some(share);
+        mends.push(move_thrust(propulsion, sign, share, gap));
     }
     mends.push(Mend::Boom);
     mends
@@ -159,6 +175,21 @@ pub(super) fn share_to_move(sign: f64, fore: Dd, aft: Dd, whole: Dd) -> f64 {
     if sign > 0.0 { (-aft / whole).to_f64() } else { (fore / whole).to_f64() }
 }
 
-pub(super) fn move_thrust(sign: f64, share: f64, gap: usize) -> Mend {
-    Mend::MoveThrust { share, to_row: if sign > 0.0 { gap } else { gap + 1 } }
+/// The share of the thrust on the side of a tether from which it would have to be moved.
+fn share_aside(propulsion: &Propulsion, sign: f64, gap: usize) -> f64 {
+    let is_aside = |row: usize| if sign > 0.0 { row > gap } else { row <= gap };
+    let engines = propulsion.engines().iter().zip(propulsion.shares());
+    let aside = engines.filter(|(engine, _)| is_aside(engine.row));
+    aside.map(|(_, share)| share.to_f64()).sum()
+}
+
+pub(super) fn move_thrust(
+    propulsion: &Propulsion,
+    sign: f64,
+    share: Option<f64>,
+    gap: usize,
+) -> Mend {
+    let of = share_aside(propulsion, sign, gap);
+    let to_row = if sign > 0.0 { gap } else { gap + 1 };
+    Mend::MoveThrust { share: share.map(|share| share.min(of)), to_row, of }
 }

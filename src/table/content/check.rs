@@ -11,7 +11,7 @@ mod phases;
 mod placed;
 mod report;
 mod resolve;
-mod words;
+mod trial;
 
 use std::borrow::Cow;
 use std::sync::{Arc, OnceLock};
@@ -158,14 +158,18 @@ impl Subject {
 /// One rule, judged for one subject.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Judgement {
+    /// Its row in the table.
+    pub row: usize,
     /// The rule.
     pub rule: Rule,
     /// What it binds.
     pub subject: Subject,
     /// Index of the phase in which the value occurs first, or why there is none.
     pub phase: Result<usize, &'static str>,
-    /// The moment it does, or at which the rule is broken first.
+    /// The moment it does.
     pub at: Result<ArrayTime, &'static str>,
+    /// The moment from which on the rule is broken, or why there is none.
+    pub broken_from: Result<ArrayTime, &'static str>,
     /// The value nearest to the limit, in the unit of the rule, or why there is none.
     pub value: Result<f64, Cow<'static, str>>,
     /// The limit, or why there is none.
@@ -178,18 +182,53 @@ pub struct Judgement {
 }
 
 const NO_PHASE: &str = "outside every phase of a plan";
+const KEPT: &str = "the rule is kept";
+const ONE_MOMENT: &str = "one moment is judged";
 
 impl Judgement {
     fn not_judged(rule: Rule, subject: Subject, why: impl Into<Cow<'static, str>>) -> Judgement {
         Judgement {
+            row: 0,
             rule,
             subject,
             phase: Err("not judged"),
             at: Err("not judged"),
+            broken_from: Err("not judged"),
             value: Err(why.into()),
             limit: Err("not judged"),
             margin: None,
             state: RuleState::NotJudged,
+        }
+    }
+
+    /// The share of its limit that the value uses up; `None` where there is no such number.
+    #[must_use]
+    pub fn used(&self) -> Option<f64> {
+        let (Ok(value), Ok(limit)) = (&self.value, self.limit) else { return None };
+        Some(value / limit).filter(|used| used.is_finite())
+    }
+
+    /// Whether this rule is nearer to its limit, or farther beyond it, than another: what is
+    /// broken comes before what is kept, and a broken rule whose limit leaves no margin first
+    /// of all. Margins that agree to the last digit are told apart by the share of the limit
+    /// that is used, which has digits left where a margin is next to one.
+    #[must_use]
+    pub fn is_nearer_than(&self, other: &Judgement) -> bool {
+        let rank = |judgement: &Judgement| match (judgement.state, judgement.margin) {
+            (RuleState::Broken, margin) => (0, margin.unwrap_or(f64::NEG_INFINITY)),
+            (RuleState::Kept, margin) => (1, margin.unwrap_or(f64::INFINITY)),
+            (RuleState::NotJudged, _) => (2, 0.0),
+        };
+        let ((own, margin), (others, other_margin)) = (rank(self), rank(other));
+        if own != others || margin != other_margin {
+            return own < others || (own == others && margin < other_margin);
+        }
+        if let (Some(used), Some(other_used)) = (self.used(), other.used()) {
+            return used > other_used;
+        }
+        match (&self.value, &other.value) {
+            (Ok(value), Ok(other_value)) => self.rule == other.rule && value > other_value,
+            _ => false,
         }
     }
 }
@@ -203,8 +242,18 @@ pub struct Summary {
     pub broken: usize,
     /// Rules not judged.
     pub not_judged: usize,
-    /// The smallest margin of all that are judged; the first of equals.
+    /// The one nearest to its limit, or farthest beyond it, as
+    /// [`Judgement::is_nearer_than`] has it; the first of equals.
     pub smallest: Judgement,
+}
+
+/// What a row of the table is about: a node, or the place among the rules of its kind.
+#[derive(Clone, Copy, Debug)]
+enum Part {
+    Horizon(usize),
+    Rating(usize),
+    Load(usize),
+    Limit(usize),
 }
 
 /// Every rule of a layout, judged over its plan or at a moment.
@@ -270,7 +319,7 @@ impl<'a> Check<'a> {
     pub fn rows(&self) -> usize {
         self.layout.nodes.len()
             + self.rated.len()
-            + self.placed.judgements.len()
+            + self.placed.rows()
             + self.limits.judgements.len()
     }
 
@@ -281,23 +330,57 @@ impl<'a> Check<'a> {
     /// If there is no such row.
     #[must_use]
     pub fn judgement(&self, row: usize) -> Judgement {
+        let judgement = match self.part(row) {
+            Part::Horizon(node) => self.horizon(node),
+            Part::Rating(node) => self.rating(node),
+            Part::Load(place) => self.placed.judgement(self.layout, place),
+            Part::Limit(place) => self.limits.judgements[place].clone(),
+        };
+        Judgement { row, ..judgement }
+    }
+
+    /// What a row is about.
+    fn part(&self, row: usize) -> Part {
         let nodes = self.layout.nodes.len();
         if row < nodes {
-            return self.line.horizon(row, self.placed.position_m(self.layout, row));
+            return Part::Horizon(row);
         }
         let row = row - nodes;
         if let Some(&node) = self.rated.get(row) {
-            return self.rating(node);
+            return Part::Rating(node);
         }
         let row = row - self.rated.len();
-        if let Some((judgement, _)) = self.placed.judgements.get(row) {
-            return judgement.clone();
+        if row < self.placed.rows() {
+            return Part::Load(row);
         }
-        self.limits.judgements[row - self.placed.judgements.len()].clone()
+        Part::Limit(row - self.placed.rows())
+    }
+
+    fn horizon(&self, node: usize) -> Judgement {
+        let judgement = self.line.horizon(node, self.placed.position_m(self.layout, node));
+        if self.placed.beyond != Some(node) || judgement.state == RuleState::Broken {
+            return judgement;
+        }
+        // Where its own load would put it there is no number, but it is no place to be.
+        Judgement {
+            limit: Err("load brings the node to the horizon"),
+            margin: Some(0.0),
+            state: RuleState::Broken,
+            broken_from: Err("load brings the node to the horizon"),
+            ..judgement
+        }
     }
 
     fn rating(&self, row: usize) -> Judgement {
         let rating = self.layout.nodes[row].rating_m_s2.unwrap_or(f64::INFINITY);
+        if self.placed.beyond == Some(row) {
+            let why = "load brings the node to the horizon";
+            let limit = Ok(rating);
+            return Judgement {
+                limit,
+                ..Judgement::not_judged(Rule::Rating, Subject::Node(row), why)
+            };
+        }
         self.line.rating(row, self.placed.position_m(self.layout, row), rating)
     }
 
@@ -317,8 +400,7 @@ impl<'a> Check<'a> {
                 RuleState::Broken => summary.broken += 1,
                 RuleState::NotJudged => summary.not_judged += 1,
             }
-            let margin = judgement.margin.unwrap_or(f64::INFINITY);
-            if margin < summary.smallest.margin.unwrap_or(f64::INFINITY) {
+            if judgement.is_nearer_than(&summary.smallest) {
                 summary.smallest = judgement;
             }
         }
@@ -340,44 +422,46 @@ impl<'a> Check<'a> {
         };
         // `N` is linear in position and rows go fore to aft: when the ends fly, all do.
         let ends = [0, nodes.len() - 1];
-        if ends.iter().any(|&row| self.judgement(row).state == RuleState::Broken) {
+        let is_beyond = |row: &usize| self.judgement(*row).state == RuleState::Broken;
+        if self.placed.beyond.is_some() || ends.iter().any(is_beyond) {
             (0..nodes.len()).map(|row| self.judgement(row)).for_each(&mut see);
         }
-        for &row in &self.rated {
+        for (place, &row) in self.rated.iter().enumerate() {
             let node = &nodes[row];
             let rating = node.rating_m_s2.unwrap_or(f64::INFINITY);
             let position_m = self.placed.position_m(self.layout, row);
             if !self.line.surely_keeps_rating(position_m, rating) {
-                see(self.rating(row));
+                see(self.judgement(nodes.len() + place));
             }
         }
-        let loads = self.placed.judgements.iter().map(|(judgement, _)| judgement);
-        loads.chain(&self.limits.judgements).cloned().for_each(see);
+        let first = nodes.len() + self.rated.len();
+        (first..self.rows()).map(|row| self.judgement(row)).for_each(see);
         found
     }
 
     /// What would mend a broken rule; `None` for one that is kept or not judged for a
-    /// reason that no key of the layout mends.
+    /// reason that no key of the layout mends. A figure in it is one that, put into the
+    /// layout, keeps the rule; where none can be promised there is none.
     #[must_use]
     pub fn remedy(&self, judgement: &Judgement) -> Option<String> {
-        match (judgement.state, judgement.subject) {
-            (RuleState::Kept, _) | (_, Subject::Parts(..)) => None,
-            (RuleState::Broken, Subject::Node(row)) if judgement.rule == Rule::Horizon => {
-                Some(self.line.horizon_remedy(self.placed.position_m(self.layout, row)))
+        if judgement.state == RuleState::Kept || judgement.row >= self.rows() {
+            return None;
+        }
+        let is_broken = judgement.state == RuleState::Broken;
+        match self.part(judgement.row) {
+            Part::Horizon(node) if is_broken => {
+                let is_promised = !self.placed.may_stretch(self.layout);
+                let position_m = self.layout.nodes[node].position_m;
+                Some(self.line.horizon_remedy(position_m, is_promised))
             }
-            (RuleState::Broken, Subject::Node(row)) if judgement.rule == Rule::Rating => {
-                Some(self.line.rating_remedy(&self.layout.nodes[row]))
+            Part::Rating(node) if is_broken => {
+                let rating = self.layout.nodes[node].rating_m_s2.unwrap_or(f64::INFINITY);
+                let positions_m = self.placed.positions_m(self.layout, node);
+                Some(self.line.rating_remedy(judgement, rating, &positions_m))
             }
-            _ if judgement.rule == Rule::ClockOffset => {
-                self.limits.offset_remedy(self.layout, &self.placed, judgement)
-            }
-            _ if judgement.rule == Rule::Resolve => {
-                self.limits.resolve_remedy(self.layout, judgement)
-            }
-            _ => {
-                let same = |(known, _): &&(Judgement, String)| known == judgement;
-                self.placed.judgements.iter().find(same).map(|(_, remedy)| remedy.clone())
-            }
+            Part::Load(place) => self.placed.remedy(self.layout, place),
+            Part::Limit(place) => self.limits.remedy(self, place),
+            Part::Horizon(_) | Part::Rating(_) => None,
         }
     }
 
@@ -402,7 +486,7 @@ impl<'a> Check<'a> {
             (Rule::Propellant, _) => {
                 Some("more propellant, a higher exhaust speed, or less thrust".to_owned())
             }
-            (Rule::Resolve, _) => self.limits.resolve_widen(self.layout, judgement),
+            (Rule::Resolve, _) => self.limits.resolve_widen(self.layout, &self.placed, judgement),
             _ => None,
         };
         way.unwrap_or_else(|| "nothing that this version judges".to_owned())

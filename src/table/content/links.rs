@@ -9,15 +9,17 @@ use std::sync::{Arc, OnceLock};
 
 use super::{column, double as number, head};
 use crate::cores;
-use crate::layout::{Layout, Link};
-use crate::model::links::{Extreme, Extremes};
+use crate::layout::{Course, Layout, Link};
+use crate::model::links::{Extreme, Extremes, Rays};
 use crate::run::{Light, NoSignal, Signal, State};
 use crate::table::{Cell, Column, Measure, Report, Table};
 
 const NO_CARRIER: &str = "the layout states no carrier for this link";
 
-/// Rows of a summary that nobody minds waiting for.
+/// Rows of a summary, each with the phases of the plan, that nobody minds waiting for: of a
+/// line that stretches one takes ten times as long.
 const SHORT_SUMMARY: usize = 200;
+const SHORT_ROWS_AND_PHASES: usize = 20_000;
 /// Rows of a summary that are found together on all cores, and kept for the next pass.
 const MOST_KEPT: usize = 10_000;
 
@@ -79,6 +81,13 @@ pub fn links_report(state: State<'_>, with_summary: bool) -> Report<'_> {
     report.tables.push(links_table(&state, &ways, &light));
     if with_summary {
         report.tables.push(summary_table(layout, &ways, &light));
+        if light.rays().is_some_and(Rays::is_screened) {
+            report.remarks.push(
+                "the plan is so long that the summary looks only where the thrust, its slope or \
+                 a change of its slope is among the most extreme: `complete` is no"
+                    .to_owned(),
+            );
+        }
     } else {
         let left_out = "the table `summary`, the extremes over the plan, has to be asked for here";
         report.remarks.push(left_out.to_owned());
@@ -94,7 +103,13 @@ pub fn links_report(state: State<'_>, with_summary: bool) -> Report<'_> {
 /// the whole plan.
 #[must_use]
 pub fn has_short_summary(layout: &Layout) -> bool {
-    Ways::of(layout).rows() <= SHORT_SUMMARY
+    let phases = match &layout.course {
+        Course::Thrust(plan) => plan.phases().len(),
+        Course::Standing(_) => 1,
+    };
+    let cost = if crate::run::may_stretch(layout) { 10 } else { 1 };
+    let rows = Ways::of(layout).rows();
+    rows <= SHORT_SUMMARY && rows * phases * cost <= SHORT_ROWS_AND_PHASES
 }
 
 /// The two rows that a row of the table `links` goes between.
@@ -274,7 +289,7 @@ fn summary_table<'a>(
                     None => Cell::Absent(NO_CARRIER.into()),
                 });
             }
-            cells.push(Cell::Flag(!extremes.is_partial));
+            cells.push(Cell::Flag(!extremes.is_partial && !extremes.is_screened));
         }),
     }
 }

@@ -9,6 +9,8 @@ mod rates;
 mod reach;
 mod recording;
 mod released;
+mod thrust;
+mod words;
 
 use crate::layout::{Course, Layout};
 use crate::model::dd::Dd;
@@ -23,8 +25,8 @@ pub use check::{
 pub use compare::{Difference, compare_report, differences};
 pub use links::{has_short_summary, link_way, links_report};
 pub use loads::{
-    CAUTION, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad, judge_loads,
-    loads_report, sentence as load_sentence,
+    CAUTION, JudgedLoads, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad,
+    judge_loads, loads_report,
 };
 pub use offsets::offsets_report;
 pub use rates::rates_report;

@@ -1,15 +1,18 @@
 //! The limits a layout sets for itself with `[[limit]]`.
 
+use std::sync::OnceLock;
+
 use super::line::Line;
 use super::offset::Parting;
 use super::placed::Placed;
 use super::resolve::Resolving;
-use super::{JudgedOver, Judgement, Subject};
+use super::{Check, JudgedOver, Judgement, Rule, RuleState, Subject};
 use crate::layout::{Layout, Limit, LimitSubject};
 
 /// Judged limits, and what they were judged under.
 pub(super) struct Limits<'a> {
     pub judgements: Vec<Judgement>,
+    remedies: Vec<OnceLock<Option<String>>>,
     resolving: Option<Resolving>,
     parting: Option<Parting<'a>>,
 }
@@ -35,7 +38,8 @@ impl<'a> Limits<'a> {
             let judge = |parting: &Parting| parting.judge(layout, placed, subject, limit_s);
             judgements.extend(parting.as_ref().map(judge));
         }
-        Limits { judgements, resolving, parting }
+        let remedies = judgements.iter().map(|_| OnceLock::new()).collect();
+        Limits { judgements, remedies, resolving, parting }
     }
 
     /// Whether a clock offset was judged that grows for ever.
@@ -48,17 +52,19 @@ impl<'a> Limits<'a> {
         self.resolving.is_some()
     }
 
-    pub(super) fn offset_remedy(
-        &self,
-        layout: &Layout,
-        placed: &Placed,
-        judgement: &Judgement,
-    ) -> Option<String> {
-        self.parting.as_ref().map(|parting| parting.remedy(layout, placed, judgement))
-    }
-
-    pub(super) fn resolve_remedy(&self, layout: &Layout, judgement: &Judgement) -> Option<String> {
-        self.resolving.as_ref()?.remedy(layout, judgement)
+    /// What would mend a broken limit, or let one be judged. It may take a trial, and a page
+    /// asks more than once.
+    pub(super) fn remedy(&self, check: &Check<'_>, place: usize) -> Option<String> {
+        let judgement = &self.judgements[place];
+        let (layout, placed) = (check.layout(), &check.placed);
+        let find = || match judgement.rule {
+            Rule::Resolve => {
+                self.resolving.as_ref()?.remedy(layout, check.span(), placed, judgement)
+            }
+            _ if judgement.state != RuleState::Broken => None,
+            _ => Some(self.parting.as_ref()?.remedy(layout, check.span(), placed, judgement)),
+        };
+        self.remedies[place].get_or_init(find).clone()
     }
 
     pub(super) fn offset_widen(
@@ -70,8 +76,13 @@ impl<'a> Limits<'a> {
         self.parting.as_ref().map(|parting| parting.widen(layout, placed, judgement))
     }
 
-    pub(super) fn resolve_widen(&self, layout: &Layout, judgement: &Judgement) -> Option<String> {
-        self.resolving.as_ref().map(|resolving| resolving.widen(layout, judgement))
+    pub(super) fn resolve_widen(
+        &self,
+        layout: &Layout,
+        placed: &Placed,
+        judgement: &Judgement,
+    ) -> Option<String> {
+        self.resolving.as_ref().map(|resolving| resolving.widen(layout, placed, judgement))
     }
 }
 

@@ -1,16 +1,18 @@
 //! Horizon and rating: what the accelerations of the plan do to a node.
 
 use std::borrow::Cow;
+use std::sync::OnceLock;
 
-use super::words::ACCELERATION;
-use super::{JudgedOver, Judgement, NO_PHASE, Rule, RuleState, Subject};
+use super::{JudgedOver, Judgement, KEPT, NO_PHASE, ONE_MOMENT, Rule, RuleState, Subject};
 use crate::layout::{Course, Layout, Node};
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::C2_M2_S2;
 use crate::model::dd::Dd;
-use crate::model::horizon::{self, Extreme, Extremes, HorizonReached};
+use crate::model::horizon::{self, Extreme, Extremes, HorizonReached, Records};
 use crate::model::plan::{Moment, Plan};
 use crate::model::rates::{Instant, is_realisable};
+use crate::table::content::thrust::{self, Bound};
+use crate::table::content::words::{ACCELERATION, LENGTH};
 
 /// The accelerations the line is judged under, and the gradient it stands in.
 pub(super) struct Line<'a> {
@@ -20,8 +22,12 @@ pub(super) struct Line<'a> {
     gradient_per_s2: f64,
     /// The plan, when the whole of it is judged.
     plan: Option<&'a Plan>,
+    /// Its records, made when a rule is found broken.
+    records: OnceLock<Records>,
     /// Whether the thrust of a plan can be changed to mend a rule.
     thrust: bool,
+    /// Whether one moment is judged.
+    is_moment: bool,
 }
 
 impl<'a> Line<'a> {
@@ -36,7 +42,9 @@ impl<'a> Line<'a> {
                 phases: false,
                 gradient_per_s2: standing.gradient_per_s2,
                 plan: None,
+                records: OnceLock::new(),
                 thrust: false,
+                is_moment: matches!(span, JudgedOver::Moment(_)),
             },
             (Course::Thrust(plan), JudgedOver::Moment(at)) => {
                 let moment = plan.moment(at);
@@ -44,7 +52,15 @@ impl<'a> Line<'a> {
                 extremes.largest.phase = moment.phase.unwrap_or(0);
                 extremes.smallest.phase = extremes.largest.phase;
                 let phases = moment.phase.is_some();
-                Line { extremes, phases, gradient_per_s2: 0.0, plan: None, thrust: true }
+                Line {
+                    extremes,
+                    phases,
+                    gradient_per_s2: 0.0,
+                    plan: None,
+                    records: OnceLock::new(),
+                    thrust: true,
+                    is_moment: true,
+                }
             }
             (Course::Thrust(plan), JudgedOver::Plan) => {
                 let extremes = Extremes::of(plan);
@@ -53,7 +69,9 @@ impl<'a> Line<'a> {
                     phases: extremes.is_some(),
                     gradient_per_s2: 0.0,
                     plan: Some(plan),
+                    records: OnceLock::new(),
                     thrust: true,
+                    is_moment: false,
                 }
             }
         }
@@ -101,38 +119,77 @@ impl<'a> Line<'a> {
         };
         let limit = (position_m != 0.0).then(|| (C2_M2_S2 / Dd::new(position_m)).abs().to_f64());
         let kept = is_realisable(worst.acceleration_m_s2, position_m);
-        let mut judgement = Judgement {
+        Judgement {
+            row,
             rule: Rule::Horizon,
             subject: Subject::Node(row),
             phase: self.phase(&worst),
             at: Ok(worst.at),
+            broken_from: self.broken_from(kept, || {
+                ArrayTime::nearest(self.reached(position_m).at_s).unwrap_or(worst.at)
+            }),
             value: Ok(value),
             limit: limit.ok_or("the reference node is never at the horizon"),
             margin: Some(rate.to_f64()),
             state: RuleState::of(kept),
-        };
-        if !kept {
-            let reached = self.reached(position_m);
-            judgement.phase = if self.phases { Ok(reached.phase) } else { Err(NO_PHASE) };
-            judgement.at = Ok(ArrayTime::nearest(reached.at_s).unwrap_or(worst.at));
         }
-        judgement
+    }
+
+    /// The moment from which on a rule is broken, which is found when it is.
+    fn broken_from(
+        &self,
+        kept: bool,
+        from: impl FnOnce() -> ArrayTime,
+    ) -> Result<ArrayTime, &'static str> {
+        match (kept, self.plan, self.is_moment) {
+            (true, ..) => Err(KEPT),
+            (_, Some(_), _) => Ok(from()),
+            (.., true) => Err(ONE_MOMENT),
+            _ => Err("a line that stands does so always"),
+        }
+    }
+
+    fn records(&self, plan: &Plan) -> &Records {
+        self.records.get_or_init(|| Records::of(plan))
     }
 
     /// Where a node that is not realisable reaches the horizon, and what it is offered.
     fn reached(&self, position_m: f64) -> HorizonReached {
         self.plan
-            .and_then(|plan| horizon::reached(plan, &self.extremes, position_m))
+            .and_then(|plan| {
+                horizon::reached_first(plan, self.records(plan), &self.extremes, position_m)
+            })
             .unwrap_or_else(|| horizon::partners(self.extremes.worst_for(position_m), position_m))
     }
 
-    pub(super) fn horizon_remedy(&self, position_m: f64) -> String {
-        let reached = self.reached(position_m);
-        format!(
-            "hold no more than {:?} m/s^2 at the reference, or place the node no farther than {:?} m",
-            reached.largest_acceleration_m_s2.abs(),
-            reached.nearest_position_m
-        )
+    /// Whether an extreme lies in a phase that holds its thrust, or no phase is known.
+    fn is_held(&self, extreme: &Extreme) -> bool {
+        let phase = self.plan.and_then(|plan| plan.phases().get(extreme.phase));
+        phase.is_none_or(|phase| phase.is_hold())
+    }
+
+    /// What would take a node out of reach of the horizon; with figures on a rigid line alone,
+    /// since where load puts a node changes with either.
+    pub(super) fn horizon_remedy(&self, position_m: f64, is_promised: bool) -> String {
+        let worst = self.extremes.worst_for(position_m);
+        let reached = horizon::partners(worst, position_m);
+        let held = thrust::no_more_than(self.is_held(&worst));
+        let most = reached.largest_acceleration_m_s2;
+        let most = ACCELERATION
+            .at_most(most.abs(), |size| is_realisable(Dd::new(size.copysign(most)), position_m));
+        let near = reached.nearest_position_m;
+        let near = LENGTH.at_most(near.abs(), |size| {
+            is_realisable(worst.acceleration_m_s2, size.copysign(near))
+        });
+        match (most, near) {
+            (Some(most), Some(near)) if is_promised && self.thrust => format!(
+                "{held} {most} at the reference, or place the node no farther than {near} from it"
+            ),
+            (_, Some(near)) if is_promised => {
+                format!("place the node no farther than {near} from the reference")
+            }
+            _ => "less thrust, or the node nearer to the reference".to_owned(),
+        }
     }
 
     pub(super) fn horizon_widen(&self, node: &Node) -> String {
@@ -170,20 +227,23 @@ impl<'a> Line<'a> {
             }
         };
         let kept = value <= rating;
-        let mut judgement = Judgement {
+        Judgement {
+            row: 0,
             rule: Rule::Rating,
             subject,
             phase: self.phase(&worst),
             at: Ok(worst.at),
+            broken_from: self.broken_from(kept, || {
+                let first = self.plan.and_then(|plan| {
+                    thrust::first_beyond(plan, self.records(plan), position_m, rating)
+                });
+                first.map_or(worst.at, |(_, at)| at)
+            }),
             value: Ok(value),
             limit: Ok(rating),
             margin: Some(1.0 - value / rating),
             state: RuleState::of(kept),
-        };
-        if !kept && let Some((phase, at)) = self.first_over(position_m, rating) {
-            (judgement.phase, judgement.at) = (Ok(phase), Ok(at));
         }
-        judgement
     }
 
     /// Whether a node keeps its rating by so much that doubles settle it.
@@ -210,18 +270,24 @@ impl<'a> Line<'a> {
         (!least.is_negative() && !least.is_zero()).then(|| bound / least)
     }
 
-    pub(super) fn rating_remedy(&self, node: &Node) -> String {
-        let (position_m, rating) = (node.position_m, node.rating_m_s2.unwrap_or(f64::INFINITY));
-        let value = self.rating(0, position_m, rating).value.unwrap_or_default();
+    /// What would keep a rating, at the positions the node takes.
+    pub(super) fn rating_remedy(
+        &self,
+        judgement: &Judgement,
+        rating: f64,
+        positions_m: &[f64],
+    ) -> String {
+        let value = judgement.value.as_ref().copied().unwrap_or(f64::INFINITY);
         let build = ACCELERATION.at_least(value, |rating| rating >= value);
-        let most = self.acceleration_at_rating(position_m, rating).filter(|_| self.thrust);
-        let Some(most) = most.map(Dd::to_f64) else {
-            return format!("build the node for {build}");
-        };
-        let held = ACCELERATION.at_most(most.abs(), |size| {
-            self.felt(Dd::new(size.copysign(most)), position_m).abs() <= rating
+        let most = self
+            .thrust
+            .then(|| thrust::most_between(&self.extremes, &Bound { rating, positions_m }))
+            .flatten();
+        let is_hold = judgement.phase.is_ok_and(|phase| {
+            let phase = self.plan.and_then(|plan| plan.phases().get(phase));
+            phase.is_none_or(|phase| phase.is_hold())
         });
-        format!("hold no more than {held} at the reference, or build the node for {build}")
+        thrust::rating_advice(most, build, self.thrust, is_hold)
     }
 
     pub(super) fn rating_widen(&self, node: &Node) -> String {
@@ -235,25 +301,6 @@ impl<'a> Line<'a> {
             ),
             None => format!("a higher rating of `{name}`"),
         }
-    }
-
-    /// The first phase and moment at which a node feels more than it is built for.
-    fn first_over(&self, position_m: f64, rating: f64) -> Option<(usize, ArrayTime)> {
-        let over = |acceleration: Dd| self.felt(acceleration, position_m).abs() > rating;
-        for (index, phase) in self.plan?.phases().iter().enumerate() {
-            if over(phase.acceleration(phase.start)) {
-                return Some((index, phase.start));
-            }
-            let last = phase.acceleration(phase.end);
-            if over(last) {
-                let bound = Dd::new(rating.copysign(last.hi));
-                let limit = bound / (Dd::ONE - bound * position_m / C2_M2_S2);
-                let after = phase.moment_of(limit).unwrap_or(Dd::ZERO);
-                let at = ArrayTime::nearest(phase.start.seconds() + after)?;
-                return Some((index, at.max(phase.start)));
-            }
-        }
-        None
     }
 }
 

@@ -4,14 +4,15 @@
 //! through zero. Before the plan it is zero and after it, while the line coasts, it stays.
 
 use super::placed::Placed;
-use super::words::{LENGTH, SPEED, TIME};
-use super::{JudgedOver, Judgement, NO_PHASE, Rule, RuleState, Subject};
+use super::trial::Trial;
+use super::{JudgedOver, Judgement, KEPT, NO_PHASE, ONE_MOMENT, Rule, RuleState, Subject};
 use crate::layout::{Course, Layout, Standing};
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::{C2_M2_S2, SPEED_OF_LIGHT_M_S};
 use crate::model::dd::Dd;
 use crate::model::plan::{Moment, Phase, Plan};
 use crate::model::rates::Instant;
+use crate::table::content::words::{LENGTH, SPEED, TIME, listed};
 
 /// How long a standing line is judged for: its clocks part without end.
 pub(super) const STANDING_FOR: ArrayTime = ArrayTime::from_seconds(86_400);
@@ -101,64 +102,120 @@ impl<'a> Parting<'a> {
         };
         let value = value.abs().to_f64();
         let kept = value <= limit_s;
-        let mut judgement = Judgement {
+        let broken_from = match self {
+            _ if kept => Err(KEPT),
+            Parting::Plan { plan, sizes, .. } => {
+                let most = Dd::new(limit_s) * SPEED_OF_LIGHT_M_S / apart.abs();
+                Ok(first_beyond(plan, sizes, most).map_or(at, |(_, from)| from))
+            }
+            Parting::Standing(instant) => {
+                let pace = offset_s(instant).abs() / STANDING_FOR.seconds();
+                Ok(ArrayTime::nearest(Dd::new(limit_s) / pace).unwrap_or(STANDING_FOR))
+            }
+            Parting::Moment(..) => Err(ONE_MOMENT),
+        };
+        Judgement {
+            row: 0,
             rule: Rule::ClockOffset,
             subject,
             phase,
             at: Ok(at),
+            broken_from,
             value: Ok(value),
             limit: Ok(limit_s),
             margin: Some(1.0 - value / limit_s),
             state: RuleState::of(kept),
-        };
-        if !kept {
-            match self {
-                Parting::Plan { plan, sizes, .. } => {
-                    let most = Dd::new(limit_s) * SPEED_OF_LIGHT_M_S / apart.abs();
-                    if let Some((phase, at)) = first_beyond(plan, sizes, most) {
-                        (judgement.phase, judgement.at) = (Ok(phase), Ok(at));
-                    }
-                }
-                Parting::Standing(instant) => {
-                    let pace = offset_s(instant).abs() / STANDING_FOR.seconds();
-                    judgement.at =
-                        Ok(ArrayTime::nearest(Dd::new(limit_s) / pace).unwrap_or(STANDING_FOR));
-                }
-                Parting::Moment(..) => {}
-            }
         }
-        judgement
     }
 
-    pub(super) fn remedy(&self, layout: &Layout, placed: &Placed, judgement: &Judgement) -> String {
+    /// What a line that stands is judged at: its clocks part evenly.
+    fn standing(&self, layout: &Layout) -> Option<&Instant> {
+        match (self, &layout.course) {
+            (Parting::Standing(instant), _)
+            | (Parting::Moment(_, instant), Course::Standing(_)) => Some(instant),
+            _ => None,
+        }
+    }
+
+    /// What would keep a limit. On a line that stretches, a distance is the one to be filed,
+    /// found by trial, and a gain is one that any plan of one direction, no stronger than this
+    /// one, keeps the limit with.
+    pub(super) fn remedy(
+        &self,
+        layout: &Layout,
+        span: JudgedOver,
+        placed: &Placed,
+        judgement: &Judgement,
+    ) -> String {
         let (value, limit_s) = numbers(judgement);
         let allow = TIME.at_least(value, |limit| limit >= value);
-        if let Parting::Standing(instant) = self {
-            let ends = judgement.subject.ends(layout);
+        let allow = allow.map_or_else(|| "allow more".to_owned(), |allow| format!("allow {allow}"));
+        let ends = judgement.subject.ends(layout);
+        if let Some(instant) = self.standing(layout) {
+            let at = instant.moment.at;
             let offset_s = placed
-                .offset_s(ends, instant.moment.at)
+                .offset_s(ends, at)
                 .unwrap_or_else(|| offset_s(layout, judgement.subject, instant));
-            let often = limit_s * STANDING_FOR.to_f64() / offset_s.abs().to_f64();
-            let often = TIME.at_most(often, |time| {
-                (offset_s.abs() * time / STANDING_FOR.seconds()).to_f64() <= limit_s
-            });
-            return format!("set the clocks again within {often}, or allow {allow}");
+            let pace = offset_s.abs() / at.seconds().abs();
+            let often = (Dd::new(limit_s) / pace).to_f64();
+            let often = TIME.at_most(often, |time| (pace * time).to_f64() <= limit_s);
+            let set = match often {
+                Some(often) => format!("set the clocks again within {often}"),
+                None => "set the clocks again more often".to_owned(),
+            };
+            return format!("{set}, or {allow}");
         }
-        let rapidity = match self {
+        let reached = match self {
             Parting::Plan { peak: reached, .. } | Parting::Moment(reached, _) => reached.rapidity,
             Parting::Standing(_) => Dd::ZERO,
         };
-        let apart = placed.apart_m(layout, judgement.subject.ends(layout)).abs();
         let offset = |apart: Dd, rapidity: Dd| {
             (apart * rapidity / SPEED_OF_LIGHT_M_S).abs().to_f64() <= limit_s
         };
-        // A line whose positions count in no thrust has no place that is near enough.
-        let near = (Dd::new(limit_s) * SPEED_OF_LIGHT_M_S / rapidity.abs()).to_f64();
-        let near = LENGTH.at_most(near, |apart| offset(Dd::new(apart), rapidity));
-        let gain = (C2_M2_S2 * limit_s / apart).to_f64();
-        let gain = SPEED.at_most(gain, |gain| offset(apart, Dd::new(gain) / SPEED_OF_LIGHT_M_S));
-        let place = place(layout, judgement.subject, &near);
-        format!("gain no more than {gain}, place {place}, or allow {allow}")
+        let gain = placed.farthest_apart_m(layout, ends).and_then(|apart| {
+            let gain = (C2_M2_S2 * limit_s / apart).to_f64();
+            SPEED.at_most(gain, |gain| offset(apart, Dd::new(gain) / SPEED_OF_LIGHT_M_S))
+        });
+        let gain = match gain {
+            Some(gain) => format!("gain no more than {gain}"),
+            None => "gain less".to_owned(),
+        };
+        let place = if placed.is_elastic() {
+            self.place_on_trial(layout, span, judgement, limit_s)
+        } else {
+            // A rigid line may have its two nodes anywhere so far apart.
+            let near = (Dd::new(limit_s) * SPEED_OF_LIGHT_M_S / reached.abs()).to_f64();
+            let near = LENGTH.at_most(near, |near_m| {
+                offset(Dd::new(near_m), reached)
+                    && moved_m(layout, ends, near_m).all(|apart| offset(apart, reached))
+            });
+            place(layout, judgement.subject, near.as_deref())
+        };
+        listed(&[gain, place, allow])
+    }
+
+    /// Where one of the two would have to be filed, on a line that stretches.
+    fn place_on_trial(
+        &self,
+        layout: &Layout,
+        span: JudgedOver,
+        judgement: &Judgement,
+        limit_s: f64,
+    ) -> String {
+        let [from, to] = judgement.subject.ends(layout);
+        let trial = Trial::of(layout, span, Rule::ClockOffset, judgement.subject, limit_s);
+        let found = trial.and_then(|trial| {
+            let distance = |row, other| Some((row, other, trial.distance(row, other, true)?));
+            distance(to, from).or_else(|| distance(from, to))
+        });
+        let Some((row, other, near)) = found else {
+            return place(layout, judgement.subject, None);
+        };
+        let name = |row: usize| match row == layout.reference {
+            true => "the reference".to_owned(),
+            false => format!("`{}`", layout.nodes[row].name),
+        };
+        format!("place {} no farther than {near} from {}", name(row), name(other))
     }
 
     pub(super) fn widen(&self, layout: &Layout, placed: &Placed, judgement: &Judgement) -> String {
@@ -167,8 +224,8 @@ impl<'a> Parting<'a> {
         if value == 0.0 {
             return format!("nothing needs to: the clocks of `{name}` do not part");
         }
-        if let Parting::Standing(_) = self {
-            let often = TIME.about(limit_s * STANDING_FOR.to_f64() / value);
+        if let Some(instant) = self.standing(layout) {
+            let often = TIME.about(limit_s * instant.moment.at.to_f64().abs() / value);
             return format!(
                 "setting the clocks of `{name}` more often: they part so far in {often}"
             );
@@ -217,21 +274,23 @@ fn judge_stretched(
                     let is_beyond = size(ArrayTime::from_attoseconds(middle)) > limit_s;
                     if is_beyond { high = middle } else { low = middle }
                 }
-                beyond = Some((Ok(index), ArrayTime::from_attoseconds(high)));
+                beyond = Some(ArrayTime::from_attoseconds(high));
             }
             before = at;
         }
     }
-    let (phase, at) = beyond.unwrap_or((peak.1, peak.2));
+    let kept = peak.0 <= limit_s;
     Judgement {
+        row: 0,
         rule: Rule::ClockOffset,
         subject,
-        phase,
-        at: Ok(at),
+        phase: peak.1,
+        at: Ok(peak.2),
+        broken_from: if kept { Err(KEPT) } else { Ok(beyond.unwrap_or(peak.2)) },
         value: Ok(peak.0),
         limit: Ok(limit_s),
         margin: Some(1.0 - peak.0 / limit_s),
-        state: RuleState::of(peak.0 <= limit_s),
+        state: RuleState::of(kept),
     }
 }
 
@@ -239,12 +298,17 @@ fn numbers(judgement: &Judgement) -> (f64, f64) {
     (judgement.value.clone().unwrap_or_default(), judgement.limit.unwrap_or_default())
 }
 
-fn place(layout: &Layout, subject: Subject, near: &str) -> String {
-    match subject {
-        Subject::Node(row) => {
-            format!("`{}` no farther than {near} from the reference", layout.nodes[row].name)
+fn place(layout: &Layout, subject: Subject, near: Option<&str>) -> String {
+    match (subject, near) {
+        (Subject::Node(row), Some(near)) => {
+            let name = &layout.nodes[row].name;
+            format!("place `{name}` no farther than {near} from the reference")
         }
-        _ => format!("the two no farther than {near} apart"),
+        (Subject::Node(row), None) => {
+            format!("place `{}` nearer to the reference", layout.nodes[row].name)
+        }
+        (_, Some(near)) => format!("place the two no farther than {near} apart"),
+        (_, None) => "place the two nearer together".to_owned(),
     }
 }
 
@@ -255,8 +319,21 @@ fn standing_at(standing: &Standing, at: ArrayTime) -> Instant {
     }
 }
 
+/// How far apart two nodes stand once either has been put at a distance from the other, as far
+/// as doubles can state where that is, m.
+fn moved_m(layout: &Layout, ends: [usize; 2], distance_m: f64) -> impl Iterator<Item = Dd> {
+    let place = |row: usize| layout.nodes[row].position_m;
+    let [one, other] = ends;
+    let moved = [(one, other), (other, one)].map(|(row, stays)| {
+        let side = if place(row) < place(stays) { -1.0 } else { 1.0 };
+        let moved = place(stays) + side * distance_m;
+        (row != layout.reference).then(|| Dd::difference(moved, place(stays)))
+    });
+    moved.into_iter().flatten()
+}
+
 /// How far apart the two stand, from the first to the second, m.
-pub(super) fn apart_m(layout: &Layout, subject: Subject) -> Dd {
+fn apart_m(layout: &Layout, subject: Subject) -> Dd {
     let [from, to] = subject.ends(layout).map(|row| layout.nodes[row].position_m);
     Dd::difference(to, from)
 }

@@ -7,14 +7,14 @@
 use std::sync::Arc;
 
 use super::line::Line;
-use super::{JudgedOver, Judgement, NO_PHASE, Rule, RuleState, Subject};
+use super::{JudgedOver, Judgement, KEPT, NO_PHASE, ONE_MOMENT, Rule, RuleState, Subject};
 use crate::layout::{Layout, SpanKind};
 use crate::model::array_time::ArrayTime;
 use crate::model::dd::Dd;
 use crate::model::horizon::Extreme;
 use crate::model::loads::{Loads, LoadsFault, State};
 use crate::table::content::loads::{
-    LoadJudgement, LoadRule, LoadSubject, judge_loads, judge_loads_at,
+    CUT, JudgedLoads, LoadJudgement, LoadRule, LoadSubject, judge_loads_at, judge_loads_of_line,
 };
 
 /// The line as its loads place it.
@@ -23,8 +23,12 @@ pub(super) struct Placed {
     loads: Option<Arc<Loads>>,
     /// Positions under load, m; those of the layout where there are none.
     loaded_m: Option<Vec<f64>>,
-    /// Judged rules on loads, with what would mend them.
-    pub judgements: Vec<(Judgement, String)>,
+    /// The node that its own load brings to the horizon, so that there are no loads.
+    pub beyond: Option<usize>,
+    judged: Option<JudgedLoads>,
+    /// Rules on loads that cannot be judged.
+    unjudged: Vec<Judgement>,
+    is_moment: bool,
 }
 
 impl Placed {
@@ -37,7 +41,14 @@ impl Placed {
         loads: Option<Arc<Loads>>,
     ) -> Placed {
         let unjudged = inputs(layout);
-        let none = Placed { loads: None, loaded_m: None, judgements: Vec::new() };
+        let none = Placed {
+            loads: None,
+            loaded_m: None,
+            beyond: None,
+            judged: None,
+            unjudged: Vec::new(),
+            is_moment: matches!(span, JudgedOver::Moment(_)),
+        };
         if unjudged.is_empty() && !crate::run::may_stretch(layout) {
             return none;
         }
@@ -45,18 +56,21 @@ impl Placed {
             Ok(loads) => loads,
             Err(fault) => {
                 let why = |(rule, subject): &(Rule, Subject)| {
-                    (Judgement::not_judged(*rule, *subject, told(layout, &fault)), String::new())
+                    Judgement::not_judged(*rule, *subject, told(layout, &fault))
                 };
-                return Placed { judgements: unjudged.iter().map(why).collect(), ..none };
+                let beyond = match fault {
+                    LoadsFault::Horizon { row, .. } => Some(row),
+                    _ => None,
+                };
+                return Placed { beyond, unjudged: unjudged.iter().map(why).collect(), ..none };
             }
         };
         let judged = match span {
-            JudgedOver::Plan => judge_loads(layout, &loads),
+            JudgedOver::Plan => judge_loads_of_line(layout, &loads),
             JudgedOver::Moment(at) => judge_loads_at(layout, &loads, at),
         };
-        let judgements = judged.into_iter().filter_map(judgement).collect();
         if loads.is_rigid() {
-            return Placed { judgements, ..none };
+            return Placed { judged: Some(judged), ..none };
         }
         let under = |extreme: Extreme| -> State {
             let ended = loads.state_before_end_of(extreme.phase);
@@ -72,7 +86,53 @@ impl Placed {
             loads.position_m(state, row).to_f64()
         };
         let loaded_m = layout.nodes.iter().enumerate().map(place).collect();
-        Placed { loads: Some(Arc::clone(&loads)), loaded_m: Some(loaded_m), judgements }
+        Placed { loads: Some(loads), loaded_m: Some(loaded_m), judged: Some(judged), ..none }
+    }
+
+    /// Number of judgements of rules on loads.
+    pub fn rows(&self) -> usize {
+        self.judged.as_ref().map_or(self.unjudged.len(), JudgedLoads::len)
+    }
+
+    /// A judgement of a rule on loads.
+    pub fn judgement(&self, layout: &Layout, place: usize) -> Judgement {
+        match self.judged.as_ref().and_then(|judged| judged.get(layout, place)) {
+            Some(judged) => judgement(layout, judged, self.is_moment),
+            None => self.unjudged[place].clone(),
+        }
+    }
+
+    /// What would mend it; `None` for one that is kept or cannot be judged.
+    pub fn remedy(&self, layout: &Layout, place: usize) -> Option<String> {
+        let remedy = self.judged.as_ref()?.remedy(layout, place);
+        Some(remedy).filter(|remedy| !remedy.is_empty())
+    }
+
+    /// Whether load or temperature moves nodes, or would if the line could be flown.
+    pub fn may_stretch(&self, layout: &Layout) -> bool {
+        self.is_elastic() || self.beyond.is_some() || crate::run::may_stretch(layout)
+    }
+
+    /// The positions a node takes under the thrusts of the plan, m: one on a rigid line.
+    pub fn positions_m(&self, layout: &Layout, row: usize) -> Vec<f64> {
+        let Some(loads) = &self.loads else { return vec![layout.nodes[row].position_m] };
+        let mut positions_m = vec![self.position_m(layout, row)];
+        positions_m.extend(loads.position_bounds_m(row).map(|end| end.to_f64()));
+        positions_m
+    }
+
+    /// How far apart two nodes can come to stand under the thrusts of the plan, m; `None`
+    /// where the thrust changes its direction, so that what stretch adds to a clock offset
+    /// does not follow from what is gained.
+    pub fn farthest_apart_m(&self, layout: &Layout, [from, to]: [usize; 2]) -> Option<Dd> {
+        let Some(loads) = &self.loads else { return Some(self.apart_m(layout, [from, to]).abs()) };
+        if loads.is_elastic() && !loads.is_one_way() {
+            return None;
+        }
+        let ([fore, aft], [other_fore, other_aft]) =
+            (loads.position_bounds_m(from), loads.position_bounds_m(to));
+        let (one, other) = ((fore - other_aft).abs(), (other_fore - aft).abs());
+        Some(if one > other { one } else { other })
     }
 
     /// Position of a node as it is judged, m.
@@ -114,11 +174,10 @@ fn told(layout: &Layout, fault: &LoadsFault) -> String {
     }
 }
 
-fn judgement(judged: LoadJudgement) -> Option<(Judgement, String)> {
+fn judgement(layout: &Layout, judged: LoadJudgement, is_moment: bool) -> Judgement {
     const STILL: &str = "a line that stands carries it always";
     let rule = match judged.rule {
-        // Judged with the others of its kind, node by node.
-        LoadRule::Rating => return None,
+        LoadRule::Rating => Rule::Rating,
         LoadRule::Strength => Rule::Strength,
         LoadRule::Slack => Rule::Slack,
         LoadRule::Ramp => Rule::Ramp,
@@ -128,19 +187,32 @@ fn judgement(judged: LoadJudgement) -> Option<(Judgement, String)> {
         LoadSubject::Node(row) => Subject::Node(row),
         LoadSubject::Span(gap) => Subject::Pair([gap, gap + 1]),
         LoadSubject::Change(_) => Subject::Line,
-        LoadSubject::Engine(row) => Subject::Engine(row),
+        LoadSubject::Engine(engine) => {
+            Subject::Engine(layout.engines.get(engine).map_or(layout.reference, |own| own.node))
+        }
     };
-    let judgement = Judgement {
+    if let Some(why) = judged.not_judged {
+        return Judgement::not_judged(rule, subject, why);
+    }
+    let outside = if rule == Rule::Ramp { CUT } else { NO_PHASE };
+    let broken_from = match judged.from {
+        Some((_, from)) => Ok(from),
+        None if !judged.is_broken => Err(KEPT),
+        None if is_moment => Err(ONE_MOMENT),
+        None => Err(STILL),
+    };
+    Judgement {
+        row: 0,
         rule,
         subject,
-        phase: judged.phase.ok_or(NO_PHASE),
+        phase: judged.phase.ok_or(outside),
         at: judged.at.ok_or(STILL),
+        broken_from,
         value: Ok(judged.value),
         limit: Ok(judged.limit),
         margin: judged.margin,
         state: RuleState::of(!judged.is_broken),
-    };
-    Some((judgement, judged.remedy))
+    }
 }
 
 /// One row for each rule on loads that the layout gives the inputs of.

@@ -8,11 +8,12 @@ use crate::layout::{Course, Layout};
 use crate::table::content::{NO_RAPIDITY, OVERFLOW, column};
 use crate::table::{Cell, Column, Measure, Report, Scalar, Table};
 
-const COLUMNS: [Column; 10] = [
+const COLUMNS: [Column; 11] = [
     column("rule", "rule", Measure::Word),
     column("subject", "subject", Measure::Word),
     column("phase", "phase", Measure::Count),
     column("at_s", "at", Measure::Various),
+    column("broken_from_s", "broken from", Measure::Various),
     column("value", "value", Measure::Various),
     column("limit", "limit", Measure::Various),
     column("unit", "unit", Measure::Unit),
@@ -72,6 +73,7 @@ fn scalars<'a>(check: &Check<'a>) -> Vec<Scalar<'a>> {
         counted("broken", "broken", summary.broken),
         counted("not_judged", "not judged", summary.not_judged),
         scalar("smallest_margin", "smallest margin", Measure::Ratio, margin(smallest)),
+        scalar("smallest_margin_used", "of its limit used", Measure::Ratio, used(smallest)),
         word("smallest_margin_rule", "of the rule", smallest.rule.word().into()),
         word("smallest_margin_subject", "for", smallest.subject.name(check.layout())),
         scalar("smallest_margin_phase", "in phase", Measure::Count, phase(smallest)),
@@ -86,6 +88,14 @@ fn margin(judgement: &Judgement) -> Cell<'static> {
         Some(margin) => Cell::finite(margin, OVERFLOW),
         None if judgement.state == RuleState::NotJudged => Cell::Absent(NOT_JUDGED.into()),
         None => Cell::Absent("a limit of zero has no margin".into()),
+    }
+}
+
+/// What is left of a margin where its own digits are used up: `1.000000` says nothing.
+fn used(judgement: &Judgement) -> Cell<'static> {
+    match judgement.used() {
+        Some(used) => Cell::Number(used),
+        None => Cell::Absent("the value and its limit have no quotient".into()),
     }
 }
 
@@ -140,6 +150,7 @@ fn fill<'a>(check: &Check<'a>, judgement: &Judgement, cells: &mut Vec<Cell<'a>>)
     cells.push(Cell::Text(judgement.subject.name(check.layout())));
     cells.push(phase(judgement));
     cells.push(at(judgement));
+    cells.push(judgement.broken_from.map_or_else(|why| Cell::Absent(why.into()), Cell::Computed));
     cells.push(match &judgement.value {
         Ok(value) => measured(*value),
         Err(why) => Cell::Absent(why.clone()),

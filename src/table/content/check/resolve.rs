@@ -7,18 +7,19 @@
 //! away, and neither is told from the effect by it.
 
 use super::line::{Line, why};
-use super::offset::apart_m;
 use super::placed::Placed;
-use super::words::{ACCELERATION, LENGTH, TIME};
-use super::{JudgedOver, Judgement, NO_PHASE, Rule, RuleState, Subject};
-use crate::layout::{Course, Layout};
+use super::trial::Trial;
+use super::{JudgedOver, Judgement, KEPT, NO_PHASE, Rule, RuleState, Subject};
+use crate::layout::{Course, Layout, Positions};
 use crate::model::array_time::ArrayTime;
 use crate::model::clocks::{Comparison, LinkNoise, Noise, RESOLVING_FACTOR, Resolved, Unresolved};
 use crate::model::constants::C2_M2_S2;
 use crate::model::dd::Dd;
 use crate::model::plan::LARGEST_ACCELERATION_M_S2;
 use crate::model::rates::{Instant, is_realisable};
+use crate::table::content::words::{ACCELERATION, LENGTH, TIME, listed};
 
+const ONE_THRUST: &str = "judged under one thrust, whenever it is held";
 const DESIGN: &str = "judged under the design acceleration, whenever it is held";
 
 /// What the rates of a pair are judged under.
@@ -96,10 +97,12 @@ impl Resolving {
             Resolved::Never(reason) => (why(never(reason, difference)), f64::NEG_INFINITY, false),
         };
         Judgement {
+            row: 0,
             rule: Rule::Resolve,
             subject,
             phase: self.phase,
             at: self.at,
+            broken_from: if kept { Err(KEPT) } else { Err(ONE_THRUST) },
             value,
             limit: Ok(limit_s),
             margin: Some(margin),
@@ -132,7 +135,13 @@ impl Resolving {
     }
 
     /// What would mend a broken limit, or let one be judged.
-    pub(super) fn remedy(&self, layout: &Layout, judgement: &Judgement) -> Option<String> {
+    pub(super) fn remedy(
+        &self,
+        layout: &Layout,
+        span: JudgedOver,
+        placed: &Placed,
+        judgement: &Judgement,
+    ) -> Option<String> {
         let subject = judgement.subject;
         let comparison = match self.comparison(layout, subject) {
             Ok(comparison) => comparison,
@@ -142,25 +151,60 @@ impl Resolving {
             return None;
         }
         let mut ways = Vec::new();
-        if let Some(thrust) = self.thrust_needed(layout, judgement, &comparison) {
-            ways.push(format!("hold at least {thrust}"));
+        let limit_s = judgement.limit.ok()?;
+        let is_promised = match self.is_design() {
+            // The design acceleration also says where the nodes of some layouts stand.
+            true => layout.equal_shift.is_empty() && !(is_as_flown(layout) && placed.is_elastic()),
+            false => !placed.is_elastic(),
+        };
+        let thrust = self.thrust_needed(layout, placed, judgement, &comparison);
+        match (thrust.filter(|_| is_promised), self.is_design()) {
+            (Some(thrust), true) => ways.push(format!("design for at least {thrust}")),
+            (Some(thrust), false) => ways.push(format!("hold at least {thrust}")),
+            (None, _) if self.thrust && !is_promised => ways.push("hold more thrust".to_owned()),
+            (None, _) => {}
         }
-        if let Some(apart) = self.distance_needed(layout, judgement, &comparison) {
-            ways.push(format!("place the two at least {apart} apart"));
+        let [from, to] = subject.ends(layout);
+        let apart = if placed.is_elastic() {
+            let trial = Trial::of(layout, span, Rule::Resolve, subject, limit_s);
+            let distance = |row, other| {
+                let found = trial.as_ref()?.distance(row, other, false)?;
+                Some((row, other, found))
+            };
+            distance(to, from).or_else(|| distance(from, to))
+        } else {
+            self.distance_needed(layout, placed, judgement, &comparison)
+        };
+        let name = |row: usize| match row == layout.reference {
+            true => "the reference".to_owned(),
+            false => format!("`{}`", layout.nodes[row].name),
+        };
+        match apart {
+            Some((row, other, apart)) => {
+                ways.push(format!("place {} at least {apart} from {}", name(row), name(other)));
+            }
+            None if placed.is_elastic() => ways.push("place the two farther apart".to_owned()),
+            None => {}
         }
         ways.push("use quieter clocks".to_owned());
         if let Ok(value) = judgement.value {
-            ways.push(format!("allow {}", TIME.at_least(value, |limit| limit >= value)));
+            let allow = TIME.at_least(value, |limit| limit >= value);
+            ways.extend(allow.map(|allow| format!("allow {allow}")));
         }
         Some(listed(&ways))
     }
 
-    pub(super) fn widen(&self, layout: &Layout, judgement: &Judgement) -> String {
+    /// Whether the design acceleration is what the pair is judged under.
+    fn is_design(&self) -> bool {
+        self.at == Err(DESIGN)
+    }
+
+    pub(super) fn widen(&self, layout: &Layout, placed: &Placed, judgement: &Judgement) -> String {
         let name = judgement.subject.name(layout);
         let least = self
             .comparison(layout, judgement.subject)
             .ok()
-            .and_then(|comparison| self.thrust_needed(layout, judgement, &comparison));
+            .and_then(|comparison| self.thrust_needed(layout, placed, judgement, &comparison));
         let ways = "quieter clocks, or more time to resolve them";
         match least {
             Some(thrust) => {
@@ -174,11 +218,13 @@ impl Resolving {
     fn thrust_needed(
         &self,
         layout: &Layout,
+        placed: &Placed,
         judgement: &Judgement,
         comparison: &Comparison,
     ) -> Option<String> {
         let limit_s = judgement.limit.ok().filter(|_| self.thrust)?;
-        let [from, to] = judgement.subject.ends(layout).map(|row| layout.nodes[row].position_m);
+        let ends = judgement.subject.ends(layout);
+        let [from, to] = ends.map(|row| placed.position_m(layout, row));
         let apart = Dd::difference(to, from);
         let thrust = self.instant.moment.acceleration_m_s2;
         // N_j/N_i − 1 = α Δh/(c² + α h_i) = d at α = d c²/(Δh − d h_i).
@@ -186,42 +232,51 @@ impl Resolving {
         let backwards = thrust.is_negative() != apart.is_negative();
         let least = Dd::new(if backwards { -least } else { least });
         let needed = (least * C2_M2_S2 / (apart - least * from)).to_f64();
+        // A line without thrust may take up either direction.
+        let signs = if thrust.is_zero() { [1.0, -1.0] } else { [needed.signum(); 2] };
         let is_enough = |size: f64| {
-            let thrust = Dd::new(size.copysign(needed));
-            let difference = thrust * apart / (C2_M2_S2 + thrust * from);
-            let resolved = comparison.resolve(difference.to_f64(), RESOLVING_FACTOR);
-            matches!(resolved, Resolved::After(time) if time <= limit_s)
+            signs.iter().all(|sign| {
+                let thrust = Dd::new(size * sign);
+                let difference = thrust * apart / (C2_M2_S2 + thrust * from);
+                let resolved = comparison.resolve(difference.to_f64(), RESOLVING_FACTOR);
+                matches!(resolved, Resolved::After(time) if time <= limit_s)
+            })
         };
         let can_be_flown = needed.abs() <= LARGEST_ACCELERATION_M_S2
             && (needed.is_sign_negative() == thrust.is_negative() || thrust.is_zero())
             && [from, to].iter().all(|end| is_realisable(Dd::new(needed), *end));
-        can_be_flown.then(|| ACCELERATION.at_least(needed.abs(), is_enough))
+        can_be_flown.then(|| ACCELERATION.at_least(needed.abs(), is_enough)).flatten()
     }
 
-    /// How far apart the two would have to stand, the first of them where it is.
+    /// Which of the two would have to stand how far from the other, on its own side of it.
     fn distance_needed(
         &self,
         layout: &Layout,
+        placed: &Placed,
         judgement: &Judgement,
         comparison: &Comparison,
-    ) -> Option<String> {
+    ) -> Option<(usize, usize, String)> {
         let limit_s = judgement.limit.ok().filter(|_| self.instant.gradient_per_s2 == 0.0)?;
-        let from = layout.nodes[judgement.subject.ends(layout)[0]].position_m;
+        let [from, to] = judgement.subject.ends(layout);
+        let (moved, stays) = if to == layout.reference { (from, to) } else { (to, from) };
+        let place = |row: usize| placed.position_m(layout, row);
         let thrust = self.instant.moment.acceleration_m_s2;
-        if thrust.is_zero() {
+        if thrust.is_zero() || moved == layout.reference {
             return None;
         }
         let least = RESOLVING_FACTOR * comparison.quietest_within(limit_s).deviation;
-        let rate = C2_M2_S2 + thrust * from;
+        let rate = C2_M2_S2 + thrust * place(from);
         let needed = (rate * least / thrust.abs()).to_f64();
-        let is_enough = |apart: f64| {
-            let difference = (thrust.abs() * apart / rate).to_f64();
-            let resolved = comparison.resolve(difference, RESOLVING_FACTOR);
-            matches!(resolved, Resolved::After(time) if time <= limit_s)
+        let side = if place(moved) < place(stays) { -1.0 } else { 1.0 };
+        let is_enough = |distance_m: f64| {
+            let put = place(stays) + side * distance_m;
+            let (from, to) = if moved == to { (place(from), put) } else { (put, place(to)) };
+            let difference = thrust * Dd::difference(to, from) / (C2_M2_S2 + thrust * from);
+            let resolved = comparison.resolve(difference.to_f64(), RESOLVING_FACTOR);
+            is_realisable(thrust, put)
+                && matches!(resolved, Resolved::After(time) if time <= limit_s)
         };
-        let apart = apart_m(layout, judgement.subject);
-        let farthest = from + needed.copysign(apart.hi);
-        is_realisable(thrust, farthest).then(|| LENGTH.at_least(needed, is_enough))
+        LENGTH.at_least(needed, is_enough).map(|distance| (moved, stays, distance))
     }
 }
 
@@ -243,12 +298,6 @@ fn never(reason: Unresolved, difference: f64) -> String {
     }
 }
 
-/// `a, b, or c`.
-fn listed(ways: &[String]) -> String {
-    match ways {
-        [] => String::new(),
-        [one] => one.clone(),
-        [one, other] => format!("{one}, or {other}"),
-        [first, rest @ ..] => format!("{first}, {}", listed(rest)),
-    }
+fn is_as_flown(layout: &Layout) -> bool {
+    layout.positions == Positions::AsFlown
 }

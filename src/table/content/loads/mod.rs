@@ -1,5 +1,6 @@
 //! `loads`: forces, stretch, propellant; peaks over the plan, and the rules they break.
 
+mod history;
 mod rules;
 mod span;
 
@@ -9,19 +10,26 @@ use std::sync::Arc;
 use super::{OVERFLOW, RELEASED, column, head, number};
 use crate::layout::{Course, Layout};
 use crate::model::array_time::ArrayTime;
-use crate::model::loads::{GradientWarning, Loads, Peak, Ringing};
+use crate::model::loads::{GradientWarning, Loads, Peak};
 use crate::run::State;
 use crate::table::{Cell, Column, Measure, Report, Scalar, Table, readable_time};
 
 use rules::six_digits;
 
-pub use rules::{LoadJudgement, LoadRule, LoadSubject, judge_loads, judge_loads_at};
+pub use rules::{JudgedLoads, LoadJudgement, LoadRule, LoadSubject, judge_loads};
+pub(super) use rules::{judge_loads_at, judge_loads_of_line};
 pub use span::SpanLoad;
 
 /// What stands under everything that shows forces.
 pub const CAUTION: &str = "these figures are for planning. They leave out buckling, sag, \
     transverse motion and dynamics beyond the ringing listed, and do not replace review by \
     qualified structural, propulsion and range-safety staff under the rules that apply locally.";
+
+/// Where a change of thrust stands that is in no phase.
+pub(super) const CUT: &str = "the thrust is cut at the end of the plan";
+
+/// Sentences about rules of one kind; the rest is counted.
+const MOST_TOLD: usize = 3;
 
 const STILL: &str = "a line that stands carries it always";
 const NO_PHASES: &str = "the plan has no phases";
@@ -65,10 +73,11 @@ const RAMPS: [Column; 8] = [
     column("state", "state", Measure::Word),
 ];
 
-const BROKEN: [Column; 9] = [
+const BROKEN: [Column; 10] = [
     column("rule", "rule", Measure::Word),
     column("subject", "subject", Measure::Word),
     column("phase", "phase", Measure::Count),
+    column("at_s", "at", Measure::Various),
     column("from_s", "from", Measure::Various),
     column("value", "value", Measure::Various),
     column("limit", "limit", Measure::Various),
@@ -81,37 +90,30 @@ const BROKEN: [Column; 9] = [
 #[derive(Clone, Debug)]
 pub struct LoadsOverPlan {
     loads: Arc<Loads>,
-    ringing: Arc<[Ringing]>,
-    period_s: Option<f64>,
-    broken: Arc<[LoadJudgement]>,
+    judged: Arc<JudgedLoads>,
+    /// The places of the rules that are broken.
+    broken: Arc<[usize]>,
 }
 
 impl LoadsOverPlan {
     /// Judges the loads of a line over its plan.
     #[must_use]
     pub fn new(layout: &Layout, loads: Arc<Loads>) -> LoadsOverPlan {
-        let broken: Vec<LoadJudgement> =
-            judge_loads(layout, &loads).into_iter().filter(|judged| judged.is_broken).collect();
-        let period = loads.lowest_period();
-        LoadsOverPlan {
-            ringing: period.map_or_else(Vec::new, |period| loads.ringing(&period)).into(),
-            period_s: period.map(|period| period.period_s),
-            broken: broken.into(),
-            loads,
-        }
+        let judged = Arc::new(judge_loads(layout, &loads));
+        let broken = (0..judged.len()).filter(|place| judged.is_broken(*place)).collect();
+        LoadsOverPlan { judged, broken, loads }
     }
 
     /// The rules on loads that the plan breaks.
-    #[must_use]
-    pub fn broken(&self) -> &[LoadJudgement] {
-        &self.broken
+    pub fn broken<'a>(&'a self, layout: &'a Layout) -> impl Iterator<Item = LoadJudgement> + 'a {
+        self.broken.iter().filter_map(|place| self.judged.get(layout, *place))
     }
 
     /// Whether strength, a rating, slack or propellant is broken: what `loads` fails on.
     /// A short ramp is a warning.
     #[must_use]
     pub fn fails(&self) -> bool {
-        self.broken.iter().any(|judged| judged.rule != LoadRule::Ramp)
+        self.broken.iter().any(|place| !self.judged.is_ramp(*place))
     }
 }
 
@@ -127,13 +129,14 @@ pub fn loads_report<'a>(state: State<'a>, over_plan: &LoadsOverPlan) -> Report<'
         span_table(state.clone(), Arc::clone(loads)),
         engine_table(&state, Arc::clone(loads)),
         ramp_table(state.run().layout(), over_plan),
-        broken_table(state.run().layout(), Arc::clone(&over_plan.broken)),
+        broken_table(state.run().layout(), over_plan),
     ];
     report
 }
 
 fn scalars<'a>(state: &State<'a>, over_plan: &LoadsOverPlan) -> Vec<Scalar<'a>> {
-    let LoadsOverPlan { loads, period_s, broken, .. } = over_plan;
+    let LoadsOverPlan { loads, broken, judged } = over_plan;
+    let period_s = judged.period_s();
     let now = loads.state_of_instant(*state.instant());
     let scalar = |key, heading, measure, value| Scalar { key, heading, measure, value };
     let absent = |why: &'static str| Cell::Absent(why.into());
@@ -178,8 +181,7 @@ fn scalars<'a>(state: &State<'a>, over_plan: &LoadsOverPlan) -> Vec<Scalar<'a>> 
 fn remarks(state: &State<'_>, over_plan: &LoadsOverPlan) -> Vec<String> {
     let layout = state.run().layout();
     let loads = &over_plan.loads;
-    let mut remarks: Vec<String> =
-        over_plan.broken.iter().map(|judged| sentence(layout, judged)).collect();
+    let mut remarks = broken_remarks(layout, over_plan);
     remarks.extend(absurd_mass_ratio(state, loads));
     if loads.structure().members.iter().enumerate().any(|(gap, member)| {
         !member.is_tether && loads.force_peaks(gap).is_some_and(|peaks| peaks.smallest.value < 0.0)
@@ -196,16 +198,57 @@ fn remarks(state: &State<'_>, over_plan: &LoadsOverPlan) -> Vec<String> {
     remarks
 }
 
-/// One broken rule, in a sentence: what, where, from when, what would mend it.
-#[must_use]
-pub fn sentence(layout: &Layout, judged: &LoadJudgement) -> String {
-    let subject = judged.subject.name(layout);
-    let mut place = String::new();
-    if let Some(phase) = judged.phase {
-        place.push_str(&format!(" in phase {}", phase + 1));
+/// The broken rules in sentences: the first few of each kind, and how many more there are.
+fn broken_remarks(layout: &Layout, over_plan: &LoadsOverPlan) -> Vec<String> {
+    let LoadsOverPlan { judged, broken, .. } = over_plan;
+    let rule = |place: &usize| judged.get(layout, *place).map(|judged| judged.rule);
+    let mut remarks = Vec::new();
+    let mut rest = &broken[..];
+    // Rules of a kind stand together; ramps are told apart without being judged again.
+    while let Some(first) = rest.first() {
+        let kind = rule(first);
+        let count = if kind == Some(LoadRule::Ramp) {
+            rest.partition_point(|place| judged.is_ramp(*place))
+        } else {
+            rest.iter().take_while(|place| !judged.is_ramp(**place) && rule(place) == kind).count()
+        };
+        let (here, after) = rest.split_at(count.max(1));
+        for place in here.iter().take(MOST_TOLD) {
+            if let Some(found) = judged.get(layout, *place) {
+                remarks.push(sentence(layout, &found, &judged.remedy(layout, *place)));
+            }
+        }
+        if here.len() > MOST_TOLD {
+            let word = kind.map_or("", LoadRule::word);
+            let more = here.len() - MOST_TOLD;
+            remarks.push(format!("And {more} more of the rule {word}, in the table `broken`."));
+        }
+        rest = after;
     }
-    if let Some(at) = judged.at {
-        place.push_str(&format!(", from {}", readable_time(in_milliseconds(at))));
+    remarks
+}
+
+/// One broken rule, in a sentence: what, where, from when, what would mend it.
+fn sentence(layout: &Layout, judged: &LoadJudgement, remedy: &str) -> String {
+    let subject = judged.subject.name(layout);
+    let told_at = |at: ArrayTime| readable_time(in_milliseconds(at));
+    let mut place = String::new();
+    let (phase, from) = match judged.from {
+        Some((phase, from)) => (phase, Some(from)),
+        None => (judged.phase, None),
+    };
+    if let Some(phase) = phase {
+        let phase = history::place(layout, phase).unwrap_or_else(|| format!("phase {}", phase + 1));
+        place.push_str(&format!(" in {phase}"));
+    } else if judged.rule == LoadRule::Ramp {
+        place.push_str(" where it is cut at the end of the plan");
+    }
+    if let Some(from) = from {
+        place.push_str(&format!(", from {}", told_at(from)));
+    }
+    let is_peak = matches!(judged.rule, LoadRule::Rating | LoadRule::Strength | LoadRule::Slack);
+    if let Some(at) = judged.at.filter(|at| is_peak && Some(*at) != from) {
+        place.push_str(&format!(", most at {}", told_at(at)));
     }
     let (value, limit) = (six_digits(judged.value), six_digits(judged.limit));
     let unit = judged.rule.unit();
@@ -220,7 +263,7 @@ pub fn sentence(layout: &Layout, judged: &LoadJudgement) -> String {
         LoadRule::Strength => format!("{subject} carries {value} {unit} of {limit} {unit}"),
     };
     let lead = if judged.rule == LoadRule::Ramp { "warning" } else { "broken" };
-    format!("{lead}: {}: {told}{place}; remedy: {}.", judged.rule.word(), judged.remedy)
+    format!("{lead}: {}: {told}{place}; remedy: {remedy}.", judged.rule.word())
 }
 
 /// A moment for a sentence: what is finer than a millisecond stands in the table.
@@ -394,8 +437,8 @@ fn estimate(value: f64) -> f64 {
 }
 
 fn ramp_table<'a>(layout: &'a Layout, over_plan: &LoadsOverPlan) -> Table<'a> {
-    let ringing = Arc::clone(&over_plan.ringing);
-    let period_s = over_plan.period_s.unwrap_or(f64::INFINITY);
+    let ringing = Arc::clone(over_plan.judged.ringing());
+    let period_s = over_plan.judged.period_s().unwrap_or(f64::INFINITY);
     let ends: Vec<_> = match &layout.course {
         Course::Thrust(plan) => plan.phases().iter().map(|phase| phase.start).collect(),
         Course::Standing(_) => Vec::new(),
@@ -413,7 +456,7 @@ fn ramp_table<'a>(layout: &'a Layout, over_plan: &LoadsOverPlan) -> Table<'a> {
             let ringing = &ringing[row];
             cells.push(match ends.get(ringing.phase) {
                 Some(_) => Cell::Integer(i64::try_from(ringing.phase + 1).unwrap_or(i64::MAX)),
-                None => Cell::Absent("the step at the end of the plan".into()),
+                None => Cell::Absent(CUT.into()),
             });
             cells.push(Cell::Time(ends.get(ringing.phase).copied().unwrap_or(end)));
             cells.push(Cell::Number(ringing.ramp_s));
@@ -427,24 +470,30 @@ fn ramp_table<'a>(layout: &'a Layout, over_plan: &LoadsOverPlan) -> Table<'a> {
     }
 }
 
-fn broken_table<'a>(layout: &'a Layout, broken: Arc<[LoadJudgement]>) -> Table<'a> {
+fn broken_table<'a>(layout: &'a Layout, over_plan: &LoadsOverPlan) -> Table<'a> {
+    let (judged, broken) = (Arc::clone(&over_plan.judged), Arc::clone(&over_plan.broken));
     Table {
         name: "broken",
         columns: BROKEN.to_vec(),
         rows: broken.len(),
         marked: None,
         fill: Box::new(move |row, cells| {
-            let judged = &broken[row];
+            let place = broken[row];
+            let remedy = judged.remedy(layout, place);
+            let Some(judged) = judged.get(layout, place) else { return };
             cells.push(Cell::Text(judged.rule.word().into()));
             cells.push(Cell::Text(judged.subject.name(layout)));
             cells.push(match judged.phase {
                 Some(phase) => Cell::Integer(i64::try_from(phase + 1).unwrap_or(i64::MAX)),
+                None if judged.rule == LoadRule::Ramp => Cell::Absent(CUT.into()),
                 None => Cell::Absent("outside every phase of a plan".into()),
             });
-            cells.push(match judged.at {
-                Some(at) => Cell::Computed(at),
-                None => Cell::Absent(STILL.into()),
-            });
+            for at in [judged.at, judged.from.map(|(_, at)| at)] {
+                cells.push(match at {
+                    Some(at) => Cell::Computed(at),
+                    None => Cell::Absent(STILL.into()),
+                });
+            }
             let measure = judged.rule.measure();
             cells.push(match judged.value.is_finite() {
                 true => Cell::Measured(judged.value, measure),
@@ -456,7 +505,7 @@ fn broken_table<'a>(layout: &'a Layout, broken: Arc<[LoadJudgement]>) -> Table<'
                 Some(margin) => Cell::finite(margin, OVERFLOW),
                 None => Cell::Absent("a limit of zero has no margin".into()),
             });
-            cells.push(Cell::Text(judged.remedy.clone().into()));
+            cells.push(Cell::Text(remedy.into()));
         }),
     }
 }
