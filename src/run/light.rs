@@ -189,8 +189,11 @@ impl<'a> Light<'a> {
             return NodeEnd { rest_m: placed_m + (position_m - filed_m), displacement: None };
         };
         let displacement = move |at: ArrayTime| {
-            let loads = run.loads_at(at).unwrap_or(loads);
-            motion(loads, plan, at, row, filed_m)
+            if let Some(latest) = run.latest_loads_at(at) {
+                return motion(latest, plan, at, row, filed_m);
+            }
+            let earlier = run.loads_at(at);
+            motion(earlier.as_ref().unwrap_or(&loads), plan, at, row, filed_m)
         };
         NodeEnd { rest_m: placed_m, displacement: Some(Box::new(displacement)) }
     }

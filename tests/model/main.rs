@@ -24,6 +24,7 @@ mod loads_layouts;
 mod loads_published;
 mod loads_reference;
 mod loads_rules;
+mod many_changes;
 mod pinned;
 mod published;
 mod reach;

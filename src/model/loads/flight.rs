@@ -1,11 +1,12 @@
 //! The state of a line under thrust at a moment, and the integrals its clocks need.
 
-use super::compliance::{Basis, Compliance, Range};
+use std::sync::{Arc, Mutex, OnceLock, PoisonError};
+
+use super::compliance::{Basis, Compliance};
 use super::propellant::Propulsion;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::{C2_M2_S2, INVERSE_C2_S2_M2};
 use crate::model::dd::{Dd, RunningSum};
-use crate::model::horizon::Extremes;
 use crate::model::motion::{NODES_10, WEIGHTS_10};
 use crate::model::plan::{Phase, Plan};
 
@@ -15,10 +16,29 @@ const ALL_GONE: f64 = 46.0;
 /// A thrust plan with the stretch of the line tabulated over it.
 #[derive(Clone, Debug)]
 pub(super) struct Flight {
-    pub plan: Plan,
-    pub compliance: Compliance,
-    /// `∫ α² T_t dτ` up to the start of each phase and to the end, term by term.
-    until: Vec<Dd>,
+    pub plan: Arc<Plan>,
+    pub compliance: Arc<Compliance>,
+    /// `∫ α² T_t dτ` up to the start of each phase and to the end, term by term, once it
+    /// has been asked for.
+    until: OnceLock<Vec<RunningSum>>,
+    /// The first of them, where they are known from a plan of the same beginning.
+    begun: Begun,
+}
+
+/// Integrals that wait for the others.
+#[derive(Debug, Default)]
+struct Begun(Mutex<Vec<RunningSum>>);
+
+impl Begun {
+    fn take(&self) -> Vec<RunningSum> {
+        std::mem::take(&mut *self.0.lock().unwrap_or_else(PoisonError::into_inner))
+    }
+}
+
+impl Clone for Begun {
+    fn clone(&self) -> Begun {
+        Begun(Mutex::new(self.0.lock().unwrap_or_else(PoisonError::into_inner).clone()))
+    }
 }
 
 /// The acceleration, how fast it changes and what has burned, at a moment of a phase.
@@ -31,63 +51,79 @@ pub(super) struct Drive {
     pub burning_per_s: f64,
 }
 
-/// The states a plan passes through, the coasts before and after it included.
-pub(super) fn range(plan: &Plan, propulsion: &Propulsion) -> Range {
-    let mut range = Range { lowest_m_s2: 0.0, highest_m_s2: 0.0, most_burned: 0.0 };
-    if let Some(extremes) = Extremes::of(plan) {
-        range.lowest_m_s2 = extremes.smallest.acceleration_m_s2.to_f64().min(0.0);
-        range.highest_m_s2 = extremes.largest.acceleration_m_s2.to_f64().max(0.0);
-    }
-    if propulsion.is_falling() {
-        range.most_burned = propulsion.burned_fraction(plan.velocity_spent_m_s(plan.end()));
-    }
-    range
+/// The drive at a moment of a plan; in a phase that is named, its end meaning the limit from
+/// below, or wherever the moment falls.
+pub(super) fn drive(plan: &Plan, mass: &Propulsion, phase: Option<usize>, at: ArrayTime) -> Drive {
+    let spent = plan.velocity_spent_m_s(at);
+    let burned = if mass.is_falling() { mass.burned_fraction(spent) } else { 0.0 };
+    let (acceleration_m_s2, slope_m_s3) = match phase {
+        Some(index) => {
+            let phase = &plan.phases()[index];
+            (phase.acceleration(at), slope(phase))
+        }
+        None => (Dd::ZERO, 0.0),
+    };
+    let burning_per_s = if mass.is_falling() {
+        acceleration_m_s2.to_f64().abs() * mass.inverse_speed_s_m() * mass.mass_fraction(spent)
+    } else {
+        0.0
+    };
+    Drive { acceleration_m_s2, slope_m_s3, burned, burning_per_s }
 }
 
 impl Flight {
-    pub fn new(plan: Plan, compliance: Compliance, propulsion: &Propulsion) -> Flight {
-        let terms = compliance.terms();
-        let mut flight = Flight { plan, compliance, until: Vec::new() };
-        let mut sums = vec![RunningSum::default(); terms];
-        for index in 0..flight.plan.phases().len() {
-            flight.until.extend(sums.iter().map(RunningSum::value));
-            if terms > 0 {
-                let end = flight.plan.phases()[index].end;
-                let gains = flight.gains(propulsion, index, end);
-                for (sum, gain) in sums.iter_mut().zip(gains) {
+    /// A plan with the stretch over it. `begun` holds the integrals up to the first phases,
+    /// as [`Flight::into_begun`] gives them; it may be empty.
+    pub fn new(plan: Arc<Plan>, compliance: Arc<Compliance>, begun: Vec<RunningSum>) -> Flight {
+        let begun = Begun(Mutex::new(begun));
+        Flight { plan, compliance, until: OnceLock::new(), begun }
+    }
+
+    /// The integrals of the first phases, for another plan that has these phases and the
+    /// same stretch.
+    pub fn into_begun(self, phases: usize) -> Vec<RunningSum> {
+        let mut until = self.until.into_inner().unwrap_or_else(|| self.begun.take());
+        until.truncate((phases + 1) * self.compliance.terms());
+        until
+    }
+
+    /// The integrals up to the start of each phase and to the end.
+    fn until(&self, propulsion: &Propulsion) -> &[RunningSum] {
+        self.until.get_or_init(|| {
+            let terms = self.compliance.terms();
+            let mut until = self.begun.take();
+            if terms == 0 {
+                return until;
+            }
+            if until.is_empty() {
+                until.resize(terms, RunningSum::default());
+            }
+            for index in until.len() / terms - 1..self.plan.phases().len() {
+                let end = self.plan.phases()[index].end;
+                let gains = self.gains(propulsion, index, end);
+                for (term, gain) in gains.into_iter().enumerate() {
+                    let mut sum = until[index * terms + term];
                     sum.add(gain);
+                    until.push(sum);
                 }
             }
-        }
-        flight.until.extend(sums.iter().map(RunningSum::value));
-        flight
+            until
+        })
     }
 
     /// The drive at a moment; in a phase that is named, its end meaning the limit from
     /// below, or wherever the moment falls.
     pub fn drive(&self, propulsion: &Propulsion, phase: Option<usize>, at: ArrayTime) -> Drive {
-        let mass = propulsion;
-        let spent = self.plan.velocity_spent_m_s(at);
-        let burned = if mass.is_falling() { mass.burned_fraction(spent) } else { 0.0 };
-        let (acceleration_m_s2, slope_m_s3) = match phase {
-            Some(index) => {
-                let phase = &self.plan.phases()[index];
-                (phase.acceleration(at), slope(phase))
-            }
-            None => (Dd::ZERO, 0.0),
-        };
-        let burning_per_s = if mass.is_falling() {
-            acceleration_m_s2.to_f64().abs() * mass.inverse_speed_s_m() * mass.mass_fraction(spent)
-        } else {
-            0.0
-        };
-        Drive { acceleration_m_s2, slope_m_s3, burned, burning_per_s }
+        drive(&self.plan, propulsion, phase, at)
     }
 
     /// `∫ α² T_t dτ` from array time zero to a moment, term by term, m²/s³.
     pub fn integrals(&self, propulsion: &Propulsion, at: ArrayTime) -> Vec<Dd> {
         let terms = self.compliance.terms();
-        let stored = |index: usize| self.until[index * terms..(index + 1) * terms].to_vec();
+        let until = self.until(propulsion);
+        let stored = |index: usize| -> Vec<Dd> {
+            until[index * terms..(index + 1) * terms].iter().map(RunningSum::value).collect()
+        };
         match self.plan.phase_at(at) {
             None if at < ArrayTime::ZERO => stored(0),
             None => stored(self.plan.phases().len()),

@@ -48,6 +48,7 @@ mod balance;
 mod compliance;
 mod fault;
 mod flight;
+mod grown;
 mod march;
 mod peaks;
 mod period;
@@ -58,6 +59,7 @@ mod standing;
 mod structure;
 
 pub use fault::LoadsFault;
+pub use grown::Stretch;
 pub use peaks::{ForcePeaks, Margin, Peak};
 pub use period::{Period, Ringing, lowest_period};
 pub use propellant::{Propulsion, RunsDry, Use};
@@ -66,9 +68,12 @@ pub use slack::{Mend, Slack};
 pub use standing::{GRADIENT_WARNING_SHIFT, GradientWarning, Gravity};
 pub use structure::{Engine, Joint, Member, Structure, StructureFault};
 
+use std::sync::{Arc, OnceLock};
+
 use self::balance::{Balance, Ends, normalised_shares};
 use self::compliance::{Basis, Compliance, shape};
 use self::flight::Flight;
+use self::grown::Settled;
 use self::march::Rods;
 use self::peaks::Corners;
 use self::standing::{Masses, Standing, mass_balance};
@@ -82,12 +87,12 @@ use crate::layout::{self, Layout};
 /// A line and what moves or holds it, ready to be asked about any moment.
 #[derive(Clone, Debug)]
 pub struct Loads {
-    structure: Structure,
-    rods: Rods,
-    unloaded_m: Vec<Dd>,
-    relaxed_m: Vec<Dd>,
-    masses_kg: Vec<f64>,
-    propulsion: Propulsion,
+    structure: Arc<Structure>,
+    rods: Arc<Rods>,
+    unloaded_m: Arc<[Dd]>,
+    relaxed_m: Arc<[Dd]>,
+    masses_kg: Arc<[f64]>,
+    propulsion: Arc<Propulsion>,
     course: Course,
 }
 
@@ -101,8 +106,18 @@ enum Course {
 #[derive(Clone, Debug)]
 struct Thrust {
     flight: Flight,
-    balance: Balance,
-    corners: Corners,
+    balance: Arc<Balance>,
+    stretch: Stretch,
+    /// What is known of the first phases, whatever plan goes on from them.
+    settled: Settled,
+    /// The extremes over the plan, once they have been asked for.
+    corners: OnceLock<Corners>,
+}
+
+impl Thrust {
+    fn corners(&self, propulsion: &Propulsion) -> &Corners {
+        self.corners.get_or_init(|| Corners::new(&self.flight, propulsion, &self.settled.sampled))
+    }
 }
 
 /// The line at one moment, from which every quantity of it follows.
@@ -181,18 +196,25 @@ impl Loads {
         let relaxed_m = rods.relaxed_m();
         let (balance, mass_kg) = mass_balance(&structure, &rods, &masses.as_weights());
         let propulsion = Propulsion::new(&structure, mass_kg);
-        let range = flight::range(plan, &propulsion);
-        let compliance = Compliance::new(&rods, &balance, &relaxed_m, &range)?;
-        let flight = Flight::new(plan.clone(), compliance, &propulsion);
-        let corners = Corners::new(&flight, &propulsion);
+        let settled = Settled::default();
+        let range = settled.range(plan, &propulsion);
+        let compliance = Arc::new(Compliance::new(&rods, &balance, &relaxed_m, &range)?);
+        let flight = Flight::new(Arc::new(plan.clone()), Arc::clone(&compliance), Vec::new());
+        let thrust = Thrust {
+            flight,
+            balance: Arc::new(balance),
+            stretch: Stretch { range, compliance },
+            settled,
+            corners: OnceLock::new(),
+        };
         Ok(Loads {
-            unloaded_m: rods.unloaded_m(),
+            unloaded_m: rods.unloaded_m().into(),
             masses_kg: masses.nodes_kg.iter().map(|mass| mass.to_f64()).collect(),
-            course: Course::Thrust(Box::new(Thrust { flight, balance, corners })),
-            structure,
-            rods,
-            relaxed_m,
-            propulsion,
+            course: Course::Thrust(Box::new(thrust)),
+            structure: Arc::new(structure),
+            rods: Arc::new(rods),
+            relaxed_m: relaxed_m.into(),
+            propulsion: Arc::new(propulsion),
         })
     }
 
@@ -219,13 +241,13 @@ impl Loads {
             Standing::settle(&structure, &rods, &relaxed_m, &masses.as_weights(), gravity)?;
         let (_, mass_kg) = mass_balance(&structure, &rods, &masses.as_weights());
         Ok(Loads {
-            unloaded_m: rods.unloaded_m(),
+            unloaded_m: rods.unloaded_m().into(),
             masses_kg: masses.nodes_kg.iter().map(|mass| mass.to_f64()).collect(),
             course: Course::Standing(Box::new(standing)),
-            propulsion: Propulsion::new(&structure, mass_kg),
-            structure,
-            rods,
-            relaxed_m,
+            propulsion: Arc::new(Propulsion::new(&structure, mass_kg)),
+            structure: Arc::new(structure),
+            rods: Arc::new(rods),
+            relaxed_m: relaxed_m.into(),
         })
     }
 

@@ -2,11 +2,12 @@
 
 use super::balance::Balance;
 use super::compliance::Basis;
-use super::flight::{Drive, Flight, sections, slope};
+use super::flight::{Drive, Flight, drive, sections, slope};
 use super::propellant::Propulsion;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::INVERSE_C2_S2_M2;
 use crate::model::dd::Dd;
+use crate::model::plan::Plan;
 
 /// An extreme over the plan: its value and where it first occurs.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -71,6 +72,31 @@ pub(super) struct Corners {
     corners: Vec<Corner>,
 }
 
+/// What may be a corner in the first phases of a plan.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Sampled {
+    /// How many phases.
+    phases: usize,
+    found: Vec<Corner>,
+}
+
+impl Sampled {
+    /// Looks through further phases of the same plan.
+    pub fn go_on(&mut self, plan: &Plan, propulsion: &Propulsion, phases: usize) {
+        for index in self.phases..phases {
+            sample(plan, propulsion, index, &mut self.found);
+            // A long history is folded into its hull as it comes.
+            if self.found.len() > MOST_SAMPLES {
+                self.found = hull(std::mem::take(&mut self.found));
+            }
+        }
+        self.phases = self.phases.max(phases);
+    }
+}
+
+/// States kept before they are folded into their hull.
+const MOST_SAMPLES: usize = 4096;
+
 #[derive(Clone, Debug)]
 struct Corner {
     acceleration_m_s2: Dd,
@@ -85,16 +111,11 @@ struct Corner {
 }
 
 impl Corners {
-    pub fn new(flight: &Flight, propulsion: &Propulsion) -> Corners {
-        let mut found = Vec::new();
-        for index in 0..flight.plan.phases().len() {
-            sample(flight, propulsion, index, &mut found);
-            // A long history is folded into its hull as it comes.
-            if found.len() > 4096 {
-                found = hull(found);
-            }
-        }
-        let mut corners = hull(found);
+    /// The corners of a plan of which the first phases have been looked through.
+    pub fn new(flight: &Flight, propulsion: &Propulsion, begun: &Sampled) -> Corners {
+        let mut sampled = begun.clone();
+        sampled.go_on(&flight.plan, propulsion, flight.plan.phases().len());
+        let mut corners = hull(sampled.found);
         for corner in &mut corners {
             corner.basis =
                 flight.compliance.basis(corner.acceleration_m_s2.to_f64(), corner.burned);
@@ -333,11 +354,11 @@ fn summit(corner: &Corner, sign: f64, value: impl Fn(ArrayTime) -> Dd) -> Dd {
 
 /// Adds the states of one phase that may be corners: both ends, and samples of the curve
 /// between them.
-fn sample(flight: &Flight, propulsion: &Propulsion, index: usize, found: &mut Vec<Corner>) {
-    let phase = &flight.plan.phases()[index];
+fn sample(plan: &Plan, propulsion: &Propulsion, index: usize, found: &mut Vec<Corner>) {
+    let phase = &plan.phases()[index];
     let mut moments = vec![phase.start, phase.end];
     if propulsion.is_falling() && slope(phase) != 0.0 {
-        let spent = |at| flight.plan.velocity_spent_m_s(at).to_f64();
+        let spent = |at| plan.velocity_spent_m_s(at).to_f64();
         let length = phase.end.attoseconds() - phase.start.attoseconds();
         let fall = (spent(phase.end) - spent(phase.start)) * propulsion.inverse_speed_s_m();
         // A short piece of a curve has one extreme at most, and one sample finds it.
@@ -355,7 +376,7 @@ fn sample(flight: &Flight, propulsion: &Propulsion, index: usize, found: &mut Ve
     }
     let is_curve = moments.len() > 2;
     let drives: Vec<(ArrayTime, Drive)> =
-        moments.into_iter().map(|at| (at, flight.drive(propulsion, Some(index), at))).collect();
+        moments.into_iter().map(|at| (at, drive(plan, propulsion, Some(index), at))).collect();
     for (place, &(at, drive)) in drives.iter().enumerate() {
         let before = drives[place.saturating_sub(1)];
         let after = drives[(place + 1).min(drives.len() - 1)];

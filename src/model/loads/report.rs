@@ -33,7 +33,7 @@ impl Loads {
     #[must_use]
     pub fn force_peaks(&self, gap: usize) -> Option<ForcePeaks> {
         match &self.course {
-            Course::Thrust(thrust) => thrust.corners.forces(
+            Course::Thrust(thrust) => thrust.corners(&self.propulsion).forces(
                 &thrust.flight,
                 &self.propulsion,
                 &thrust.balance,
@@ -64,9 +64,11 @@ impl Loads {
     #[must_use]
     pub fn felt_acceleration_peak(&self, row: usize) -> Option<Peak> {
         match &self.course {
-            Course::Thrust(thrust) => {
-                thrust.corners.felt_acceleration(&thrust.flight, &self.relaxed_m, row)
-            }
+            Course::Thrust(thrust) => thrust.corners(&self.propulsion).felt_acceleration(
+                &thrust.flight,
+                &self.relaxed_m,
+                row,
+            ),
             Course::Standing(_) => {
                 let state = self.state(ArrayTime::ZERO);
                 Some(still(self.felt_acceleration_m_s2(&state, row).to_f64()))
@@ -93,9 +95,12 @@ impl Loads {
     #[must_use]
     pub fn position_extremes_m(&self, row: usize) -> [Dd; 2] {
         match &self.course {
-            Course::Thrust(thrust) => {
-                thrust.corners.positions(&thrust.flight, &self.propulsion, &self.relaxed_m, row)
-            }
+            Course::Thrust(thrust) => thrust.corners(&self.propulsion).positions(
+                &thrust.flight,
+                &self.propulsion,
+                &self.relaxed_m,
+                row,
+            ),
             Course::Standing(standing) => [standing.positions_m[row]; 2],
         }
     }
@@ -105,9 +110,11 @@ impl Loads {
     #[must_use]
     pub fn smallest_rate_minus_one(&self, row: usize) -> Option<Peak> {
         match &self.course {
-            Course::Thrust(thrust) => {
-                thrust.corners.smallest_rate_minus_one(&thrust.flight, &self.relaxed_m, row)
-            }
+            Course::Thrust(thrust) => thrust.corners(&self.propulsion).smallest_rate_minus_one(
+                &thrust.flight,
+                &self.relaxed_m,
+                row,
+            ),
             Course::Standing(standing) => {
                 let instant = self.state(ArrayTime::ZERO).instant;
                 Some(still(instant.rate_minus_one(standing.positions_m[row]).to_f64()))
