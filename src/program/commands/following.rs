@@ -47,7 +47,7 @@ pub fn follow(arguments: &ReplayArguments) -> Result<u8, Problem> {
         },
     };
     let mut choice = Choice::of(&arguments.output, &asked)?;
-    choice.settle(empty_report(&opening, layout.as_ref(), opening.from))?;
+    choice.settle(empty_report(&opening, layout.as_ref(), "nothing has been read yet"))?;
     let choice = Rc::new(choice);
     let options = choice.text_options(&output);
     let printer = Printer {
