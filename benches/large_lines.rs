@@ -5,13 +5,12 @@
 //! down in plain Python, in the same run and by processor time, so that the ratio depends
 //! little on the machine and on what else it does.
 //! Where there is no `python3`, only the figures of the program are printed.
-#![allow(clippy::print_stdout, reason = "a benchmark prints what it found")]
+
+mod beside;
 
 use std::fmt::Write as _;
 use std::hint::black_box;
 use std::io::{self, Write as _};
-use std::path::Path;
-use std::process::Command;
 use std::sync::Arc;
 use std::time::Duration;
 
@@ -22,74 +21,49 @@ use clockspar::run::Run;
 use clockspar::table::content::offsets_report;
 use clockspar::table::write_csv;
 use criterion::{Criterion, Throughput, criterion_group, criterion_main};
-use rustix::time::{ClockId, clock_gettime};
+
+use beside::{beside, best, script};
 
 const NODES: usize = 999_999;
 const POINTS: usize = 1_000_000;
 const PAIRED: usize = 3_000;
 const PAIRED_BY_SCRIPT: usize = 500;
 
-/// The seconds of processor time the script takes, the best of three; `None` without Python.
-fn script(work: &str, argument: &str) -> Option<f64> {
-    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("benches/straightforward.py");
-    let once = || {
-        let output = Command::new("python3").arg(&path).args([work, argument]).output().ok()?;
-        assert!(output.status.success(), "{}", String::from_utf8_lossy(&output.stderr));
-        String::from_utf8_lossy(&output.stdout).trim().parse::<f64>().ok()
-    };
-    (0..3).filter_map(|_| once()).reduce(f64::min)
-}
-
-/// The seconds of processor time of the fastest of some runs, on all threads together: other
-/// work on the machine changes the wall clock far more.
-fn best(mut work: impl FnMut()) -> f64 {
-    let now = || {
-        let now = clock_gettime(ClockId::ProcessCPUTime);
-        now.tv_sec as f64 + now.tv_nsec as f64 / 1e9
-    };
-    let once = |work: &mut dyn FnMut()| {
-        let begun = now();
-        work();
-        now() - begun
-    };
-    (0..5).map(|_| once(&mut work)).fold(f64::INFINITY, f64::min)
-}
-
-/// Prints both speeds and their ratio.
-fn beside(what: &str, unit: &str, ours: f64, script: Option<f64>) {
-    match script {
-        Some(script) => println!(
-            "{what}: {ours:.4} {unit} of processor time, straightforward script \
-             {script:.4}, {:.1} times as fast",
-            ours / script
-        ),
-        None => println!("{what}: {ours:.4} {unit} of processor time; no python3 to compare with"),
-    }
-}
+/// A survey of a million nodes: its header, and the fields of a row behind the position.
+const SURVEYS: [(&str, &str, &str); 2] = [
+    ("short rows", "name,position_m,u_position_m", "0.002"),
+    ("whole rows", "name,position_m,u_position_m,mass,clock", "0.00173,35.25 kg,lattice"),
+];
 
 fn survey(criterion: &mut Criterion) {
-    let mut table = String::from("name,position_m,u_position_m\n");
-    for k in 1..=NODES {
-        let _ = writeln!(table, "n{k},{:?},0.002", -40_000.0 * k as f64 / 1e6);
+    for (title, header, rest) in SURVEYS {
+        let mut table = format!("{header}\n");
+        for k in 1..=NODES {
+            let _ = writeln!(table, "n{k},{:?},{rest}", -40_000.0 * k as f64 / 1e6);
+        }
+        survey_of(criterion, title, &table);
     }
+}
+
+fn survey_of(criterion: &mut Criterion, title: &str, table: &str) {
     let toml = "name = \"surveyed\"\n[[node]]\nname = \"hub\"\n[survey]\nfile = \"s.csv\"\n\
-                [[phase]]\nhold = \"0.3 g0\"\nfor = \"12 h\"\n";
+                [[phase]]\nhold = \"0.3 g0\"\nfor = \"12 h\"\n[clock.lattice]\n";
     // The text is handed over as the program hands it over: read already.
     let read = || {
-        let files = |_: &str| Ok(table.clone());
+        let files = |_: &str| Ok(table.to_owned());
         black_box(layout::read("bench.toml", toml, &files).expect("a layout without a fault"));
     };
-    let mut group = criterion.benchmark_group("a survey of a million nodes");
+    let mut group = criterion.benchmark_group(format!("a survey of a million nodes, {title}"));
     group.sample_size(10).throughput(Throughput::Bytes(table.len() as u64));
     group.bench_function("read", |bench| bench.iter(read));
-    group.bench_function("copied", |bench| bench.iter(|| black_box(table.clone())));
     group.finish();
 
     let mut file = tempfile::NamedTempFile::new().expect("a file");
     file.write_all(table.as_bytes()).expect("written");
     let megabytes = table.len() as f64 / 1e6;
-    let by_script = script("survey", &file.path().to_string_lossy());
-    beside("survey read", "MB/s", megabytes / best(read), by_script.map(|s| megabytes / s));
+    let by_script = script(&["survey", &file.path().to_string_lossy()]);
+    let what = format!("survey read, {title}");
+    beside(&what, "MB/s", megabytes / best(read), by_script.map(|s| megabytes / s));
 }
 
 fn line_of(nodes: usize) -> Run {
@@ -117,7 +91,7 @@ fn pairs(criterion: &mut Criterion) {
     group.finish();
 
     let script_rows = (PAIRED_BY_SCRIPT * (PAIRED_BY_SCRIPT - 1)) as f64;
-    let by_script = script("pairs", &PAIRED_BY_SCRIPT.to_string());
+    let by_script = script(&["pairs", &PAIRED_BY_SCRIPT.to_string()]);
     let million = |rows: f64, seconds: f64| rows / seconds / 1e6;
     let by_script = by_script.map(|seconds| million(script_rows, seconds));
     beside("pairs as CSV", "million rows/s", million(rows as f64, best(print)), by_script);
@@ -158,7 +132,7 @@ fn history(criterion: &mut Criterion) {
 
     let mut file = tempfile::NamedTempFile::new().expect("a file");
     file.write_all(table.as_bytes()).expect("written");
-    let by_script = script("history", &file.path().to_string_lossy());
+    let by_script = script(&["history", &file.path().to_string_lossy()]);
     let million = |seconds: f64| POINTS as f64 / seconds / 1e6;
     let ours = best(|| {
         black_box(read());

@@ -1,11 +1,13 @@
 //! Opening, seeking and listing a recording of a gigabyte, beside reading it from the
-//! start; then one of lines of 50 MB. `cargo bench --bench recordings`.
+//! start; then one of lines of 46 MB, beside `straightforward.py`. `cargo bench --bench recordings`.
 //!
 //! The recordings are made in a temporary folder first, which takes their room and about a
 //! minute. `CLOCKSPAR_BENCH_BYTES` asks for another size. The peak of the memory the process
 //! took stands beside each step: it does not grow with the recording.
 // Times and memory of single steps are told as they come.
 #![allow(clippy::print_stderr)]
+
+mod beside;
 
 use std::fs::{self, File};
 use std::io::{self, BufRead, BufReader};
@@ -19,6 +21,8 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::run::Run;
 use clockspar::run::recording::{Opening, ReadAt, Reader, Recorder, Seek};
 use criterion::{Criterion, criterion_group, criterion_main};
+
+use beside::{beside, best, script};
 
 /// A file read at any offset.
 struct Bytes(File);
@@ -137,7 +141,22 @@ fn recordings(criterion: &mut Criterion) {
             });
         }
         group.finish();
+        if nodes > 1000 {
+            beside_a_script(&path, &reader, ArrayTime::from_seconds(frames / 2));
+        }
     }
+}
+
+/// Opening and seeking by the processor time of a script that reads line by line.
+fn beside_a_script(path: &Path, reader: &Reader<Bytes>, middle: ArrayTime) {
+    let name = path.to_string_lossy();
+    let ours = best(|| drop(open(path)));
+    beside("opened", "times/s", 1.0 / ours, script(&["open", &name]).map(f64::recip));
+    let ours = best(|| {
+        reader.frame(Seek::AtOrBefore, middle).expect("good").expect("there");
+    });
+    let by_script = script(&["seek", &name, &middle.to_string()]);
+    beside("sought the middle frame", "times/s", 1.0 / ours, by_script.map(f64::recip));
 }
 
 criterion_group!(benches, recordings);

@@ -1,16 +1,20 @@
-"""The work of `large_lines.rs` as a straightforward script would do it: plain Python, its own
+"""The work of `large_lines.rs` and `recordings.rs` as a straightforward script would do it: plain Python, its own
 csv module, doubles throughout. Prints the seconds of processor time the work took, without the
 start of the interpreter.
 
     straightforward.py survey FILE
     straightforward.py pairs NODES
     straightforward.py history FILE
+    straightforward.py open RECORDING
+    straightforward.py seek RECORDING SECOND
 """
 
 import csv
+import json
 import math
 import sys
 import time
+import zlib
 
 C = 299792458.0
 
@@ -22,11 +26,13 @@ def survey(name):
             node = row["name"]
             if node in nodes:
                 raise ValueError(node)
-            nodes[node] = (float(row["position_m"]), float(row["u_position_m"]))
+            mass, clock = row.get("mass", "0 kg").split()[0], row.get("clock")
+            nodes[node] = (float(row["position_m"]), float(row["u_position_m"]), float(mass), clock)
     return sorted(nodes.items(), key=lambda item: -item[1][0])
 
 
 def pairs(count):
+    count = int(count)
     acceleration, rapidity = 2.941995, 2.17e-4
     nodes = [(f"n{k + 1}", -4.0 * (k + 1)) for k in range(count)]
     with open("/dev/null", "w") as out:
@@ -59,13 +65,30 @@ def history(name):
     return until
 
 
+def lines(name):
+    """The lines of a recording, each with its CRC checked."""
+    with open(name, "rb") as file:
+        for line in file:
+            body, crc = line[:-21], line[-11:-3]
+            if zlib.crc32(body) != int(crc, 16):
+                raise ValueError(name)
+            yield json.loads(line)
+
+
+def open_recording(name):
+    return next(lines(name))
+
+
+def seek(name, second):
+    return next(line for line in lines(name) if line.get("at_s") == float(second))
+
+
 def main():
-    work, argument = sys.argv[1:]
+    work, *arguments = sys.argv[1:]
+    works = {"survey": survey, "pairs": pairs, "history": history}
+    works |= {"open": open_recording, "seek": seek}
     begun = time.process_time()
-    if work == "pairs":
-        pairs(int(argument))
-    else:
-        {"survey": survey, "history": history}[work](argument)
+    works[work](*arguments)
     print(time.process_time() - begun)
 
 

@@ -20,11 +20,10 @@
 //!
 //! # What the library does not do
 //!
-//! It opens no file, reads no clock and prints nothing; long tables are formatted on
-//! threads that end with the call. Text and
-//! moments come in as arguments, and results go out as data. The program around it
-//! (`src/main.rs`, `src/program`) does the rest and sits behind the feature
-//! `program`.
+//! It opens no file, reads no clock and prints nothing. Text and moments come in as
+//! arguments, and results go out as data. Only what is long is shared among threads,
+//! and no result depends on how many there are. The program around it (`src/main.rs`,
+//! `src/program`) does the rest and sits behind the feature `program`.
 //!
 //! What the model leaves out stands in the README, with sizes.
 #![forbid(unsafe_code)]

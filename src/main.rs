@@ -5,14 +5,11 @@ mod program;
 
 use std::process::ExitCode;
 
-use clap::Parser;
-
 use program::arguments::Arguments;
 
 fn main() -> ExitCode {
-    let arguments = Arguments::parse();
     program::outlive_the_limit_on_file_sizes();
-    match program::commands::run(arguments) {
+    match Arguments::given().and_then(program::commands::run) {
         Ok(status) => ExitCode::from(status),
         Err(problem) => {
             if !problem.text.is_empty() {

@@ -155,8 +155,9 @@ pub fn format_date(tai_since_2000: ArrayTime, scale: TimeScale) -> Option<String
     (1972..=9999).contains(&year).then_some(text)
 }
 
-/// A moment of array time as a person names it: a duration since array time zero, the
-/// word `end`, or, when the layout has an epoch, a date.
+/// A moment of array time as a person names it: a duration since array time zero, also in
+/// parts as moments are shown (`5 h 20 min`), the word `end`, or, when the layout has an
+/// epoch, a date.
 ///
 /// # Errors
 ///
@@ -172,7 +173,10 @@ pub fn parse_moment(
         return Ok(end);
     }
     if !looks_like_a_date(trimmed) {
-        return quantity::parse_duration(text);
+        return match parse_parts(trimmed) {
+            Some(sum) => Ok(sum),
+            None => quantity::parse_duration(text),
+        };
     }
     let date = parse_date(text)?;
     let Some(epoch) = epoch else {
@@ -189,6 +193,31 @@ pub fn parse_moment(
             format!("write a date nearer to the epoch, {}", epoch.text),
         )
     })
+}
+
+/// A duration in two or more parts, each of a smaller unit than the one before; a sign in
+/// front is that of the whole. `None` for anything else.
+fn parse_parts(text: &str) -> Option<ArrayTime> {
+    let (is_negative, unsigned) = match text.strip_prefix('-') {
+        Some(rest) => (true, rest),
+        None => (false, text),
+    };
+    let words: Vec<&str> = unsigned.split(' ').collect();
+    if words.len() < 4 || !words.len().is_multiple_of(2) || unsigned.starts_with(['+', '-']) {
+        return None;
+    }
+    let mut sum = ArrayTime::ZERO;
+    let mut last_unit = None;
+    for part in words.chunks(2) {
+        let unit = quantity::parse_duration(&format!("1 {}", part[1])).ok()?;
+        let is_smaller = last_unit.is_none_or(|last| unit < last);
+        if !is_smaller || !part[0].starts_with(|first: char| first.is_ascii_digit()) {
+            return None;
+        }
+        last_unit = Some(unit);
+        sum = sum.checked_add(quantity::parse_duration(&part.join(" ")).ok()?)?;
+    }
+    if is_negative { ArrayTime::ZERO.checked_sub(sum) } else { Some(sum) }
 }
 
 /// Whether a text begins like a date: four digits, a hyphen, a digit.
@@ -359,6 +388,23 @@ fn civil(count: i64) -> Option<(i64, i64, i64)> {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn moments_are_read_as_they_are_shown() {
+        let end = ArrayTime::from_seconds(1);
+        for seconds in [0, 59, 60, 3_601, 19_200, 90_061, 86_399, 100_000_000_000] {
+            for sign in [1, -1] {
+                let at = ArrayTime::from_seconds(sign * seconds);
+                let shown = crate::table::readable_time(at);
+                assert_eq!(parse_moment(&shown, None, end), Ok(at), "{shown}");
+            }
+        }
+        let quarter = ArrayTime::from_attoseconds(3_600_250_000_000_000_000_000);
+        assert_eq!(parse_moment("1 h 250 ms", None, end), Ok(quarter));
+        for text in ["20 min 5 h", "1 h 1 h", "1 h -5 min", "1 h 5 kg", "1 h 5", "--1 h 5 s"] {
+            assert!(parse_moment(text, None, end).is_err(), "{text}");
+        }
+    }
 
     #[test]
     fn the_calendar_counts_every_day_once() {

@@ -58,6 +58,9 @@ impl QuantityFault {
 /// Text that is not a decimal number with a unit of this dimension, and values above the
 /// largest double. A value below the smallest double is rounded to zero like any other.
 pub fn parse(text: &str, dimension: Dimension) -> Result<f64, QuantityFault> {
+    if let Some(value) = in_si_unit(text, dimension) {
+        return Ok(value);
+    }
     let written = Written::scan(text, dimension)?;
     let value = match written.unit {
         None => written.number.to_f64(),
@@ -78,6 +81,12 @@ pub fn parse(text: &str, dimension: Dimension) -> Result<f64, QuantityFault> {
         "a value stays below 1.8e308 in SI units, the largest number carried",
         format!("write {} such as `{}`", dimension.words(), dimension.example()),
     ))
+}
+
+/// The value of the commonest form, a plain number of the SI unit, which asks for no product.
+fn in_si_unit(text: &str, dimension: Dimension) -> Option<f64> {
+    let number = text.strip_suffix(dimension.si_unit())?.strip_suffix(' ')?;
+    plain(number)
 }
 
 /// The names of all units.

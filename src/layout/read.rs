@@ -17,6 +17,7 @@ use super::fault::{Collector, Faults, Spot};
 use super::quantity::short;
 use super::written::{self, Field, Written};
 use super::{Layout, Positions};
+use crate::cores;
 use survey::{Reading, Table};
 
 /// Most nodes a line may have.
@@ -107,7 +108,7 @@ pub fn read(
         || check(&mut written, survey.map(|file| (file, reading)), history, &named, &mut faults);
     let digest = || named.iter().map(|file| sha256(&file.text)).collect::<Vec<String>>();
     let (mut layout, digests) = if reading == Reading::OnAllCores {
-        rayon::join(judge, digest)
+        cores::both(judge, digest)
     } else {
         (judge(), digest())
     };
@@ -185,7 +186,11 @@ fn open(
                 "a file named in a layout can be read; `{}` could not: {reason}",
                 short(name)
             );
-            faults.fault(spot, rule, "name a file that exists, relative to the layout");
+            faults.fault(
+                spot,
+                rule,
+                "name a file of UTF-8 text that exists, relative to the layout",
+            );
             None
         }
     }

@@ -2,7 +2,10 @@
 
 use std::path::PathBuf;
 
+use clap::error::{ContextKind, ContextValue, ErrorKind};
 use clap::{Args, Parser, Subcommand, ValueEnum};
+
+use super::problem::Problem;
 
 /// Predicts, steps, records and replays the clocks of a line that keeps its length
 /// while it accelerates.
@@ -26,6 +29,29 @@ pub struct Arguments {
     /// Whose preferences count.
     #[command(flatten)]
     pub preferences: PreferenceArguments,
+}
+
+impl Arguments {
+    /// The command line as it was given. Asked for help, the program ends with that.
+    pub fn given() -> Result<Arguments, Problem> {
+        Arguments::try_parse().or_else(|error| match (error.kind(), odd_word(&error)) {
+            (ErrorKind::UnknownArgument, Some(word)) if !word.starts_with('-') => {
+                Err(Problem::new(
+                    format_args!("`{word}` is one word too many"),
+                    "a value of several words stands in quotes",
+                    "write for example --at \"12 h\"; `clockspar --help` lists what there is",
+                ))
+            }
+            _ => error.exit(),
+        })
+    }
+}
+
+fn odd_word(error: &clap::Error) -> Option<&str> {
+    match error.get(ContextKind::InvalidArg)? {
+        ContextValue::String(word) => Some(word),
+        _ => None,
+    }
 }
 
 /// The commands.

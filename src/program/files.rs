@@ -7,6 +7,7 @@ use std::path::Path;
 use clockspar::layout::{self, Layout};
 
 use super::problem::Problem;
+use super::whole_file::note_read;
 
 /// The layout that opens when none is named.
 pub const BUILT_IN_NAME: &str = "built-in layout";
@@ -35,6 +36,7 @@ pub fn load(path: &Path) -> Result<Layout, Problem> {
     }
     let name = shown_name(path);
     let file = File::open(path).map_err(|error| unreadable(&name, &error))?;
+    note_read(path);
     let text = read_bounded(file, &name, LARGEST_LAYOUT)?;
     read_layout(&name, &text, path.parent().unwrap_or(Path::new(".")))
 }
@@ -55,6 +57,7 @@ fn read_layout(name: &str, text: &str, folder: &Path) -> Result<Layout, Problem>
     let companion = |file: &str| {
         let path = folder.join(file);
         let opened = File::open(&path).map_err(|error| error.to_string())?;
+        note_read(&path);
         // The fault of the layout has a rule and a remedy of its own.
         read_bounded(opened, file, LARGEST_TABLE)
             .map_err(|problem| problem.text.lines().next().unwrap_or_default().to_owned())

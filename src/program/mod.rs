@@ -10,6 +10,7 @@ mod preferences;
 pub mod problem;
 mod recording_file;
 mod terminal;
+mod whole_file;
 
 use std::io::Write;
 use std::sync::Arc;

@@ -1,37 +1,30 @@
 //! Where results go: standard output, or a file written whole or not at all.
 
+use std::fs::File;
 use std::io::{self, BufWriter, IsTerminal, Write};
 use std::path::{Path, PathBuf};
 
-use tempfile::NamedTempFile;
-
 use super::problem::Problem;
 use super::terminal::{GlyphChoice, Glyphs};
+use super::whole_file::{CreateFault, Unplaced};
 
 /// The place results are written to.
 pub enum Output {
     /// Standard output.
     Standard(BufWriter<io::StdoutLock<'static>>),
-    /// A new file beside its final place, and that place.
-    File(BufWriter<NamedTempFile>, PathBuf),
+    /// A new file, its place, and how the user calls it.
+    File(BufWriter<File>, Unplaced, PathBuf),
 }
 
 impl Output {
-    /// Opens the place `--out` names, or standard output.
+    /// Opens the place `--out` names, or standard output, which also goes by `-`.
     pub fn open(out: Option<&Path>, replace: bool) -> Result<Output, Problem> {
-        let Some(path) = out else {
+        let Some(path) = out.filter(|path| *path != Path::new("-")) else {
             return Ok(Output::Standard(BufWriter::with_capacity(1 << 16, io::stdout().lock())));
         };
-        if !replace && path.symlink_metadata().is_ok() {
-            return Err(exists(path));
-        }
-        let folder = match path.parent() {
-            Some(folder) if !folder.as_os_str().is_empty() => folder,
-            _ => Path::new("."),
-        };
-        let file = NamedTempFile::new_in(folder)
-            .map_err(|error| Problem::writing(&path.display().to_string(), &error))?;
-        Ok(Output::File(BufWriter::with_capacity(1 << 16, file), path.to_owned()))
+        let (file, place) =
+            Unplaced::create(path, replace).map_err(|fault| not_created(path, &fault))?;
+        Ok(Output::File(BufWriter::with_capacity(1 << 16, file), place, path.to_owned()))
     }
 
     /// Width of the terminal text goes to; `None` when it goes elsewhere and is never cut.
@@ -47,63 +40,47 @@ impl Output {
 
     /// Runs the writer of the results and puts the file in its place.
     pub fn write(
-        mut self,
-        replace: bool,
+        self,
         write: impl FnOnce(&mut dyn Write) -> io::Result<()>,
     ) -> Result<(), Problem> {
-        let name = self.name();
-        let fail = |error: io::Error| Problem::writing(&name, &error);
-        match &mut self {
-            Output::Standard(stdout) => {
-                write(stdout).and_then(|()| stdout.flush()).map_err(fail)?;
-            }
-            Output::File(file, _) => {
-                write(file).and_then(|()| file.flush()).map_err(fail)?;
-            }
-        }
-        if let Output::File(file, path) = self {
-            let file = file.into_inner().map_err(|error| fail(error.into_error()))?;
-            file.as_file().sync_all().map_err(fail)?;
-            set_ordinary_mode(file.as_file()).map_err(fail)?;
-            if replace {
-                file.persist(&path).map_err(|error| fail(error.error))?;
-            } else {
-                // Fails when the file has come into being since it was looked for.
-                file.persist_noclobber(&path).map_err(|error| {
-                    if error.error.kind() == io::ErrorKind::AlreadyExists {
-                        exists(&path)
-                    } else {
-                        fail(error.error)
-                    }
-                })?;
-            }
-        }
-        Ok(())
-    }
-
-    fn name(&self) -> String {
         match self {
-            Output::Standard(_) => "standard output".to_owned(),
-            Output::File(_, path) => path.display().to_string(),
+            Output::Standard(mut stdout) => write(&mut stdout)
+                .and_then(|()| stdout.flush())
+                .map_err(|error| Problem::writing("standard output", &error)),
+            Output::File(mut file, place, path) => write(&mut file)
+                .and_then(|()| file.into_inner().map_err(io::IntoInnerError::into_error))
+                .and_then(|file| place.place(&file))
+                .map_err(|error| not_created(&path, &error.into())),
         }
     }
 }
 
+/// Why a file of results cannot be written, in our own form.
+pub fn not_created(path: &Path, fault: &CreateFault) -> Problem {
+    let shown = path.display();
+    match fault {
+        CreateFault::Exists => exists(path),
+        CreateFault::NotAFile => Problem::new(
+            format_args!("{shown} is no ordinary file"),
+            "results are written to a file",
+            "choose another name for --out",
+        ),
+        CreateFault::IsRead => Problem::new(
+            format_args!("{shown} is being read"),
+            "results are not written over what they come from",
+            "choose another name for --out",
+        ),
+        CreateFault::Io(error) => Problem::writing(&shown.to_string(), error),
+    }
+}
+
 /// A refusal to write over what the user has.
-pub fn exists(path: &Path) -> Problem {
+fn exists(path: &Path) -> Problem {
     Problem::new(
         format_args!("{} exists already", path.display()),
         "an existing file is only written over when that is asked for",
         "choose another name, or add --replace",
     )
-}
-
-/// Temporary files are private; a result file has the mode any new file would have.
-fn set_ordinary_mode(file: &std::fs::File) -> io::Result<()> {
-    use std::os::unix::fs::PermissionsExt;
-    // The umask cannot be read without being set, so the mode follows the folder-neutral
-    // common practice of owner read-write and group and others read.
-    file.set_permissions(std::fs::Permissions::from_mode(0o644))
 }
 
 /// Whether the locale lets text have signs outside ASCII.

@@ -1,16 +1,16 @@
 //! Recordings as files: created without harm to what is there, synced as they grow, read
 //! at any offset.
 
-use std::fs::{self, File, OpenOptions, Permissions};
+use std::fs::{self, File, OpenOptions};
 use std::io::{self, Read, Write};
-use std::os::unix::fs::{FileExt, PermissionsExt};
+use std::os::unix::fs::FileExt;
 use std::path::{Path, PathBuf};
 use std::time::{Duration, Instant};
 
 use clockspar::run::recording::{OpenFault, ReadAt, Reader};
-use tempfile::TempPath;
 
 use super::files::BEGINNING_OF_RECORDING;
+use super::whole_file::{CreateFault, Unplaced, note_read};
 
 /// The longest a line waits to be on the disk.
 const SYNC_EVERY: Duration = Duration::from_secs(1);
@@ -30,29 +30,9 @@ pub struct RecordingFile {
     /// Bytes of the whole lines written.
     length: u64,
     /// The file that is to take the place of an older one, until its first line stands.
-    pending: Option<TempPath>,
+    pending: Option<Unplaced>,
     synced: Instant,
     is_synced: bool,
-}
-
-/// Why a recording cannot be begun.
-#[derive(Debug)]
-pub enum CreateFault {
-    /// Something of that name exists and replacing it was not asked for.
-    Exists,
-    /// What exists there is no ordinary file, so it cannot be replaced.
-    NotAFile,
-    /// The system refuses.
-    Io(io::Error),
-}
-
-impl From<io::Error> for CreateFault {
-    fn from(error: io::Error) -> CreateFault {
-        match error.kind() {
-            io::ErrorKind::AlreadyExists => CreateFault::Exists,
-            _ => CreateFault::Io(error),
-        }
-    }
 }
 
 impl RecordingFile {
@@ -62,28 +42,15 @@ impl RecordingFile {
     /// place at once when its first line is on the disk, so that there is no moment at
     /// which neither is there.
     pub fn create(path: &Path, replace: bool) -> Result<RecordingFile, CreateFault> {
-        let (file, path, pending) = match fs::metadata(path) {
-            Ok(metadata) if replace => {
-                if !metadata.is_file() {
-                    return Err(CreateFault::NotAFile);
-                }
-                // Through a link, so that the link stays and what it names is replaced.
-                let path = fs::canonicalize(path)?;
-                let beside = tempfile::Builder::new()
-                    .prefix(".clockspar-")
-                    .permissions(Permissions::from_mode(0o666))
-                    .tempfile_in(folder(&path))?;
-                let (file, pending) = beside.into_parts();
-                (file, path, Some(pending))
-            }
-            _ => {
-                let file = OpenOptions::new().write(true).create_new(true).open(path)?;
-                (file, path.to_owned(), None)
-            }
+        let (file, pending) = if replace && fs::metadata(path).is_ok() {
+            let (file, pending) = Unplaced::create(path, true)?;
+            (file, Some(pending))
+        } else {
+            (OpenOptions::new().write(true).create_new(true).open(path)?, None)
         };
         Ok(RecordingFile {
             file,
-            path,
+            path: path.to_owned(),
             length: 0,
             pending,
             synced: Instant::now(),
@@ -109,13 +76,10 @@ impl RecordingFile {
 
     /// After the first line: makes the file known under its name.
     fn settle(&mut self) -> io::Result<()> {
-        self.file.sync_all()?;
-        if let Some(pending) = self.pending.take() {
-            pending.persist(&self.path).map_err(|error| error.error)?;
+        match self.pending.take() {
+            Some(pending) => pending.place(&self.file),
+            None => self.file.sync_all(),
         }
-        // A folder that cannot be synced still holds the file; only a power cut could tell.
-        let _ = File::open(folder(&self.path)).and_then(|folder| folder.sync_all());
-        Ok(())
     }
 
     /// After a failed line: takes away what was written of it.
@@ -167,6 +131,7 @@ impl RecordingSource {
     /// Opens a file, or takes in what a pipe gives up to `most` bytes.
     pub fn open(path: &Path, most: u64) -> io::Result<RecordingSource> {
         let file = File::open(path)?;
+        note_read(path);
         let metadata = file.metadata()?;
         if metadata.is_file() {
             return Ok(RecordingSource::File(file));
@@ -238,15 +203,10 @@ pub fn open_recording(path: &Path, most: u64) -> Result<Reader<RecordingSource>,
     Reader::open(RecordingSource::open(path, most)?)
 }
 
-fn folder(path: &Path) -> &Path {
-    match path.parent() {
-        Some(folder) if !folder.as_os_str().is_empty() => folder,
-        _ => Path::new("."),
-    }
-}
-
 #[cfg(test)]
 mod tests {
+    use std::os::unix::fs::PermissionsExt;
+
     use super::*;
 
     fn contents(folder: &Path) -> Vec<String> {

@@ -10,6 +10,7 @@ use super::stream::{threads_for, write_rows};
 use super::text::TextOptions;
 use super::width::{columns_of, push_blanks, push_left, push_right, wrapped};
 use super::{Cell, Column, Measure, NOT_FINITE, Table};
+use crate::cores;
 
 /// Blanks between columns.
 const GAP: usize = 2;
@@ -62,6 +63,7 @@ pub(super) fn write_table(
 }
 
 /// Distinct reasons of absent cells, in the order in which they are met.
+#[derive(Clone)]
 struct Reasons {
     texts: Vec<String>,
     /// There are others, for which no letter is left.
@@ -96,35 +98,93 @@ impl Reasons {
     }
 }
 
+/// Rows that are looked at together in the first pass.
+const ROWS_AT_A_TIME: usize = 4096;
+/// Groups of rows beyond which the first pass looks at no more than so many: the first ones,
+/// and others evenly spread. A value outside what they hold is still shown with its digits,
+/// only out of line.
+const MOST_GROUPS: usize = 1024;
+/// Groups that are worth the other cores.
+const GROUPS_WORTH_THREADS: usize = 5;
+
+/// The groups of rows that decide the form of the columns, in order.
+fn groups(rows: usize) -> impl Fn(usize) -> Range<usize> {
+    let count = rows.div_ceil(ROWS_AT_A_TIME);
+    let in_order = if count <= MOST_GROUPS { count } else { MOST_GROUPS / 2 };
+    move |place: usize| {
+        let group = if place < in_order {
+            place
+        } else {
+            in_order + (place - in_order) * (count - in_order) / (MOST_GROUPS - in_order)
+        };
+        group * ROWS_AT_A_TIME..rows.min((group + 1) * ROWS_AT_A_TIME)
+    }
+}
+
+/// What the first pass gathers.
+#[derive(Clone)]
+struct Seen {
+    scans: Vec<ColumnScan>,
+    absent: Vec<bool>,
+    reasons: Reasons,
+}
+
+impl Seen {
+    fn see(&mut self, table: &Table<'_>, rows: Range<usize>) {
+        let mut cells = Vec::with_capacity(self.scans.len());
+        for row in rows {
+            cells.clear();
+            (table.fill)(row, &mut cells);
+            debug_assert_eq!(cells.len(), self.scans.len(), "row {row} of `{}`", table.name);
+            for ((scan, cell), absent) in self.scans.iter_mut().zip(&cells).zip(&mut self.absent) {
+                scan.see(cell);
+                let why = match cell {
+                    Cell::Absent(why) => why,
+                    Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => {
+                        NOT_FINITE
+                    }
+                    _ => continue,
+                };
+                *absent = true;
+                self.reasons.see(why);
+            }
+        }
+    }
+
+    fn join(mut self, behind: &Seen) -> Seen {
+        self.scans.iter_mut().zip(&behind.scans).for_each(|(scan, next)| scan.join(next));
+        self.absent.iter_mut().zip(&behind.absent).for_each(|(absent, next)| *absent |= next);
+        behind.reasons.texts.iter().for_each(|why| self.reasons.see(why));
+        self.reasons.more |= behind.reasons.more;
+        self
+    }
+}
+
 /// The first pass over the rows.
 fn scan(table: &Table<'_>, units: Option<&Units>, unicode: bool) -> (Vec<ColumnFormat>, Reasons) {
     let unit = |column: &Column| units?.of(column.key, column.measure);
-    let mut scans: Vec<ColumnScan> =
-        table.columns.iter().map(|column| ColumnScan::new(column).in_unit(unit(column))).collect();
-    let mut absent = vec![false; scans.len()];
-    let mut reasons = Reasons { texts: Vec::new(), more: false };
-    let mut cells = Vec::with_capacity(scans.len());
-    for row in 0..table.rows {
-        cells.clear();
-        (table.fill)(row, &mut cells);
-        debug_assert_eq!(cells.len(), scans.len(), "row {row} of `{}`", table.name);
-        for ((scan, cell), absent) in scans.iter_mut().zip(&cells).zip(&mut absent) {
-            scan.see(cell);
-            let why = match cell {
-                Cell::Absent(why) => why,
-                Cell::Number(value) | Cell::Measured(value, _) if !value.is_finite() => NOT_FINITE,
-                _ => continue,
-            };
-            *absent = true;
-            reasons.see(why);
-        }
-    }
-    let mut formats: Vec<ColumnFormat> = scans.iter().map(|scan| scan.format(unicode)).collect();
-    let mark = columns_of(reasons.mark_at(0));
-    for (format, _) in formats.iter_mut().zip(absent).filter(|(_, absent)| *absent) {
+    let columns = table.columns.iter();
+    let nothing = Seen {
+        scans: columns.map(|column| ColumnScan::new(column).in_unit(unit(column))).collect(),
+        absent: vec![false; table.columns.len()],
+        reasons: Reasons { texts: Vec::new(), more: false },
+    };
+    let group = groups(table.rows);
+    let count = table.rows.div_ceil(ROWS_AT_A_TIME).min(MOST_GROUPS);
+    let seen = cores::fold(
+        count,
+        GROUPS_WORTH_THREADS,
+        nothing,
+        |seen, place| seen.see(table, group(place)),
+        |front, behind| front.join(&behind),
+    );
+    let mut formats: Vec<ColumnFormat> =
+        seen.scans.iter().map(|scan| scan.format(unicode)).collect();
+    let mark = columns_of(seen.reasons.mark_at(0));
+    for (format, _) in formats.iter_mut().zip(seen.absent).filter(|(_, absent)| *absent) {
         format.width = format.width.max(1 + mark);
     }
-    (formats, reasons)
+    (formats, seen.reasons)
 }
 
 /// A column as it stands in a block.
@@ -308,5 +368,29 @@ fn push_rows(
         }
         debug_assert!(!text.chars().any(|sign| sign != '\n' && sign.is_control()), "{text:?}");
         out.extend_from_slice(text.as_bytes());
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn every_row_of_an_ordinary_table_is_looked_at_and_a_huge_one_is_sampled() {
+        for rows in [1, ROWS_AT_A_TIME, ROWS_AT_A_TIME + 1, MOST_GROUPS * ROWS_AT_A_TIME] {
+            let group = groups(rows);
+            let ranges = (0..rows.div_ceil(ROWS_AT_A_TIME)).map(group);
+            assert!(ranges.flatten().eq(0..rows), "{rows}");
+        }
+        for rows in [MOST_GROUPS * ROWS_AT_A_TIME + 1, 99_990_000, 999_999_000_000] {
+            let group = groups(rows);
+            let ranges: Vec<Range<usize>> = (0..MOST_GROUPS).map(group).collect();
+            let in_order = ranges.windows(2).all(|pair| pair[0].end <= pair[1].start);
+            assert!(
+                in_order && ranges[0].start == 0 && ranges.iter().all(|range| !range.is_empty())
+            );
+            let last = ranges[MOST_GROUPS - 1].end;
+            assert!(last <= rows && last > rows - rows / 400, "{rows}: {last}");
+        }
     }
 }

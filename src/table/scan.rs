@@ -49,6 +49,7 @@ pub struct ColumnScan {
     lowest: f64,
     highest: f64,
     smallest: f64,
+    first: Option<f64>,
     previous: Option<f64>,
     /// Smallest difference between neighbours, absolute and in parts of the larger.
     step: f64,
@@ -88,6 +89,7 @@ impl ColumnScan {
             lowest: f64::INFINITY,
             highest: f64::NEG_INFINITY,
             smallest: f64::INFINITY,
+            first: None,
             previous: None,
             step: f64::INFINITY,
             relative_step: f64::INFINITY,
@@ -167,12 +169,9 @@ impl ColumnScan {
         self.numbers += 1;
         self.lowest = self.lowest.min(value);
         self.highest = self.highest.max(value);
-        if let Some(previous) = self.previous.replace(value) {
-            let step = (value - previous).abs();
-            if step > 0.0 {
-                self.step = self.step.min(step);
-                self.relative_step = self.relative_step.min(step / value.abs().max(previous.abs()));
-            }
+        match self.previous.replace(value) {
+            Some(previous) => self.see_step(previous, value),
+            None => self.first = Some(value),
         }
         if value == 0.0 {
             return;
@@ -185,6 +184,44 @@ impl ColumnScan {
         let shortest = Decimal::shortest(value);
         self.shortest_position = self.shortest_position.min(shortest.last_position());
         self.longest = self.longest.max(shortest.digits.len());
+    }
+
+    fn see_step(&mut self, previous: f64, value: f64) {
+        let step = (value - previous).abs();
+        if step > 0.0 {
+            self.step = self.step.min(step);
+            self.relative_step = self.relative_step.min(step / value.abs().max(previous.abs()));
+        }
+    }
+
+    /// Takes in what another scan of the same column saw in the rows behind these, as if
+    /// this one had seen them all.
+    pub(super) fn join(&mut self, behind: &ColumnScan) {
+        self.text_columns = self.text_columns.max(behind.text_columns);
+        self.measured = behind.measured.or(self.measured);
+        self.anything_absent |= behind.anything_absent;
+        self.numbers += behind.numbers;
+        self.lowest = self.lowest.min(behind.lowest);
+        self.highest = self.highest.max(behind.highest);
+        self.smallest = self.smallest.min(behind.smallest);
+        self.step = self.step.min(behind.step);
+        self.relative_step = self.relative_step.min(behind.relative_step);
+        if let (Some(previous), Some(first)) = (self.previous, behind.first) {
+            self.see_step(previous, first);
+        }
+        self.first = self.first.or(behind.first);
+        self.previous = behind.previous.or(self.previous);
+        if self.longest < MOST_DIGITS {
+            self.shortest_position = self.shortest_position.min(behind.shortest_position);
+            self.longest = self.longest.max(behind.longest);
+        }
+        self.times += behind.times;
+        self.common_divisor = common_divisor(self.common_divisor, behind.common_divisor);
+        self.earliest = self.earliest.min(behind.earliest);
+        self.latest = self.latest.max(behind.latest);
+        self.least = self.least.min(behind.least);
+        self.most = self.most.max(behind.most);
+        self.integers += behind.integers;
     }
 
     /// The form of the column: its unit, its digits and its width.
@@ -405,4 +442,49 @@ fn common_divisor(mut left: u128, mut right: u128) -> u128 {
         (left, right) = (right, left % right);
     }
     left
+}
+
+#[cfg(test)]
+mod tests {
+    use proptest::prelude::*;
+
+    use super::*;
+    use crate::model::array_time::ArrayTime;
+
+    fn cell() -> impl Strategy<Value = Cell<'static>> {
+        prop_oneof![
+            6 => prop_oneof![
+                any::<f64>().prop_map(Cell::Number),
+                (-40_i32..40).prop_map(|power| {
+                    Cell::Number(format!("2.5e{power}").parse().expect("a number"))
+                }),
+                Just(Cell::Number(0.0)), Just(Cell::Number(0.1 + 0.2)),
+            ],
+            1 => any::<i32>().prop_map(|count| Cell::Integer(i64::from(count))),
+            1 => any::<i64>().prop_map(|at| Cell::Time(ArrayTime::from_attoseconds(at.into()))),
+            1 => prop_oneof![
+                Just(Cell::Absent("none".into())), Just(Cell::Text("灯台".into())),
+                Just(Cell::Flag(true)), Just(Cell::Measured(12.5, Measure::Length)),
+            ],
+        ]
+    }
+
+    proptest! {
+        #[test]
+        fn parts_joined_are_the_whole(
+            cells in prop::collection::vec(cell(), 0..20),
+            cut in 0_usize..20,
+            measure in prop_oneof![Just(Measure::Time), Just(Measure::Ratio), Just(Measure::Count)],
+        ) {
+            let see = |cells: &[Cell<'static>]| {
+                let mut scan = ColumnScan::of("clock_offset_s", measure);
+                cells.iter().for_each(|cell| scan.see(cell));
+                scan
+            };
+            let (front, behind) = cells.split_at(cut.min(cells.len()));
+            let mut joined = see(front);
+            joined.join(&see(behind));
+            prop_assert_eq!(format!("{joined:?}"), format!("{:?}", see(&cells)));
+        }
+    }
 }

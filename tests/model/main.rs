@@ -31,6 +31,7 @@ mod reach;
 mod reach_identities;
 mod recording;
 mod recording_hostile;
+mod recording_long;
 mod recording_models;
 mod reference;
 mod run;

@@ -468,7 +468,10 @@ fn a_recording_with_readings_carries_a_third_column() {
     let reader = Reader::open(&bytes[..]).unwrap();
     assert_eq!((reader.opening().seed, reader.opening().has_readings), (Some(7), true));
     let frame = reader.last_frame().unwrap().unwrap();
-    assert_eq!(frame.reading_s.unwrap(), [None, Some(0.75), Some(0.75), Some(0.75)]);
+    assert_eq!(
+        frame.reading_s.unwrap(),
+        [None, Some(0.75), Some(0.75), Some(0.75)].into_iter().collect()
+    );
     let unheard = verify(&bytes[..], None).unwrap();
     assert_eq!((unheard.is_good(), unheard.readings_compared), (true, Some(false)));
     let heard = verify(&bytes[..], Some(&mut readings)).unwrap();

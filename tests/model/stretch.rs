@@ -163,7 +163,7 @@ fn what_stretch_makes_of_an_offset_is_shown() {
     let state = run.state_at(seconds("5 h")).unwrap();
     let report = offsets_report(state.clone(), true);
     let names: Vec<&str> = report.tables.iter().map(|table| table.name).collect();
-    assert_eq!(names, ["nodes", "pairs", "stretch"]);
+    assert_eq!(names, ["pairs", "nodes", "stretch"]);
     let loads = run.loads().unwrap();
     for row in 0..state.rows() {
         let of = |key| get(&report, "stretch", row, key);

@@ -156,6 +156,7 @@ fn bad_use_ends_with_status_two_and_says_why_on_standard_error() {
         (&["rates", "layouts/towed-array.toml", "--until", "1 h"], "--every"),
         (&["rates", "layouts/towed-array.toml", "--table", "pairs"], "remedy: "),
         (&["rates", "layouts/towed-array.toml", "--as", "xml"], "json"),
+        (&["rates", "layouts/towed-array.toml", "--at", "12", "h"], "stands in quotes"),
         (&["fly", "layouts/towed-array.toml"], "fly"),
         (&["desk", "layouts/towed-array.toml"], "remedy: "),
         (&["replay", "layouts/towed-array.toml"], "remedy: "),
@@ -181,6 +182,7 @@ fn moments_are_durations_the_end_and_dates() {
     assert_eq!(at("-5 s"), "-5");
     assert_eq!(at("1000000000.000000000000000001"), "1000000000.000000000000000001");
     assert_eq!(at("90 min"), "5400");
+    assert_eq!(at("-1 d 3 h 20 min"), "-98400");
     let text = fs::read_to_string("layouts/towed-array.toml").expect("the layout");
     let epoch = text.lines().find_map(|line| line.strip_prefix("epoch = ")).expect("an epoch");
     assert_eq!(at(epoch.split('#').next().unwrap().trim().trim_matches('"')), "0");
@@ -264,6 +266,42 @@ fn a_full_disk_is_told() {
     assert_eq!(output.status.code(), Some(2), "{stderr}");
     assert!(stderr.contains("standard output could not be written"), "{stderr}");
     assert!(stderr.contains("remedy: "), "{stderr}");
+}
+
+/// `--replace` is for results of before, not for what they come from, nor for devices.
+#[test]
+fn neither_inputs_nor_devices_are_written_over() {
+    let folder = tempfile::tempdir().expect("a folder");
+    let layout = "name = \"A\"\n[[node]]\nname = \"hub\"\n[survey]\nfile = \"s.csv\"\n\
+                  [[phase]]\nhold = \"1 m/s^2\"\nfor = \"1 h\"\n";
+    fs::write(folder.path().join("line.toml"), layout).expect("written");
+    fs::write(folder.path().join("s.csv"), "name,position_m\nmast,12\n").expect("written");
+    std::os::unix::fs::symlink("line.toml", folder.path().join("other")).expect("a link");
+    let run = |line: &str| {
+        let output = Command::new(env!("CARGO_BIN_EXE_clockspar"))
+            .args(line.split(' '))
+            .current_dir(folder.path())
+            .output()
+            .expect("the program ends");
+        (output.status.code(), text(&output.stderr))
+    };
+    let first = run("record line.toml --until 10 --every 1 --out run.jsonl");
+    assert_eq!(first.0, Some(0), "{}", first.1);
+    for (line, what) in [
+        ("rates line.toml --out line.toml --replace", "line.toml is being read"),
+        ("rates line.toml --out other --replace", "other is being read"),
+        ("rates line.toml --out s.csv --replace", "s.csv is being read"),
+        ("record line.toml --until 10 --every 1 --out s.csv --replace", "s.csv is being read"),
+        ("verify run.jsonl --out run.jsonl --replace", "run.jsonl is being read"),
+        ("rates line.toml --out /dev/null --replace", "/dev/null is no ordinary file"),
+        ("rates line.toml --out . --replace", ". is no ordinary file"),
+    ] {
+        let (status, stderr) = run(line);
+        assert_eq!(status, Some(2), "{line}: {stderr}");
+        assert!(stderr.contains(what) && stderr.contains("rule: results are"), "{line}: {stderr}");
+    }
+    assert_eq!(fs::read_to_string(folder.path().join("line.toml")).expect("a layout"), layout);
+    assert_eq!(run("verify run.jsonl").0, Some(0));
 }
 
 #[test]

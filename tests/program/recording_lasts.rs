@@ -201,6 +201,46 @@ fn a_table_that_finds_no_more_room_is_not_written() {
     assert_eq!(left.len(), 1, "nothing but the layout is left");
 }
 
+/// A volume of 256 KiB, in a name space of its own. Where none may be mounted, this says so
+/// and leaves the matter to the two tests above.
+#[test]
+#[allow(clippy::print_stderr, reason = "what was not tested is said")]
+fn a_full_volume_takes_nothing_that_was_whole() {
+    let folder = folder();
+    let script = r#"
+        mkdir full && mount -t tmpfs -o size=256k tmpfs full 2>&1 || exit 99
+        $CLOCKSPAR record small.toml --until '300 d' --every '1 ms' --out full/run.jsonl
+        echo "record $?"
+        cp full/run.jsonl kept.jsonl
+        $CLOCKSPAR rates small.toml --from 0 --until '1 h' --every '1 s' --as csv --out full/t.csv
+        echo "rates $?"
+        $CLOCKSPAR rates small.toml --as csv --out full/run.jsonl --replace
+        echo "replace $?"
+        cmp full/run.jsonl kept.jsonl && ls -A full
+    "#;
+    let output = Command::new("unshare")
+        .args(["--user", "--map-root-user", "--mount", "sh", "-c", script])
+        .current_dir(folder.path())
+        .env("CLOCKSPAR", env!("CARGO_BIN_EXE_clockspar"))
+        .output();
+    let output = match output {
+        Ok(output) if output.status.code() == Some(0) => output,
+        refused => {
+            eprintln!("no volume can be mounted here: {refused:?}");
+            let may_mount = folder.path().join("kept.jsonl").exists();
+            assert!(!may_mount, "the volume was there");
+            return;
+        }
+    };
+    let (_, stdout, stderr) = seen(&output);
+    assert_eq!(stdout, "record 2\nrates 2\nreplace 2\nrun.jsonl\n", "{stderr}");
+    assert_eq!(stderr.matches("No space left").count(), 3, "{stderr}");
+    assert_eq!(stderr.matches("remedy: make room").count(), 3, "{stderr}");
+    let bytes = fs::read(folder.path().join("kept.jsonl")).expect("the recording");
+    let verdict = verify(&bytes[..], None).expect("a recording");
+    assert!(bytes.ends_with(b"\n") && verdict.holds && !verdict.whole, "{verdict:#?}");
+}
+
 /// Ten thousand flips anywhere in a recording of twelve nodes. The bytes alone tell of each
 /// one; for every tenth the whole of `verify` is asked as well.
 #[test]

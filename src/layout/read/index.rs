@@ -1,6 +1,9 @@
 //! Names of rows, found without a second copy of any of them.
 
+use std::collections::HashMap;
 use std::hash::{BuildHasher, RandomState};
+
+use compact_str::CompactString;
 
 use crate::cores;
 
@@ -30,13 +33,18 @@ impl NameIndex {
         });
         cores::sort(&mut keys);
         let mut twice = Vec::new();
-        for (place, &key) in keys.iter().enumerate() {
-            let same_hash =
-                keys[..place].iter().rev().take_while(|other| hash_of(**other) == hash_of(key));
-            let name = |key: u64| name_of(index_of(key));
-            // The first of several stands farthest in front.
-            if let Some(first) = same_hash.filter(|other| name(**other) == name(key)).last() {
-                twice.push((index_of(key), index_of(*first)));
+        // The first of each name among those of one hash, which are one name as a rule.
+        let mut firsts: Vec<u32> = Vec::new();
+        for same_hash in keys.chunk_by(|a, b| hash_of(*a) == hash_of(*b)) {
+            if let [_] = same_hash {
+                continue;
+            }
+            firsts.clear();
+            for index in same_hash.iter().map(|key| index_of(*key)) {
+                match firsts.iter().find(|first| name_of(**first) == name_of(index)) {
+                    Some(first) => twice.push((index, *first)),
+                    None => firsts.push(index),
+                }
             }
         }
         (NameIndex { keys, hasher }, twice)
@@ -55,6 +63,32 @@ impl NameIndex {
     pub(super) fn renumber(&mut self, new: impl Fn(u32) -> u32) {
         for key in &mut self.keys {
             *key = (*key & !INDEX_MASK) | u64::from(new(index_of(*key)));
+        }
+    }
+}
+
+/// Numbers of names, of which the later counts where one stands twice. A few are compared one
+/// by one, which costs less than to hash each of a million names that are looked for.
+pub(super) enum ByName {
+    Few(Vec<CompactString>),
+    Many(HashMap<CompactString, usize>),
+}
+
+impl ByName {
+    pub(super) fn of(names: impl ExactSizeIterator<Item = CompactString>) -> ByName {
+        const FEW: usize = 8;
+        if names.len() <= FEW {
+            ByName::Few(names.collect())
+        } else {
+            ByName::Many(names.zip(0..).collect())
+        }
+    }
+
+    /// The number of a name, from 0.
+    pub(super) fn find(&self, name: &str) -> Option<usize> {
+        match self {
+            ByName::Few(few) => few.iter().rposition(|known| known == name),
+            ByName::Many(many) => many.get(name).copied(),
         }
     }
 }
@@ -81,5 +115,22 @@ mod tests {
         assert_eq!(index.find("n7", name_of), Some(7));
         assert_eq!(index.find("n900", name_of), None);
         assert_eq!(NameIndex::of(0, |_| "").0.find("", |_| ""), None);
+    }
+
+    #[test]
+    fn few_names_are_found_like_many() {
+        for count in [0, 1, 8, 9, 100] {
+            let names = (0..count).map(|number| CompactString::from(format!("n{number}")));
+            let again = ByName::of(names.clone().collect::<Vec<_>>().into_iter());
+            for (number, name) in names.enumerate() {
+                assert_eq!(again.find(&name), Some(number));
+            }
+            assert_eq!(again.find("n"), None);
+        }
+        for others in [0, 20] {
+            let mut names = vec![CompactString::from("a"), "a".into()];
+            names.extend((0..others).map(|number| CompactString::from(format!("n{number}"))));
+            assert_eq!(ByName::of(names.into_iter()).find("a"), Some(1));
+        }
     }
 }

@@ -1,10 +1,10 @@
 //! All nodes of a layout in one list: those written, those of the survey, those of series.
 
-use std::collections::HashMap;
 use std::ops::Range;
 
 use compact_str::CompactString;
 
+use super::index::ByName;
 use super::rows::not_found;
 use super::{MOST_NODES, series, survey};
 use crate::layout::Node;
@@ -116,24 +116,24 @@ impl Places {
 /// Looks up clocks by name.
 pub(super) struct Clocks<'w> {
     names: Vec<&'w str>,
-    by_name: HashMap<&'w str, u32>,
+    by_name: ByName,
     whole: bool,
 }
 
 impl<'w> Clocks<'w> {
     pub(super) fn new(written: &'w Written) -> Clocks<'w> {
         let names: Vec<&str> = written.clocks.iter().map(|clock| clock.name.as_str()).collect();
-        let by_name = names.iter().copied().zip(0..).collect();
+        let by_name = ByName::of(names.iter().map(|name| CompactString::from(*name)));
         Clocks { names, by_name, whole: written.clocks_are_whole && written.tables_are_known }
     }
 
     pub(super) fn index(&self, values: &NodeValues, faults: &mut Collector) -> Option<u32> {
         let (name, spot) = values.clock.stated()?;
-        let index = self.by_name.get(name.as_str()).copied();
+        let index = self.by_name.find(name);
         if index.is_none() && self.whole {
             not_found("clock", name, spot, self.names.iter().copied(), faults);
         }
-        index
+        u32::try_from(index?).ok()
     }
 }
 
@@ -200,8 +200,7 @@ pub(super) fn gather(
             format!("a line has at most {MOST_NODES} nodes"),
             "lower the count of a series, or divide the line",
         );
-        gathered.hides_nodes = true;
-        return Some(gathered);
+        return Some(Gathered { hides_nodes: true, ..Gathered::default() });
     }
     for (kept, node) in gathered.nodes.iter_mut().zip(listed) {
         gathered.places.push(Place::of(&node, Origin::Node), 1);
@@ -227,7 +226,10 @@ pub(super) fn gather(
         faults.fault(
             Spot::new(0, 0..1),
             "a line has at least one node",
-            "add a [[node]], a [[series]] or a [survey]",
+            match &written.survey {
+                Some(_) => "add rows to the survey",
+                None => "add a [[node]], a [[series]] or a [survey]",
+            },
         );
     }
     Some(gathered)

@@ -137,7 +137,8 @@ fn judge_reference(node: &Node, place: &Place, faults: &mut Collector) {
 /// that order already.
 fn order(nodes: &[Node]) -> Option<Vec<u32>> {
     let neighbours = nodes.len().saturating_sub(1);
-    if cores::all(neighbours, |row| nodes[row].position_m >= nodes[row + 1].position_m) {
+    if cores::all(neighbours, cores::MANY, |row| nodes[row].position_m >= nodes[row + 1].position_m)
+    {
         return None;
     }
     let mut order: Vec<u32> = (0..).take(nodes.len()).collect();

@@ -2,13 +2,13 @@
 
 mod all_cores;
 
-use std::collections::HashMap;
-
 use compact_str::CompactString;
 
 use super::csv::{Row, Rows};
+use super::index::ByName;
 use super::nodes::{Clocks, Origin, Place, Places, node_as_written};
 use super::{FARTHEST_POSITION_M, MOST_NODES};
+use crate::cores;
 use crate::layout::Node;
 use crate::layout::fault::{Collector, Spot};
 use crate::layout::names;
@@ -51,7 +51,8 @@ impl Reading {
     /// What suits a text: a short one is read before the cores are awake.
     pub(super) fn of(text: &str) -> Reading {
         const LONG: usize = 1 << 20;
-        if text.len() < LONG { Reading::RowByRow } else { Reading::OnAllCores }
+        let is_shared = text.len() >= LONG && cores::threads().is_some();
+        if is_shared { Reading::OnAllCores } else { Reading::RowByRow }
     }
 }
 
@@ -79,7 +80,9 @@ pub(super) fn read(
     let Some(columns) = columns else {
         return Some(Places::default());
     };
-    let survey = Survey { columns, by_name: Listed::of(listed), clocks };
+    let names = listed.iter().map(|node| node.name.value().cloned().unwrap_or_default());
+    let known = ByName::of(names);
+    let survey = Survey { columns, listed: known, clocks };
     match table.reading {
         Reading::OnAllCores => survey.read_on_all_cores(&rows, listed, nodes),
         Reading::RowByRow => Some(survey.read_by_row(rows, listed, nodes, faults)),
@@ -89,7 +92,7 @@ pub(super) fn read(
 /// What the rows of a survey are read by.
 struct Survey<'s> {
     columns: Vec<Column>,
-    by_name: Listed,
+    listed: ByName,
     clocks: &'s Clocks<'s>,
 }
 
@@ -144,37 +147,7 @@ impl Survey<'_> {
 
     /// The number of the listed node a row is about.
     fn listed(&self, row: &WrittenNode) -> Option<usize> {
-        self.by_name.find(row.name.value()?)
-    }
-}
-
-/// The nodes of the layout by name. A few are compared one by one, which costs less than to
-/// hash a million names of a survey.
-enum Listed {
-    Few(Vec<(CompactString, usize)>),
-    Many(HashMap<CompactString, usize>),
-}
-
-impl Listed {
-    fn of(listed: &[WrittenNode]) -> Listed {
-        const FEW: usize = 8;
-        let named = listed
-            .iter()
-            .enumerate()
-            .filter_map(|(index, node)| Some((node.name.value()?.clone(), index)));
-        // Of a name that stands there twice the later counts either way.
-        if listed.len() <= FEW {
-            Listed::Few(named.rev().collect())
-        } else {
-            Listed::Many(named.collect())
-        }
-    }
-
-    fn find(&self, name: &str) -> Option<usize> {
-        match self {
-            Listed::Few(few) => few.iter().find(|(known, _)| known == name).map(|(_, at)| *at),
-            Listed::Many(many) => many.get(name).copied(),
-        }
+        self.listed.find(row.name.value()?)
     }
 }
 
@@ -205,6 +178,7 @@ fn read_header(header: Row<'_, '_>, faults: &mut Collector) -> Option<Vec<Column
             let known = ["name", "position_m", "u_position_m", "position"];
             let words = known.into_iter().chain(NodeKey::ALL.iter().map(|(name, _)| *name));
             let remedy = match nearest(&word, words) {
+                _ if word.contains([';', '\t']) => "separate the fields by commas".to_owned(),
                 Some(meant) => format!("write `{meant}`"),
                 None => "the columns are name, position_m, u_position_m and the keys of [[node]]"
                     .to_owned(),
@@ -305,15 +279,21 @@ fn metres(text: &str, spot: Spot, column: &str, faults: &mut Collector) -> Field
     match quantity::plain(text) {
         Some(value) => near_enough(value, spot, faults),
         None => {
-            let rule = format!("the column `{column}` holds bare numbers, in metres");
-            let remedy = match quantity::parse(text, Dimension::Length) {
-                Ok(value) => format!("write `{value}`"),
-                Err(_) => "write for example `-5000.25`".to_owned(),
+            let is_number = text.parse::<f64>().is_ok();
+            let example = "write for example `-5000.25`".to_owned();
+            let (rule, remedy) = match quantity::parse(text, Dimension::Length) {
+                Ok(value) => (not_bare(column), format!("write `{value}`")),
+                Err(fault) if is_number => (fault.rule, example),
+                Err(_) => (not_bare(column), example),
             };
             faults.fault(spot, rule, remedy);
             Field::Faulty
         }
     }
+}
+
+fn not_bare(column: &str) -> String {
+    format!("the column `{column}` holds bare numbers, in metres")
 }
 
 fn near_enough(value: f64, spot: Spot, faults: &mut Collector) -> Field<f64> {

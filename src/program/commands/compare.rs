@@ -5,7 +5,7 @@ use std::path::Path;
 
 use clockspar::layout::{Epoch, Layout};
 use clockspar::model::array_time::ArrayTime;
-use clockspar::run::recording::{Condition, Frame, ReadFault, Reader};
+use clockspar::run::recording::{Column, Condition, Frame, ReadFault, Reader};
 use clockspar::run::{Run, State};
 use clockspar::table::Report;
 use clockspar::table::content::{
@@ -14,7 +14,7 @@ use clockspar::table::content::{
 
 use super::choice::{LineShown, Nodes};
 use super::frames::FrameList;
-use super::replay::{layout_of, span_of};
+use super::replay::{check_dates, layout_of};
 use super::show::{Asked, show};
 use super::{recordings, run_of};
 use crate::program::arguments::{CompareArguments, MomentArguments};
@@ -87,8 +87,8 @@ fn compare_recorded(a: &Side, b: &Side, arguments: &CompareArguments) -> Result<
                     at,
                     reference_acceleration_m_s2: f64::NAN,
                     rapidity: None,
-                    rate_minus_one: Vec::new(),
-                    clock_offset_s: Vec::new(),
+                    rate_minus_one: Column::default(),
+                    clock_offset_s: Column::default(),
                     reading_s: None,
                 }
             }
@@ -147,8 +147,8 @@ fn recorded_moments(
     let ends = [a, b].map(|side| side.frames().and_then(|frames| frames.moments.last()));
     let end = ends.into_iter().flatten().min().unwrap_or(last);
     for side in [a, b] {
-        if let What::Recording { reader, layout, .. } = &side.what {
-            span_of(reader, layout.as_ref(), asked, &side.shown)?;
+        if let What::Recording { layout, .. } = &side.what {
+            check_dates(layout.as_ref(), asked, &side.shown)?;
         }
     }
     let span = Span { epoch: a.epoch(), first: *first, end: *end };

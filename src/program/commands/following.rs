@@ -58,7 +58,7 @@ pub fn follow(arguments: &ReplayArguments) -> Result<u8, Problem> {
         next_byte: 0,
     };
     let mut ended = Ok(Ending::Closed);
-    output.write(false, |out| {
+    output.write(|out| {
         ended = watch(&mut reader, &arguments.file, printer, out);
         match &mut ended {
             // What stands against printing is told as for every output.

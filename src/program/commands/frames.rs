@@ -73,6 +73,9 @@ pub fn frame_in_force(
     at: ArrayTime,
 ) -> Result<Option<(Frame, Vec<Event>)>, ReadFault> {
     let Some(frame) = reader.frame(Seek::AtOrBefore, at)? else { return Ok(None) };
+    if reader.has_no_event() {
+        return Ok(Some((frame, Vec::new())));
+    }
     let before = reader.frame(Seek::Before, frame.at).ok().flatten();
     let since = before
         .map_or(ArrayTime::from_attoseconds(-ArrayTime::LIMIT.attoseconds()), |before| {

@@ -21,7 +21,7 @@ use crate::program::arguments::{
 };
 use crate::program::moments::{self, Moments};
 use crate::program::problem::{Problem, STATUS_RULE, room_for};
-use crate::program::recording_file::{CreateFault, RecordingFile, RecordingSource, open_recording};
+use crate::program::recording_file::{RecordingFile, RecordingSource, open_recording};
 use crate::program::terminal::die_by;
 use crate::program::{files, message, output};
 
@@ -92,15 +92,7 @@ fn watch_signals() -> Result<Arc<AtomicUsize>, Problem> {
 
 /// Creates the file of a recording.
 pub fn create(path: &Path, replace: bool) -> Result<RecordingFile, Problem> {
-    RecordingFile::create(path, replace).map_err(|fault| match fault {
-        CreateFault::Exists => output::exists(path),
-        CreateFault::NotAFile => Problem::new(
-            format_args!("{} is no ordinary file", path.display()),
-            "a recording is written to a file",
-            "choose another name for --out",
-        ),
-        CreateFault::Io(error) => Problem::writing(&path.display().to_string(), &error),
-    })
+    RecordingFile::create(path, replace).map_err(|fault| output::not_created(path, &fault))
 }
 
 fn failed_record(shown: &str, fault: &RecordFault) -> Problem {

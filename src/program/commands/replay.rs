@@ -7,7 +7,7 @@ use clockspar::layout::Layout;
 use clockspar::layout::date::looks_like_a_date;
 use clockspar::model::array_time::ArrayTime;
 use clockspar::run::Event;
-use clockspar::run::recording::{Condition, Frame, Line, Opening, ReadFault, Reader};
+use clockspar::run::recording::{Column, Condition, Frame, Line, Opening, ReadFault, Reader};
 use clockspar::table::content::{events_table, replay_report};
 use clockspar::table::{Cell, Measure, Report, Scalar};
 
@@ -160,12 +160,31 @@ impl Frames {
 }
 
 /// What moments of a recording are counted and bounded by: its frames.
-pub fn span_of<'a>(
+fn span_of<'a>(
     reader: &Reader<RecordingSource>,
     layout: Option<&'a Layout>,
     asked: &MomentArguments,
     shown: &str,
 ) -> Result<Span<'a>, Problem> {
+    check_dates(layout, asked, shown)?;
+    let is_end = |text: &Option<String>| text.as_ref().is_some_and(|text| text.trim() == "end");
+    let needs_end = [&asked.at, &asked.from, &asked.until].into_iter().any(is_end)
+        || (asked.every.is_some() && asked.until.is_none());
+    let mut end = reader.opening().from;
+    if needs_end {
+        let last = reader.last_frame().map_err(|fault| unread(shown, &fault))?;
+        end = last.map_or(end, |last| last.at);
+    }
+    let epoch = layout.and_then(|layout| layout.epoch.as_ref());
+    Ok(Span { epoch, first: reader.opening().from, end })
+}
+
+/// A date is a moment of the layout in the recording.
+pub fn check_dates(
+    layout: Option<&Layout>,
+    asked: &MomentArguments,
+    shown: &str,
+) -> Result<(), Problem> {
     let is_date = |text: &&String| looks_like_a_date(text.trim_matches(' '));
     let asks_for_dates =
         [&asked.at, &asked.from, &asked.until].into_iter().flatten().any(|text| is_date(&text));
@@ -176,17 +195,7 @@ pub fn span_of<'a>(
             "`clockspar verify` tells the fault; give the moment as a time since array time zero",
         ));
     }
-    let ends = reader.first_frame().and_then(|first| Ok((first, reader.last_frame()?)));
-    let (first, last) = ends.map_err(|fault| unread(shown, &fault))?;
-    let (Some(first), Some(last)) = (first, last) else {
-        return Err(Problem::new(
-            format_args!("{shown} holds no frame"),
-            "a moment of a recording is shown by the last frame at or before it",
-            "replay without --at and --every shows what else there is",
-        ));
-    };
-    let epoch = layout.and_then(|layout| layout.epoch.as_ref());
-    Ok(Span { epoch, first: first.at, end: last.at })
+    Ok(())
 }
 
 /// A frame answers for every moment up to the next one: what was asked for is said.
@@ -243,9 +252,9 @@ pub fn empty_report<'a>(
         at: opening.from,
         reference_acceleration_m_s2: 0.0,
         rapidity: None,
-        rate_minus_one: Vec::new(),
-        clock_offset_s: Vec::new(),
-        reading_s: opening.has_readings.then(Vec::new),
+        rate_minus_one: Column::default(),
+        clock_offset_s: Column::default(),
+        reading_s: opening.has_readings.then(Column::default),
     };
     let mut report = replay_report(opening, layout, frame, Vec::new());
     report.at = Err(why);

@@ -50,7 +50,7 @@ pub fn show<'a>(
     match moments {
         Moments::One(at) => {
             let report = shown.report(*at);
-            output.write(arguments.replace, |out| match form {
+            output.write(|out| match form {
                 Form::Text => write_text_as(&report, &options, shown.choice.text(), out),
                 Form::Csv => write_csv(&report, 0, out),
                 Form::Json => write_json(&report, out),
@@ -58,7 +58,7 @@ pub fn show<'a>(
         }
         Moments::Every { .. } | Moments::Listed(_) => {
             let series = series(moments, shown.clone());
-            output.write(arguments.replace, |out| match form {
+            output.write(|out| match form {
                 Form::Text => {
                     let mut writer = TextWriter::new(options).with(shown.choice.text());
                     writer.head(&series.head, out)?;
@@ -113,7 +113,7 @@ fn show_paced(
     shown: &Shown<'_>,
 ) -> Result<(), Problem> {
     let mut blocks = Blocks::new(arguments.form(), options, &shown.choice, "--paced")?;
-    output.write(arguments.replace, |out| {
+    output.write(|out| {
         let begun = Instant::now();
         for index in 0..moments.count() {
             let at = moments.nth(index);

@@ -11,7 +11,8 @@ use clockspar::run::recording::{
 
 use crate::program::output::Output;
 use crate::program::problem::room_for;
-use crate::program::recording_file::{CreateFault, RecordingFile, RecordingSource};
+use crate::program::recording_file::{RecordingFile, RecordingSource};
+use crate::program::whole_file::CreateFault;
 
 use super::message::{Effect, Made, Message, Notice, Reading, Wanted};
 use super::state::Desk;
@@ -228,6 +229,7 @@ fn not_created(path: &str, fault: &CreateFault) -> Notice {
     let (what, remedy) = match fault {
         CreateFault::Exists => (format!("{path} exists already"), "another name"),
         CreateFault::NotAFile => (format!("{path} is no ordinary file"), "another name"),
+        CreateFault::IsRead => (format!("{path} is being read"), "another name"),
         CreateFault::Io(error) => {
             (format!("{path} cannot be created: {error}"), "another place, or its permissions")
         }
@@ -249,9 +251,8 @@ fn not_written(path: &str, fault: &WriteFault) -> Notice {
 
 /// Writes a layout to a new file, whole or not at all.
 fn save(path: &str, text: &str) -> Notice {
-    let saved = Output::open(Some(Path::new(path)), false).and_then(|output| {
-        output.write(false, |out| std::io::Write::write_all(out, text.as_bytes()))
-    });
+    let saved = Output::open(Some(Path::new(path)), false)
+        .and_then(|output| output.write(|out| std::io::Write::write_all(out, text.as_bytes())));
     match saved {
         Ok(()) => Notice::said(format!("saved as {path}")),
         Err(problem) => {

@@ -1,12 +1,15 @@
 //! Bytes of a line to what it says.
 
+use std::sync::Arc;
+
 use crate::layout::MOST_NODES;
 use crate::layout::names::{is_unsafe, made_safe};
 use crate::model::array_time::ArrayTime;
 use crate::run::{Event, EventKind};
 
+use super::column::{Entries, are_plain};
 use super::scan::{Malformed, Scanner};
-use super::{COLUMNS, Closing, EmbeddedFile, FORMAT, Frame, Line, Opening, READING_COLUMN};
+use super::{COLUMNS, Closing, Column, EmbeddedFile, FORMAT, Frame, Line, Opening, READING_COLUMN};
 
 /// Length of `,"crc32":"xxxxxxxx"}`.
 pub(super) const TAIL: usize = 20;
@@ -36,6 +39,18 @@ pub(super) fn body(line: &[u8]) -> Result<&[u8], String> {
     } else {
         Err(format!("its CRC is {crc}, not the one written"))
     }
+}
+
+/// Whether a line agrees with its CRC, told by its last bytes and by the CRC of the whole of
+/// it, those bytes included.
+pub(super) fn agrees(crc_of_line: u32, tail: &[u8; TAIL]) -> bool {
+    let digits = std::str::from_utf8(&tail[10..18]).ok();
+    let Some(crc) = digits.and_then(|digits| u32::from_str_radix(digits, 16).ok()) else {
+        return false;
+    };
+    let mut hasher = crc32fast::Hasher::new_with_initial(crc);
+    hasher.update(tail);
+    *tail == self::tail(crc) && hasher.finalize() == crc_of_line
 }
 
 /// What a line is, from its first bytes alone.
@@ -180,7 +195,7 @@ pub(super) fn head(line: &[u8]) -> Result<(Option<u64>, ArrayTime), Malformed> {
 /// A frame or an event, from its body.
 pub(super) fn line(body: &[u8], opening: &Opening) -> Result<Line, Malformed> {
     match Kind::of(body) {
-        Some(Kind::Frame) => frame(body, opening).map(Line::Frame),
+        Some(Kind::Frame) => frame(&Arc::new(body.to_vec()), body.len(), opening).map(Line::Frame),
         Some(Kind::Event) => event(body).map(Line::Event),
         Some(Kind::Closing) => {
             Err(Malformed { at: 0, what: "a closing line before the end".to_owned() })
@@ -189,8 +204,13 @@ pub(super) fn line(body: &[u8], opening: &Opening) -> Result<Line, Malformed> {
     }
 }
 
-fn frame(body: &[u8], opening: &Opening) -> Result<Frame, Malformed> {
-    let mut scanner = Scanner::new(body);
+/// A frame, from its body: the first `length` bytes of what its columns keep.
+pub(super) fn frame(
+    kept: &Arc<Vec<u8>>,
+    length: usize,
+    opening: &Opening,
+) -> Result<Frame, Malformed> {
+    let mut scanner = Scanner::new(&kept[..length]);
     scanner.expect("{\"frame\":")?;
     let index = scanner.whole()?;
     scanner.key("at_s")?;
@@ -199,17 +219,13 @@ fn frame(body: &[u8], opening: &Opening) -> Result<Frame, Malformed> {
     let reference_acceleration_m_s2 = scanner.double()?;
     scanner.key("rapidity")?;
     let rapidity = scanner.double_or_null()?;
-    let nodes = opening.nodes.len();
-    scanner.key(COLUMNS[0])?;
-    let rate_minus_one = column(&mut scanner, nodes)?;
-    scanner.key(COLUMNS[1])?;
-    let clock_offset_s = column(&mut scanner, nodes)?;
-    let reading_s = if opening.has_readings {
-        scanner.key(READING_COLUMN)?;
-        Some(column(&mut scanner, nodes)?)
-    } else {
-        None
+    let mut column = |key| -> Result<Column, Malformed> {
+        scanner.key(key)?;
+        Ok(Column::new(kept, entries(&mut scanner, opening.nodes.len())?))
     };
+    let rate_minus_one = column(COLUMNS[0])?;
+    let clock_offset_s = column(COLUMNS[1])?;
+    let reading_s = opening.has_readings.then(|| column(READING_COLUMN)).transpose()?;
     scanner.end()?;
     Ok(Frame {
         index,
@@ -222,12 +238,24 @@ fn frame(body: &[u8], opening: &Opening) -> Result<Frame, Malformed> {
     })
 }
 
-fn column(scanner: &mut Scanner<'_>, nodes: usize) -> Result<Vec<Option<f64>>, Malformed> {
-    let values = scanner.list(nodes, Scanner::double_or_null)?;
-    if values.len() == nodes {
-        Ok(values)
+/// The entries of a column.
+fn entries(scanner: &mut Scanner<'_>, nodes: usize) -> Result<Entries, Malformed> {
+    let mut ahead = scanner.clone();
+    if let Some(within) = ahead.passes_flat_list() {
+        let entries = Entries::of(scanner.bytes(), within.clone());
+        if entries.count() == nodes && are_plain(&scanner.bytes()[within]) {
+            *scanner = ahead;
+            return Ok(entries);
+        }
+    }
+    // Whatever is not quite what this program writes is read number by number, and refused
+    // at its place.
+    let start = scanner.at();
+    let count = scanner.list(nodes, |scanner| scanner.double_or_null().map(drop))?.len();
+    if count == nodes {
+        Ok(Entries::of(scanner.bytes(), start + 1..scanner.at() - 1))
     } else {
-        scanner.fail(format!("{} entries for {nodes} nodes", values.len()))
+        scanner.fail(format!("{count} entries for {nodes} nodes"))
     }
 }
 

@@ -145,6 +145,13 @@ impl LineBuffer {
         self.finish()
     }
 
+    /// A list of numbers alone.
+    pub(super) fn numbers(&mut self, values: impl Iterator<Item = Option<f64>>) -> &[u8] {
+        self.bytes.clear();
+        self.list(values, |line, value| line.number_or_null(value));
+        &self.bytes
+    }
+
     fn begin(&mut self, key: &str) {
         self.bytes.clear();
         self.raw("{\"");

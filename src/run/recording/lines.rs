@@ -47,16 +47,28 @@ impl<'r, R: ReadAt> Lines<'r, R> {
         self.offset
     }
 
-    fn read(&mut self) -> Result<Line, ReadFault> {
-        let (byte, number) = (self.offset, self.number);
+    /// What the next line says, or what is wrong with it.
+    fn parse_next(&mut self) -> io::Result<Result<Line, String>> {
+        // A good frame is kept where it is read, which matters where it is long.
+        if self.reader.has_long_frames()
+            && let Some((frame, end)) = self.reader.frame_at(self.offset)?
+        {
+            self.offset = end;
+            return Ok(Ok(Line::Frame(frame)));
+        }
         let end = self.reader.data_end();
-        let found = self.window.line(byte, end, self.reader.longest_line())?;
+        let found = self.window.line(self.offset, end, self.reader.longest_line())?;
         self.offset = found.end;
-        self.number = number.map(|number| number + 1);
-        let parsed = match found.held {
+        Ok(match found.held {
             Some(range) => parse(self.window.held(range), self.reader),
             None => Err(TOO_LONG.to_owned()),
-        };
+        })
+    }
+
+    fn read(&mut self) -> Result<Line, ReadFault> {
+        let (byte, number) = (self.offset, self.number);
+        let parsed = self.parse_next()?;
+        self.number = number.map(|number| number + 1);
         let checked = parsed.and_then(|line| {
             let index = match &line {
                 Line::Frame(frame) => Some(frame.index),

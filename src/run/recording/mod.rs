@@ -21,10 +21,12 @@
 //! The library opens no file: it writes to any [`std::io::Write`], one call a line, and
 //! reads from any [`ReadAt`].
 
+mod column;
 mod decode;
 mod encode;
 mod fault;
 mod lines;
+mod long;
 mod reader;
 mod record;
 mod scan;
@@ -36,6 +38,7 @@ use crate::layout::Layout;
 use crate::model::array_time::ArrayTime;
 use crate::table::{MODEL, PROGRAM};
 
+pub use column::Column;
 pub use fault::{Condition, Cut, Damage, Missing, OpenFault, ReadFault, WriteFault};
 pub use lines::{Events, Heads, LineHead, Lines};
 pub use reader::{Reader, Seek};
@@ -108,11 +111,11 @@ pub struct Frame {
     /// Rapidity; `None` for a standing line.
     pub rapidity: Option<f64>,
     /// `N − 1` of every node; `None` for a released one.
-    pub rate_minus_one: Vec<Option<f64>>,
+    pub rate_minus_one: Column,
     /// Clock offset of every node, s; `None` for a released one.
-    pub clock_offset_s: Vec<Option<f64>>,
+    pub clock_offset_s: Column,
     /// Reading of every node's clock less array time, s, in a recording with noise.
-    pub reading_s: Option<Vec<Option<f64>>>,
+    pub reading_s: Option<Column>,
 }
 
 /// The last line of a whole recording.

@@ -11,6 +11,7 @@ use crate::model::array_time::ArrayTime;
 
 use super::decode::{self, Kind};
 use super::lines::{Events, Heads, Lines, TOO_LONG, damaged, parse};
+use super::long::{Bound, Shelf};
 use super::window::{ReadAt, Window, feed_after, for_each_chunk, line_start, read_full};
 use super::{
     Condition, Cut, FORMAT, Frame, LONGEST_NOTE, Line, Missing, OpenFault, Opening, ReadFault,
@@ -25,9 +26,6 @@ const HELD_UNCHECKED: u64 = 1 << 20;
 /// Lines that may be longer than this are not read whole on the way to a moment.
 const WHOLE_WHILE_SEEKING: usize = 1 << 20;
 
-/// The most bytes from the start of a line to the end of its moment.
-const LONGEST_HEAD: usize = 256;
-
 /// A recording opened for reading. It may still be growing: see [`Reader::refresh`].
 #[derive(Debug)]
 pub struct Reader<R> {
@@ -37,6 +35,7 @@ pub struct Reader<R> {
     data_end: u64,
     size: u64,
     condition: Condition,
+    shelf: Shelf,
 }
 
 /// Which frame is meant by a moment.
@@ -62,8 +61,15 @@ impl<R: ReadAt> Reader<R> {
         let size = source.size()?;
         let (opening, data_start) = read_opening(&source, size)?;
         let condition = Condition::Cut(Cut { at_byte: data_start, missing: Missing::Closing });
-        let mut reader =
-            Reader { source, opening, data_start, data_end: data_start, size: 0, condition };
+        let mut reader = Reader {
+            source,
+            opening,
+            data_start,
+            data_end: data_start,
+            size: 0,
+            condition,
+            shelf: Shelf::default(),
+        };
         reader.refresh()?;
         Ok(reader)
     }
@@ -141,7 +147,7 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// When the bytes cannot be read.
     pub fn lines_from(&self, at: ArrayTime) -> io::Result<Lines<'_, R>> {
-        Ok(Lines::new(self, self.first_line_where(|moment| moment >= at)?))
+        Ok(Lines::new(self, self.first_line_where(Bound::before(at))?))
     }
 
     /// All events up to a moment, from the first line on. Frames are passed over, but
@@ -154,7 +160,7 @@ impl<R: ReadAt> Reader<R> {
         if self.has_no_event() {
             return Ok(Events::new(self, self.data_end, self.data_end));
         }
-        let end = self.first_line_where(|moment| moment > until)?;
+        let end = self.first_line_where(Bound::after(until))?;
         Ok(Events::new(self, self.data_start, end))
     }
 
@@ -167,13 +173,14 @@ impl<R: ReadAt> Reader<R> {
         if self.has_no_event() {
             return Ok(Events::new(self, self.data_end, self.data_end));
         }
-        let start = self.first_line_where(|moment| moment >= from)?;
-        let end = self.first_line_where(|moment| moment > until)?;
+        let start = self.first_line_where(Bound::before(from))?;
+        let end = self.first_line_where(Bound::after(until))?;
         Ok(Events::new(self, start, end.max(start)))
     }
 
     /// Whether the closing line says that there is no event to look for.
-    fn has_no_event(&self) -> bool {
+    #[must_use]
+    pub fn has_no_event(&self) -> bool {
         matches!(&self.condition, Condition::Whole(closing) if closing.events == 0)
     }
 
@@ -183,15 +190,18 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// A damaged line in its place, or bytes that cannot be read.
     pub fn frame(&self, seek: Seek, at: ArrayTime) -> Result<Option<Frame>, ReadFault> {
+        if self.has_long_lines()
+            && let Some(found) = self.frame_by_heads(seek, at)?
+        {
+            return Ok(found);
+        }
         match seek {
-            Seek::Before => self.frame_up_to(self.first_line_where(|moment| moment >= at)?, None),
+            Seek::Before => self.frame_up_to(self.first_line_where(Bound::before(at))?, None),
             Seek::AtOrBefore => {
-                self.frame_up_to(self.first_line_where(|moment| moment > at)?, Some(at))
+                self.frame_up_to(self.first_line_where(Bound::after(at))?, Some(at))
             }
-            Seek::AtOrAfter => {
-                self.frame_from(self.first_line_where(|moment| moment >= at)?, Some(at))
-            }
-            Seek::After => self.frame_from(self.first_line_where(|moment| moment > at)?, None),
+            Seek::AtOrAfter => self.frame_from(self.first_line_where(Bound::before(at))?, Some(at)),
+            Seek::After => self.frame_from(self.first_line_where(Bound::after(at))?, None),
         }
     }
 
@@ -201,6 +211,10 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// A damaged line in its place, or bytes that cannot be read.
     pub fn first_frame(&self) -> Result<Option<Frame>, ReadFault> {
+        if self.has_long_lines() {
+            let earliest = ArrayTime::from_attoseconds(-ArrayTime::LIMIT.attoseconds());
+            return self.frame(Seek::AtOrAfter, earliest);
+        }
         self.frame_from(self.data_start, None)
     }
 
@@ -210,6 +224,9 @@ impl<R: ReadAt> Reader<R> {
     ///
     /// A damaged line in its place, or bytes that cannot be read.
     pub fn last_frame(&self) -> Result<Option<Frame>, ReadFault> {
+        if self.has_long_lines() {
+            return self.frame(Seek::AtOrBefore, ArrayTime::LIMIT);
+        }
         self.frame_before(self.data_end)
     }
 
@@ -223,7 +240,7 @@ impl<R: ReadAt> Reader<R> {
         if self.data_end <= self.data_start {
             return Ok(None);
         }
-        let start = line_start(&self.source, self.data_start, self.data_end - 1)?;
+        let start = self.line_start_before(self.data_end)?;
         let mut window = Window::new(&self.source);
         let found = window.line(start, self.data_end, self.longest_line())?;
         let body = found.held.and_then(|range| decode::body(window.held(range)).ok());
@@ -243,12 +260,15 @@ impl<R: ReadAt> Reader<R> {
     /// The longest line after the opening that can be one: a frame of doubles of 24
     /// characters, or a note.
     pub(super) fn longest_line(&self) -> usize {
-        let columns = if self.opening.has_readings { 3 } else { 2 };
-        let frame = 1024 + 32 * columns * self.opening.nodes.len();
         // The six bytes of an escape for every byte of text; a note of the layout is in
         // the opening, escaped at least as long.
         let note = 1024 + 6 * LONGEST_NOTE.max(self.opening.layout_text.len());
-        frame.max(note)
+        self.longest_frame().max(note)
+    }
+
+    fn longest_frame(&self) -> usize {
+        let columns = if self.opening.has_readings { 3 } else { 2 };
+        1024 + 32 * columns * self.opening.nodes.len()
     }
 
     /// Where whole lines end, and whether a closing line follows there.
@@ -339,15 +359,34 @@ impl<R: ReadAt> Reader<R> {
         Ok(None)
     }
 
+    /// The start of the line that ends right before a byte.
+    pub(super) fn line_start_before(&self, end: u64) -> io::Result<u64> {
+        line_start(&self.source, self.data_start, end.saturating_sub(1))
+    }
+
+    /// Buffers for long lines.
+    pub(super) fn shelf(&self) -> &Shelf {
+        &self.shelf
+    }
+
+    /// Whether reading lines whole may be what takes the time.
+    fn has_long_lines(&self) -> bool {
+        self.longest_line() > WHOLE_WHILE_SEEKING
+    }
+
+    /// Whether it is frames that are so long.
+    pub(super) fn has_long_frames(&self) -> bool {
+        self.longest_frame() > WHOLE_WHILE_SEEKING
+    }
+
     /// The first byte of the first line whose moment is past some bound, by bisection; the
-    /// end of the lines when there is none. `is_past` holds for every moment after one for
-    /// which it holds.
+    /// end of the lines when there is none.
     ///
     /// A damaged line has no moment that could be trusted: it goes with the next good line,
     /// so that whoever reads on from there meets it.
-    fn first_line_where(&self, is_past: impl Fn(ArrayTime) -> bool) -> io::Result<u64> {
-        if self.longest_line() > WHOLE_WHILE_SEEKING
-            && let Some(found) = self.first_line_by_heads(&is_past)?
+    fn first_line_where(&self, bound: Bound) -> io::Result<u64> {
+        if self.has_long_lines()
+            && let Some(found) = self.line_by_heads(bound)?
         {
             return Ok(found);
         }
@@ -364,49 +403,11 @@ impl<R: ReadAt> Reader<R> {
                 moment = body.and_then(|body| decode::moment(body).ok());
             }
             match moment {
-                Some(moment) if !is_past(moment) => low = next,
+                Some(moment) if !bound.is_past(moment) => low = next,
                 _ => high = start,
             }
         }
         Ok(high)
-    }
-}
-
-impl<R: ReadAt> Reader<R> {
-    /// The same, reading no more than the beginning of each line on the way: for lines so
-    /// long that reading them is what takes the time. `None` when that does not tell.
-    ///
-    /// Beginnings are believed without their CRC on the way, and that is made good at the
-    /// end: among good lines moments never fall, so two good neighbours on either side of
-    /// the bound are the place whatever led to it.
-    fn first_line_by_heads(&self, is_past: &impl Fn(ArrayTime) -> bool) -> io::Result<Option<u64>> {
-        let mut window = Window::new(&self.source);
-        let (mut low, mut high) = (self.data_start, self.data_end);
-        while low < high {
-            let middle = low + (high - low) / 2;
-            let start = line_start(&self.source, low, middle)?;
-            let Ok(moment) = decode::moment(window.head(start, high, LONGEST_HEAD)?) else {
-                return Ok(None);
-            };
-            if is_past(moment) {
-                high = start;
-            } else {
-                low = feed_after(&self.source, middle, high)?.map_or(high, |feed| feed + 1);
-            }
-        }
-        let mut good_moment = |start: u64| -> io::Result<Option<ArrayTime>> {
-            let found = window.line(start, self.data_end, self.longest_line())?;
-            let body = found.held.and_then(|range| decode::body(window.held(range)).ok());
-            Ok(body.and_then(|body| decode::moment(body).ok()))
-        };
-        if high > self.data_start {
-            let before = line_start(&self.source, self.data_start, high - 1)?;
-            if good_moment(before)?.is_none_or(is_past) {
-                return Ok(None);
-            }
-        }
-        let is_bound = high >= self.data_end || good_moment(high)?.is_some_and(is_past);
-        Ok(is_bound.then_some(high))
     }
 }
 

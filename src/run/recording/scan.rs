@@ -4,6 +4,9 @@
 //! A general JSON reader would round moments to doubles and build a tree of a frame of a
 //! million nodes.
 
+use std::ops::Range;
+
+use super::window::first_of;
 use crate::layout::quantity::parse_duration;
 use crate::model::array_time::ArrayTime;
 
@@ -62,6 +65,25 @@ impl<'a> Scanner<'a> {
         self.fail(format!("the key `{key}` is missing"))
     }
 
+    /// The bytes scanned.
+    pub(super) fn bytes(&self) -> &'a [u8] {
+        self.bytes
+    }
+
+    /// Where the next byte stands.
+    pub(super) fn at(&self) -> usize {
+        self.at
+    }
+
+    /// Passes over a list without lists or texts in it; returns where its entries stand.
+    pub(super) fn passes_flat_list(&mut self) -> Option<Range<usize>> {
+        let rest = self.bytes[self.at..].strip_prefix(b"[")?;
+        let start = self.at + 1;
+        let end = start + first_of(b']', rest)?;
+        self.at = end + 1;
+        Some(start..end)
+    }
+
     /// The end of the line.
     pub(super) fn end(&self) -> Scanned<()> {
         if self.at == self.bytes.len() {
@@ -88,8 +110,15 @@ impl<'a> Scanner<'a> {
             // Whatever stands after a backslash belongs to the text.
             self.at = (self.at + length + 2).min(self.bytes.len());
         }
-        serde_json::from_slice(&self.bytes[start..self.at])
-            .map_err(|_| Malformed { at: start, what: "a malformed text".to_owned() })
+        let text = &self.bytes[start..self.at];
+        // Nearly all texts, a million names among them, stand for themselves.
+        let stands_for_itself = |byte: &u8| matches!(byte, b' '..=b'~') && *byte != b'\\';
+        let parsed = if text.iter().all(stands_for_itself) {
+            std::str::from_utf8(&text[1..text.len() - 1]).ok().map(str::to_owned)
+        } else {
+            serde_json::from_slice(text).ok()
+        };
+        parsed.ok_or_else(|| Malformed { at: start, what: "a malformed text".to_owned() })
     }
 
     /// The next number, as it is written.

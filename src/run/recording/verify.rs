@@ -246,13 +246,13 @@ impl Check {
             || 0.0,
         );
         compared.number(None, "rapidity", frame.rapidity, state.rapidity(), || total);
-        let columns = frame.rate_minus_one.iter().zip(&frame.clock_offset_s);
+        let columns = frame.rate_minus_one.iter().zip(frame.clock_offset_s.iter());
         for (row, (node, (rate, offset))) in state.nodes().zip(columns).enumerate() {
             let aboard = node.aboard();
             let wanted = aboard.map(|aboard| aboard.rate_minus_one.to_f64());
-            compared.number(Some(row), "rate_minus_one", *rate, wanted, || 0.0);
+            compared.number(Some(row), "rate_minus_one", rate, wanted, || 0.0);
             let wanted = aboard.map(|aboard| aboard.clock_offset_s.to_f64());
-            compared.number(Some(row), "clock_offset_s", *offset, wanted, || {
+            compared.number(Some(row), "clock_offset_s", offset, wanted, || {
                 let farthest_m = state.farthest_m(row);
                 let gathered = farthest_m * total / SPEED_OF_LIGHT_M_S;
                 if state.loaded().is_some() { gathered * STRETCHED } else { gathered }
@@ -263,7 +263,7 @@ impl Check {
             readings(state, frame.index, &mut wanted);
             for (row, recorded) in recorded.iter().enumerate() {
                 let wanted = wanted.get(row).copied().flatten();
-                compared.number(Some(row), "reading_s", *recorded, wanted, || 0.0);
+                compared.number(Some(row), "reading_s", recorded, wanted, || 0.0);
             }
         }
         self.verdict.worst_ulps = self.verdict.worst_ulps.max(compared.worst_ulps);

@@ -46,7 +46,7 @@ impl<T: ReadAt + ?Sized> ReadAt for &T {
 }
 
 /// Bytes read at a time; more once a line has shown to be longer.
-const CHUNK: usize = 64 * 1024;
+pub(super) const CHUNK: usize = 64 * 1024;
 
 /// The most bytes read at a time.
 const LARGEST_CHUNK: usize = 4 * 1024 * 1024;
@@ -231,12 +231,15 @@ pub(super) fn line_number<R: ReadAt + ?Sized>(source: &R, byte: u64) -> io::Resu
 
 /// The first line feed of some bytes.
 fn feed_in(bytes: &[u8]) -> Option<usize> {
-    // `contains` looks at whole words; only the block that has it is looked at bytewise.
-    const BLOCK: usize = 1024;
+    first_of(b'\n', bytes)
+}
+
+/// Where a byte stands first.
+pub(super) fn first_of(wanted: u8, bytes: &[u8]) -> Option<usize> {
     let mut passed = 0;
     for block in bytes.chunks(BLOCK) {
-        if block.contains(&b'\n') {
-            return block.iter().position(|byte| *byte == b'\n').map(|index| passed + index);
+        if has(block, wanted) {
+            return block.iter().position(|byte| *byte == wanted).map(|index| passed + index);
         }
         passed += block.len();
     }
@@ -245,13 +248,21 @@ fn feed_in(bytes: &[u8]) -> Option<usize> {
 
 /// The last line feed of some bytes.
 fn last_feed_in(bytes: &[u8]) -> Option<usize> {
-    const BLOCK: usize = 1024;
     let mut left = bytes.len();
     for block in bytes.rchunks(BLOCK) {
         left -= block.len();
-        if block.contains(&b'\n') {
+        if has(block, b'\n') {
             return block.iter().rposition(|byte| *byte == b'\n').map(|index| left + index);
         }
     }
     None
+}
+
+/// Bytes looked at together before it is asked which of them it is.
+const BLOCK: usize = 1024;
+
+/// Whether a byte is among some: without a way out at the first one, so that many are
+/// compared at a time.
+fn has(block: &[u8], wanted: u8) -> bool {
+    block.iter().fold(false, |found, byte| found | (*byte == wanted))
 }

@@ -6,7 +6,7 @@ use std::collections::HashMap;
 use super::{column, head, predicted_reading_s};
 use crate::layout::Layout;
 use crate::model::dd::Dd;
-use crate::run::recording::Frame;
+use crate::run::recording::{self, Frame};
 use crate::run::{Aboard, State};
 use crate::table::{Cell, Column, Measure, Report, Scalar, Table};
 
@@ -160,8 +160,8 @@ pub fn recorded_differences(a: &RecordedSide<'_>, b: &RecordedSide<'_>) -> Vec<D
     let mut push_row = |name: &str, ours: Option<usize>, theirs: Option<usize>| {
         for (quantity, first, second) in columns {
             let (Some(first), Some(second)) = (first, second) else { continue };
-            let pick = |column: &[Option<f64>], row: Option<usize>| {
-                row.and_then(|row| column.get(row).copied().flatten()).map(Dd::new)
+            let pick = |column: &recording::Column, row: Option<usize>| {
+                row.and_then(|row| column.get(row)).map(Dd::new)
             };
             let (a, b) = (pick(first, ours), pick(second, theirs));
             push(&mut found, Some(name), quantity, a, b);

@@ -36,10 +36,11 @@ const PAIRS: [Column; 4] = [
 pub fn offsets_report(state: State<'_>, pairs: bool) -> Report<'_> {
     let mut report = head(&state, "offsets");
     report.remarks.extend(super::standing_warning(&state));
-    report.tables.push(node_table(state.clone()));
+    // What was asked for by name comes first, and is the table of a CSV.
     if pairs {
         report.tables.push(pair_table(state.clone()));
     }
+    report.tables.push(node_table(state.clone()));
     if let Some((loads, _)) = state.loaded() {
         let motion = loads.neglected_motion(state.at());
         let rows = (0..state.rows()).filter(|row| state.node(*row).aboard().is_some());

@@ -72,13 +72,14 @@ pub fn reach_report(state: State<'_>, asked: Reach) -> Report<'_> {
     let mut report = head(&state, "reach");
     let run = state.run();
     let light = Arc::new(Light::of(run));
+    // What was asked for by name comes first, and is the table of a CSV.
+    if let Some(row) = asked.released {
+        push_released(&mut report, &state, &light, row);
+    }
     report.tables.push(station_table(&state, &light));
     report.tables.push(call_table(&state, &light));
     if let Some(before) = asked.before {
         report.tables.push(silence_table(run, &light, before));
-    }
-    if let Some(row) = asked.released {
-        push_released(&mut report, &state, &light, row);
     }
     report.remarks.push(
         "a station sends at the launch time at which the reference passes the moment; \

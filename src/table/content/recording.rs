@@ -47,7 +47,7 @@ pub fn replay_report<'a>(
             let readings = frame.reading_s.as_ref();
             for column in [Some(&frame.rate_minus_one), Some(&frame.clock_offset_s), readings] {
                 let Some(column) = column else { continue };
-                cells.push(match column.get(row).copied().flatten() {
+                cells.push(match column.get(row) {
                     Some(value) => Cell::Number(value),
                     None => Cell::Absent(RELEASED.into()),
                 });

@@ -6,6 +6,7 @@ use std::sync::{Mutex, MutexGuard, PoisonError};
 use rayon::prelude::*;
 
 use super::{Survey, join, read_row, read_row_into};
+use crate::cores;
 use crate::layout::Node;
 use crate::layout::fault::{Collector, Spot};
 use crate::layout::read::MOST_NODES;
@@ -46,7 +47,7 @@ impl Survey<'_> {
         let is_odd = AtomicBool::new(false);
         let has_gaps = AtomicBool::new(false);
         let of_listed = Mutex::new(Vec::new());
-        nodes.par_extend(starts.par_windows(2).with_min_len(ROWS_AT_A_TIME).map_init(
+        let read = starts.par_windows(2).with_min_len(ROWS_AT_A_TIME).map_init(
             || (rows.clone(), WrittenNode::default(), Collector::default()),
             |(rows, written, faults), line| {
                 rows.turn_to(line[0] as usize..line[1] as usize - 1);
@@ -60,7 +61,8 @@ impl Survey<'_> {
                 has_gaps.store(true, Ordering::Relaxed);
                 Node::default()
             },
-        ));
+        );
+        cores::threads()?.install(|| nodes.par_extend(read));
         if is_odd.into_inner() {
             return None;
         }
@@ -224,7 +226,8 @@ mod tests {
                 }
                 None => {
                     let is_plain = !text.contains('"') && !lines.contains(&"h,,,");
-                    prop_assert!(faults > 0 || !is_plain, "{text:?} should be read");
+                    let may_be_read = faults == 0 && is_plain && cores::threads().is_some();
+                    prop_assert!(!may_be_read, "{text:?} should be read");
                 }
             }
         }

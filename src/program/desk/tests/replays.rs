@@ -118,7 +118,9 @@ fn what_is_shown_is_what_was_recorded() {
     };
     assert!(!shows(&desk, 0.25));
     let frame = desk.replay.as_mut().and_then(|replay| replay.frame.as_mut()).expect("a frame");
-    frame.rate_minus_one[3] = Some(0.25);
+    let rates = frame.rate_minus_one.iter().enumerate();
+    frame.rate_minus_one =
+        rates.map(|(row, rate)| if row == 3 { Some(0.25) } else { rate }).collect();
     assert!(shows(&desk, 0.25));
     // Cut in the middle of a line, it is shown up to its last whole one.
     bytes.truncate(bytes.len() - 400);

@@ -8,7 +8,7 @@ mod offsets;
 mod rates;
 mod reach;
 
-use clockspar::run::recording::Frame;
+use clockspar::run::recording::{self, Frame};
 use clockspar::table::{Cell, Column, Measure, Table};
 
 use ratatui::layout::Rect;
@@ -82,9 +82,9 @@ fn recorded<'a>(frame: &'a Frame, table: Table<'a>) -> Table<'a> {
         fill(row, cells);
         for (place, values) in [(rate, &frame.rate_minus_one), (offset, &frame.clock_offset_s)] {
             if let Some(cell) = place.and_then(|place| cells.get_mut(place))
-                && let Some(Some(value)) = values.get(row)
+                && let Some(value) = values.get(row)
             {
-                *cell = Cell::Number(*value);
+                *cell = Cell::Number(value);
             }
         }
     });
@@ -150,8 +150,7 @@ fn differences_from<'a>(desk: &'a Desk, from: usize) -> Option<Differences<'a>> 
 }
 
 fn recorded_differences<'a>(frame: &Frame, from: usize, row: usize) -> [Cell<'a>; 2] {
-    let of = |values: &[Option<f64>], row: usize| values.get(row).copied().flatten();
-    let pair = |values: &[Option<f64>]| Some((of(values, from)?, of(values, row)?));
+    let pair = |values: &recording::Column| Some((values.get(from)?, values.get(row)?));
     let told = |value: Option<f64>| match value {
         Some(value) => Cell::finite(value, "the value overflows"),
         None => Cell::Absent("released: the node no longer belongs to the line".into()),
