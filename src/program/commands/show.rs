@@ -147,7 +147,7 @@ impl<'c> Blocks<'c> {
                 "use --as csv or --as text",
             ));
         }
-        let text = TextWriter::new(options).with(choice.text());
+        let text = TextWriter::new(options).with(choice.text()).compact();
         Ok(Blocks { form, choice, text, is_begun: false })
     }
 
