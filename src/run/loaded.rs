@@ -61,6 +61,12 @@ pub(super) struct Checked {
     pub is_tabulated_anew: bool,
 }
 
+/// Why a changed plan is not flown, and the loads to go on from.
+pub(super) struct Refused {
+    pub fault: RunFault,
+    pub parked: Option<Loads>,
+}
+
 /// Those of changes before the last one, by the number of the change; the one asked for
 /// last stands at the end.
 #[derive(Debug, Default)]
@@ -248,11 +254,11 @@ impl Run {
         from: ArrayTime,
         parked: Option<Loads>,
         unchanged: usize,
-    ) -> Result<Option<Checked>, (RunFault, Option<Loads>)> {
+    ) -> Result<Option<Checked>, Box<Refused>> {
         let Some(mut loads) = parked else {
             return match self.check_line(Some(plan), from) {
                 Ok(()) => Ok(None),
-                Err(fault) => Err((fault, None)),
+                Err(fault) => Err(Box::new(Refused { fault, parked: None })),
             };
         };
         let Some(before) = loads.stretch() else { return Ok(None) };
@@ -261,11 +267,12 @@ impl Run {
             Err(fault) => {
                 // Without load it may be told more exactly what is in the way.
                 let told = self.check_line(Some(plan), from).err();
-                return Err((told.unwrap_or_else(|| self.told(fault)), Some(loads)));
+                let fault = told.unwrap_or_else(|| self.told(fault));
+                return Err(Box::new(Refused { fault, parked: Some(loads) }));
             }
         };
         let is_tabulated_anew = !stretch.is_same(&before);
-        let mut loads = loads.over_plan(Arc::clone(plan), stretch, unchanged);
+        let loads = loads.over_plan(Arc::clone(plan), stretch, unchanged);
         let mut checked = Ok(());
         for (row, moved) in &self.moved {
             if checked.is_ok() && moved.released.is_none() {
@@ -276,9 +283,9 @@ impl Run {
         match checked {
             Ok(()) => Ok(Some(Checked { loads, is_tabulated_anew })),
             Err(fault) => {
-                loads.let_go_of_plan();
                 let none = Arc::new(Plan::empty());
-                Err((fault, Some(loads.over_plan(none, before, unchanged))))
+                let parked = Some(loads.over_plan(none, before, unchanged));
+                Err(Box::new(Refused { fault, parked }))
             }
         }
     }

@@ -15,7 +15,7 @@ use crate::model::plan::{
     CutOff, LARGEST_ACCELERATION_M_S2, LARGEST_RAPIDITY, Phase, Plan, PlanFault,
 };
 
-use super::loaded::{Checked, FlownLoads};
+use super::loaded::{Checked, FlownLoads, Refused};
 use super::{EventKind, OpenHold, Run, RunFault};
 
 /// The most phases that are gone through for all changes of a run together.
@@ -95,7 +95,8 @@ impl Run {
                 self.settle_released(at);
                 Ok(())
             }
-            Err((fault, parked)) => {
+            Err(refused) => {
+                let Refused { fault, parked } = *refused;
                 self.phases_flown += gone_through + left as u64;
                 Arc::make_mut(&mut plan).put_back(cut);
                 self.go_on_with(plan, was_filed, parked, unchanged);

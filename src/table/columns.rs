@@ -31,6 +31,8 @@ pub(super) struct Kept {
     pub is_compact: bool,
     /// The headings that are in sight, by the names of their tables.
     headings: Vec<(&'static str, String)>,
+    /// Whether a heading has been written since this was last asked.
+    is_headed: bool,
 }
 
 #[derive(Clone, Copy, Debug)]
@@ -43,6 +45,11 @@ struct KeptColumn {
 }
 
 impl Kept {
+    /// Whether a heading has been written since the last time.
+    pub fn take_headed(&mut self) -> bool {
+        std::mem::take(&mut self.is_headed)
+    }
+
     /// Headings have gone out of sight.
     pub fn forget_headings(&mut self) {
         self.headings.clear();
@@ -156,6 +163,9 @@ pub(super) fn write_table(
         };
         if !is_in_sight {
             text.push_str(&heading);
+            if let Some(kept) = &mut kept {
+                kept.is_headed = true;
+            }
         }
         out.write_all(text.as_bytes())?;
         text.clear();

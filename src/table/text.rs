@@ -262,7 +262,6 @@ impl<'a> TextWriter<'a> {
         let mut out = Counted { out, lines: 0 };
         out.write_all(text.as_bytes())?;
         if self.lines >= SCREENFUL {
-            self.lines = 0;
             self.kept.forget_headings();
         }
         let mut shown = 0;
@@ -288,7 +287,7 @@ impl<'a> TextWriter<'a> {
         }
         self.moments += 1;
         out.write_all(text.as_bytes())?;
-        self.lines += out.lines;
+        self.lines = out.lines + if self.kept.take_headed() { 0 } else { self.lines };
         Ok(())
     }
 }

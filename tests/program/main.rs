@@ -7,5 +7,6 @@ mod hostile;
 mod links;
 mod loads;
 mod readme;
+mod recorded;
 mod recording_lasts;
 mod terminal_session;

@@ -147,8 +147,8 @@ fn recorded_moments(
     let ends = [a, b].map(|side| side.frames().and_then(|frames| frames.moments.last()));
     let end = ends.into_iter().flatten().min().unwrap_or(last);
     for side in [a, b] {
-        if let What::Recording { layout, .. } = &side.what {
-            check_dates(layout.as_ref(), asked, &side.shown)?;
+        if let What::Recording(held) = &side.what {
+            check_dates(held.layout.as_ref(), asked, &side.shown)?;
         }
     }
     let span = Span { epoch: a.epoch(), first: *first, end: *end };
@@ -206,10 +206,8 @@ fn remarks_on(a: &Side, b: &Side) -> Vec<String> {
             }
         }
     }
-    if let (What::Recording { reader: first, .. }, What::Recording { reader: second, .. }) =
-        (&a.what, &b.what)
-    {
-        let (first, second) = (first.opening(), second.opening());
+    if let (What::Recording(first), What::Recording(second)) = (&a.what, &b.what) {
+        let (first, second) = (first.reader.opening(), second.reader.opening());
         if first.model != second.model {
             remarks.push(format!(
                 "a was recorded under model {}, b under model {}.",
@@ -286,7 +284,14 @@ enum What {
     /// A layout as it is predicted.
     Layout(Run),
     /// A recording as it stands.
-    Recording { reader: Reader<RecordingSource>, frames: FrameList, layout: Option<Layout> },
+    Recording(Box<Held>),
+}
+
+/// What a recording holds.
+struct Held {
+    reader: Reader<RecordingSource>,
+    frames: FrameList,
+    layout: Option<Layout>,
 }
 
 impl Side {
@@ -305,13 +310,13 @@ impl Side {
         if let Some(damage) = &frames.damage {
             message(&format!("warning: {shown}: {damage}; compared up to there"));
         }
-        Ok(Side { shown, what: What::Recording { reader, frames, layout } })
+        Ok(Side { shown, what: What::Recording(Box::new(Held { reader, frames, layout })) })
     }
 
     fn frames(&self) -> Option<&FrameList> {
         match &self.what {
             What::Layout(_) => None,
-            What::Recording { frames, .. } => Some(frames),
+            What::Recording(held) => Some(&held.frames),
         }
     }
 
@@ -322,7 +327,7 @@ impl Side {
     fn layout(&self) -> Option<&Layout> {
         match &self.what {
             What::Layout(run) => Some(run.layout()),
-            What::Recording { layout, .. } => layout.as_ref(),
+            What::Recording(held) => held.layout.as_ref(),
         }
     }
 
@@ -333,8 +338,8 @@ impl Side {
     fn nodes(&self) -> Vec<&str> {
         match &self.what {
             What::Layout(run) => run.layout().nodes.iter().map(|node| node.name.as_str()).collect(),
-            What::Recording { reader, .. } => {
-                reader.opening().nodes.iter().map(String::as_str).collect()
+            What::Recording(held) => {
+                held.reader.opening().nodes.iter().map(String::as_str).collect()
             }
         }
     }
@@ -343,9 +348,7 @@ impl Side {
     fn frame(&self, at: ArrayTime) -> Result<Frame, ReadFault> {
         match &self.what {
             What::Layout(run) => Ok(predicted_frame(&state_at(run, at))),
-            What::Recording { reader, frames, .. } => {
-                frames.read(reader, at).map(|(frame, _)| frame)
-            }
+            What::Recording(held) => held.frames.read(&held.reader, at).map(|(frame, _)| frame),
         }
     }
 
@@ -353,8 +356,9 @@ impl Side {
         let revision = self.layout().and_then(|layout| layout.revision.as_deref());
         let (layout, layout_sha256) = match &self.what {
             What::Layout(run) => (run.layout().name.as_str(), run.layout().source.sha256.as_str()),
-            What::Recording { reader, .. } => {
-                (reader.opening().layout.as_str(), reader.opening().layout_sha256.as_str())
+            What::Recording(held) => {
+                let opening = held.reader.opening();
+                (opening.layout.as_str(), opening.layout_sha256.as_str())
             }
         };
         RecordedSide { layout, revision, layout_sha256, nodes, frame }
