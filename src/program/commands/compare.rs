@@ -75,6 +75,7 @@ fn compare_recorded(a: &Side, b: &Side, arguments: &CompareArguments) -> Result<
     let (ours, theirs) = (a.nodes(), b.nodes());
     let damage = RefCell::new(None);
     let seen = Seen::default();
+    let remarks = remarks_on(a, b);
     let report = |at: ArrayTime| -> Report<'_> {
         let side = |side: &'_ Side, frame| match frame {
             Ok(frame) => frame,
@@ -104,7 +105,7 @@ fn compare_recorded(a: &Side, b: &Side, arguments: &CompareArguments) -> Result<
         } else {
             seen.take(at, report.tables[0].rows);
         }
-        report.remarks.extend(remarks_on(a, b));
+        report.remarks.extend(remarks.iter().cloned());
         report
     };
     let line = LineShown { nodes: Nodes::OfBoth(a.nodes(), b.nodes()), epoch: a.epoch() };
@@ -282,7 +283,7 @@ struct Side {
 
 enum What {
     /// A layout as it is predicted.
-    Layout(Run),
+    Layout(Box<Run>),
     /// A recording as it stands.
     Recording(Box<Held>),
 }
@@ -299,7 +300,7 @@ impl Side {
         let shown = files::shown_name(path);
         if !files::looks_like_recording(path) {
             let run = run_of(files::load(path)?, &shown)?;
-            return Ok(Side { shown, what: What::Layout(run) });
+            return Ok(Side { shown, what: What::Layout(Box::new(run)) });
         }
         let reader = recordings::open(path)?;
         if let Condition::Cut(cut) = reader.condition() {
