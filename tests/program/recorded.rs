@@ -204,6 +204,8 @@ fn a_replay_says_which_frame_answers_for_a_moment() {
     let found = json(&["replay", &a, "--at", "301"]);
     assert_eq!((&found["at_s"], &found["asked_at_s"]), (&300.into(), &301.into()));
     assert_eq!(json(&["replay", &a, "--at", "end"])["at_s"], 600);
+    let (_, _, told) = seen(&clockspar(&["replay", &a, "--at", "301", "--as", "csv"]));
+    assert!(told.contains(said), "{told}");
     let over = text(&["--from", "299", "--until", "302", "--every", "1"]);
     assert_eq!(over.matches("array time ").count(), 4, "{over}");
     assert!(over.contains(said) && over.contains("asked for 299 s; the last frame"), "{over}");

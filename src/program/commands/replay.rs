@@ -16,7 +16,7 @@ use super::following;
 use super::frames::{FrameList, frame_in_force};
 use super::recordings::open;
 use super::show::{Asked, show};
-use crate::program::arguments::{MomentArguments, ReplayArguments};
+use crate::program::arguments::{Form, MomentArguments, ReplayArguments};
 use crate::program::moments::{Moments, Span};
 use crate::program::problem::{Problem, STATUS_RULE};
 use crate::program::recording_file::RecordingSource;
@@ -97,10 +97,14 @@ fn replay_table(
         Frames::All(listed) => Moments::Listed(listed.moments.as_slice().into()),
         Frames::InForce(moments) => moments.clone(),
     };
-    let without_pace = MomentArguments::default();
-    let is_single = matches!(moments, Moments::One(_));
-    let options = if is_single { &without_pace } else { asked };
-    show(&Asked { moments: &moments, options, line }, &arguments.output, &report)?;
+    if let (Frames::InForce(Moments::One(at)), Form::Csv) = (&frames, arguments.output.form())
+        && let Ok(Some((frame, _))) = frame_in_force(reader, *at)
+        && frame.at != *at
+    {
+        // The rows have no place for it.
+        message(&what_was_asked(*at, frame.at));
+    }
+    show(&Asked { moments: &moments, options: asked, line }, &arguments.output, &report)?;
     if let Some(damage) = damage.into_inner() {
         message(&format!("{shown}: {damage}; shown up to there"));
         return Ok(STATUS_RULE);
@@ -207,10 +211,12 @@ fn say_what_was_asked(report: &mut Report<'_>, asked: ArrayTime, found: ArrayTim
         value: Cell::Time(asked),
     });
     if asked != found {
-        report
-            .remarks
-            .push(format!("asked for {asked} s; the last frame at or before it is {found} s"));
+        report.remarks.push(what_was_asked(asked, found));
     }
+}
+
+fn what_was_asked(asked: ArrayTime, found: ArrayTime) -> String {
+    format!("asked for {asked} s; the last frame at or before it is {found} s")
 }
 
 /// The report of a recording that holds no frame: what else there is.

@@ -34,7 +34,7 @@ impl Desk {
             (replay.condition, replay.particulars) = ("damaged", damage.clone());
             self.notice = Some(Notice::refused(
                 damage,
-                "a line that does not agree with its CRC is not shown",
+                "a damaged line is not shown",
                 "`clockspar verify` names every such line",
             ));
         }
