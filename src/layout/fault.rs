@@ -270,7 +270,7 @@ impl<'t> Locator<'t> {
         let to = floor_boundary(self.text, to).max(self.at);
         let passed = &self.text[self.at..to];
         if let Some(last) = passed.rfind('\n') {
-            self.line += passed.bytes().filter(|byte| *byte == b'\n').count();
+            self.line += memchr::memchr_iter(b'\n', passed.as_bytes()).count();
             self.line_start = self.at + last + 1;
             self.column = 1 + self.text[self.line_start..to].chars().count();
         } else {

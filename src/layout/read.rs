@@ -101,24 +101,7 @@ pub fn read(
     let survey = survey_name.and_then(|name| open(name, files, &mut named, &mut faults));
     let history = history_name.and_then(|name| open(name, files, &mut named, &mut faults));
 
-    let reading = survey_reading(survey, &named, &faults);
-    // What a fast reading of the survey finds wrong is looked for again with its places.
-    let again = (reading == Reading::OnAllCores).then(|| written.clone());
-    let mut judge =
-        || check(&mut written, survey.map(|file| (file, reading)), history, &named, &mut faults);
-    let digest = || named.iter().map(|file| sha256(&file.text)).collect::<Vec<String>>();
-    let (mut layout, digests) = if reading == Reading::OnAllCores {
-        cores::both(judge, digest)
-    } else {
-        (judge(), digest())
-    };
-    if let Some(mut written) = again
-        && (layout.is_none() || !faults.is_empty())
-    {
-        faults = Collector::default();
-        let survey = survey.map(|file| (file, Reading::RowByRow));
-        layout = check(&mut written, survey, history, &named, &mut faults);
-    }
+    let (layout, digests) = judge(&mut written, survey, history, &named, &mut faults);
     for (file, sha256) in named.iter_mut().zip(digests) {
         file.sha256 = sha256;
     }
@@ -138,12 +121,33 @@ pub fn read(
     Err(faults.into_faults(&texts).unwrap_or_default())
 }
 
-/// How to read the survey: fast, as long as nothing is wrong.
-fn survey_reading(survey: Option<u32>, named: &[SourceFile], faults: &Collector) -> Reading {
-    match survey.and_then(|file| text_of(named, file)) {
-        Some(text) if faults.is_empty() => Reading::of(text),
-        _ => Reading::RowByRow,
+/// Compares the parts of a layout with each other, and makes the digests of the tables it
+/// names, beside that where a table is long.
+fn judge(
+    written: &mut Written,
+    survey: Option<u32>,
+    history: Option<u32>,
+    named: &[SourceFile],
+    faults: &mut Collector,
+) -> (Option<Layout>, Vec<String>) {
+    let digests = || named.iter().map(|file| sha256(&file.text)).collect();
+    let is_long = survey
+        .and_then(|file| text_of(named, file))
+        .is_some_and(|text| Reading::of(text) == Reading::OnAllCores);
+    let by_row = survey.map(|file| (file, Reading::RowByRow));
+    if !is_long || !faults.is_empty() {
+        return (check(written, by_row, history, named, faults), digests());
     }
+    let on_all_cores = survey.map(|file| (file, Reading::OnAllCores));
+    let mut again = written.clone();
+    let fast = || check(written, on_all_cores, history, named, faults);
+    let (layout, digests) = cores::both(fast, digests);
+    if layout.is_some() && faults.is_empty() {
+        return (layout, digests);
+    }
+    // What is wrong is looked for again, with its place.
+    *faults = Collector::default();
+    (check(&mut again, by_row, history, named, faults), digests)
 }
 
 /// The text of a file the layout names, by its number from 1.

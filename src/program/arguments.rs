@@ -279,7 +279,7 @@ pub struct RecordArguments {
     /// Recording file to write
     #[arg(long, value_name = "FILE")]
     pub out: PathBuf,
-    /// Write over an existing file
+    /// Put it in the place of an existing file as soon as its first line is on the disk
     #[arg(long)]
     pub replace: bool,
 }

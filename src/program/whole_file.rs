@@ -6,13 +6,13 @@
 
 use std::collections::BTreeSet;
 use std::fs::{self, File, Permissions};
-use std::io;
+use std::io::{self, Seek};
 use std::os::fd::AsRawFd;
 use std::os::unix::fs::PermissionsExt;
 use std::path::{Path, PathBuf};
 use std::sync::Mutex;
 
-use rustix::fs::{AtFlags, CWD, Mode, OFlags};
+use rustix::fs::{AtFlags, CWD};
 use tempfile::TempPath;
 
 /// What the hidden names of files begin with.
@@ -81,11 +81,7 @@ impl Unplaced {
         if let Some(file) = nameless(folder(&target)) {
             return Ok((file, Unplaced { target, replaces, hidden: None }));
         }
-        let beside = tempfile::Builder::new()
-            .prefix(HIDDEN)
-            .permissions(Permissions::from_mode(NEW_MODE))
-            .tempfile_in(folder(&target))?;
-        let (file, hidden) = beside.into_parts();
+        let (file, hidden) = hidden_beside(&target)?;
         Ok((file, Unplaced { target, replaces, hidden: Some(hidden) }))
     }
 
@@ -97,30 +93,67 @@ impl Unplaced {
     /// to be replaced; whatever the system refuses.
     pub fn place(self, file: &File) -> io::Result<()> {
         file.sync_all()?;
-        match self.hidden {
-            Some(hidden) if self.replaces => hidden.persist(&self.target)?,
-            Some(hidden) => hidden.persist_noclobber(&self.target)?,
-            None if self.replaces => {
-                let link = |path: &Path| give_name(file, path);
-                // A new name cannot take the place of another, but a renamed file can.
-                let hidden = tempfile::Builder::new()
-                    .prefix(HIDDEN)
-                    .make_in(folder(&self.target), link)?
-                    .into_temp_path();
-                hidden.persist(&self.target)?;
-            }
-            None => give_name(file, &self.target)?,
+        let hidden = match self.hidden {
+            Some(hidden) => hidden,
+            None if self.replaces => self.named(file)?,
+            None => match give_name(file, &self.target) {
+                Err(error) if error.kind() != io::ErrorKind::AlreadyExists => self.copied(file)?,
+                named => return named.map(|()| sync_folder(&self.target)),
+            },
+        };
+        if self.replaces {
+            hidden.persist(&self.target)?;
+        } else {
+            hidden.persist_noclobber(&self.target)?;
         }
-        // A folder that cannot be synced still holds the file; only a power cut could tell.
-        let _ = File::open(folder(&self.target)).and_then(|folder| folder.sync_all());
+        sync_folder(&self.target);
         Ok(())
+    }
+
+    /// Gives a nameless file a hidden name: a new name cannot take the place of another, but
+    /// a renamed file can.
+    fn named(&self, file: &File) -> io::Result<TempPath> {
+        let link = |path: &Path| give_name(file, path);
+        let named = tempfile::Builder::new().prefix(HIDDEN).make_in(folder(&self.target), link);
+        named.map_or_else(|_| self.copied(file), |named| Ok(named.into_temp_path()))
+    }
+
+    /// A copy under a hidden name, where the system lets no file without a name have one.
+    fn copied(&self, mut file: &File) -> io::Result<TempPath> {
+        let (mut copy, hidden) = hidden_beside(&self.target)?;
+        file.rewind()?;
+        io::copy(&mut file, &mut copy)?;
+        copy.set_permissions(file.metadata()?.permissions())?;
+        copy.sync_all()?;
+        Ok(hidden)
     }
 }
 
+fn hidden_beside(target: &Path) -> io::Result<(File, TempPath)> {
+    let hidden = tempfile::Builder::new()
+        .prefix(HIDDEN)
+        .permissions(Permissions::from_mode(NEW_MODE))
+        .tempfile_in(folder(target))?;
+    Ok(hidden.into_parts())
+}
+
+/// A folder that cannot be synced still holds the file; only a power cut could tell.
+fn sync_folder(target: &Path) {
+    let _ = File::open(folder(target)).and_then(|folder| folder.sync_all());
+}
+
 /// A file without a name, where there are such files.
+#[cfg(target_os = "linux")]
 fn nameless(folder: &Path) -> Option<File> {
+    use rustix::fs::{Mode, OFlags};
     let flags = OFlags::TMPFILE | OFlags::RDWR | OFlags::CLOEXEC;
     rustix::fs::open(folder, flags, Mode::from_raw_mode(NEW_MODE)).ok().map(File::from)
+}
+
+/// Elsewhere every file has a name.
+#[cfg(not(target_os = "linux"))]
+fn nameless(_: &Path) -> Option<File> {
+    None
 }
 
 fn give_name(file: &File, path: &Path) -> io::Result<()> {
@@ -207,6 +240,24 @@ mod tests {
             Unplaced { target, replaces, hidden: Some(hidden) }.place(&file).unwrap();
             assert_eq!(names(folder.path()), ["table.txt"]);
         }
+    }
+
+    #[test]
+    fn a_file_that_cannot_be_named_is_copied() {
+        // A file of another file system cannot be linked into the folder.
+        let Some(elsewhere) = nameless(Path::new("/dev/shm")) else { return };
+        let folder = tempfile::tempdir().unwrap();
+        let path = folder.path().join("table.txt");
+        (&elsewhere).write_all(b"whole").unwrap();
+        for replaces in [false, true] {
+            let target = path.clone();
+            Unplaced { target, replaces, hidden: None }.place(&elsewhere).unwrap();
+            assert_eq!(fs::read_to_string(&path).unwrap(), "whole");
+            assert_eq!(names(folder.path()), ["table.txt"]);
+        }
+        let again = Unplaced { target: path.clone(), replaces: false, hidden: None };
+        let refused = again.place(&elsewhere).expect_err("it exists");
+        assert_eq!(refused.kind(), io::ErrorKind::AlreadyExists);
     }
 
     #[test]

@@ -103,6 +103,12 @@ pub fn choose_columns(
     Ok(())
 }
 
+/// The key of the first column with a heading.
+fn key_of_heading(report: &Report<'_>, heading: &str) -> Option<&'static str> {
+    let mut columns = report.tables.iter().flat_map(|table| &table.columns);
+    columns.find(|column| column.heading == heading).map(|column| column.key)
+}
+
 fn unknown_column(report: &Report<'_>, key: &str) -> ChoiceFault {
     let rule = format!("no column has the key `{key}`");
     let leading = report.moment_cells().map(|(key, _)| key);
@@ -116,7 +122,8 @@ fn unknown_column(report: &Report<'_>, key: &str) -> ChoiceFault {
             known.push(column.key);
         }
     }
-    let remedy = match nearest(key, known.iter().copied()) {
+    let meant = key_of_heading(report, key).or_else(|| nearest(key, known.iter().copied()));
+    let remedy = match meant {
         Some(meant) => format!("write `{meant}`; the keys are {}", known.join(", ")),
         None => format!("the keys are {}", known.join(", ")),
     };

@@ -81,8 +81,7 @@ pub(super) fn read(
         return Some(Places::default());
     };
     let names = listed.iter().map(|node| node.name.value().cloned().unwrap_or_default());
-    let known = ByName::of(names);
-    let survey = Survey { columns, listed: known, clocks };
+    let survey = Survey { columns, by_name: ByName::of(names), clocks };
     match table.reading {
         Reading::OnAllCores => survey.read_on_all_cores(&rows, listed, nodes),
         Reading::RowByRow => Some(survey.read_by_row(rows, listed, nodes, faults)),
@@ -92,7 +91,7 @@ pub(super) fn read(
 /// What the rows of a survey are read by.
 struct Survey<'s> {
     columns: Vec<Column>,
-    listed: ByName,
+    by_name: ByName,
     clocks: &'s Clocks<'s>,
 }
 
@@ -147,7 +146,7 @@ impl Survey<'_> {
 
     /// The number of the listed node a row is about.
     fn listed(&self, row: &WrittenNode) -> Option<usize> {
-        self.listed.find(row.name.value()?)
+        self.by_name.find(row.name.value()?)
     }
 }
 

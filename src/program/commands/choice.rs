@@ -2,7 +2,7 @@
 //! preferences.
 
 use clockspar::layout::date::{format_date, parse_moment};
-use clockspar::layout::{Epoch, Layout};
+use clockspar::layout::{Epoch, Layout, TimeScale};
 use clockspar::model::array_time::ArrayTime;
 use clockspar::table::choose::{
     ChoiceFault, NodeChoice, Unchosen, Units, choose_columns, choose_nodes, read_columns,
@@ -18,8 +18,17 @@ use crate::program::preferences;
 use crate::program::problem::Problem;
 
 /// What is said of a date after the start.
-pub const DATE_NOTE: &str =
-    "a date after the start is the reference clock's own count from the epoch";
+const DATE_NOTE: &str = "a date after the start is the reference clock's own count from the epoch";
+
+/// What is said of dates in UTC besides.
+const UTC_NOTE: &str =
+    "; dates in UTC assume that no leap second follows the last one announced, of 2016-12-31";
+
+/// What is said of the dates of a line, where one was given.
+pub fn date_note(epoch: &Epoch, given: &str) -> String {
+    let is_utc = epoch.scale == TimeScale::Utc || given.trim_end().ends_with("UTC");
+    format!("{DATE_NOTE}{}", if is_utc { UTC_NOTE } else { "" })
+}
 
 /// What a command shows, as far as choosing goes.
 pub struct LineShown<'a> {
@@ -215,7 +224,7 @@ impl Choice {
         };
         if self.form == Form::Text {
             // The date itself stands beside the moment.
-            report.remarks.push(sentence(DATE_NOTE));
+            report.remarks.push(sentence(&date_note(epoch, given)));
             return;
         }
         let meant = parse_moment(given, Some(epoch), ArrayTime::ZERO);
@@ -230,7 +239,7 @@ impl Choice {
             Some(date) => Cell::Text(date.into()),
             None => Cell::Absent("dates lie in the years 1972 to 9999".into()),
         };
-        let note = Cell::Text(DATE_NOTE.into());
+        let note = Cell::Text(date_note(epoch, given).into());
         let stated = [word("date", "date", date), word("date_note", "of dates", note)];
         report.scalars.splice(0..0, stated);
     }

@@ -13,7 +13,7 @@ use clockspar::run::recording::{
 use clockspar::table::content::verify_report;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 
-use super::choice::{DATE_NOTE, LineShown, Nodes};
+use super::choice::{LineShown, Nodes, date_note};
 use super::show::{Asked, show};
 use super::{run_of, warn_of_broken_rules};
 use crate::program::arguments::{
@@ -68,8 +68,8 @@ pub fn record(arguments: &RecordArguments) -> Result<u8, Problem> {
         until: Some(arguments.until.clone()),
         ..MomentArguments::default()
     };
-    if Moments::date_given(&dates).is_some() {
-        message(&format!("{shown}: {DATE_NOTE}"));
+    if let (Some(given), Some(epoch)) = (Moments::date_given(&dates), &run.layout().epoch) {
+        message(&format!("{shown}: {}", date_note(epoch, given)));
     }
     Ok(0)
 }

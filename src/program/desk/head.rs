@@ -1,7 +1,7 @@
 //! The head: what is shown, when, and how things stand.
 
-use clockspar::table::Measure;
 use clockspar::table::content::SpanLoad;
+use clockspar::table::{Measure, readable_time};
 use ratatui::layout::Rect;
 
 use super::geometry::{Extent, Geometry};
@@ -91,11 +91,16 @@ fn draw_moment(desk: &Desk, line: Rect, painter: &mut Painter<'_>) {
         x = x.saturating_add(width + 2);
     }
     let left = Rect { width: right.saturating_sub(line.x + 2), ..line };
-    let moment = words::moment(desk.at);
-    let after = painter.put(left, left.x, left.y, &moment, STRONG);
-    if let Some(date) = words::date(desk.at, desk.layout())
-        && after.saturating_add(2 + width_of(&date)) <= left.right()
-    {
+    // Both forms of the moment are exact; the seconds go where there is no room for both.
+    let forms = [words::moment(desk.at), readable_time(desk.at)];
+    let date = words::date(desk.at, desk.layout()).unwrap_or_default();
+    let dated = forms.iter().find(|form| {
+        !date.is_empty() && width_of(form).saturating_add(2 + width_of(&date)) <= left.width
+    });
+    let alone = forms.iter().find(|form| width_of(form) <= left.width);
+    let moment = dated.or(alone).unwrap_or(&forms[1]);
+    let after = painter.put(left, left.x, left.y, moment, STRONG);
+    if dated.is_some() {
         painter.put(left, after + 2, left.y, &date, QUIET);
     }
 }

@@ -12,11 +12,13 @@ use std::io;
 use std::ops::RangeInclusive;
 use std::sync::{Arc, Mutex, PoisonError};
 
+use memchr::memchr;
+
 use crate::model::array_time::ArrayTime;
 
 use super::decode;
 use super::lines::Lines;
-use super::window::{CHUNK, ReadAt, Window, feed_after, first_of, for_each_chunk, read_full};
+use super::window::{CHUNK, ReadAt, Window, feed_after, for_each_chunk, read_full};
 use super::{Condition, Frame, Line, Reader, Seek};
 
 /// The most bytes from the start of a line to the end of its moment.
@@ -286,7 +288,7 @@ impl<R: ReadAt> Reader<R> {
             let left = usize::try_from(self.data_end().saturating_sub(at)).unwrap_or(usize::MAX);
             let wanted = piece.len().min(left);
             let count = read_full(self.source(), at, &mut piece[..wanted])?;
-            if let Some(feed) = first_of(b'\n', &piece[..count]) {
+            if let Some(feed) = memchr(b'\n', &piece[..count]) {
                 return Ok(usize::try_from(at - start + feed as u64).ok());
             }
             if count == 0 {
@@ -302,7 +304,7 @@ impl<R: ReadAt> Reader<R> {
         let mut hasher = crc32fast::Hasher::new();
         let mut feed = None;
         for_each_chunk(self.source(), start, self.data_end(), |at, bytes| {
-            let found = first_of(b'\n', bytes);
+            let found = memchr(b'\n', bytes);
             hasher.update(&bytes[..found.unwrap_or(bytes.len())]);
             feed = found.map(|index| at + index as u64);
             found.is_none()

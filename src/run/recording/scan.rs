@@ -6,9 +6,9 @@
 
 use std::ops::Range;
 
-use super::window::first_of;
 use crate::layout::quantity::parse_duration;
 use crate::model::array_time::ArrayTime;
+use memchr::memchr;
 
 /// What is wrong with a line, and at which of its bytes.
 #[derive(Clone, Debug, PartialEq, Eq)]
@@ -79,7 +79,7 @@ impl<'a> Scanner<'a> {
     pub(super) fn passes_flat_list(&mut self) -> Option<Range<usize>> {
         let rest = self.bytes[self.at..].strip_prefix(b"[")?;
         let start = self.at + 1;
-        let end = start + first_of(b']', rest)?;
+        let end = start + memchr(b']', rest)?;
         self.at = end + 1;
         Some(start..end)
     }

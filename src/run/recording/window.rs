@@ -3,6 +3,8 @@
 use std::io;
 use std::ops::Range;
 
+use memchr::{memchr, memchr_iter, memrchr};
+
 /// Bytes that can be read at any offset: a file, or a slice of memory. Their number may
 /// grow between two calls.
 pub trait ReadAt {
@@ -98,7 +100,7 @@ impl<'a, R: ReadAt + ?Sized> Window<'a, R> {
         let mut from = self.begin_at(offset);
         let mut searched = from;
         loop {
-            if let Some(length) = feed_in(&self.bytes[searched..]) {
+            if let Some(length) = memchr(b'\n', &self.bytes[searched..]) {
                 let feed = searched + length;
                 let held = (feed - from <= longest).then_some(from..feed);
                 return Ok(Found { end: self.start + feed as u64 + 1, held });
@@ -193,7 +195,7 @@ pub(super) fn feed_after<R: ReadAt + ?Sized>(
 ) -> io::Result<Option<u64>> {
     let mut found = None;
     for_each_chunk(source, from, end, |at, bytes| {
-        found = feed_in(bytes).map(|index| at + index as u64);
+        found = memchr(b'\n', bytes).map(|index| at + index as u64);
         found.is_none()
     })?;
     Ok(found)
@@ -207,7 +209,7 @@ pub(super) fn line_start<R: ReadAt + ?Sized>(source: &R, low: u64, at: u64) -> i
         let length = usize::try_from(end - low).unwrap_or(usize::MAX).min(chunk.len());
         let start = end - length as u64;
         let count = read_full(source, start, &mut chunk[..length])?;
-        if let Some(index) = last_feed_in(&chunk[..count]) {
+        if let Some(index) = memrchr(b'\n', &chunk[..count]) {
             return Ok(start + index as u64 + 1);
         }
         end = start;
@@ -223,46 +225,8 @@ pub(super) fn line_start<R: ReadAt + ?Sized>(source: &R, low: u64, at: u64) -> i
 pub(super) fn line_number<R: ReadAt + ?Sized>(source: &R, byte: u64) -> io::Result<u64> {
     let mut feeds = 0;
     for_each_chunk(source, 0, byte, |_, bytes| {
-        feeds += bytes.iter().filter(|byte| **byte == b'\n').count() as u64;
+        feeds += memchr_iter(b'\n', bytes).count() as u64;
         true
     })?;
     Ok(feeds + 1)
-}
-
-/// The first line feed of some bytes.
-fn feed_in(bytes: &[u8]) -> Option<usize> {
-    first_of(b'\n', bytes)
-}
-
-/// Where a byte stands first.
-pub(super) fn first_of(wanted: u8, bytes: &[u8]) -> Option<usize> {
-    let mut passed = 0;
-    for block in bytes.chunks(BLOCK) {
-        if has(block, wanted) {
-            return block.iter().position(|byte| *byte == wanted).map(|index| passed + index);
-        }
-        passed += block.len();
-    }
-    None
-}
-
-/// The last line feed of some bytes.
-fn last_feed_in(bytes: &[u8]) -> Option<usize> {
-    let mut left = bytes.len();
-    for block in bytes.rchunks(BLOCK) {
-        left -= block.len();
-        if has(block, b'\n') {
-            return block.iter().rposition(|byte| *byte == b'\n').map(|index| left + index);
-        }
-    }
-    None
-}
-
-/// Bytes looked at together before it is asked which of them it is.
-const BLOCK: usize = 1024;
-
-/// Whether a byte is among some: without a way out at the first one, so that many are
-/// compared at a time.
-fn has(block: &[u8], wanted: u8) -> bool {
-    block.iter().fold(false, |found, byte| found | (*byte == wanted))
 }

@@ -2,7 +2,7 @@
 
 use std::fmt;
 
-use super::{ChoiceFault, SI_ENDINGS, bare_key};
+use super::{ChoiceFault, SI_ENDINGS, bare_key, key_of_heading};
 use crate::layout::nearest::nearest;
 use crate::layout::quantity::{UnitFactor, find_unit, short};
 use crate::table::unit::{Unit, dimension_of};
@@ -49,6 +49,10 @@ impl Units {
             return Err(ChoiceFault::new(text, rule, "write for example `clock_offset=ps`"));
         };
         let (key, unit) = (key.trim(), unit.trim());
+        if unit.contains('=') {
+            let rule = "one KEY=UNIT stands behind each --unit";
+            return Err(ChoiceFault::new(text, rule, "repeat --unit for each of them"));
+        }
         if self.chosen.iter().any(|(known, _)| is_same(known, key)) {
             let rule = format!("`{}` is shown in one unit", short(key));
             return Err(ChoiceFault::new(text, rule, "take one of the two away"));
@@ -169,7 +173,8 @@ fn fault_of(key: &str, unit: UnitFactor, report: &Report<'_>) -> Option<Fault> {
         let with_unit = known.iter().filter(|(_, measure)| dimension_of(*measure).is_some());
         let mut keys: Vec<&str> = with_unit.map(|(column, _)| *column).collect();
         keys.dedup();
-        let remedy = match nearest(key, keys.iter().copied()) {
+        let meant = key_of_heading(report, key).or_else(|| nearest(key, keys.iter().copied()));
+        let remedy = match meant {
             Some(meant) => format!("write `{meant}`"),
             None if keys.is_empty() => "nothing here has a unit".to_owned(),
             None => format!("the keys are {}", keys.join(", ")),

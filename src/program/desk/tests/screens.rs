@@ -43,6 +43,19 @@ fn every_size_in_both_columns_of_marks() {
 }
 
 #[test]
+fn a_long_moment_is_told_to_its_last_digit_with_its_date() {
+    let mut desk = desk();
+    say(&mut desk, "to 1000000.000000000000000003 s");
+    let line = |width| drawn(&desk, width, 24).lines().nth(1).expect("a line").to_owned();
+    let (narrow, wide) = (line(80), line(160));
+    let exact = "11 d 13 h 46 min 40.000000000000000003 s";
+    assert!(narrow.starts_with(exact) && !narrow.contains('…'), "{narrow}");
+    for part in [exact, " = 1000000.000000000000000003 s  ", " TAI"] {
+        assert!(wide.contains(part), "{wide}");
+    }
+}
+
+#[test]
 fn the_other_screens() {
     let mut desk = desk();
     press(&mut desk, KeyCode::Char('9'));
