@@ -216,7 +216,8 @@ pub const LARGEST_RAPIDITY: f64 = 700.0;
 #[derive(Clone, Debug)]
 pub struct Plan {
     phases: Vec<Phase>,
-    /// Integrals up to the start of each phase, and one more for the end of the plan.
+    /// Integrals up to the start of each phase, and one more for the end of the plan: as
+    /// running sums, so that a plan can be cut and gone on with to the same bits.
     until: Vec<Integrals>,
 }
 
@@ -225,8 +226,18 @@ pub struct Plan {
 struct Integrals {
     /// `∫ α dτ` in m/s² · as.
     gain: Wide,
-    velocity_spent: Dd,
-    launch: Launch,
+    velocity_spent: RunningSum,
+    launch_time_s: RunningSum,
+    launch_position_m: RunningSum,
+}
+
+/// What was taken off a plan, to be put back.
+#[derive(Clone, Debug)]
+pub struct CutOff {
+    /// How many phases of the plan were left as they were.
+    pub unchanged: usize,
+    /// The phases after them, as they were.
+    phases: Vec<Phase>,
 }
 
 /// The plan at one moment of array time.
@@ -272,29 +283,82 @@ impl Plan {
     ///
     /// The first fault found, in the order of the phases.
     pub fn new(phases: Vec<Phase>) -> Result<Plan, PlanFault> {
-        let mut until = Vec::with_capacity(phases.len() + 1);
-        let mut sum = Integrals::default();
-        let mut spent = RunningSum::default();
-        let (mut time, mut position) = (RunningSum::default(), RunningSum::default());
-        let mut expected = ArrayTime::ZERO;
-        let mut end_rapidity = Dd::ZERO;
-        for (index, phase) in phases.iter().enumerate() {
-            check_shape(index, phase, expected)?;
-            expected = phase.end;
-            until.push(sum);
-            let start_rapidity = end_rapidity;
-            let launch = motion::launch_gain(phase, start_rapidity, phase.end);
-            sum.gain = sum.gain + phase.gain(phase.end);
-            end_rapidity = near_rapidity_of(sum.gain);
-            check_rapidity(index, phase, start_rapidity, end_rapidity)?;
-            spent.add(phase.velocity_spent(phase.end));
-            time.add(launch.time_s);
-            position.add(launch.position_m);
-            sum.velocity_spent = spent.value();
-            sum.launch = Launch { time_s: time.value(), position_m: position.value() };
+        let mut plan = Plan::empty();
+        plan.phases.reserve_exact(phases.len());
+        plan.until.reserve_exact(phases.len());
+        for phase in phases {
+            plan.push(phase)?;
         }
-        until.push(sum);
-        Ok(Plan { phases, until })
+        Ok(plan)
+    }
+
+    /// A plan without phases.
+    #[must_use]
+    pub fn empty() -> Plan {
+        Plan { phases: Vec::new(), until: vec![Integrals::default()] }
+    }
+
+    /// Adds a phase at the end. A plan grown phase by phase has the bits of one made at
+    /// once.
+    ///
+    /// # Errors
+    ///
+    /// What is wrong with the phase; the plan is then as it was.
+    pub fn push(&mut self, phase: Phase) -> Result<(), PlanFault> {
+        let index = self.phases.len();
+        check_shape(index, &phase, self.end())?;
+        let mut sum = self.until[index];
+        let start_rapidity = if index == 0 { Dd::ZERO } else { near_rapidity_of(sum.gain) };
+        let launch = motion::launch_gain(&phase, start_rapidity, phase.end);
+        sum.gain = sum.gain + phase.gain(phase.end);
+        let end_rapidity = near_rapidity_of(sum.gain);
+        check_rapidity(index, &phase, start_rapidity, end_rapidity)?;
+        sum.velocity_spent.add(phase.velocity_spent(phase.end));
+        sum.launch_time_s.add(launch.time_s);
+        sum.launch_position_m.add(launch.position_m);
+        self.until.push(sum);
+        self.phases.push(phase);
+        Ok(())
+    }
+
+    /// Cuts the plan off at a moment: what has been flown up to it is left. A moment after
+    /// the end adds a coast up to it; one before array time zero leaves nothing.
+    ///
+    /// # Errors
+    ///
+    /// What is wrong with the last phase when it ends there; the plan is then as it was.
+    pub fn cut_at(&mut self, at: ArrayTime) -> Result<CutOff, PlanFault> {
+        let begun = self.phases.partition_point(|phase| phase.start < at);
+        let last = begun.checked_sub(1).map(|index| self.phases[index]);
+        let running = last.filter(|last| last.end > at);
+        let unchanged = begun - usize::from(running.is_some());
+        let cut = CutOff { unchanged, phases: self.phases.split_off(unchanged) };
+        self.until.truncate(unchanged + 1);
+        let piece = match running {
+            Some(last) => Some(Phase { end: at, ..last }),
+            None => {
+                let end = self.end();
+                let length = ArrayTime::from_attoseconds(at.attoseconds() - end.attoseconds());
+                (at > end).then(|| Phase::whole(end, length, 0.0, 0.0))
+            }
+        };
+        match piece.map_or(Ok(()), |piece| self.push(piece)) {
+            Ok(()) => Ok(cut),
+            Err(fault) => {
+                self.put_back(cut);
+                Err(fault)
+            }
+        }
+    }
+
+    /// Takes away what has been added since a cut, and puts back what was cut off.
+    pub fn put_back(&mut self, cut: CutOff) {
+        self.phases.truncate(cut.unchanged);
+        self.until.truncate(cut.unchanged + 1);
+        for phase in cut.phases {
+            let is_back = self.push(phase).is_ok();
+            debug_assert!(is_back, "what was part of the plan can be again");
+        }
     }
 
     /// The phases, in order.
@@ -340,12 +404,12 @@ impl Plan {
                 (
                     phase.acceleration(at),
                     velocity(before.gain + phase.gain(at)),
-                    before.velocity_spent + phase.velocity_spent(at),
+                    before.velocity_spent.value() + phase.velocity_spent(at),
                 )
             }
             None => {
                 let reached = self.reached_outside(at);
-                (Dd::ZERO, velocity(reached.gain), reached.velocity_spent)
+                (Dd::ZERO, velocity(reached.gain), reached.velocity_spent.value())
             }
         };
         Moment {
@@ -363,8 +427,11 @@ impl Plan {
     #[must_use]
     pub fn velocity_spent_m_s(&self, at: ArrayTime) -> Dd {
         match self.phase_at(at) {
-            Some(index) => self.until[index].velocity_spent + self.phases[index].velocity_spent(at),
-            None => self.reached_outside(at).velocity_spent,
+            Some(index) => {
+                let before = self.until[index].velocity_spent.value();
+                before + self.phases[index].velocity_spent(at)
+            }
+            None => self.reached_outside(at).velocity_spent.value(),
         }
     }
 
@@ -388,8 +455,8 @@ impl Plan {
         debug_assert!(piece.start == start);
         let gain = motion::launch_gain(&piece, rapidity, at);
         Launch {
-            time_s: before.launch.time_s + gain.time_s,
-            position_m: before.launch.position_m + gain.position_m,
+            time_s: before.launch_time_s.value() + gain.time_s,
+            position_m: before.launch_position_m.value() + gain.position_m,
         }
     }
 
@@ -398,8 +465,7 @@ impl Plan {
         if at < ArrayTime::ZERO { self.until[0] } else { self.until[self.phases.len()] }
     }
 
-    /// The plan cut off at a moment: what has been flown up to it. A moment after the end
-    /// adds a coast up to it; one before array time zero leaves nothing.
+    /// What has been flown up to a moment, as [`Plan::cut_at`] leaves it.
     #[must_use]
     pub fn phases_until(&self, at: ArrayTime) -> Vec<Phase> {
         let mut flown: Vec<Phase> =
@@ -420,8 +486,8 @@ impl Plan {
     /// What the plan has left from a moment on; the first phase may be a piece of one.
     #[must_use]
     pub fn phases_from(&self, at: ArrayTime) -> Vec<Phase> {
-        let mut left: Vec<Phase> =
-            self.phases.iter().copied().filter(|phase| phase.end > at).collect();
+        let ended = self.phases.partition_point(|phase| phase.end <= at);
+        let mut left = self.phases[ended..].to_vec();
         if let Some(first) = left.first_mut() {
             first.start = first.start.max(at);
         }

@@ -252,7 +252,7 @@ pub struct ReachArguments {
 pub struct CompareArguments {
     /// First layout or recording
     pub a: PathBuf,
-    /// Second, of the same kind
+    /// Second
     pub b: PathBuf,
     /// Which moments.
     #[command(flatten)]

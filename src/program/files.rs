@@ -30,22 +30,44 @@ pub fn built_in() -> Result<Layout, Problem> {
 
 /// Reads a layout from a file, or from standard input for `-`.
 pub fn load(path: &Path) -> Result<Layout, Problem> {
-    if path == Path::new("-") {
-        let text = read_bounded(io::stdin().lock(), "standard input", LARGEST_LAYOUT)?;
-        return read_layout("standard input", &text, Path::new("."));
-    }
     let name = shown_name(path);
+    if path == Path::new("-") {
+        let text = read_layout_text(io::stdin().lock(), &name)?;
+        return read_layout(&name, &text, Path::new("."));
+    }
     let file = File::open(path).map_err(|error| unreadable(&name, &error))?;
     note_read(path);
-    let text = read_bounded(file, &name, LARGEST_LAYOUT)?;
+    let text = read_layout_text(file, &name)?;
     read_layout(&name, &text, path.parent().unwrap_or(Path::new(".")))
 }
 
-/// Whether a file begins as recordings do.
+/// The text of a layout; a recording is not read beyond its beginning.
+fn read_layout_text(mut source: impl Read, name: &str) -> Result<String, Problem> {
+    let mut begun = Vec::new();
+    let most = BEGINNING_OF_RECORDING.len() as u64;
+    let begins = source.by_ref().take(most).read_to_end(&mut begun);
+    begins.map_err(|error| unreadable(name, &error))?;
+    if begun == BEGINNING_OF_RECORDING {
+        return Err(is_a_recording(name));
+    }
+    read_bounded(begun.chain(source), name, LARGEST_LAYOUT)
+}
+
+/// Whether a file begins as recordings do. What can be read only once is not looked at.
 pub fn looks_like_recording(path: &Path) -> bool {
     let mut begun = [0; BEGINNING_OF_RECORDING.len()];
-    File::open(path).and_then(|mut file| file.read_exact(&mut begun)).is_ok()
-        && begun == BEGINNING_OF_RECORDING
+    File::open(path)
+        .and_then(|mut file| Ok(file.metadata()?.is_file() && file.read_exact(&mut begun).is_ok()))
+        .is_ok_and(|is_read| is_read && begun == BEGINNING_OF_RECORDING)
+}
+
+fn is_a_recording(name: &str) -> Problem {
+    let file = if name == "standard input" { "-" } else { name };
+    Problem::new(
+        format_args!("{name} is a recording"),
+        "a layout is wanted here",
+        format_args!("`clockspar replay {file}` shows it"),
+    )
 }
 
 /// How a path is named in messages.

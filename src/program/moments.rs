@@ -4,7 +4,7 @@ use clockspar::layout::quantity::{self, QuantityFault};
 use std::sync::Arc;
 
 use clockspar::layout::date::{looks_like_a_date, parse_moment};
-use clockspar::layout::{Course, Layout};
+use clockspar::layout::{Course, Epoch, Layout};
 use clockspar::model::array_time::ArrayTime;
 
 use super::arguments::MomentArguments;
@@ -38,13 +38,22 @@ impl Moments {
             };
             return Ok(Moments::One(at));
         };
-        let or = |option: &str, text: &Option<String>, default| match text {
-            Some(text) => moment(option, text, layout),
-            None => Ok(default),
-        };
-        let from = or("--from", &arguments.from, ArrayTime::ZERO)?;
-        let until = or("--until", &arguments.until, plan_end(layout))?;
-        every_moment(from, until, step("--every", every)?)
+        let span =
+            Span { epoch: layout.epoch.as_ref(), first: ArrayTime::ZERO, end: plan_end(layout) };
+        span.every(arguments, every)
+    }
+
+    /// Resolves the options of a table of a recording, whose `end` is its last frame;
+    /// `None` when no moment is asked for.
+    pub fn of_recording(
+        arguments: &MomentArguments,
+        span: &Span<'_>,
+    ) -> Result<Option<Moments>, Problem> {
+        if let Some(every) = &arguments.every {
+            return span.every(arguments, every).map(Some);
+        }
+        let at = arguments.at.as_ref().map(|text| span.moment("--at", text));
+        Ok(at.transpose()?.map(Moments::One))
     }
 
     /// The first date among the options, as it was given.
@@ -82,6 +91,34 @@ impl Moments {
     /// The moments, in order.
     pub fn iter(&self) -> impl Iterator<Item = ArrayTime> + '_ {
         (0..self.count()).map(move |index| self.nth(index))
+    }
+}
+
+/// What moments are counted and bounded by.
+#[derive(Clone, Copy, Debug)]
+pub struct Span<'a> {
+    /// The date of array time zero.
+    pub epoch: Option<&'a Epoch>,
+    /// Where a table over time begins when nothing else is asked for.
+    pub first: ArrayTime,
+    /// What `end` means.
+    pub end: ArrayTime,
+}
+
+impl Span<'_> {
+    /// A moment: a duration, `end`, or a date when there is an epoch.
+    fn moment(&self, option: &str, text: &str) -> Result<ArrayTime, Problem> {
+        parse_moment(text, self.epoch, self.end).map_err(|fault| told(option, text, &fault))
+    }
+
+    fn every(&self, arguments: &MomentArguments, every: &str) -> Result<Moments, Problem> {
+        let or = |option: &str, text: &Option<String>, default| match text {
+            Some(text) => self.moment(option, text),
+            None => Ok(default),
+        };
+        let from = or("--from", &arguments.from, self.first)?;
+        let until = or("--until", &arguments.until, self.end)?;
+        every_moment(from, until, step("--every", every)?)
     }
 }
 

@@ -19,7 +19,7 @@ const SYNC_EVERY: Duration = Duration::from_secs(1);
 const FIRST_LOOK: u64 = 1 << 20;
 
 /// The longest first line taken in from a pipe, in bytes.
-const LONGEST_PIPED_OPENING: u64 = 256 << 20;
+pub const LONGEST_PIPED_OPENING: u64 = 256 << 20;
 
 /// A file a recording is being written to. Each call of `write` takes one whole line;
 /// when it fails, the file ends after the line before.

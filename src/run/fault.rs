@@ -6,6 +6,8 @@ use crate::layout::FARTHEST_POSITION_M;
 use crate::model::array_time::ArrayTime;
 use crate::model::plan::{LARGEST_ACCELERATION_M_S2, LARGEST_RAPIDITY};
 
+use super::thrust::MOST_PHASES_FLOWN;
+
 /// Why a run refuses a change or a moment. The run stays as it was.
 #[derive(Clone, Debug, PartialEq)]
 pub enum RunFault {
@@ -55,6 +57,8 @@ pub enum RunFault {
         /// The rapidity it would reach.
         rapidity: f64,
     },
+    /// Changes of thrust that make the run go through its plan too often.
+    TooManyChanges,
     /// A node the layout does not have.
     UnknownNode {
         /// The name given.
@@ -168,6 +172,7 @@ impl RunFault {
                 format!("an acceleration of {} m/s^2 is too large", number(*acceleration_m_s2))
             }
             RunFault::NoLength => "the ramp has no length".to_owned(),
+            RunFault::TooManyChanges => "the thrust is changed too often".to_owned(),
             RunFault::TooLong { at } => {
                 format!("a ramp from {at} s would end outside array time")
             }
@@ -235,6 +240,10 @@ impl RunFault {
                 number(LARGEST_ACCELERATION_M_S2)
             ),
             RunFault::NoLength => "a ramp takes time".to_owned(),
+            RunFault::TooManyChanges => format!(
+                "all changes of a run go through at most {} million phases of its plan",
+                MOST_PHASES_FLOWN / 1_000_000
+            ),
             RunFault::UnknownNode { .. } => "a node goes by its name in the layout".to_owned(),
             RunFault::Reference { .. } => {
                 "positions and array time are counted from the reference node".to_owned()
@@ -284,6 +293,7 @@ impl RunFault {
             RunFault::Standing => "a layout with phases instead of [standing]".to_owned(),
             RunFault::TooStrong { .. } => "a smaller acceleration".to_owned(),
             RunFault::NoLength => "a length above zero, or a hold".to_owned(),
+            RunFault::TooManyChanges => "fewer changes, or a history of this course".to_owned(),
             RunFault::TooLong { .. } => "a shorter ramp".to_owned(),
             RunFault::TooFast { .. } => "less thrust that way, or for a shorter time".to_owned(),
             RunFault::UnknownNode { .. } => "the name of a node of this layout".to_owned(),

@@ -205,13 +205,20 @@ impl<'a> Light<'a> {
             let rest_m = placed_m + (position_m - filed_m);
             return NodeEnd { rest_m, displacement: None, placement: None };
         };
+        let placed = Arc::clone(&loads);
         let displacement = move |at: ArrayTime| {
-            let loads = run.loads_at(at).unwrap_or(loads);
-            motion(loads, plan, at, row, filed_m)
+            if let Some(latest) = run.latest_loads_at(at) {
+                return motion(latest, plan, at, row, filed_m);
+            }
+            let earlier = run.loads_at(at);
+            motion(earlier.as_ref().unwrap_or(&loads), plan, at, row, filed_m)
         };
         let placement = move |at: ArrayTime| {
-            let loads = run.loads_at(at).unwrap_or(loads);
-            let (position_m, velocity_m_s) = loads.end_motion(plan.phase_at(at), at, row);
+            let end = |loads: &Loads| loads.end_motion(plan.phase_at(at), at, row);
+            let (position_m, velocity_m_s) = match run.latest_loads_at(at) {
+                Some(latest) => end(latest),
+                None => end(run.loads_at(at).as_ref().unwrap_or(&placed)),
+            };
             ((position_m - filed_m).to_f64(), velocity_m_s)
         };
         NodeEnd {

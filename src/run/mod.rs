@@ -29,6 +29,9 @@ use crate::model::loads::Loads;
 use crate::model::plan::{Moment, Plan};
 use crate::model::rates::Instant;
 
+use loaded::FlownLoads;
+use thrust::Thrust;
+
 pub use event::{Event, EventKind};
 pub use fault::{HorizonFault, RunFault};
 pub use light::{Answer, Light, NoSignal, NodeEnd, Signal};
@@ -45,12 +48,13 @@ pub struct Run {
     positions_m: Arc<[f64]>,
     events: Vec<Event>,
     /// The plan as it is being flown; `None` as long as it is the one filed.
-    changed_plan: Option<Plan>,
+    changed_plan: Option<Arc<Plan>>,
     /// The hold the plan ends in, if it is held for good.
     open_hold: Option<OpenHold>,
-    /// The loads that displace nodes, with the moment each of them holds from; empty on a
-    /// rigid line.
-    loads: Vec<(ArrayTime, Arc<Loads>)>,
+    /// How many phases all changes of thrust have gone through together.
+    phases_flown: u64,
+    /// The loads that displace nodes; `None` on a rigid line.
+    loads: Option<FlownLoads>,
     /// The loads of a rigid line, once they have been asked for.
     rigid_loads: OnceLock<Result<Arc<Loads>, RunFault>>,
     /// How light runs under the plan as it is flown, once it has been asked for.
@@ -75,6 +79,8 @@ struct OpenHold {
 struct Moved {
     place: Place,
     released: Option<ArrayTime>,
+    /// By how much load and temperature displaced it where it was released, m.
+    released_by_m: Dd,
 }
 
 /// Whether a link works.
@@ -100,14 +106,14 @@ impl Run {
             events: Vec::new(),
             changed_plan: None,
             open_hold: None,
-            loads: Vec::new(),
+            phases_flown: 0,
+            loads: None,
             rigid_loads: OnceLock::new(),
             rays: OnceLock::new(),
             moved: BTreeMap::new(),
             links: BTreeMap::new(),
         };
-        let loads = run.check_flight(run.plan(), ArrayTime::ZERO)?;
-        run.loads.extend(loads.map(|loads| (ArrayTime::ZERO, loads)));
+        run.loads = run.first_loads()?.map(FlownLoads::new);
         Ok(run)
     }
 
@@ -131,7 +137,8 @@ impl Run {
     #[must_use]
     pub fn plan(&self) -> Option<&Plan> {
         match (&self.changed_plan, &self.layout.course) {
-            (Some(plan), _) | (None, Course::Thrust(plan)) => Some(plan),
+            (Some(plan), _) => Some(plan),
+            (None, Course::Thrust(plan)) => Some(plan),
             (None, Course::Standing(_)) => None,
         }
     }
@@ -174,7 +181,8 @@ impl Run {
     #[must_use]
     pub fn instant_at(&self, at: ArrayTime) -> Instant {
         let plan = match (&self.changed_plan, &self.layout.course) {
-            (Some(plan), _) | (None, Course::Thrust(plan)) => plan,
+            (Some(plan), _) => &**plan,
+            (None, Course::Thrust(plan)) => plan,
             (None, Course::Standing(standing)) => {
                 return Instant {
                     moment: Moment::held_always(at, standing.gravity_m_s2),
@@ -207,9 +215,11 @@ impl Run {
         }
         self.check_moment(at)?;
         match &event.kind {
-            EventKind::Hold { acceleration_m_s2 } => self.hold(at, *acceleration_m_s2)?,
-            EventKind::Ramp { to_m_s2, length } => self.ramp(at, *to_m_s2, *length)?,
-            EventKind::Plan => self.back_to_plan(at)?,
+            kind @ (EventKind::Hold { .. } | EventKind::Ramp { .. } | EventKind::Plan) => {
+                if let Some(thrust) = Thrust::of(kind) {
+                    self.change_thrust(at, thrust)?;
+                }
+            }
             EventKind::Move { node, position_m } => self.move_node(at, node, *position_m)?,
             EventKind::Release { node } => self.release(at, node)?,
             EventKind::Fail { between } => self.change_link(at, between, LinkState::Failed)?,
@@ -297,8 +307,8 @@ impl Run {
         if position_m.is_nan() || position_m.abs() > FARTHEST_POSITION_M {
             return Err(RunFault::OutsideLine { position_m });
         }
-        match self.loads.last() {
-            Some((_, loads)) => self.check_under(loads, self.plan(), at, row, position_m, true)?,
+        match self.latest_loads() {
+            Some(loads) => self.check_under(loads, self.plan(), at, row, position_m, true)?,
             None => self.check_position(self.plan(), at, row, position_m, true)?,
         }
         self.moved_entry(row).place.move_to(at, position_m);
@@ -308,12 +318,14 @@ impl Run {
     fn release(&mut self, at: ArrayTime, name: &str) -> Result<(), RunFault> {
         let row = self.changeable_row(name)?;
         self.moved_entry(row).released = Some(at);
+        self.settle_released(at);
         Ok(())
     }
 
     fn moved_entry(&mut self, row: usize) -> &mut Moved {
         let position_m = self.layout.nodes[row].position_m;
-        let unmoved = || Moved { place: Place::new(position_m), released: None };
+        let unmoved =
+            || Moved { place: Place::new(position_m), released: None, released_by_m: Dd::ZERO };
         self.moved.entry(row).or_insert_with(unmoved)
     }
 

@@ -14,7 +14,7 @@ pub struct State<'a> {
     pub(super) run: &'a Run,
     instant: Instant,
     /// What displaces the nodes; `None` on a rigid line.
-    pub(super) loaded: Option<Loaded<'a>>,
+    pub(super) loaded: Option<Loaded>,
     /// Nodes that have been moved or released up to the moment, by row.
     changed: Vec<(usize, NodeState)>,
 }
@@ -65,9 +65,7 @@ impl<'a> State<'a> {
             let position_m = moved.place.position_m(at);
             let state = match moved.released {
                 Some(since) if since <= at => {
-                    let then = loaded.as_ref().and_then(|_| Loaded::at(run, run.instant_at(since)));
-                    let displaced_m = then.map_or(Dd::ZERO, |then| then.displaced(run, *row).by_m);
-                    let position_m = (Dd::new(position_m) + displaced_m).to_f64();
+                    let position_m = (Dd::new(position_m) + moved.released_by_m).to_f64();
                     NodeState::Released { since, position_m }
                 }
                 _ => {

@@ -8,6 +8,7 @@ use super::format::ColumnFormat;
 use super::scan::ColumnScan;
 use super::stream::{threads_for, write_rows};
 use super::text::TextOptions;
+use super::unit::Unit;
 use super::width::{columns_of, push_blanks, push_left, push_right, wrapped};
 use super::{Cell, Column, Measure, NOT_FINITE, Table};
 use crate::cores;
@@ -21,6 +22,102 @@ const MOST_REASONS: usize = 26;
 /// The least a column of words is narrowed to.
 const LEAST_WORDS: usize = 4;
 
+/// What a table over time keeps from moment to moment, so that a number can be compared with
+/// the one above it.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Kept {
+    columns: Vec<KeptColumn>,
+    /// Headings are left out where they would say what they said, and tables without rows.
+    pub is_compact: bool,
+    /// The headings that are in sight, by the names of their tables.
+    headings: Vec<(&'static str, String)>,
+    /// Whether a heading has been written since this was last asked.
+    is_headed: bool,
+}
+
+#[derive(Clone, Copy, Debug)]
+struct KeptColumn {
+    table: &'static str,
+    key: &'static str,
+    /// The unit of the first values that were not all zero.
+    unit: Unit,
+    width: usize,
+}
+
+impl Kept {
+    /// Whether a heading has been written since the last time.
+    pub fn take_headed(&mut self) -> bool {
+        std::mem::take(&mut self.is_headed)
+    }
+
+    /// Headings have gone out of sight.
+    pub fn forget_headings(&mut self) {
+        self.headings.clear();
+    }
+
+    /// Whether a heading is in sight already; it is from now on.
+    fn is_in_sight(&mut self, table: &'static str, heading: &str) -> bool {
+        match self.headings.iter_mut().find(|(known, _)| *known == table) {
+            Some((_, known)) if known == heading => true,
+            Some((_, known)) => {
+                heading.clone_into(known);
+                false
+            }
+            None => {
+                self.headings.push((table, heading.to_owned()));
+                false
+            }
+        }
+    }
+
+    /// The form of a column in the unit kept for it. When that no longer serves, another one
+    /// is kept from now on, and `changed` says so.
+    fn format(
+        &mut self,
+        table: &Table<'_>,
+        column: &Column,
+        scan: &ColumnScan,
+        unicode: bool,
+        changed: &mut Vec<String>,
+    ) -> ColumnFormat {
+        let own = scan.format(unicode);
+        if !scan.has_unit() || scan.is_in_given_unit() {
+            return own;
+        }
+        let place =
+            self.columns.iter().position(|kept| kept.table == table.name && kept.key == column.key);
+        let Some(place) = place else {
+            if scan.has_size() {
+                let unit = own.unit_kept();
+                let (table, key, width) = (table.name, column.key, own.width);
+                self.columns.push(KeptColumn { table, key, unit, width });
+            }
+            return own;
+        };
+        let kept = &mut self.columns[place];
+        let mut format = match scan.format_in(kept.unit, unicode) {
+            Some(format) => format,
+            None if !scan.has_size() => return own,
+            None => {
+                let before = if unicode { kept.unit.label } else { kept.unit.ascii };
+                if kept.unit != own.unit_kept() {
+                    let (heading, now) = (column.heading, own.unit());
+                    changed.push(format!("`{heading}` is now in {now}, before in {before}"));
+                }
+                kept.unit = own.unit_kept();
+                kept.width = own.width;
+                own
+            }
+        };
+        // So that numbers stand below each other.
+        if self.is_compact {
+            kept.width = kept.width.max(format.width);
+            format.width = kept.width;
+        }
+        format
+    }
+}
+
 /// Writes a table with its title, its columns in as many blocks as the width asks for, and
 /// the reasons of what is absent.
 pub(super) fn write_table(
@@ -28,25 +125,48 @@ pub(super) fn write_table(
     options: &TextOptions,
     units: Option<&Units>,
     titled: bool,
+    mut kept: Option<&mut Kept>,
     out: &mut dyn Write,
 ) -> io::Result<()> {
     let mut text = String::new();
     if table.rows == 0 {
+        if kept.is_some_and(|kept| kept.is_compact) {
+            return Ok(());
+        }
         options.push_lines(&mut text, &format!("{}: no rows", table.name));
         return out.write_all(text.as_bytes());
     }
+    let mut changed = Vec::new();
+    let (formats, reasons) = scan(table, units, options.unicode, kept.as_deref_mut(), &mut changed);
+    for change in changed {
+        options.push_lines(&mut text, &change);
+    }
+    let mut title = String::new();
     if titled {
         let order = if table.marked.is_some() { ", fore to aft, * the reference" } else { "" };
-        options.push_lines(&mut text, &format!("{}{order}", table.name));
+        options.push_lines(&mut title, &format!("{}{order}", table.name));
     }
-    let (formats, reasons) = scan(table, units, options.unicode);
     let margin = if table.marked.is_some() { MARK } else { 0 };
     let blocks = blocks(table, &formats, margin, *options);
     for (place, block) in blocks.iter().enumerate() {
         if place > 0 {
             text.push('\n');
         }
-        push_heading(&mut text, block, margin, *options);
+        // Only a heading of a single block can stay in sight above its rows.
+        let mut heading = std::mem::take(&mut title);
+        push_heading(&mut heading, block, margin, *options);
+        let is_in_sight = match &mut kept {
+            Some(kept) if kept.is_compact && blocks.len() == 1 => {
+                kept.is_in_sight(table.name, &heading)
+            }
+            _ => false,
+        };
+        if !is_in_sight {
+            text.push_str(&heading);
+            if let Some(kept) = &mut kept {
+                kept.is_headed = true;
+            }
+        }
         out.write_all(text.as_bytes())?;
         text.clear();
         write_rows(table.rows, threads_for(table.rows), out, |range, buffer| {
@@ -161,7 +281,13 @@ impl Seen {
 }
 
 /// The first pass over the rows.
-fn scan(table: &Table<'_>, units: Option<&Units>, unicode: bool) -> (Vec<ColumnFormat>, Reasons) {
+fn scan(
+    table: &Table<'_>,
+    units: Option<&Units>,
+    unicode: bool,
+    kept: Option<&mut Kept>,
+    changed: &mut Vec<String>,
+) -> (Vec<ColumnFormat>, Reasons) {
     let unit = |column: &Column| units?.of(column.key, column.measure);
     let columns = table.columns.iter();
     let nothing = Seen {
@@ -174,12 +300,18 @@ fn scan(table: &Table<'_>, units: Option<&Units>, unicode: bool) -> (Vec<ColumnF
     let seen = cores::fold(
         count,
         GROUPS_WORTH_THREADS,
-        nothing,
+        &nothing,
         |seen, place| seen.see(table, group(place)),
         |front, behind| front.join(&behind),
     );
-    let mut formats: Vec<ColumnFormat> =
-        seen.scans.iter().map(|scan| scan.format(unicode)).collect();
+    let scans = seen.scans.iter();
+    let mut formats: Vec<ColumnFormat> = match kept {
+        None => scans.map(|scan| scan.format(unicode)).collect(),
+        Some(kept) => scans
+            .zip(&table.columns)
+            .map(|(scan, column)| kept.format(table, column, scan, unicode, changed))
+            .collect(),
+    };
     let mark = columns_of(seen.reasons.mark_at(0));
     for (format, _) in formats.iter_mut().zip(seen.absent).filter(|(_, absent)| *absent) {
         format.width = format.width.max(1 + mark);

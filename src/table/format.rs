@@ -71,6 +71,11 @@ impl ColumnFormat {
         if self.unicode { self.unit.label } else { self.unit.ascii }
     }
 
+    /// The unit itself.
+    pub(super) fn unit_kept(&self) -> Unit {
+        self.unit
+    }
+
     /// Columns of a cell, without room for the heading.
     #[must_use]
     pub fn width(&self) -> usize {

@@ -3,7 +3,9 @@
 use super::digits::{Decimal, MOST_DIGITS, Scale, exponent_of};
 use super::format::yes_or_no;
 use super::format::{ColumnFormat, Form};
-use super::unit::{LONG_TIMES, SECOND, TIMES, Unit, base_unit, decimal_unit, long_unit, measured};
+use super::unit::{
+    LONG_TIMES, SECOND, TIMES, Unit, base_unit, decimal_unit, dimension_of, long_unit, measured,
+};
 use super::width::columns_of;
 use super::{Cell, Column, Measure};
 
@@ -21,6 +23,8 @@ const MOST_LONG_DECIMALS: i32 = 6;
 const LEAST_FIRST: i32 = -3;
 const MOST_WHOLE: i32 = 11;
 const MOST_BARE: i32 = 6;
+/// Power of ten of the first digit up to which a table over time keeps a unit.
+const MOST_KEPT: i32 = 5;
 /// Decimals up to which an exact time in a unit asked for is shown exactly, and those it is
 /// rounded to where they do not do.
 const MOST_EXACT_DECIMALS: u32 = 9;
@@ -261,6 +265,31 @@ impl ColumnScan {
         }
         format.width = width;
         format
+    }
+
+    /// The form in the unit of an earlier table, when the values read well in it or are all
+    /// zero; `None` where there is no number or another unit was asked for.
+    pub(super) fn format_in(&self, kept: Unit, unicode: bool) -> Option<ColumnFormat> {
+        if self.numbers == 0 || self.unit.is_some() {
+            return None;
+        }
+        let serves = self.largest() == 0.0 || self.places(kept.scale).reads_well(MOST_KEPT);
+        serves.then(|| self.clone().in_unit(Some(kept)).format(unicode))
+    }
+
+    /// Whether there is a number that is not zero.
+    pub(super) fn has_size(&self) -> bool {
+        self.numbers > 0 && self.largest() > 0.0
+    }
+
+    /// Whether a unit was asked for.
+    pub(super) fn is_in_given_unit(&self) -> bool {
+        self.unit.is_some()
+    }
+
+    /// Whether what is measured has a unit.
+    pub(super) fn has_unit(&self) -> bool {
+        dimension_of(self.measure).is_some()
     }
 
     fn number_form(&self) -> (Unit, Form) {

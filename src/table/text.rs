@@ -3,7 +3,7 @@
 use std::io::{self, Write};
 
 use super::choose::Units;
-use super::columns::write_table;
+use super::columns::{Kept, write_table};
 use super::digits::Scale;
 use super::scan::ColumnScan;
 use super::unit::{acceleration, readable_time, rounded};
@@ -119,7 +119,7 @@ pub fn write_text_as(
     out.write_all(text.as_bytes())?;
     for table in &report.tables {
         out.write_all(b"\n")?;
-        write_table(table, options, choice.units, true, out)?;
+        write_table(table, options, choice.units, true, None, out)?;
     }
     text.clear();
     if !report.remarks.is_empty() {
@@ -173,6 +173,30 @@ pub struct TextWriter<'a> {
     choice: TextChoice<'a>,
     moments: usize,
     remarks: Vec<String>,
+    kept: Kept,
+    /// Lines written since the headings.
+    lines: usize,
+}
+
+/// Lines after which headings stand again, so that they do not leave a screen for long.
+const SCREENFUL: usize = 20;
+
+/// Counts the lines that pass.
+struct Counted<'o> {
+    out: &'o mut dyn Write,
+    lines: usize,
+}
+
+impl Write for Counted<'_> {
+    fn write(&mut self, bytes: &[u8]) -> io::Result<usize> {
+        let written = self.out.write(bytes)?;
+        self.lines += bytes[..written].iter().filter(|byte| **byte == b'\n').count();
+        Ok(written)
+    }
+
+    fn flush(&mut self) -> io::Result<()> {
+        self.out.flush()
+    }
 }
 
 impl<'a> TextWriter<'a> {
@@ -180,13 +204,28 @@ impl<'a> TextWriter<'a> {
     #[must_use]
     pub fn new(options: TextOptions) -> TextWriter<'a> {
         let choice = TextChoice::default();
-        TextWriter { options, choice, moments: 0, remarks: Vec::new() }
+        TextWriter {
+            options,
+            choice,
+            moments: 0,
+            remarks: Vec::new(),
+            kept: Kept::default(),
+            lines: 0,
+        }
     }
 
     /// The same with what the reader chose.
     #[must_use]
     pub fn with(mut self, choice: TextChoice<'a>) -> TextWriter<'a> {
         self.choice = choice;
+        self
+    }
+
+    /// For a watch on a screen: headings stand where they change and once a screenful, and
+    /// tables without rows are left out.
+    #[must_use]
+    pub fn compact(mut self) -> TextWriter<'a> {
+        self.kept.is_compact = true;
         self
     }
 
@@ -220,10 +259,22 @@ impl<'a> TextWriter<'a> {
         let mut text = String::from("\n");
         options.push_lines(&mut text, &parts.join(", "));
         push_scalars(&mut text, &report.scalars, self.choice, options);
+        let mut out = Counted { out, lines: 0 };
         out.write_all(text.as_bytes())?;
+        if self.lines >= SCREENFUL {
+            self.kept.forget_headings();
+        }
+        let mut shown = 0;
         for table in &report.tables {
-            let titled = self.moments == 0 || report.tables.len() > 1;
-            write_table(table, &options, self.choice.units, titled, out)?;
+            let several = report.tables.len() > 1;
+            let titled = self.moments == 0 || several || self.kept.is_compact;
+            let (units, kept) = (self.choice.units, Some(&mut self.kept));
+            write_table(table, &options, units, titled, kept, &mut out)?;
+            shown += usize::from(table.rows > 0);
+        }
+        if shown > 1 {
+            // The heading in sight is that of the last table.
+            self.kept.forget_headings();
         }
         text.clear();
         for remark in &report.remarks {
@@ -235,7 +286,9 @@ impl<'a> TextWriter<'a> {
             }
         }
         self.moments += 1;
-        out.write_all(text.as_bytes())
+        out.write_all(text.as_bytes())?;
+        self.lines = out.lines + if self.kept.take_headed() { 0 } else { self.lines };
+        Ok(())
     }
 }
 

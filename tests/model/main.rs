@@ -25,6 +25,7 @@ mod loads_layouts;
 mod loads_published;
 mod loads_reference;
 mod loads_rules;
+mod many_changes;
 mod pinned;
 mod published;
 mod reach;

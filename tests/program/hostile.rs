@@ -204,3 +204,37 @@ fn a_recording_with_a_line_that_never_ends_is_shown_up_to_it() {
     let (status, _, stderr) = fed(folder.path(), "true", "verify run.jsonl");
     assert_eq!(status, 1, "{stderr}");
 }
+
+#[test]
+fn twenty_thousand_changes_of_thrust_are_gone_through_in_little_memory() {
+    let folder = empty_folder();
+    let layout = "name = \"line\"\n[[node]]\nname = \"hub\"\nmass = \"1 t\"\n[[node]]\n\
+        name = \"up\"\nposition = \"1 km\"\nmass = \"1 t\"\n[[span]]\n\
+        along = [\"up\", \"hub\"]\nkind = \"boom\"\naxial_stiffness = \"1.2e6 N\"\n\
+        [[phase]]\nhold = \"1 g0\"\nfor = \"1 h\"\n";
+    fs::write(folder.path().join("line.toml"), layout).expect("written");
+    let record = "record line.toml --until 0s --every 1s --out run.jsonl";
+    assert_eq!(fed(folder.path(), "true", record).0, 0);
+    let path = folder.path().join("run.jsonl");
+    let text = fs::read_to_string(&path).expect("a recording");
+    let lines: Vec<&str> = text.lines().collect();
+    let mut long = format!("{}\n{}\n", lines[0], lines[1]);
+    for second in 1..=20_000 {
+        let thrust = 5 + second % 5;
+        let body =
+            format!("{{\"event\":\"hold\",\"at_s\":{second},\"acceleration_m_s2\":0.{thrust}");
+        let crc = crc32fast::hash(body.as_bytes());
+        long.push_str(&format!("{body},\"crc32\":\"{crc:08x}\"}}\n"));
+    }
+    fs::write(&path, long).expect("written");
+    let (status, stdout, stderr) = fed(folder.path(), "true", "verify run.jsonl --as json");
+    assert_eq!(status, 1, "it has no closing line: {stderr}");
+    assert!(
+        stdout.contains("\"holds\":true") && stdout.contains("\"events\":20000"),
+        "{stdout:.500}"
+    );
+    for arguments in ["compare run.jsonl run.jsonl --at 0", "replay run.jsonl --as csv"] {
+        let (status, _, stderr) = fed(folder.path(), "true", arguments);
+        assert_eq!(status, 0, "{stderr}");
+    }
+}

@@ -28,7 +28,7 @@ impl Filed {
         let mut history = "# logged\nat_s,acceleration_m_s2\n".to_owned();
         for point in 0..points {
             let phase = point as f64;
-            let acceleration = 1.0 + 0.3 * (phase * 0.37).sin() + 0.1 * (phase * 0.011).cos();
+            let acceleration = 1.0 + 0.3 * libm::sin(phase * 0.37) + 0.1 * libm::cos(phase * 0.011);
             let _ = writeln!(history, "{point},{acceleration:.6}");
         }
         fs::write(place.join("run.csv"), history).expect("a history");

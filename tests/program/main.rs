@@ -8,5 +8,6 @@ mod links;
 mod loads;
 mod long_history;
 mod readme;
+mod recorded;
 mod recording_lasts;
 mod terminal_session;

@@ -51,7 +51,7 @@ impl Reading {
     /// What suits a text: a short one is read before the cores are awake.
     pub(super) fn of(text: &str) -> Reading {
         const LONG: usize = 1 << 20;
-        let is_shared = text.len() >= LONG && cores::threads().is_some();
+        let is_shared = text.len() >= LONG && cores::pool().is_some();
         if is_shared { Reading::OnAllCores } else { Reading::RowByRow }
     }
 }

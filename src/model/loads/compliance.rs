@@ -57,6 +57,16 @@ pub(super) struct Range {
     pub most_burned: f64,
 }
 
+impl Range {
+    /// Whether two ranges are one to the bit.
+    pub fn is_same(&self, other: &Range) -> bool {
+        let bits = |range: &Range| {
+            [range.lowest_m_s2, range.highest_m_s2, range.most_burned].map(f64::to_bits)
+        };
+        bits(self) == bits(other)
+    }
+}
+
 const DEGREES: [usize; 8] = [1, 2, 3, 5, 9, 17, 33, 65];
 
 /// Relative change of a loaded position that no double shows.

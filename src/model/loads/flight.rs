@@ -1,12 +1,13 @@
 //! The state of a line under thrust at a moment, and the integrals its clocks need.
 
-use super::compliance::{Basis, Compliance, Range};
+use std::sync::{Arc, Mutex, OnceLock, PoisonError};
+
+use super::compliance::{Basis, Compliance};
 use super::propellant::Propulsion;
 use crate::cores;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::{C2_M2_S2, INVERSE_C2_S2_M2};
 use crate::model::dd::{Dd, RunningSum};
-use crate::model::horizon::Extremes;
 use crate::model::motion::{NODES_10, WEIGHTS_10};
 use crate::model::plan::{Phase, Plan};
 
@@ -19,10 +20,29 @@ const AT_ONCE: usize = 1 << 16;
 /// A thrust plan with the stretch of the line tabulated over it.
 #[derive(Clone, Debug)]
 pub(super) struct Flight {
-    pub plan: Plan,
-    pub compliance: Compliance,
-    /// `∫ α² T_t dτ` up to the start of each phase and to the end, term by term.
-    until: Vec<Dd>,
+    pub plan: Arc<Plan>,
+    pub compliance: Arc<Compliance>,
+    /// `∫ α² T_t dτ` up to the start of each phase and to the end, term by term, once it
+    /// has been asked for.
+    until: OnceLock<Vec<RunningSum>>,
+    /// The first of them, where they are known from a plan of the same beginning.
+    begun: Begun,
+}
+
+/// Integrals that wait for the others.
+#[derive(Debug, Default)]
+struct Begun(Mutex<Vec<RunningSum>>);
+
+impl Begun {
+    fn take(&self) -> Vec<RunningSum> {
+        std::mem::take(&mut *self.0.lock().unwrap_or_else(PoisonError::into_inner))
+    }
+}
+
+impl Clone for Begun {
+    fn clone(&self) -> Begun {
+        Begun(Mutex::new(self.0.lock().unwrap_or_else(PoisonError::into_inner).clone()))
+    }
 }
 
 /// The acceleration, how fast it changes and what has burned, at a moment of a phase.
@@ -35,72 +55,84 @@ pub(super) struct Drive {
     pub burning_per_s: f64,
 }
 
-/// The states a plan passes through, the coasts before and after it included.
-pub(super) fn range(plan: &Plan, propulsion: &Propulsion) -> Range {
-    let mut range = Range { lowest_m_s2: 0.0, highest_m_s2: 0.0, most_burned: 0.0 };
-    if let Some(extremes) = Extremes::of(plan) {
-        range.lowest_m_s2 = extremes.smallest.acceleration_m_s2.to_f64().min(0.0);
-        range.highest_m_s2 = extremes.largest.acceleration_m_s2.to_f64().max(0.0);
+/// The drive at a moment of a plan; in a phase that is named, its end meaning the limit from
+/// below, or wherever the moment falls.
+pub(super) fn drive(plan: &Plan, mass: &Propulsion, phase: Option<usize>, at: ArrayTime) -> Drive {
+    let (acceleration_m_s2, slope_m_s3) = match phase {
+        Some(index) => {
+            let phase = &plan.phases()[index];
+            (phase.acceleration(at), slope(phase))
+        }
+        None => (Dd::ZERO, 0.0),
+    };
+    if !mass.is_falling() {
+        return Drive { acceleration_m_s2, slope_m_s3, burned: 0.0, burning_per_s: 0.0 };
     }
-    if propulsion.is_falling() {
-        range.most_burned = propulsion.burned_fraction(plan.velocity_spent_m_s(plan.end()));
-    }
-    range
+    let spent = plan.velocity_spent_m_s(at);
+    let burned = mass.burned_fraction(spent);
+    let left = mass.mass_fraction(spent);
+    let burning_per_s = acceleration_m_s2.to_f64().abs() * mass.inverse_speed_s_m() * left;
+    Drive { acceleration_m_s2, slope_m_s3, burned, burning_per_s }
 }
 
 impl Flight {
-    pub fn new(plan: Plan, compliance: Compliance, propulsion: &Propulsion) -> Flight {
-        let terms = compliance.terms();
-        let mut flight = Flight { plan, compliance, until: Vec::new() };
-        let mut sums = vec![RunningSum::default(); terms];
-        let count = flight.plan.phases().len();
-        if terms == 0 {
-            return flight;
-        }
-        let mut until = Vec::with_capacity(terms * (count + 1));
-        // The gains of many phases are found on all cores, and summed in their order.
-        for first in (0..count).step_by(AT_ONCE) {
-            let gains = cores::map((count - first).min(AT_ONCE), cores::MANY, |index| {
-                let index = first + index;
-                flight.gains(propulsion, index, flight.plan.phases()[index].end)
-            });
-            for gains in gains {
-                until.extend(sums.iter().map(RunningSum::value));
-                for (sum, gain) in sums.iter_mut().zip(gains) {
+    /// A plan with the stretch over it. `begun` holds the integrals up to the first phases,
+    /// as [`Flight::into_begun`] gives them; it may be empty.
+    pub fn new(plan: Arc<Plan>, compliance: Arc<Compliance>, begun: Vec<RunningSum>) -> Flight {
+        let begun = Begun(Mutex::new(begun));
+        Flight { plan, compliance, until: OnceLock::new(), begun }
+    }
+
+    /// The integrals of the first phases, for another plan that has these phases and the
+    /// same stretch.
+    pub fn into_begun(self, phases: usize) -> Vec<RunningSum> {
+        let mut until = self.until.into_inner().unwrap_or_else(|| self.begun.take());
+        until.truncate((phases + 1) * self.compliance.terms());
+        until
+    }
+
+    /// The integrals up to the start of each phase and to the end.
+    fn until(&self, propulsion: &Propulsion) -> &[RunningSum] {
+        self.until.get_or_init(|| {
+            let terms = self.compliance.terms();
+            let mut until = self.begun.take();
+            if terms == 0 {
+                return until;
+            }
+            if until.is_empty() {
+                until.resize(terms, RunningSum::default());
+            }
+            let count = self.plan.phases().len();
+            // The gains of many phases are found on all cores, and summed in their order.
+            for first in (until.len() / terms - 1..count).step_by(AT_ONCE) {
+                let gains = cores::map((count - first).min(AT_ONCE), cores::MANY, |index| {
+                    let index = first + index;
+                    self.gains(propulsion, index, self.plan.phases()[index].end)
+                });
+                for gain in gains.into_iter().flatten() {
+                    // The same term up to the phase before.
+                    let mut sum = until[until.len() - terms];
                     sum.add(gain);
+                    until.push(sum);
                 }
             }
-        }
-        until.extend(sums.iter().map(RunningSum::value));
-        flight.until = until;
-        flight
+            until
+        })
     }
 
     /// The drive at a moment; in a phase that is named, its end meaning the limit from
     /// below, or wherever the moment falls.
     pub fn drive(&self, propulsion: &Propulsion, phase: Option<usize>, at: ArrayTime) -> Drive {
-        let (acceleration_m_s2, slope_m_s3) = match phase {
-            Some(index) => {
-                let phase = &self.plan.phases()[index];
-                (phase.acceleration(at), slope(phase))
-            }
-            None => (Dd::ZERO, 0.0),
-        };
-        if !propulsion.is_falling() {
-            return Drive { acceleration_m_s2, slope_m_s3, burned: 0.0, burning_per_s: 0.0 };
-        }
-        let spent = self.plan.velocity_spent_m_s(at);
-        let burned = propulsion.burned_fraction(spent);
-        let left = propulsion.mass_fraction(spent);
-        let burning_per_s =
-            acceleration_m_s2.to_f64().abs() * propulsion.inverse_speed_s_m() * left;
-        Drive { acceleration_m_s2, slope_m_s3, burned, burning_per_s }
+        drive(&self.plan, propulsion, phase, at)
     }
 
     /// `∫ α² T_t dτ` from array time zero to a moment, term by term, m²/s³.
     pub fn integrals(&self, propulsion: &Propulsion, at: ArrayTime) -> Vec<Dd> {
         let terms = self.compliance.terms();
-        let stored = |index: usize| self.until[index * terms..(index + 1) * terms].to_vec();
+        let until = self.until(propulsion);
+        let stored = |index: usize| -> Vec<Dd> {
+            until[index * terms..(index + 1) * terms].iter().map(RunningSum::value).collect()
+        };
         match self.plan.phase_at(at) {
             None if at < ArrayTime::ZERO => stored(0),
             None => stored(self.plan.phases().len()),

@@ -48,6 +48,7 @@ mod balance;
 mod compliance;
 mod fault;
 mod flight;
+mod grown;
 mod march;
 mod peaks;
 mod period;
@@ -58,6 +59,7 @@ mod standing;
 mod structure;
 
 pub use fault::LoadsFault;
+pub use grown::Stretch;
 pub use peaks::{ForcePeaks, Margin, Peak};
 pub use period::{Period, Ringing, lowest_period};
 pub use propellant::{Propulsion, RunsDry, Use};
@@ -66,11 +68,12 @@ pub use slack::{Mend, Slack};
 pub use standing::{GRADIENT_WARNING_SHIFT, GradientWarning, Gravity};
 pub use structure::{Engine, Joint, Member, Structure, StructureFault};
 
-use std::sync::OnceLock;
+use std::sync::{Arc, OnceLock};
 
 use self::balance::{Balance, Ends, normalised_shares};
 use self::compliance::{Basis, Compliance, shape};
 use self::flight::Flight;
+use self::grown::Settled;
 use self::march::Rods;
 use self::peaks::Corners;
 use self::standing::{Masses, Standing, mass_balance};
@@ -85,12 +88,12 @@ use crate::layout::{self, Layout};
 /// A line and what moves or holds it, ready to be asked about any moment.
 #[derive(Clone, Debug)]
 pub struct Loads {
-    structure: Structure,
-    rods: Rods,
-    unloaded_m: Vec<Dd>,
-    relaxed_m: Vec<Dd>,
-    masses_kg: Vec<f64>,
-    propulsion: Propulsion,
+    structure: Arc<Structure>,
+    rods: Arc<Rods>,
+    unloaded_m: Arc<[Dd]>,
+    relaxed_m: Arc<[Dd]>,
+    masses_kg: Arc<[f64]>,
+    propulsion: Arc<Propulsion>,
     course: Course,
 }
 
@@ -104,15 +107,59 @@ enum Course {
 #[derive(Clone, Debug)]
 struct Thrust {
     flight: Flight,
-    balance: Balance,
-    corners: Corners,
-    /// The same up to the moment at which the first engine runs dry, when one does: beyond
-    /// it the line has not the masses that its forces are reckoned with.
-    corners_with_propellant: Option<Corners>,
-    /// From when the masses mean nothing: the end of the plan, or when an engine runs dry.
-    masses_hold_until: ArrayTime,
-    /// Made when it is first asked for.
+    balance: Arc<Balance>,
+    stretch: Stretch,
+    /// What is known of the first phases, whatever plan goes on from them.
+    settled: Settled,
+    found: Found,
+}
+
+/// What is found out about a plan when it is first asked for.
+#[derive(Clone, Debug, Default)]
+struct Found {
+    /// The extremes over the plan.
+    corners: OnceLock<Corners>,
+    /// When the first engine runs dry, when one does: beyond that the line has not the masses
+    /// that its forces are reckoned with.
+    dry: OnceLock<Option<ArrayTime>>,
+    /// The extremes up to then.
+    corners_until_dry: OnceLock<Corners>,
     records: OnceLock<Records>,
+}
+
+impl Thrust {
+    /// The extremes over the plan.
+    fn corners(&self, propulsion: &Propulsion) -> &Corners {
+        let find = || Corners::new(&self.flight, propulsion, &self.settled.sampled);
+        self.found.corners.get_or_init(find)
+    }
+
+    /// The extremes as far as forces mean something.
+    fn forced_corners(&self, propulsion: &Propulsion) -> &Corners {
+        match self.runs_dry(propulsion) {
+            Some(at) => {
+                let find = || Corners::until(&self.flight, propulsion, at);
+                self.found.corners_until_dry.get_or_init(find)
+            }
+            None => self.corners(propulsion),
+        }
+    }
+
+    /// When the first engine runs dry.
+    fn runs_dry(&self, propulsion: &Propulsion) -> Option<ArrayTime> {
+        let find = || propulsion.running_dry(&self.flight.plan).first().map(|dry| dry.at);
+        *self.found.dry.get_or_init(find)
+    }
+
+    /// From when the masses mean nothing: the end of the plan, or when an engine runs dry.
+    fn masses_hold_until(&self, propulsion: &Propulsion) -> ArrayTime {
+        self.runs_dry(propulsion).unwrap_or(self.flight.plan.end())
+    }
+
+    /// The moments at which the acceleration reaches further than ever before.
+    fn records(&self) -> &Records {
+        self.found.records.get_or_init(|| Records::of(&self.flight.plan))
+    }
 }
 
 /// The line at one moment, from which every quantity of it follows.
@@ -191,29 +238,25 @@ impl Loads {
         let relaxed_m = rods.relaxed_m();
         let (balance, mass_kg) = mass_balance(&structure, &rods, &masses.as_weights());
         let propulsion = Propulsion::new(&structure, mass_kg);
-        let range = flight::range(plan, &propulsion);
-        let compliance = Compliance::new(&rods, &balance, &relaxed_m, &range)?;
-        let flight = Flight::new(plan.clone(), compliance, &propulsion);
-        let end = flight.plan.end();
-        let corners = Corners::new(&flight, &propulsion, end);
-        let dry = propulsion.running_dry(&flight.plan).first().map(|dry| dry.at);
-        let corners_with_propellant = dry.map(|at| Corners::new(&flight, &propulsion, at));
+        let settled = Settled::default();
+        let range = settled.range(plan, &propulsion);
+        let compliance = Arc::new(Compliance::new(&rods, &balance, &relaxed_m, &range)?);
+        let flight = Flight::new(Arc::new(plan.clone()), Arc::clone(&compliance), Vec::new());
         let thrust = Thrust {
             flight,
-            balance,
-            corners,
-            corners_with_propellant,
-            masses_hold_until: dry.unwrap_or(end),
-            records: OnceLock::new(),
+            balance: Arc::new(balance),
+            stretch: Stretch { range, compliance },
+            settled,
+            found: Found::default(),
         };
         Ok(Loads {
-            unloaded_m: rods.unloaded_m(),
+            unloaded_m: rods.unloaded_m().into(),
             masses_kg: masses.nodes_kg.iter().map(|mass| mass.to_f64()).collect(),
             course: Course::Thrust(Box::new(thrust)),
-            structure,
-            rods,
-            relaxed_m,
-            propulsion,
+            structure: Arc::new(structure),
+            rods: Arc::new(rods),
+            relaxed_m: relaxed_m.into(),
+            propulsion: Arc::new(propulsion),
         })
     }
 
@@ -240,13 +283,13 @@ impl Loads {
             Standing::settle(&structure, &rods, &relaxed_m, &masses.as_weights(), gravity)?;
         let (_, mass_kg) = mass_balance(&structure, &rods, &masses.as_weights());
         Ok(Loads {
-            unloaded_m: rods.unloaded_m(),
+            unloaded_m: rods.unloaded_m().into(),
             masses_kg: masses.nodes_kg.iter().map(|mass| mass.to_f64()).collect(),
             course: Course::Standing(Box::new(standing)),
-            propulsion: Propulsion::new(&structure, mass_kg),
-            structure,
-            rods,
-            relaxed_m,
+            propulsion: Arc::new(Propulsion::new(&structure, mass_kg)),
+            structure: Arc::new(structure),
+            rods: Arc::new(rods),
+            relaxed_m: relaxed_m.into(),
         })
     }
 
@@ -505,7 +548,7 @@ impl Loads {
     pub fn is_one_way(&self) -> bool {
         match &self.course {
             Course::Thrust(thrust) => {
-                let range = flight::range(&thrust.flight.plan, &self.propulsion);
+                let range = &thrust.stretch.range;
                 range.lowest_m_s2 == 0.0 || range.highest_m_s2 == 0.0
             }
             Course::Standing(_) => true,
@@ -523,7 +566,7 @@ impl Loads {
             Course::Thrust(thrust) if thrust.flight.compliance.terms() == 0 => {}
             Course::Thrust(thrust) => {
                 let compliance = &thrust.flight.compliance;
-                let range = flight::range(&thrust.flight.plan, &self.propulsion);
+                let range = &thrust.stretch.range;
                 for acceleration_m_s2 in [range.lowest_m_s2, range.highest_m_s2] {
                     for burned in [0.0, range.most_burned] {
                         let values = compliance.values(acceleration_m_s2, burned);

@@ -2,11 +2,12 @@
 
 use super::balance::Balance;
 use super::compliance::Basis;
-use super::flight::{Drive, Flight, sections, slope};
+use super::flight::{Drive, Flight, drive, sections, slope};
 use super::propellant::Propulsion;
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::INVERSE_C2_S2_M2;
 use crate::model::dd::Dd;
+use crate::model::plan::Plan;
 
 /// An extreme over the plan: its value and where it first occurs.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -71,6 +72,36 @@ pub(super) struct Corners {
     corners: Vec<Corner>,
 }
 
+/// What may be a corner in the first phases of a plan.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Sampled {
+    /// How many phases.
+    phases: usize,
+    found: Vec<Corner>,
+}
+
+impl Sampled {
+    /// Looks through further phases of the same plan.
+    pub fn go_on(&mut self, plan: &Plan, propulsion: &Propulsion, phases: usize) {
+        for index in self.phases..phases {
+            self.look(plan, propulsion, index, plan.end());
+        }
+        self.phases = self.phases.max(phases);
+    }
+
+    /// Looks through a phase, up to a moment.
+    fn look(&mut self, plan: &Plan, propulsion: &Propulsion, index: usize, until: ArrayTime) {
+        sample(plan, propulsion, index, until, &mut self.found);
+        // A long history is folded into its hull as it comes.
+        if self.found.len() > MOST_SAMPLES {
+            self.found = hull(std::mem::take(&mut self.found));
+        }
+    }
+}
+
+/// States kept before they are folded into their hull.
+const MOST_SAMPLES: usize = 4096;
+
 #[derive(Clone, Debug)]
 struct Corner {
     acceleration_m_s2: Dd,
@@ -85,20 +116,27 @@ struct Corner {
 }
 
 impl Corners {
-    /// The corners of a plan up to a moment, the end of the plan or before it.
-    pub fn new(flight: &Flight, propulsion: &Propulsion, until: ArrayTime) -> Corners {
-        let mut found = Vec::new();
+    /// The corners of a plan of which the first phases have been looked through.
+    pub fn new(flight: &Flight, propulsion: &Propulsion, begun: &Sampled) -> Corners {
+        let mut sampled = begun.clone();
+        sampled.go_on(&flight.plan, propulsion, flight.plan.phases().len());
+        Corners::of(flight, sampled)
+    }
+
+    /// The corners of a plan up to a moment.
+    pub fn until(flight: &Flight, propulsion: &Propulsion, until: ArrayTime) -> Corners {
+        let mut sampled = Sampled::default();
         for (index, phase) in flight.plan.phases().iter().enumerate() {
             if index > 0 && phase.start >= until {
                 break;
             }
-            sample(flight, propulsion, index, until, &mut found);
-            // A long history is folded into its hull as it comes.
-            if found.len() > 4096 {
-                found = hull(found);
-            }
+            sampled.look(&flight.plan, propulsion, index, until);
         }
-        let mut corners = hull(found);
+        Corners::of(flight, sampled)
+    }
+
+    fn of(flight: &Flight, sampled: Sampled) -> Corners {
+        let mut corners = hull(sampled.found);
         for corner in &mut corners {
             corner.basis =
                 flight.compliance.basis(corner.acceleration_m_s2.to_f64(), corner.burned);
@@ -338,13 +376,13 @@ fn summit(corner: &Corner, sign: f64, value: impl Fn(ArrayTime) -> Dd) -> Dd {
 /// Adds the states of one phase, up to a moment, that may be corners: both ends, and samples
 /// of the curve between them.
 fn sample(
-    flight: &Flight,
+    plan: &Plan,
     propulsion: &Propulsion,
     index: usize,
     until: ArrayTime,
     found: &mut Vec<Corner>,
 ) {
-    let phase = &flight.plan.phases()[index];
+    let phase = &plan.phases()[index];
     let end = phase.end.min(until);
     let corner_at =
         |at: ArrayTime, drive: Drive, bracket: Option<[(ArrayTime, Drive); 2]>| Corner {
@@ -357,13 +395,13 @@ fn sample(
             bracket,
             basis: Basis::default(),
         };
-    let drive = |at| flight.drive(propulsion, Some(index), at);
+    let drive = |at| drive(plan, propulsion, Some(index), at);
     if !propulsion.is_falling() || slope(phase) == 0.0 {
         found.extend([phase.start, end].map(|at| corner_at(at, drive(at), None)));
         return;
     }
     let mut moments = vec![phase.start, end];
-    let spent = |at| flight.plan.velocity_spent_m_s(at).to_f64();
+    let spent = |at| plan.velocity_spent_m_s(at).to_f64();
     let length = end.attoseconds() - phase.start.attoseconds();
     let fall = (spent(end) - spent(phase.start)) * propulsion.inverse_speed_s_m();
     // A short piece of a curve has one extreme at most, and one sample finds it.

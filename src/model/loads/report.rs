@@ -1,7 +1,7 @@
 //! What spans several moments: peaks over the plan, margins, slack, ringing.
 
 use super::flight;
-use super::peaks::{Corners, ForcePeaks, Margin, Peak};
+use super::peaks::{ForcePeaks, Margin, Peak};
 use super::period::{Period, Ringing, lowest_period_of};
 use super::propellant::RunsDry;
 use super::slack::{self, Mend, Slack};
@@ -23,17 +23,6 @@ pub struct Strength {
     pub margin: Margin,
 }
 
-impl Thrust {
-    fn records(&self) -> &Records {
-        self.records.get_or_init(|| Records::of(&self.flight.plan))
-    }
-
-    /// The corners at which forces mean something.
-    fn forced_corners(&self) -> &Corners {
-        self.corners_with_propellant.as_ref().unwrap_or(&self.corners)
-    }
-}
-
 impl Loads {
     fn thrust(&self) -> Option<&Thrust> {
         match &self.course {
@@ -48,7 +37,7 @@ impl Loads {
     #[must_use]
     pub fn force_peaks(&self, gap: usize) -> Option<ForcePeaks> {
         match &self.course {
-            Course::Thrust(thrust) => thrust.forced_corners().forces(
+            Course::Thrust(thrust) => thrust.forced_corners(&self.propulsion).forces(
                 &thrust.flight,
                 &self.propulsion,
                 &thrust.balance,
@@ -110,7 +99,7 @@ impl Loads {
         let (phase, beyond) = if self.propulsion.is_falling() {
             let last = peak.phase?;
             let ends = |index: usize| {
-                let end = phases[index].end.min(thrust.masses_hold_until);
+                let end = phases[index].end.min(thrust.masses_hold_until(&self.propulsion));
                 [phases[index].start, end].into_iter().find(|at| drive(index, *at))
             };
             let found = (0..=last).find_map(|index| Some((index, ends(index)?)));
@@ -143,9 +132,11 @@ impl Loads {
     #[must_use]
     pub fn felt_acceleration_peak(&self, row: usize) -> Option<Peak> {
         match &self.course {
-            Course::Thrust(thrust) => {
-                thrust.corners.felt_acceleration(&thrust.flight, &self.relaxed_m, row)
-            }
+            Course::Thrust(thrust) => thrust.corners(&self.propulsion).felt_acceleration(
+                &thrust.flight,
+                &self.relaxed_m,
+                row,
+            ),
             Course::Standing(_) => {
                 let state = self.state(ArrayTime::ZERO);
                 Some(still(self.felt_acceleration_m_s2(&state, row).to_f64()))
@@ -172,9 +163,12 @@ impl Loads {
     #[must_use]
     pub fn position_extremes_m(&self, row: usize) -> [Dd; 2] {
         match &self.course {
-            Course::Thrust(thrust) => {
-                thrust.corners.positions(&thrust.flight, &self.propulsion, &self.relaxed_m, row)
-            }
+            Course::Thrust(thrust) => thrust.corners(&self.propulsion).positions(
+                &thrust.flight,
+                &self.propulsion,
+                &self.relaxed_m,
+                row,
+            ),
             Course::Standing(standing) => [standing.positions_m[row]; 2],
         }
     }
@@ -184,9 +178,11 @@ impl Loads {
     #[must_use]
     pub fn smallest_rate_minus_one(&self, row: usize) -> Option<Peak> {
         match &self.course {
-            Course::Thrust(thrust) => {
-                thrust.corners.smallest_rate_minus_one(&thrust.flight, &self.relaxed_m, row)
-            }
+            Course::Thrust(thrust) => thrust.corners(&self.propulsion).smallest_rate_minus_one(
+                &thrust.flight,
+                &self.relaxed_m,
+                row,
+            ),
             Course::Standing(standing) => {
                 let instant = self.state(ArrayTime::ZERO).instant;
                 Some(still(instant.rate_minus_one(standing.positions_m[row]).to_f64()))
@@ -201,7 +197,7 @@ impl Loads {
             (0..self.structure.members.len()).filter(|gap| self.structure.members[*gap].is_tether);
         match &self.course {
             Course::Thrust(thrust) => {
-                let until = thrust.masses_hold_until;
+                let until = thrust.masses_hold_until(&self.propulsion);
                 let parts = slack::thrust_sections(&thrust.flight, &self.propulsion, until);
                 tethers
                     .filter_map(|gap| {

@@ -42,8 +42,8 @@ pub struct LineShown<'a> {
 pub enum Nodes<'a> {
     /// A layout.
     Of(&'a Layout),
-    /// Two layouts, the first of which leads.
-    OfBoth(&'a Layout, &'a Layout),
+    /// Two lines, the first of which leads.
+    OfBoth(Vec<&'a str>, Vec<&'a str>),
     /// A list.
     Listed(&'a [String]),
     /// There are no rows of nodes.
@@ -62,12 +62,9 @@ impl Nodes<'_> {
         match self {
             Nodes::Of(layout) => Some(layout.nodes.iter().map(|node| node.name.as_str()).collect()),
             Nodes::OfBoth(first, second) => {
-                let mut names = Vec::with_capacity(first.nodes.len() + second.nodes.len());
-                names.extend(first.nodes.iter().map(|node| node.name.as_str()));
-                let known: std::collections::HashSet<&str> = names.iter().copied().collect();
-                let others = second.nodes.iter().map(|node| node.name.as_str());
-                names.extend(others.filter(|name| !known.contains(name)));
-                Some(names)
+                let known: std::collections::HashSet<&str> = first.iter().copied().collect();
+                let others = second.iter().filter(|name| !known.contains(*name));
+                Some(first.iter().chain(others).copied().collect())
             }
             Nodes::Listed(names) => Some(names.iter().map(String::as_str).collect()),
             Nodes::None => None,

@@ -6,7 +6,7 @@ use std::os::unix::fs::MetadataExt;
 use std::path::Path;
 use std::rc::Rc;
 use std::thread;
-use std::time::Duration;
+use std::time::{Duration, Instant};
 
 use clockspar::layout::Layout;
 use clockspar::model::array_time::ArrayTime;
@@ -18,17 +18,20 @@ use clockspar::table::content::replay_report;
 
 use super::choice::{Choice, LineShown, Nodes};
 use super::recordings::{LARGEST_PIPED, open, unopened};
-use super::replay::{empty_report, unread};
+use super::replay::{empty_report, layout_of, unread};
 use super::show::{Asked, Blocks};
 use crate::program::arguments::ReplayArguments;
 use crate::program::moments::Moments;
 use crate::program::output::Output;
 use crate::program::problem::Problem;
-use crate::program::recording_file::{RecordingSource, open_recording};
+use crate::program::recording_file::{LONGEST_PIPED_OPENING, RecordingSource, open_recording};
 use crate::program::{files, message};
 
 /// How long to wait before looking again.
 const LOOK_EVERY: Duration = Duration::from_millis(250);
+
+/// How long nothing may come before that is told, unless frames have come more slowly.
+const QUIET: Duration = Duration::from_secs(3);
 
 /// `clockspar replay FILE --follow`: prints every frame there is, then each one that is
 /// appended, until the closing line.
@@ -36,7 +39,7 @@ pub fn follow(arguments: &ReplayArguments) -> Result<u8, Problem> {
     let shown = files::shown_name(&arguments.file);
     let mut reader = open_when_begun(&arguments.file, &shown)?;
     let opening = reader.opening().clone();
-    let layout = reader.layout().ok();
+    let layout = layout_of(&reader, &shown);
     let output = Output::open(None, false)?;
     let asked = Asked {
         moments: &Moments::One(opening.from),
@@ -47,7 +50,7 @@ pub fn follow(arguments: &ReplayArguments) -> Result<u8, Problem> {
         },
     };
     let mut choice = Choice::of(&arguments.output, &asked)?;
-    choice.settle(empty_report(&opening, layout.as_ref(), opening.from))?;
+    choice.settle(empty_report(&opening, layout.as_ref(), "nothing has been read yet"))?;
     let choice = Rc::new(choice);
     let options = choice.text_options(&output);
     let printer = Printer {
@@ -56,6 +59,7 @@ pub fn follow(arguments: &ReplayArguments) -> Result<u8, Problem> {
         blocks: Blocks::new(arguments.output.form(), options, &choice, "--follow")?,
         events: Vec::new(),
         next_byte: 0,
+        last: None,
     };
     let mut ended = Ok(Ending::Closed);
     output.write(|out| {
@@ -74,6 +78,9 @@ pub fn follow(arguments: &ReplayArguments) -> Result<u8, Problem> {
         Ok(Ending::Replaced) => message(&format!(
             "warning: {shown}: the file of that name is another one now; shown up to there"
         )),
+        Ok(Ending::Removed) => message(&format!(
+            "warning: {shown}: the file has been removed while it was followed; shown up to there"
+        )),
         Err(Stopped::Reading(fault)) => return Err(unread(&shown, &fault)),
         Err(Stopped::Output(_)) => {}
     }
@@ -85,16 +92,51 @@ fn open_when_begun(path: &Path, shown: &str) -> Result<Reader<RecordingSource>, 
     if path == Path::new("-") {
         return open(path);
     }
+    let (mut pause, mut size) = (Pause::new(), None);
     loop {
-        match open_recording(path, LARGEST_PIPED) {
-            Ok(reader) => return Ok(reader),
-            Err(OpenFault::NoOpening { is_unfinished: true, .. })
-                if fs::metadata(path).is_ok_and(|metadata| metadata.is_file()) =>
-            {
-                thread::sleep(LOOK_EVERY);
+        let now = fs::metadata(path).ok().filter(fs::Metadata::is_file).map(|held| held.len());
+        // A first line is looked through again only when there is more of it.
+        if now.is_none() || now != size {
+            size = now;
+            pause.came();
+            match open_recording(path, LARGEST_PIPED) {
+                Ok(reader) => return Ok(reader),
+                Err(OpenFault::NoOpening { is_unfinished: true, .. })
+                    if now.is_some_and(|size| size <= LONGEST_PIPED_OPENING) => {}
+                Err(fault) => return Err(unopened(shown, &fault)),
             }
-            Err(fault) => return Err(unopened(shown, &fault)),
         }
+        if pause.is_to_be_told() {
+            message(&format!("{shown}: its first line has no end yet; still waiting"));
+        }
+        thread::sleep(LOOK_EVERY);
+    }
+}
+
+/// A time in which nothing comes.
+struct Pause {
+    since: Instant,
+    /// The longest one so far that came to an end: whoever writes seldom is no news.
+    longest: Duration,
+    is_told: bool,
+}
+
+impl Pause {
+    fn new() -> Pause {
+        Pause { since: Instant::now(), longest: Duration::ZERO, is_told: false }
+    }
+
+    /// Something has come.
+    fn came(&mut self) {
+        self.longest = self.longest.max(self.since.elapsed());
+        self.since = Instant::now();
+        self.is_told = false;
+    }
+
+    /// Whether it has become long, the first time this is asked.
+    fn is_to_be_told(&mut self) -> bool {
+        let is_long = self.since.elapsed() >= QUIET.max(2 * self.longest);
+        is_long && !std::mem::replace(&mut self.is_told, true)
     }
 }
 
@@ -106,6 +148,8 @@ enum Ending {
     Cut,
     /// Another file has taken its name.
     Replaced,
+    /// No file has its name any more.
+    Removed,
 }
 
 /// What stops it before.
@@ -120,14 +164,18 @@ fn watch(
     mut printer: Printer<'_>,
     out: &mut dyn Write,
 ) -> Result<Ending, Stopped> {
+    let shown = files::shown_name(path);
+    let mut pause = Pause::new();
     loop {
-        printer.print(reader, out)?;
+        if printer.print(reader, out)? {
+            pause.came();
+        }
         if matches!(reader.condition(), Condition::Whole(_)) {
             return Ok(Ending::Closed);
         }
         let RecordingSource::File(file) = reader.source() else { return Ok(Ending::Cut) };
         // Looked at before waiting, so that what was written last is still printed.
-        let is_replaced = !is_same_file(file, path);
+        let named = Named::of(file, path);
         thread::sleep(LOOK_EVERY);
         let is_changed =
             reader.refresh().map_err(|error| Stopped::Reading(ReadFault::Io(error)))?;
@@ -136,18 +184,42 @@ fn watch(
             let error = io::Error::other("the file has become shorter while it was followed");
             return Err(Stopped::Reading(ReadFault::Io(error)));
         }
-        if is_replaced && !is_changed {
-            return Ok(Ending::Replaced);
+        match named {
+            _ if is_changed => {}
+            Named::TheSame => {}
+            Named::Another => return Ok(Ending::Replaced),
+            Named::Nothing => return Ok(Ending::Removed),
+        }
+        if pause.is_to_be_told() {
+            let since = match printer.last {
+                Some(last) => format!("no new frame since {last} s"),
+                None => "no frame yet".to_owned(),
+            };
+            message(&format!("{shown}: {since}; still waiting"));
         }
     }
 }
 
-/// Whether a name still stands for an open file. A file that has been deleted while it is
-/// written is followed on.
-fn is_same_file(file: &fs::File, path: &Path) -> bool {
-    match (file.metadata(), fs::metadata(path)) {
-        (Ok(held), Ok(named)) => (held.dev(), held.ino()) == (named.dev(), named.ino()),
-        _ => true,
+/// What a name stands for.
+enum Named {
+    /// The open file.
+    TheSame,
+    /// Another file.
+    Another,
+    /// No file.
+    Nothing,
+}
+
+impl Named {
+    fn of(file: &fs::File, path: &Path) -> Named {
+        match (file.metadata(), fs::metadata(path)) {
+            (Ok(held), Ok(named)) if (held.dev(), held.ino()) != (named.dev(), named.ino()) => {
+                Named::Another
+            }
+            (_, Err(error)) if error.kind() == ErrorKind::NotFound => Named::Nothing,
+            // What cannot be told now may be told later.
+            _ => Named::TheSame,
+        }
     }
 }
 
@@ -160,14 +232,18 @@ struct Printer<'a> {
     events: Vec<Event>,
     /// Where the first line begins that has not been read.
     next_byte: u64,
+    /// The moment of the last frame printed.
+    last: Option<ArrayTime>,
 }
 
 impl Printer<'_> {
+    /// Prints what has been written since; says whether there was a frame.
     fn print(
         &mut self,
         reader: &Reader<RecordingSource>,
         out: &mut dyn Write,
-    ) -> Result<(), Stopped> {
+    ) -> Result<bool, Stopped> {
+        let before = self.last;
         let mut lines = reader.lines_at(self.next_byte);
         while let Some(line) = lines.next() {
             match line.map_err(Stopped::Reading)? {
@@ -176,11 +252,12 @@ impl Printer<'_> {
             }
             self.next_byte = lines.next_byte();
         }
-        Ok(())
+        Ok(self.last != before)
     }
 
     fn frame(&mut self, frame: &Frame, out: &mut dyn Write) -> io::Result<()> {
         let events = std::mem::take(&mut self.events);
+        self.last = Some(frame.at);
         let (opening, layout) = (self.opening, self.layout);
         let report = |_: ArrayTime| replay_report(opening, layout, frame.clone(), events.clone());
         self.blocks.append(frame.at, &report, out)

@@ -3,6 +3,7 @@
 mod choice;
 mod compare;
 mod following;
+mod frames;
 mod recordings;
 mod replay;
 mod show;

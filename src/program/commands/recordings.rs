@@ -7,9 +7,8 @@ use std::sync::atomic::{AtomicUsize, Ordering};
 
 use clockspar::layout::Layout;
 use clockspar::model::array_time::ArrayTime;
-use clockspar::run::Run;
 use clockspar::run::recording::{
-    self, Ended, Line, OpenFault, Opening, Reader, RecordFault, Recorder, Schedule, WriteFault,
+    self, Ended, OpenFault, Opening, Reader, RecordFault, Recorder, Schedule, WriteFault,
 };
 use clockspar::table::content::verify_report;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
@@ -146,27 +145,6 @@ pub fn unopened(shown: &str, fault: &OpenFault) -> Problem {
         "a recording begins with a readable opening line of a known format",
         remedy,
     )
-}
-
-/// The layout in a recording flown with its events, and the last moment recorded.
-pub fn run_of_recording(path: &Path) -> Result<(Run, Vec<ArrayTime>), Problem> {
-    let reader = open(path)?;
-    let shown = files::shown_name(path);
-    let mut run = run_of(reader.layout().map_err(Problem::told)?, &shown)?;
-    let mut found = Vec::new();
-    for line in reader.lines() {
-        match line {
-            Ok(Line::Frame(frame)) => found.push(frame.at),
-            Ok(Line::Event(event)) => run.apply(event).map_err(|fault| {
-                Problem::new(format_args!("{shown}: {fault}"), fault.rule(), fault.remedy())
-            })?,
-            Err(fault) => {
-                message(&format!("warning: {shown}: {fault}; compared up to there"));
-                break;
-            }
-        }
-    }
-    Ok((run, found))
 }
 
 /// `clockspar verify`.

@@ -1,21 +1,23 @@
 //! The command `replay`: a recording in the desk, as a table, or as it grows.
 
-use std::cell::RefCell;
+use std::cell::{Cell as Slot, RefCell};
 use std::io::IsTerminal;
 
 use clockspar::layout::Layout;
+use clockspar::layout::date::looks_like_a_date;
 use clockspar::model::array_time::ArrayTime;
 use clockspar::run::Event;
-use clockspar::run::recording::{Column, Condition, Frame, Line, Opening, ReadFault, Reader, Seek};
-use clockspar::table::Report;
-use clockspar::table::content::replay_report;
+use clockspar::run::recording::{Column, Condition, Frame, Line, Opening, ReadFault, Reader};
+use clockspar::table::content::{events_table, replay_report};
+use clockspar::table::{Cell, Measure, Report, Scalar};
 
 use super::choice::{LineShown, Nodes};
 use super::following;
+use super::frames::{FrameList, frame_in_force};
 use super::recordings::open;
 use super::show::{Asked, show};
-use crate::program::arguments::ReplayArguments;
-use crate::program::moments::Moments;
+use crate::program::arguments::{Form, MomentArguments, ReplayArguments};
+use crate::program::moments::{Moments, Span};
 use crate::program::problem::{Problem, STATUS_RULE};
 use crate::program::recording_file::RecordingSource;
 use crate::program::{desk, files, message, preferences};
@@ -43,42 +45,66 @@ fn replay_table(
     if let Condition::Cut(cut) = reader.condition() {
         message(&format!("warning: {shown}: {cut}; shown up to its last whole line"));
     }
-    let layout = reader.layout().ok();
+    let layout = layout_of(reader, &shown);
+    let opening = reader.opening();
     let asked = &arguments.moments;
-    let listed = if asked.at.is_some() || asked.every.is_some() {
-        let layout = layout.as_ref().ok_or_else(|| unreadable_layout(&shown))?;
-        FrameList::in_force(reader, &Moments::of(asked, layout)?, &shown)?
+    let frames = if asked.at.is_some() || asked.every.is_some() {
+        Frames::in_force(reader, asked, layout.as_ref(), &shown)?
     } else {
-        FrameList::all(reader, &shown)?
+        Frames::All(FrameList::of(reader, &shown)?)
     };
-    let damage = RefCell::new(listed.damage);
-    if listed.moments.count() == 0 {
-        message(&format!("{shown} holds no frame"));
-    } else {
-        let starts = listed.starts;
-        let moments = listed.moments;
-        let opening = reader.opening();
-        let report = |at: ArrayTime| -> Report<'_> {
-            let read = match place_of(&moments, at).and_then(|index| starts.get(index)) {
-                Some(start) => frame_at(reader, *start),
-                None => frame_with_events(reader, at),
-            };
-            match read {
-                Ok((frame, events)) => replay_report(opening, layout.as_ref(), frame, events),
-                Err(fault) => {
-                    // The line was good as far as it was looked at when it was listed: the
-                    // file has been changed, or a number in it is none. Its place stays
-                    // empty, and the status tells.
-                    damage.borrow_mut().get_or_insert(fault.to_string());
-                    empty_report(opening, layout.as_ref(), at)
-                }
+    let damage = RefCell::new(match &frames {
+        Frames::All(listed) => listed.damage.clone(),
+        Frames::InForce(_) => None,
+    });
+    // From here on nothing is shown: a frame before could not be read.
+    let stopped = Slot::new(None);
+    let report = |at: ArrayTime| -> Report<'_> {
+        if stopped.get().is_some_and(|from| at >= from) {
+            return empty_report(opening, layout.as_ref(), UNREADABLE);
+        }
+        let read = match &frames {
+            Frames::All(listed) if listed.moments.is_empty() => {
+                return without_frames(reader, layout.as_ref());
             }
+            Frames::All(listed) => listed.read(reader, at),
+            Frames::InForce(_) => frame_in_force(reader, at).and_then(|found| {
+                found.ok_or_else(|| ReadFault::Io(std::io::Error::other("the frame is gone")))
+            }),
         };
-        let epoch = layout.as_ref().and_then(|layout| layout.epoch.as_ref());
-        let line = LineShown { nodes: Nodes::Listed(&opening.nodes), epoch };
-        let asked = Asked { moments: &moments, options: asked, line };
-        show(&asked, &arguments.output, &report)?;
+        match read {
+            Ok((frame, events)) => {
+                let frame_at = frame.at;
+                let mut report = replay_report(opening, layout.as_ref(), frame, events);
+                if matches!(frames, Frames::InForce(_)) {
+                    say_what_was_asked(&mut report, at, frame_at);
+                }
+                report
+            }
+            Err(fault) => {
+                // The line was good as far as it was looked at when it was listed: the file
+                // has been changed, or what stands in it is no frame.
+                stopped.set(Some(at));
+                damage.borrow_mut().get_or_insert(fault.to_string());
+                empty_report(opening, layout.as_ref(), UNREADABLE)
+            }
+        }
+    };
+    let epoch = layout.as_ref().and_then(|layout| layout.epoch.as_ref());
+    let line = LineShown { nodes: Nodes::Listed(&opening.nodes), epoch };
+    let moments = match &frames {
+        Frames::All(listed) if listed.moments.is_empty() => Moments::One(opening.from),
+        Frames::All(listed) => Moments::Listed(listed.moments.as_slice().into()),
+        Frames::InForce(moments) => moments.clone(),
+    };
+    if let (Frames::InForce(Moments::One(at)), Form::Csv) = (&frames, arguments.output.form())
+        && let Ok(Some((frame, _))) = frame_in_force(reader, *at)
+        && frame.at != *at
+    {
+        // The rows have no place for it.
+        message(&what_was_asked(*at, frame.at));
     }
+    show(&Asked { moments: &moments, options: asked, line }, &arguments.output, &report)?;
     if let Some(damage) = damage.into_inner() {
         message(&format!("{shown}: {damage}; shown up to there"));
         return Ok(STATUS_RULE);
@@ -86,125 +112,150 @@ fn replay_table(
     Ok(0)
 }
 
-/// The frames that are to be shown.
-struct FrameList {
-    moments: Moments,
-    /// Where the lines of each frame begin, its events included; empty when they are looked
-    /// for by moment.
-    starts: Vec<u64>,
-    /// The first damage met.
-    damage: Option<String>,
+/// The layout in a recording, with a warning when it is not the one of its frames.
+pub fn layout_of(reader: &Reader<RecordingSource>, shown: &str) -> Option<Layout> {
+    match reader.layout() {
+        Ok(layout) => {
+            if let Some(what) = reader.opening().disagreement(&layout) {
+                message(&format!(
+                    "warning: {shown}: {what}; the frames are shown as they are recorded"
+                ));
+            }
+            Some(layout)
+        }
+        Err(_) => {
+            message(&format!(
+                "warning: {shown}: the layout in the recording has a fault; see `clockspar \
+                 verify`"
+            ));
+            None
+        }
+    }
 }
 
-impl FrameList {
-    /// All frames up to the first damage. Only the beginnings of lines are read, and of
-    /// each frame no more is kept than its moment and its place.
-    fn all(reader: &Reader<RecordingSource>, shown: &str) -> Result<FrameList, Problem> {
-        let (mut found, mut starts, mut damage) = (Vec::new(), Vec::new(), None);
-        let mut heads = reader.heads();
-        let mut start = heads.next_byte();
-        while let Some(head) = heads.next() {
-            match head {
-                Ok(head) if head.frame.is_some() => {
-                    found.push(head.at);
-                    starts.push(start);
-                    start = heads.next_byte();
-                }
-                Ok(_) => {}
-                Err(ReadFault::Damaged(found)) => {
-                    damage = Some(found.to_string());
-                    break;
-                }
-                Err(fault) => return Err(unread(shown, &fault)),
-            }
-        }
-        Ok(FrameList { moments: Moments::Listed(found.into()), starts, damage })
-    }
+/// The frames that are to be shown.
+enum Frames {
+    /// All of them.
+    All(FrameList),
+    /// Those in force at moments that are asked for.
+    InForce(Moments),
+}
 
-    /// Moments that are asked for are answered by the frame in force, the last one at or
-    /// before. It is found without reading what lies before it.
+impl Frames {
     fn in_force(
         reader: &Reader<RecordingSource>,
-        asked: &Moments,
+        asked: &MomentArguments,
+        layout: Option<&Layout>,
         shown: &str,
-    ) -> Result<FrameList, Problem> {
-        let mut found = Vec::new();
-        for at in asked.iter() {
-            let frame =
-                reader.frame(Seek::AtOrBefore, at).map_err(|fault| unread(shown, &fault))?;
-            let frame = frame.ok_or_else(|| {
-                Problem::new(
-                    format_args!("{shown}: no frame at or before {at} s"),
-                    "a moment of a recording is shown by the last frame at or before it",
-                    "ask for a later moment",
-                )
-            })?;
-            if found.last() != Some(&frame.at) {
-                found.push(frame.at);
-            }
+    ) -> Result<Frames, Problem> {
+        let span = span_of(reader, layout, asked, shown)?;
+        let moments = Moments::of_recording(asked, &span)?.unwrap_or(Moments::One(span.end));
+        // What comes after the first moment has a frame before it too.
+        let first = moments.nth(0);
+        if frame_in_force(reader, first).map_err(|fault| unread(shown, &fault))?.is_none() {
+            return Err(Problem::new(
+                format_args!("{shown}: no frame at or before {first} s"),
+                "a moment of a recording is shown by the last frame at or before it",
+                format_args!("ask for {} s or later", span.first),
+            ));
         }
-        let moments = match found.as_slice() {
-            [single] => Moments::One(*single),
-            _ => Moments::Listed(found.into()),
-        };
-        Ok(FrameList { moments, starts: Vec::new(), damage: None })
+        Ok(Frames::InForce(moments))
     }
 }
 
-/// The place of a moment among those listed.
-fn place_of(moments: &Moments, at: ArrayTime) -> Option<usize> {
-    match moments {
-        Moments::Listed(moments) => moments.binary_search(&at).ok(),
-        _ => None,
-    }
-}
-
-/// The first frame from a byte on, and the events before it.
-fn frame_at(
+/// What moments of a recording are counted and bounded by: its frames.
+fn span_of<'a>(
     reader: &Reader<RecordingSource>,
-    start: u64,
-) -> Result<(Frame, Vec<Event>), ReadFault> {
-    let mut events = Vec::new();
-    for line in reader.lines_at(start) {
-        match line? {
-            Line::Frame(frame) => return Ok((frame, events)),
-            Line::Event(event) => events.push(event),
-        }
+    layout: Option<&'a Layout>,
+    asked: &MomentArguments,
+    shown: &str,
+) -> Result<Span<'a>, Problem> {
+    check_dates(layout, asked, shown)?;
+    let is_end = |text: &Option<String>| text.as_ref().is_some_and(|text| text.trim() == "end");
+    let needs_end = [&asked.at, &asked.from, &asked.until].into_iter().any(is_end)
+        || (asked.every.is_some() && asked.until.is_none());
+    let mut end = reader.opening().from;
+    if needs_end {
+        let last = reader.last_frame().map_err(|fault| unread(shown, &fault))?;
+        end = last.map_or(end, |last| last.at);
     }
-    Err(gone())
+    let epoch = layout.and_then(|layout| layout.epoch.as_ref());
+    Ok(Span { epoch, first: reader.opening().from, end })
 }
 
-/// The frame of a moment, and the events since the frame before it.
-fn frame_with_events(
-    reader: &Reader<RecordingSource>,
-    at: ArrayTime,
-) -> Result<(Frame, Vec<Event>), ReadFault> {
-    let frame = reader.frame(Seek::AtOrBefore, at)?.ok_or_else(gone)?;
-    if reader.has_no_event() {
-        return Ok((frame, Vec::new()));
+/// A date is a moment of the layout in the recording.
+pub fn check_dates(
+    layout: Option<&Layout>,
+    asked: &MomentArguments,
+    shown: &str,
+) -> Result<(), Problem> {
+    let is_date = |text: &&String| looks_like_a_date(text.trim_matches(' '));
+    let asks_for_dates =
+        [&asked.at, &asked.from, &asked.until].into_iter().flatten().any(|text| is_date(&text));
+    if asks_for_dates && layout.is_none() {
+        return Err(Problem::new(
+            format_args!("{shown}: the layout in the recording has a fault"),
+            "a date is a moment of the layout",
+            "`clockspar verify` tells the fault; give the moment as a time since array time zero",
+        ));
     }
-    let before = reader.frame(Seek::Before, at).ok().flatten();
-    let since = before
-        .map_or(ArrayTime::from_attoseconds(-ArrayTime::LIMIT.attoseconds()), |before| {
-            ArrayTime::from_attoseconds(before.at.attoseconds() + 1)
-        });
-    let events = reader.events_between(since, at)?.collect::<Result<_, _>>()?;
-    Ok((frame, events))
+    Ok(())
 }
 
-fn gone() -> ReadFault {
-    ReadFault::Io(std::io::Error::other("a frame that was there is gone"))
+/// A frame answers for every moment up to the next one: what was asked for is said.
+fn say_what_was_asked(report: &mut Report<'_>, asked: ArrayTime, found: ArrayTime) {
+    report.scalars.push(Scalar {
+        key: "asked_at_s",
+        heading: "asked for",
+        measure: Measure::Time,
+        value: Cell::Time(asked),
+    });
+    if asked != found {
+        report.remarks.push(what_was_asked(asked, found));
+    }
 }
 
-/// The report of a frame that cannot be shown: it has no rows.
+fn what_was_asked(asked: ArrayTime, found: ArrayTime) -> String {
+    format!("asked for {asked} s; the last frame at or before it is {found} s")
+}
+
+/// The report of a recording that holds no frame: what else there is.
+fn without_frames<'a>(
+    reader: &'a Reader<RecordingSource>,
+    layout: Option<&'a Layout>,
+) -> Report<'a> {
+    const WHY: &str = "the recording holds no frame";
+    let mut report = empty_report(reader.opening(), layout, WHY);
+    let events = reader.lines().map_while(Result::ok).filter_map(|line| match line {
+        Line::Event(event) => Some(event),
+        Line::Frame(_) => None,
+    });
+    let mut events: Vec<Event> = events.take(MOST_EVENTS + 1).collect();
+    report.remarks.push("The recording holds no frame.".to_owned());
+    if events.len() > MOST_EVENTS {
+        events.truncate(MOST_EVENTS);
+        report.remarks.push(format!("Only the first {MOST_EVENTS} events are listed."));
+    }
+    report.tables.pop();
+    report.tables.push(events_table(events));
+    report
+}
+
+/// Events shown of a recording without a frame.
+const MOST_EVENTS: usize = 10_000;
+
+/// Why a frame that was listed is not shown.
+const UNREADABLE: &str = "the frame cannot be read";
+
+/// The report of no frame: it has no rows.
 pub fn empty_report<'a>(
     opening: &'a Opening,
     layout: Option<&'a Layout>,
-    at: ArrayTime,
+    why: &'static str,
 ) -> Report<'a> {
     let frame = Frame {
         index: 0,
-        at,
+        at: opening.from,
         reference_acceleration_m_s2: 0.0,
         rapidity: None,
         rate_minus_one: Column::default(),
@@ -212,27 +263,33 @@ pub fn empty_report<'a>(
         reading_s: opening.has_readings.then(Column::default),
     };
     let mut report = replay_report(opening, layout, frame, Vec::new());
-    report.reference_acceleration_m_s2 = Err("the frame cannot be read");
-    report.rapidity = Err("the frame cannot be read");
+    report.at = Err(why);
+    report.reference_acceleration_m_s2 = Err(why);
+    report.rapidity = Err(why);
     report.tables[0].rows = 0;
     report
 }
 
 /// What is told when a line cannot be read.
 pub fn unread(shown: &str, fault: &ReadFault) -> Problem {
+    let (rule, remedy) = match fault {
+        ReadFault::Damaged(damage) if damage.what.contains("CRC") => (
+            "every line agrees with its CRC",
+            "`clockspar verify` tells what else is wrong; take a copy that was not altered",
+        ),
+        ReadFault::Damaged(_) => (
+            "every line is a frame or an event in the form of a recording, with the columns of \
+             the opening",
+            "the line agrees with its CRC, so it was written like this: `clockspar verify` tells \
+             what else is wrong; make the recording again",
+        ),
+        ReadFault::Io(_) => (
+            "a recording stays readable while it is shown",
+            "look at the disk and at who else writes the file",
+        ),
+    };
     Problem {
         status: STATUS_RULE,
-        text: format!(
-            "{shown}: {fault}\nrule: every line agrees with its CRC\nremedy: `clockspar verify` \
-             tells what else is wrong; take a copy that was not altered"
-        ),
+        text: format!("{shown}: {fault}\nrule: {rule}\nremedy: {remedy}"),
     }
-}
-
-fn unreadable_layout(shown: &str) -> Problem {
-    Problem::new(
-        format_args!("{shown}: the layout in the recording has a fault"),
-        "`end` and dates are moments of the layout",
-        "`clockspar verify` tells the fault; replay without --at shows every frame",
-    )
 }

@@ -8,7 +8,7 @@ use std::time::{Duration, Instant};
 use clockspar::model::array_time::ArrayTime;
 use clockspar::table::{
     Head, Report, Series, TextOptions, TextWriter, write_csv, write_csv_series, write_json,
-    write_json_series, write_text_as, write_text_series_as,
+    write_json_series, write_text_as,
 };
 
 use super::choice::{Choice, LineShown};
@@ -59,7 +59,19 @@ pub fn show<'a>(
         Moments::Every { .. } | Moments::Listed(_) => {
             let series = series(moments, shown.clone());
             output.write(|out| match form {
-                Form::Text => write_text_series_as(&series, &options, shown.choice.text(), out),
+                Form::Text => {
+                    let mut writer = TextWriter::new(options).with(shown.choice.text());
+                    writer.head(&series.head, out)?;
+                    for index in 0..series.moments {
+                        let report = (series.report)(index);
+                        // Without a moment there is nothing more to show.
+                        if report.at.is_err() {
+                            break;
+                        }
+                        writer.moment(&report, out)?;
+                    }
+                    Ok(())
+                }
                 Form::Csv => write_csv_series(&series, 0, out),
                 Form::Json => write_json_series(&series, out),
             })
@@ -135,7 +147,7 @@ impl<'c> Blocks<'c> {
                 "use --as csv or --as text",
             ));
         }
-        let text = TextWriter::new(options).with(choice.text());
+        let text = TextWriter::new(options).with(choice.text()).compact();
         Ok(Blocks { form, choice, text, is_begun: false })
     }
 
@@ -152,6 +164,9 @@ impl<'c> Blocks<'c> {
             write_rows(&series(&Moments::One(at), shown), is_first, out)?;
         } else {
             let report = shown.report(at);
+            if report.at.is_err() {
+                return Ok(());
+            }
             if is_first {
                 self.text.head(&report.head(), out)?;
             }

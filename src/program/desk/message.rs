@@ -114,7 +114,7 @@ pub struct Reading {
     pub frame: Option<Frame>,
     /// Events up to the frame that were not known yet.
     pub events: Vec<Event>,
-    /// How the recording stands: `whole`, `cut` or `damaged`, and the particulars.
+    /// How the recording stands: `whole`, `cut`, `growing` or `damaged`, and the particulars.
     pub condition: (&'static str, String),
     /// A line that could not be read.
     pub damage: Option<String>,

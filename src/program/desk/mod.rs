@@ -51,7 +51,7 @@ use super::problem::{Problem, STATUS_RULE};
 use super::recording_file::RecordingSource;
 use super::terminal::{ColourChoice, Ended, FramePace, GlyphChoice, Incoming, Options, Terminal};
 
-use message::{Effect, Message, Wanted};
+use message::{Effect, Message, Notice, Wanted};
 use outside::Outside;
 use state::Desk;
 
@@ -68,9 +68,16 @@ pub fn run(layout: Layout, look: &Look) -> Result<u8, Problem> {
 
 /// Opens the desk on a recording; returns the exit status.
 pub fn replay(reader: Reader<RecordingSource>, name: &str, look: &Look) -> Result<u8, Problem> {
-    let run = run_of(reader.layout().map_err(Problem::told)?)?;
+    let layout = reader.layout().map_err(Problem::told)?;
+    let disagreement = reader.opening().disagreement(&layout);
+    let run = run_of(layout)?;
     let terminal = open_terminal(look)?;
-    let desk = Desk::on_recording(run, name.to_owned(), terminal.glyphs());
+    let mut desk = Desk::on_recording(run, name.to_owned(), terminal.glyphs());
+    desk.notice = disagreement.map(|what| {
+        let remedy =
+            "`clockspar verify` tells more; `clockspar replay --as text` shows the numbers";
+        Notice::refused(what, "frames are of the nodes of the layout in the recording", remedy)
+    });
     attend(desk, Outside::replaying(reader), terminal)
 }
 

@@ -29,6 +29,8 @@ pub struct Outside {
     /// When the first line was written that may not be on the disk yet.
     unsynced: Option<Instant>,
     reader: Option<Reader<RecordingSource>>,
+    /// When it was last seen to have grown.
+    grown: Option<Instant>,
 }
 
 impl Outside {
@@ -151,16 +153,23 @@ impl Outside {
     fn read(&mut self, wanted: Wanted, known: Option<ArrayTime>) -> Vec<Message> {
         let Some(reader) = &mut self.reader else { return Vec::new() };
         // It may be one that is still being written.
-        let _ = reader.refresh();
+        if reader.refresh().unwrap_or(false) {
+            self.grown = Some(Instant::now());
+        }
         let condition = match reader.condition() {
             Condition::Whole(_) => "whole",
+            Condition::Cut(_) if has_grown_lately(reader.source(), self.grown) => "growing",
             Condition::Cut(_) => "cut",
             Condition::Damaged(_) => "damaged",
         };
+        let mut particulars = reader.condition().to_string();
+        if condition == "growing" {
+            particulars = format!("{particulars}; it has grown lately and may still be written");
+        }
         let mut reading = Reading {
             frame: None,
             events: Vec::new(),
-            condition: (condition, reader.condition().to_string()),
+            condition: (condition, particulars),
             damage: None,
             last: reader.last_moment().ok().flatten(),
         };
@@ -199,6 +208,17 @@ impl Outside {
         }
         vec![Message::Read(Box::new(reading))]
     }
+}
+
+/// How long after it has grown a recording counts as one that is being written.
+const LATELY: Duration = Duration::from_secs(30);
+
+/// Whether a recording without its closing line may be one that is being written.
+fn has_grown_lately(source: &RecordingSource, grown: Option<Instant>) -> bool {
+    let RecordingSource::File(file) = source else { return false };
+    let changed = file.metadata().and_then(|metadata| metadata.modified()).ok();
+    let age = changed.and_then(|changed| changed.elapsed().ok());
+    grown.is_some_and(|grown| grown.elapsed() < LATELY) || age.is_some_and(|age| age < LATELY)
 }
 
 fn told(fault: &ReadFault) -> String {

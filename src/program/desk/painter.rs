@@ -75,7 +75,7 @@ pub const ASKED: Style = Style::new().fg(Color::Yellow).add_modifier(Modifier::B
 pub fn state_style(word: &str) -> Style {
     let colour = match word {
         "holding" | "whole" | "kept" => Color::Green,
-        "ramping" | "slack" | "stale" => Color::Yellow,
+        "ramping" | "slack" | "stale" | "growing" => Color::Yellow,
         "coasting" | "standing" => Color::Cyan,
         "what-if" => Color::Magenta,
         "recording" | "failed" | "damaged" | "cut" | "broken" | "over" => Color::Red,

@@ -1,6 +1,9 @@
 //! Replay: the desk over the frames and events of a recording.
 
-use clockspar::run::{Event, EventKind};
+use std::sync::Arc;
+
+use clockspar::model::array_time::ArrayTime;
+use clockspar::run::{Event, EventKind, Run};
 
 use super::message::{Effect, Notice, Reading, Wanted};
 use super::state::Desk;
@@ -11,7 +14,7 @@ impl Desk {
     /// last frame is shown the new last one.
     pub(super) fn look_again(&mut self, effects: &mut Vec<Effect>) {
         let Some(replay) = &self.replay else { return };
-        if replay.condition != "cut" || replay.is_reading {
+        if !matches!(replay.condition, "cut" | "growing") || replay.is_reading {
             return;
         }
         let is_at_end = replay.last.is_none_or(|last| self.at >= last);
@@ -31,7 +34,7 @@ impl Desk {
             (replay.condition, replay.particulars) = ("damaged", damage.clone());
             self.notice = Some(Notice::refused(
                 damage,
-                "a line that does not agree with its CRC is not shown",
+                "a damaged line is not shown",
                 "`clockspar verify` names every such line",
             ));
         }
@@ -43,30 +46,57 @@ impl Desk {
             return;
         };
         let Some(replay) = &mut self.replay else { return };
-        self.at = frame.at;
-        replay.known = replay.known.max(Some(frame.at));
+        let frame_at = frame.at;
+        self.at = frame_at;
+        replay.known = replay.known.max(Some(frame_at));
         replay.frame = Some(frame);
-        self.take_events(reading.events);
+        self.journal.extend(reading.events);
+        self.fly_to(frame_at);
     }
 
-    /// Events that the frame shown has come past.
-    fn take_events(&mut self, events: Vec<Event>) {
-        let Some(last) = events.last() else { return };
-        let others = events.len() - 1;
-        let mut told = format!("{}: {}", words::time(last.at), words::event(&last.kind));
-        if others > 0 {
-            told = format!("{told}, and {others} before it; 9 lists them");
+    /// The events of the recording up to the moment shown, in order.
+    pub(super) fn events_so_far(&self) -> &[Event] {
+        let due = self.journal.partition_point(|event| event.at <= self.at);
+        &self.journal[..due]
+    }
+
+    /// Flies the run with the events up to a frame and none of those after it: what is shown
+    /// of a moment does not depend on what has been visited.
+    fn fly_to(&mut self, at: ArrayTime) {
+        let due = self.journal.partition_point(|event| event.at <= at);
+        let Some(replay) = &mut self.replay else { return };
+        let flown = std::mem::replace(&mut replay.flown, due);
+        if due == flown {
+            return;
         }
-        self.notice = Some(Notice::said(told));
-        for event in events {
+        let is_back = due < flown;
+        if is_back && let Ok(run) = Run::new(Arc::clone(self.run.layout())) {
+            self.run = run;
+        }
+        for event in &self.journal[if is_back { 0 } else { flown }..due] {
             // Notes do not act, and those of the layout are part of the run as it is.
             if !matches!(event.kind, EventKind::Note { .. })
                 && let Err(fault) = self.run.apply(event.clone())
+                && !is_back
             {
                 self.notice = Some(fault.into());
             }
-            self.journal.push(event);
+        }
+        if !is_back && let Some(last) = self.journal[..due].last() {
+            let others = due - flown - 1;
+            let mut told = format!("{}: {}", words::time(last.at), words::event(&last.kind));
+            if others > 0 {
+                told = format!("{told}, and {others} before it; 9 lists them");
+            }
+            if self.notice.as_ref().is_none_or(|notice| notice.refusal.is_none()) {
+                self.notice = Some(Notice::said(told));
+            }
         }
         self.run_has_changed();
+        // The last release, whatever came after it and however this moment was come to.
+        self.reach_of = self.run.events().iter().rev().find_map(|event| match &event.kind {
+            EventKind::Release { node } => self.run.row(node).ok(),
+            _ => None,
+        });
     }
 }

@@ -140,7 +140,7 @@ pub struct Replay {
     pub path: String,
     /// The frame that is shown.
     pub frame: Option<recording::Frame>,
-    /// `whole`, `cut` or `damaged`.
+    /// `whole`, `cut`, `growing` or `damaged`.
     pub condition: &'static str,
     /// The particulars.
     pub particulars: String,
@@ -148,6 +148,8 @@ pub struct Replay {
     pub is_damaged: bool,
     /// The moment up to which events are known.
     pub known: Option<ArrayTime>,
+    /// How many of them the run shown has flown with.
+    pub flown: usize,
     /// The moment of its last line.
     pub last: Option<ArrayTime>,
     /// A frame has been asked for and is not there yet.
@@ -239,6 +241,7 @@ impl Desk {
             particulars: String::new(),
             is_damaged: false,
             known: None,
+            flown: 0,
             last: None,
             is_reading: false,
         });

@@ -167,7 +167,7 @@ impl Check {
                 return None;
             }
         };
-        if let Some(what) = mismatch(opening, &layout) {
+        if let Some(what) = opening.disagreement(&layout) {
             self.differs(1, what.to_owned());
             return None;
         }
@@ -331,22 +331,21 @@ impl Check {
     }
 }
 
-/// What the opening says otherwise than the layout in it.
-fn mismatch(opening: &Opening, layout: &Layout) -> Option<&'static str> {
-    let names = layout.nodes.iter().map(|node| &node.name);
-    if opening.layout != layout.name {
-        Some("the layout in the recording has another name")
-    } else if !names.eq(&opening.nodes) {
-        Some("the nodes are not those of the layout in the recording")
-    } else if !opening.files.iter().map(|file| &file.name).eq(layout
-        .source
-        .files
-        .iter()
-        .map(|file| &file.name))
-    {
-        Some("the files are not those the layout in the recording names")
-    } else {
-        None
+impl Opening {
+    /// What the opening says otherwise than the layout in it.
+    #[must_use]
+    pub fn disagreement(&self, layout: &Layout) -> Option<&'static str> {
+        let names = layout.nodes.iter().map(|node| &node.name);
+        let files = layout.source.files.iter().map(|file| &file.name);
+        if self.layout != layout.name {
+            Some("the layout in the recording has another name")
+        } else if !names.eq(&self.nodes) {
+            Some("the nodes are not those of the layout in the recording")
+        } else if !files.eq(self.files.iter().map(|file| &file.name)) {
+            Some("the files are not those the layout in the recording names")
+        } else {
+            None
+        }
     }
 }
 

@@ -1,4 +1,4 @@
-//! `compare`: what differs between two lines at a moment.
+//! `compare`: what differs between two lines at a moment, as predicted or as recorded.
 
 use std::borrow::Cow;
 use std::collections::HashMap;
@@ -6,7 +6,8 @@ use std::collections::HashMap;
 use super::{column, head, predicted_reading_s};
 use crate::layout::Layout;
 use crate::model::dd::Dd;
-use crate::run::State;
+use crate::run::recording::{self, Frame};
+use crate::run::{Aboard, State};
 use crate::table::{Cell, Column, Measure, Report, Scalar, Table};
 
 /// One number that differs, or that only one side has.
@@ -101,7 +102,94 @@ fn push(
     }
 }
 
-/// The compare report: the head is that of the first line, the second stands in scalars.
+/// One side of a comparison in which something was recorded: the numbers of a frame, or
+/// what is predicted at its moment.
+#[derive(Clone, Debug)]
+pub struct RecordedSide<'a> {
+    /// Name of the layout.
+    pub layout: &'a str,
+    /// Its revision.
+    pub revision: Option<&'a str>,
+    /// SHA-256 of its bytes.
+    pub layout_sha256: &'a str,
+    /// Names of the nodes, in the order of the columns.
+    pub nodes: &'a [&'a str],
+    /// The numbers.
+    pub frame: Frame,
+}
+
+/// What a recording holds of a state: every number as a double.
+#[must_use]
+pub fn predicted_frame(state: &State<'_>) -> Frame {
+    let finite = |value: Dd| Some(value.to_f64()).filter(|value| value.is_finite());
+    let column = |pick: fn(&Aboard) -> Dd| {
+        state.nodes().map(|node| node.aboard().and_then(|aboard| finite(pick(&aboard)))).collect()
+    };
+    Frame {
+        index: 0,
+        at: state.at(),
+        reference_acceleration_m_s2: state.reference_acceleration_m_s2(),
+        rapidity: state.rapidity(),
+        rate_minus_one: column(|aboard| aboard.rate_minus_one),
+        clock_offset_s: column(|aboard| aboard.clock_offset_s),
+        reading_s: None,
+    }
+}
+
+/// Everything that differs between two frames, each number as it is recorded: in the order
+/// of [`differences`]. Readings are compared where both sides have them.
+#[must_use]
+pub fn recorded_differences(a: &RecordedSide<'_>, b: &RecordedSide<'_>) -> Vec<Difference> {
+    let mut found = Vec::new();
+    let (first, second) = (&a.frame, &b.frame);
+    for (quantity, a, b) in [
+        (
+            "reference_acceleration_m_s2",
+            Some(first.reference_acceleration_m_s2),
+            Some(second.reference_acceleration_m_s2),
+        ),
+        ("rapidity", first.rapidity, second.rapidity),
+    ] {
+        push(&mut found, None, quantity, a.map(Dd::new), b.map(Dd::new));
+    }
+    let columns = [
+        ("rate_minus_one", Some(&first.rate_minus_one), Some(&second.rate_minus_one)),
+        ("clock_offset_s", Some(&first.clock_offset_s), Some(&second.clock_offset_s)),
+        ("reading_s", first.reading_s.as_ref(), second.reading_s.as_ref()),
+    ];
+    let mut push_row = |name: &str, ours: Option<usize>, theirs: Option<usize>| {
+        for (quantity, first, second) in columns {
+            let (Some(first), Some(second)) = (first, second) else { continue };
+            let pick = |column: &recording::Column, row: Option<usize>| {
+                row.and_then(|row| column.get(row)).map(Dd::new)
+            };
+            let (a, b) = (pick(first, ours), pick(second, theirs));
+            push(&mut found, Some(name), quantity, a, b);
+        }
+    };
+    if a.nodes == b.nodes {
+        for (row, name) in a.nodes.iter().enumerate() {
+            push_row(name, Some(row), Some(row));
+        }
+        return found;
+    }
+    let rows = |nodes: &[&'_ str]| -> HashMap<String, usize> {
+        nodes.iter().enumerate().map(|(row, name)| ((*name).to_owned(), row)).collect()
+    };
+    let (ours, theirs) = (rows(a.nodes), rows(b.nodes));
+    for (row, name) in a.nodes.iter().enumerate() {
+        push_row(name, Some(row), theirs.get(*name).copied());
+    }
+    for (row, name) in b.nodes.iter().enumerate() {
+        if !ours.contains_key(*name) {
+            push_row(name, None, Some(row));
+        }
+    }
+    found
+}
+
+/// The compare report of two lines that are predicted: the head is that of the first, the
+/// second stands in scalars.
 #[must_use]
 pub fn compare_report<'a>(
     a: &State<'a>,
@@ -109,17 +197,71 @@ pub fn compare_report<'a>(
     differences: Vec<Difference>,
 ) -> Report<'a> {
     let mut report = head(a, "compare");
-    let other: &'a Layout = b.run().layout();
-    let word = |key, heading, text: &'a str| Scalar {
+    let (ours, other): (&'a Layout, &'a Layout) = (a.run().layout(), b.run().layout());
+    let is_alike = differences.is_empty();
+    let second = (other.name.as_str(), other.revision.as_deref(), other.source.sha256.as_str());
+    fill_in(&mut report, second, "as predicted at this moment".to_owned(), differences);
+    if is_alike {
+        report.remarks.push("At this moment no number differs by a single bit.".to_owned());
+    }
+    let phases = |state: &State<'a>| state.run().plan().map(crate::model::plan::Plan::phases);
+    if phases(a) != phases(b) {
+        report
+            .remarks
+            .push("Their thrust plans differ: what differs changes over time.".to_owned());
+    } else if ours.source.sha256 != other.source.sha256 {
+        report.remarks.push("The layouts are not the same text.".to_owned());
+    }
+    report
+}
+
+/// The compare report of a moment at which something was recorded; `compared` says what is
+/// compared with what.
+#[must_use]
+pub fn compare_recorded_report<'a>(
+    a: &RecordedSide<'a>,
+    b: &RecordedSide<'a>,
+    compared: String,
+) -> Report<'a> {
+    let differences = recorded_differences(a, b);
+    let mut report = Report {
+        command: "compare",
+        schema_version: 1,
+        layout: a.layout,
+        revision: a.revision,
+        layout_sha256: a.layout_sha256,
+        at: Ok(a.frame.at),
+        reference_acceleration_m_s2: Ok(a.frame.reference_acceleration_m_s2),
+        rapidity: a.frame.rapidity.ok_or(super::NO_RAPIDITY),
+        scalars: Vec::new(),
+        tables: Vec::new(),
+        remarks: Vec::new(),
+    };
+    fill_in(&mut report, (b.layout, b.revision, b.layout_sha256), compared, differences);
+    if a.layout_sha256 != b.layout_sha256 {
+        report.remarks.push("The layouts are not the same text.".to_owned());
+    }
+    report
+}
+
+/// The scalars and the table of a comparison with another layout: its name, its revision
+/// and its hash.
+fn fill_in<'a>(
+    report: &mut Report<'a>,
+    (name, revision, sha256): (&'a str, Option<&'a str>, &'a str),
+    compared: String,
+    differences: Vec<Difference>,
+) {
+    let word = |key, heading, text: Cow<'a, str>| Scalar {
         key,
         heading,
         measure: Measure::Word,
-        value: Cell::Text(Cow::Borrowed(text)),
+        value: Cell::Text(text),
     };
     report.scalars = vec![
-        word("other_layout", "compared with", &other.name),
-        match &other.revision {
-            Some(revision) => word("other_revision", "its revision", revision),
+        word("other_layout", "compared with", name.into()),
+        match revision {
+            Some(revision) => word("other_revision", "its revision", revision.into()),
             None => Scalar {
                 key: "other_revision",
                 heading: "its revision",
@@ -127,7 +269,8 @@ pub fn compare_report<'a>(
                 value: Cell::Absent("the layout states no revision".into()),
             },
         },
-        word("other_layout_sha256", "its hash", &other.source.sha256),
+        word("other_layout_sha256", "its hash", sha256.into()),
+        word("compared", "compared", compared.into()),
         Scalar {
             key: "count",
             heading: "differences",
@@ -135,9 +278,6 @@ pub fn compare_report<'a>(
             value: Cell::Integer(i64::try_from(differences.len()).unwrap_or(i64::MAX)),
         },
     ];
-    if differences.is_empty() {
-        report.remarks.push("No number differs by a single bit.".to_owned());
-    }
     report.tables.push(Table {
         name: "differences",
         columns: COLUMNS.to_vec(),
@@ -158,9 +298,8 @@ pub fn compare_report<'a>(
             }
             cells.push(match (a, b) {
                 (Some(a), Some(b)) => super::number(*b - *a),
-                _ => Cell::Absent("one side has no such node".into()),
+                _ => Cell::Absent("one side has no such number".into()),
             });
         }),
     });
-    report
 }

@@ -22,7 +22,10 @@ use super::{Cell, Column, Measure, Report};
 pub use check::{
     Check, JudgedOver, Judgement, Rule, RuleState, Subject, Summary, check_report, judge,
 };
-pub use compare::{Difference, compare_report, differences};
+pub use compare::{
+    Difference, RecordedSide, compare_recorded_report, compare_report, differences,
+    predicted_frame, recorded_differences,
+};
 pub use links::{has_short_summary, link_way, links_report};
 pub use loads::{
     CAUTION, JudgedLoads, LoadJudgement, LoadRule, LoadSubject, LoadsOverPlan, SpanLoad,

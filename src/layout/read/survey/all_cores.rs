@@ -62,7 +62,7 @@ impl Survey<'_> {
                 Node::default()
             },
         );
-        cores::threads()?.install(|| nodes.par_extend(read));
+        cores::pool()?.install(|| nodes.par_extend(read));
         if is_odd.into_inner() {
             return None;
         }
@@ -226,7 +226,7 @@ mod tests {
                 }
                 None => {
                     let is_plain = !text.contains('"') && !lines.contains(&"h,,,");
-                    let may_be_read = faults == 0 && is_plain && cores::threads().is_some();
+                    let may_be_read = faults == 0 && is_plain && cores::pool().is_some();
                     prop_assert!(!may_be_read, "{text:?} should be read");
                 }
             }

@@ -159,7 +159,7 @@ fn a_recording_still_being_written_shows_its_new_frames() {
     let reader = crate::program::recording_file::open_recording(&path, 0).expect("a recording");
     let (mut desk, mut outside) = open_reader(reader);
     let text = drawn(&desk, 80, 24);
-    assert!(text.contains("cut recording run.jsonl, frame 0"), "{text}");
+    assert!(text.contains("growing recording run.jsonl, frame 0"), "{text}");
     key(&mut desk, &mut outside, KeyCode::Right);
     assert_eq!(desk.at, ArrayTime::ZERO);
     std::fs::write(&path, &bytes[..feeds[feeds.len() - 3]]).expect("written");
@@ -175,4 +175,30 @@ fn a_recording_still_being_written_shows_its_new_frames() {
     assert_eq!(desk.at, ArrayTime::from_seconds(3_600));
     assert!(last_but_one < desk.at);
     assert!(drawn(&desk, 80, 24).contains("whole recording run.jsonl, frame 6"));
+}
+
+#[test]
+fn what_is_shown_of_a_moment_does_not_depend_on_what_was_visited() {
+    let (mut visited, mut outside) = open(recording());
+    do_sentence(&mut visited, &mut outside, "to 1 h");
+    // Backwards, so that every event is met again from behind.
+    for minutes in [50, 30, 20, 10, 0, 40, 10, 60] {
+        let sentence = format!("to {minutes} min");
+        do_sentence(&mut visited, &mut outside, &sentence);
+        let (mut fresh, mut others) = open(recording());
+        do_sentence(&mut fresh, &mut others, &sentence);
+        for view in ['1', '2', '4', '5', '9'] {
+            for (desk, outside) in [(&mut visited, &mut outside), (&mut fresh, &mut others)] {
+                key(desk, outside, KeyCode::Esc);
+                key(desk, outside, KeyCode::Char(view));
+                desk.notice = None;
+            }
+            assert_eq!(drawn(&visited, 80, 24), drawn(&fresh, 80, 24), "{minutes} min, {view}");
+        }
+    }
+    do_sentence(&mut visited, &mut outside, "to 0 s");
+    key(&mut visited, &mut outside, KeyCode::Esc);
+    key(&mut visited, &mut outside, KeyCode::Char('9'));
+    let text = drawn(&visited, 80, 24);
+    assert!(!text.contains("pod1") && !text.contains("to come"), "{text}");
 }

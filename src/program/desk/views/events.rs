@@ -25,13 +25,16 @@ const COLUMNS: [Column; 4] = [
 ];
 
 fn table(desk: &Desk) -> Option<Table<'_>> {
+    // Of a recording only what has come to pass: how much of the rest is known depends on
+    // what has been visited.
+    let events = if desk.replay.is_some() { desk.events_so_far() } else { &desk.journal };
     Some(Table {
         name: "events",
         columns: COLUMNS.to_vec(),
-        rows: desk.journal.len(),
+        rows: events.len(),
         marked: None,
         fill: Box::new(move |row, cells| {
-            let Some(event) = desk.journal.get(row) else { return };
+            let Some(event) = events.get(row) else { return };
             let when = if event.at <= desk.at { "past" } else { "to come" };
             cells.push(Cell::Text(words::time(event.at).into()));
             cells.push(Cell::Time(event.at));
