@@ -1,5 +1,6 @@
 //! `loads`: forces, stretch, propellant; peaks over the plan, and the rules they break.
 
+mod advice;
 mod history;
 mod rules;
 mod span;
