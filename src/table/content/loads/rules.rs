@@ -296,6 +296,12 @@ impl JudgedLoads {
         self.len() == 0
     }
 
+    /// Whether an engine runs dry, so that forces are judged only up to then.
+    #[must_use]
+    pub fn runs_dry(&self) -> bool {
+        !self.needs.is_empty()
+    }
+
     /// The lowest axial period, s; `None` when nothing can swing, and at one moment.
     #[must_use]
     pub fn period_s(&self) -> Option<f64> {
