@@ -261,3 +261,16 @@ fn a_gradient_that_bends_too_much_is_warned_of_where_results_are_shown() {
         assert!(found.contains("4.4e-18 at `top`"), "{command}: {found}");
     }
 }
+
+#[test]
+fn a_line_that_runs_dry_says_up_to_when_its_forces_count() {
+    let text = LINE.replace("\"400 kg\"", "\"50 kg\"");
+    for command in ["loads", "check"] {
+        let (status, stdout, _) = seen(&with_input(&[command, "-"], &text));
+        assert_eq!(status, 1, "{command}");
+        let found = told(&stdout, "Peaks of forces, strength and slack are those up to the moment");
+        assert!(found.contains("the first engine runs dry"), "{command}: {found}");
+        let (_, stdout, _) = seen(&with_input(&[command, "-"], LINE));
+        assert!(!stdout.contains("runs dry:"), "{command}");
+    }
+}

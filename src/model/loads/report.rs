@@ -173,6 +173,48 @@ impl Loads {
         }
     }
 
+    /// Whether the thrust of the plan never changes its direction; so too on a standing line.
+    #[must_use]
+    pub fn is_one_way(&self) -> bool {
+        match &self.course {
+            Course::Thrust(thrust) => {
+                let range = &thrust.stretch.range;
+                range.lowest_m_s2 == 0.0 || range.highest_m_s2 == 0.0
+            }
+            Course::Standing(_) => true,
+        }
+    }
+
+    /// Between which positions a row stands under any thrust between the extremes of the plan
+    /// and none, whatever has burned by then of what the plan burns, m.
+    #[must_use]
+    pub fn position_bounds_m(&self, row: usize) -> [Dd; 2] {
+        let relaxed_m = self.relaxed_m[row];
+        let mut bounds = [relaxed_m; 2];
+        match &self.course {
+            Course::Standing(standing) => return [standing.positions_m[row]; 2],
+            Course::Thrust(thrust) if thrust.flight.compliance.terms() == 0 => {}
+            Course::Thrust(thrust) => {
+                let compliance = &thrust.flight.compliance;
+                let range = &thrust.stretch.range;
+                for acceleration_m_s2 in [range.lowest_m_s2, range.highest_m_s2] {
+                    for burned in [0.0, range.most_burned] {
+                        let values = compliance.values(acceleration_m_s2, burned);
+                        let moved = Dd::new(acceleration_m_s2) * compliance.sum(row, &values);
+                        let here = relaxed_m + moved;
+                        if here > bounds[0] {
+                            bounds[0] = here;
+                        }
+                        if here < bounds[1] {
+                            bounds[1] = here;
+                        }
+                    }
+                }
+            }
+        }
+        bounds
+    }
+
     /// The smallest `N − 1` of a row over the plan, at its loaded position: what the horizon
     /// rule judges. `None` for a plan without phases.
     #[must_use]

@@ -89,6 +89,11 @@ impl Placed {
         Placed { loads: Some(loads), loaded_m: Some(loaded_m), judged: Some(judged), ..none }
     }
 
+    /// Whether an engine runs dry, so that forces are judged only up to then.
+    pub fn runs_dry(&self) -> bool {
+        self.judged.as_ref().is_some_and(JudgedLoads::runs_dry)
+    }
+
     /// Number of judgements of rules on loads.
     pub fn rows(&self) -> usize {
         self.judged.as_ref().map_or(self.unjudged.len(), JudgedLoads::len)

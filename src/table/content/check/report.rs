@@ -5,6 +5,7 @@ use std::sync::Arc;
 
 use super::{Check, JudgedOver, Judgement, RuleState, phases};
 use crate::layout::{Course, Layout};
+use crate::table::content::loads::DRY;
 use crate::table::content::{NO_RAPIDITY, OVERFLOW, column};
 use crate::table::{Cell, Column, Measure, Report, Scalar, Table};
 
@@ -43,6 +44,9 @@ pub fn check_report<'a>(check: Arc<Check<'a>>) -> Report<'a> {
              its noise, under the held design acceleration or else the strongest thrust."
                 .to_owned(),
         );
+    }
+    if check.span() == JudgedOver::Plan && check.placed.runs_dry() {
+        report.remarks.push(DRY.to_owned());
     }
     let judged = Arc::clone(&check);
     report.tables.push(Table {

@@ -1,5 +1,6 @@
 //! `loads`: forces, stretch, propellant; peaks over the plan, and the rules they break.
 
+mod advice;
 mod history;
 mod rules;
 mod span;
@@ -27,6 +28,10 @@ pub const CAUTION: &str = "these figures are for planning. They leave out buckli
 
 /// Where a change of thrust stands that is in no phase.
 pub(super) const CUT: &str = "the thrust is cut at the end of the plan";
+
+/// What is said beside forces of a line that has not the propellant for its plan.
+pub(super) const DRY: &str = "Peaks of forces, strength and slack are those up to the moment at \
+    which the first engine runs dry: from then on the masses are not those of the line.";
 
 /// Sentences about rules of one kind; the rest is counted.
 const MOST_TOLD: usize = 3;
@@ -183,6 +188,9 @@ fn remarks(state: &State<'_>, over_plan: &LoadsOverPlan) -> Vec<String> {
     let loads = &over_plan.loads;
     let mut remarks = broken_remarks(layout, over_plan);
     remarks.extend(absurd_mass_ratio(state, loads));
+    if over_plan.judged.runs_dry() {
+        remarks.push(DRY.to_owned());
+    }
     if loads.structure().members.iter().enumerate().any(|(gap, member)| {
         !member.is_tether && loads.force_peaks(gap).is_some_and(|peaks| peaks.smallest.value < 0.0)
     }) {
