@@ -63,7 +63,12 @@ fn survey_of(criterion: &mut Criterion, title: &str, table: &str) {
     let megabytes = table.len() as f64 / 1e6;
     let by_script = script(&["survey", &file.path().to_string_lossy()]);
     let what = format!("survey read, {title}");
-    beside(&what, "MB/s", megabytes / best(|| _ = black_box(read())), by_script.map(|s| megabytes / s));
+    beside(
+        &what,
+        "MB/s",
+        megabytes / best(|| _ = black_box(read())),
+        by_script.map(|s| megabytes / s),
+    );
 }
 
 fn line_of(nodes: usize) -> Run {
