@@ -349,7 +349,7 @@ fn a_recording_is_replayed_stepped_and_named_when_damaged() {
         session
     };
     let mut session = replay();
-    session.wait_text("whole recording");
+    session.wait_text("closed recording");
     session.send(keys::RIGHT.repeat(2));
     session.wait_text("full thrust");
     session.wait_text("20 min = 1200 s");

@@ -7,7 +7,7 @@ use clockspar::run::{Event, EventKind, Run, RunFault};
 
 use super::launch_chart::Frame;
 use super::message::{Effect, Notice, Wanted};
-use super::saving;
+use super::saving::{self, AsFlown};
 use super::sentences::{Sentence, Shift};
 use super::state::{Cursor, Desk, Question, Recording};
 use super::views::VIEWS;
@@ -153,10 +153,12 @@ impl Desk {
         self.question = Some(Question { text, then: sentence });
     }
 
-    /// The recording that a change ends: one that has already gone past its moment.
+    /// The recording that a change ends: one that has already gone past its moment, though
+    /// the frame it has come to may not be written yet.
     fn recording_ended_by(&self, change: &Change) -> Option<&Recording> {
         let recording = self.recording.as_ref()?;
-        recording.written.filter(|written| *written >= change.from).map(|_| recording)
+        let is_past = recording.reached > change.from || recording.written >= Some(change.from);
+        is_past.then_some(recording)
     }
 
     /// The run as a sentence would have it; the run itself stays as it is.
@@ -279,7 +281,7 @@ impl Desk {
 
     fn save_as(&mut self, path: String, effects: &mut Vec<Effect>) {
         match saving::layout_as_flown(self) {
-            Ok(text) => effects.push(Effect::Save { path, text }),
+            Ok(AsFlown { text, left_out }) => effects.push(Effect::Save { path, text, left_out }),
             Err(notice) => self.notice = Some(notice),
         }
     }

@@ -82,6 +82,8 @@ pub enum Effect {
         path: String,
         /// The text.
         text: String,
+        /// How many changes it does not hold.
+        left_out: usize,
     },
     /// Read a frame of the recording that is replayed.
     Read {
@@ -114,7 +116,7 @@ pub struct Reading {
     pub frame: Option<Frame>,
     /// Events up to the frame that were not known yet.
     pub events: Vec<Event>,
-    /// How the recording stands: `whole`, `cut`, `growing` or `damaged`, and the particulars.
+    /// How the recording stands: `closed`, `cut`, `growing` or `damaged`, and the particulars.
     pub condition: (&'static str, String),
     /// A line that could not be read.
     pub damage: Option<String>,

@@ -16,6 +16,7 @@ use crate::program::whole_file::CreateFault;
 
 use super::message::{Effect, Made, Message, Notice, Reading, Wanted};
 use super::state::Desk;
+use super::words;
 
 /// How long a line waits at most to be on the disk.
 const SYNC_AFTER: Duration = Duration::from_secs(1);
@@ -53,7 +54,9 @@ impl Outside {
             Effect::NextRecording { after } => self.open_next(desk, &after),
             Effect::Frame { at } => self.write(&desk.run, at),
             Effect::CloseRecording { run, last } => self.close(&run, last),
-            Effect::Save { path, text } => vec![Message::Told(save(&path, &text))],
+            Effect::Save { path, text, left_out } => {
+                vec![Message::Told(save(&path, &text, left_out))]
+            }
             Effect::Read { wanted, known } => self.read(wanted, known),
         }
     }
@@ -157,12 +160,20 @@ impl Outside {
             self.grown = Some(Instant::now());
         }
         let condition = match reader.condition() {
-            Condition::Whole(_) => "whole",
+            // Whether it is whole besides, only reading all of it would tell.
+            Condition::Whole(_) => "closed",
             Condition::Cut(_) if has_grown_lately(reader.source(), self.grown) => "growing",
             Condition::Cut(_) => "cut",
             Condition::Damaged(_) => "damaged",
         };
-        let mut particulars = reader.condition().to_string();
+        let mut particulars = match reader.condition() {
+            Condition::Whole(closing) => format!(
+                "the recording is closed: {}, {}; `clockspar verify` reads every line",
+                words::count(closing.frames, "frame"),
+                words::count(closing.events, "event")
+            ),
+            other => other.to_string(),
+        };
         if condition == "growing" {
             particulars = format!("{particulars}; it has grown lately and may still be written");
         }
@@ -270,11 +281,15 @@ fn not_written(path: &str, fault: &WriteFault) -> Notice {
 }
 
 /// Writes a layout to a new file, whole or not at all.
-fn save(path: &str, text: &str) -> Notice {
+fn save(path: &str, text: &str, left_out: usize) -> Notice {
     let saved = Output::open(Some(Path::new(path)), false)
         .and_then(|output| output.write(|out| std::io::Write::write_all(out, text.as_bytes())));
     match saved {
-        Ok(()) => Notice::said(format!("saved as {path}")),
+        Ok(()) if left_out == 0 => Notice::said(format!("saved as {path}")),
+        Ok(()) => Notice::said(format!(
+            "saved as {path} without {}: a layout cannot hold moves, releases and failed links",
+            words::count(left_out as u64, "change")
+        )),
         Err(problem) => {
             let mut lines = problem.text.lines();
             let what = lines.next().unwrap_or("it could not be saved").to_owned();

@@ -74,7 +74,7 @@ pub const ASKED: Style = Style::new().fg(Color::Yellow).add_modifier(Modifier::B
 /// The colour of a state; the word itself says everything.
 pub fn state_style(word: &str) -> Style {
     let colour = match word {
-        "holding" | "whole" | "kept" => Color::Green,
+        "closed" | "holding" | "kept" => Color::Green,
         "ramping" | "slack" | "stale" | "growing" => Color::Yellow,
         "coasting" | "standing" => Color::Cyan,
         "what-if" => Color::Magenta,

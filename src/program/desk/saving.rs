@@ -16,9 +16,19 @@ use clockspar::run::{Event, EventKind};
 use super::message::Notice;
 use super::sentences::end_of_plan;
 use super::state::Desk;
+use super::words;
+
+/// The layout as flown.
+#[derive(Debug)]
+pub struct AsFlown {
+    /// Its text.
+    pub text: String,
+    /// How many changes a layout cannot hold.
+    pub left_out: usize,
+}
 
 /// The text of the layout as flown.
-pub fn layout_as_flown(desk: &Desk) -> Result<String, Notice> {
+pub fn layout_as_flown(desk: &Desk) -> Result<AsFlown, Notice> {
     let layout = desk.layout();
     let source = &layout.source.text;
     let events = if desk.replay.is_some() { &desk.journal[..] } else { desk.run.events() };
@@ -30,17 +40,17 @@ pub fn layout_as_flown(desk: &Desk) -> Result<String, Notice> {
         .iter()
         .filter(|event| matches!(event.kind, EventKind::Note { .. }) && !is_filed(event, layout))
         .collect();
-    let left_out = events
+    let left_out: Vec<&Event> = events
         .iter()
         .filter(|event| !is_thrust(event) && !matches!(event.kind, EventKind::Note { .. }))
-        .count();
+        .collect();
     let mut text = if is_flown_otherwise { without_plan(source) } else { source.clone() };
     let mut added = String::new();
-    if left_out > 0 {
-        let _ = writeln!(
-            added,
-            "# Flown with {left_out} moves, releases or failed links, which a layout cannot hold."
-        );
+    if !left_out.is_empty() {
+        added.push_str("# What was flown and a layout cannot hold:\n");
+    }
+    for event in &left_out {
+        let _ = writeln!(added, "# {}: {}", words::moment(event.at), words::event(&event.kind));
     }
     if is_flown_otherwise {
         push_phases(&mut added, desk);
@@ -56,7 +66,7 @@ pub fn layout_as_flown(desk: &Desk) -> Result<String, Notice> {
         text.push_str(&added);
     }
     check(&text, layout)?;
-    Ok(text)
+    Ok(AsFlown { text, left_out: left_out.len() })
 }
 
 fn is_filed(event: &Event, layout: &Layout) -> bool {

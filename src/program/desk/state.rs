@@ -140,7 +140,7 @@ pub struct Replay {
     pub path: String,
     /// The frame that is shown.
     pub frame: Option<recording::Frame>,
-    /// `whole`, `cut`, `growing` or `damaged`.
+    /// `closed`, `cut`, `growing` or `damaged`.
     pub condition: &'static str,
     /// The particulars.
     pub particulars: String,

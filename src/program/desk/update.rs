@@ -77,14 +77,21 @@ impl Desk {
         if key.modifiers.intersects(KeyModifiers::CONTROL | KeyModifiers::ALT) {
             return;
         }
-        if self.focus == Focus::Entry {
-            self.type_text(sign.encode_utf8(&mut [0; 4]));
-        } else if let Some(place) = VIEWS.iter().position(|view| view.digit == sign) {
+        let view = VIEWS.iter().position(|view| view.digit == sign);
+        // No sentence begins with a digit.
+        if let Some(place) = view.filter(|_| self.focus != Focus::Entry || self.is_at_rest()) {
             self.choose_view(place);
+        } else if self.focus == Focus::Entry {
+            self.type_text(sign.encode_utf8(&mut [0; 4]));
         } else if !sign.is_whitespace() {
             self.focus_on(Focus::Entry);
             self.type_text(sign.encode_utf8(&mut [0; 4]));
         }
+    }
+
+    /// Whether the entry has nothing in it and waits for no answer.
+    fn is_at_rest(&self) -> bool {
+        self.entry.text().is_empty() && self.question.is_none()
     }
 
     fn paste(&mut self, text: &str) {
@@ -172,6 +179,8 @@ impl Desk {
                     self.find_completion();
                 }
             }
+            Action::CursorLeft if self.is_at_rest() => self.step_by_key(false, effects),
+            Action::CursorRight if self.is_at_rest() => self.step_by_key(true, effects),
             Action::CursorLeft => self.edit(|entry| entry.left()),
             Action::CursorRight => self.edit(|entry| entry.right()),
             Action::CursorStart => self.edit(|entry| entry.start()),

@@ -217,6 +217,23 @@ fn changing_what_is_recorded_asks_and_goes_on_in_a_new_file() {
     assert_eq!(desk.at, seconds(40));
 }
 
+/// The last frame counts although it is not written yet: looking back does not lose it.
+#[test]
+fn a_frame_that_waits_is_not_lost_to_a_change_before_it() {
+    let mut desk = desk();
+    for sentence in ["to 0 s", "record to run.jsonl", "to 10 s", "to 30 s", "to 20 s"] {
+        say(&mut desk, sentence);
+    }
+    assert_eq!(say(&mut desk, "note looked back").len(), 0);
+    let question = desk.question.as_ref().expect("a question").text.clone();
+    assert!(question.contains("closes run.jsonl"), "{question}");
+    let effects = say(&mut desk, "yes");
+    let [Effect::CloseRecording { last, .. }, Effect::NextRecording { .. }] = &effects[..] else {
+        panic!("{effects:?}")
+    };
+    assert_eq!(*last, Some(seconds(30)));
+}
+
 #[test]
 fn a_change_takes_later_ones_back_and_a_note_does_not() {
     let mut desk = desk();
@@ -366,13 +383,13 @@ fn typing_is_completed() {
 #[test]
 fn a_layout_is_saved_as_it_was_flown() {
     let mut desk = desk();
-    assert_eq!(layout_as_flown(&desk).as_deref(), Ok(BUILT_IN_TEXT));
+    assert_eq!(layout_as_flown(&desk).expect("a layout").text, BUILT_IN_TEXT);
     say(&mut desk, "note all \"quiet\" \\ so far");
-    let text = layout_as_flown(&desk).expect("a layout");
+    let text = layout_as_flown(&desk).expect("a layout").text;
     assert!(text.starts_with(BUILT_IN_TEXT), "only the note is added");
     say(&mut desk, "ramp 0.01 g0 for 10 min");
     say(&mut desk, "to 30 h");
-    let text = layout_as_flown(&desk).expect("a layout");
+    let text = layout_as_flown(&desk).expect("a layout").text;
     let again = desk_on(&text, &UNICODE);
     let flown = desk.run.plan().expect("a plan");
     let read = again.run.plan().expect("a plan");
@@ -386,6 +403,30 @@ fn a_layout_is_saved_as_it_was_flown() {
     assert!(notes.iter().any(|note| note.text == "all \"quiet\" \\ so far"), "{notes:?}");
     assert_eq!(again.layout().spans.len(), desk.layout().spans.len());
     assert!(text.contains("u_scale = 2e-4"), "what belongs to the whole plan stays");
+    say(&mut desk, "move pod3 to -15.2 m");
+    say(&mut desk, "release pod8");
+    let saved = layout_as_flown(&desk).expect("a layout");
+    assert_eq!(saved.left_out, 2);
+    for part in ["# What was flown and a layout cannot hold:\n", "move pod3", "release pod8"] {
+        assert!(saved.text.contains(part), "{part}: {}", saved.text);
+    }
+}
+
+#[test]
+fn keys_act_on_an_entry_with_nothing_in_it_as_on_the_table() {
+    let mut desk = desk();
+    say(&mut desk, "release tug");
+    assert!(desk.notice.as_ref().is_some_and(|notice| notice.refusal.is_some()));
+    assert_eq!(desk.focus, Focus::Entry);
+    let before = desk.at;
+    press(&mut desk, KeyCode::Right);
+    assert!(desk.at > before, "Right steps");
+    press(&mut desk, KeyCode::Char('5'));
+    assert_eq!((desk.view().name, desk.entry.text()), ("loads", ""));
+    for sign in "to 5".chars() {
+        press(&mut desk, KeyCode::Char(sign));
+    }
+    assert_eq!(desk.entry.text(), "to 5", "a digit in a sentence is one");
 }
 
 #[test]

@@ -61,7 +61,7 @@ fn do_sentence(desk: &mut Desk, outside: &mut Outside, sentence: &str) {
 fn frames_are_stepped_and_events_told_as_they_pass() {
     let (mut desk, mut outside) = open(recording());
     let text = drawn(&desk, 80, 24);
-    assert!(text.contains("whole recording run.jsonl, frame 0"), "{text}");
+    assert!(text.contains("closed recording run.jsonl, frame 0"), "{text}");
     assert!(text.contains("tether paid out"), "{text}");
     key(&mut desk, &mut outside, KeyCode::Right);
     assert_eq!(desk.at, ArrayTime::from_seconds(600));
@@ -174,7 +174,7 @@ fn a_recording_still_being_written_shows_its_new_frames() {
     tell(&mut desk, &mut outside, Message::Resized);
     assert_eq!(desk.at, ArrayTime::from_seconds(3_600));
     assert!(last_but_one < desk.at);
-    assert!(drawn(&desk, 80, 24).contains("whole recording run.jsonl, frame 6"));
+    assert!(drawn(&desk, 80, 24).contains("closed recording run.jsonl, frame 6"));
 }
 
 #[test]

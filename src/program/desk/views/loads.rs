@@ -111,10 +111,18 @@ fn push_span(
 
 /// The caution under everything that shows forces, as short as the room asks for.
 fn caution(desk: &Desk) -> Option<String> {
-    let text = if desk.size.0 >= 80 {
-        "Caution: for planning; dynamics left out; qualified safety staff must review."
-    } else {
-        "Caution: for planning; qualified staff must review."
+    let is_changed =
+        desk.state().is_some_and(|state| (0..state.rows()).any(|row| state.is_changed(row)));
+    // The weight of a node that was moved or released stays where the layout puts it.
+    let text = match (desk.size.0 >= 80, is_changed) {
+        (true, false) => {
+            "Caution: for planning; dynamics left out; qualified safety staff must review."
+        }
+        (true, true) => {
+            "Caution: for planning; weights as filed; qualified safety staff must review."
+        }
+        (false, false) => "Caution: for planning; qualified staff must review.",
+        (false, true) => "Caution: weights as filed; qualified staff must review.",
     };
     Some(text.to_owned())
 }
