@@ -16,7 +16,7 @@ mod trial;
 use std::borrow::Cow;
 use std::sync::{Arc, OnceLock};
 
-use crate::layout::Layout;
+use crate::layout::{Course, Layout};
 use crate::model::array_time::ArrayTime;
 use crate::model::loads::Loads;
 use crate::table::Measure;
@@ -182,6 +182,7 @@ pub struct Judgement {
 }
 
 const NO_PHASE: &str = "outside every phase of a plan";
+const NO_PLAN: &str = "a line that stands has no plan";
 const KEPT: &str = "the rule is kept";
 const ONE_MOMENT: &str = "one moment is judged";
 
@@ -479,9 +480,12 @@ impl<'a> Check<'a> {
             (Rule::ClockOffset, _) => {
                 self.limits.offset_widen(self.layout, &self.placed, judgement)
             }
-            (Rule::Strength, _) => {
-                Some("less thrust, less mass beyond the span, or a stronger one".to_owned())
-            }
+            (Rule::Strength, _) => Some(match self.layout.course {
+                Course::Thrust(_) => {
+                    "less thrust, less mass beyond the span, or a stronger one".to_owned()
+                }
+                Course::Standing(_) => "less mass beyond the span, or a stronger one".to_owned(),
+            }),
             (Rule::Ramp, _) => Some("a longer ramp, or a stiffer line".to_owned()),
             (Rule::Propellant, _) => {
                 Some("more propellant, a higher exhaust speed, or less thrust".to_owned())

@@ -45,10 +45,15 @@ pub fn offsets_report(state: State<'_>, pairs: bool) -> Report<'_> {
         let motion = loads.neglected_motion(state.at());
         let rows = (0..state.rows()).filter(|row| state.node(*row).aboard().is_some());
         let most_s = rows.map(|row| loads.neglected_of_row_s(&motion, row)).fold(0.0, f64::max);
-        report.remarks.push(format!(
-            "Clock offsets are those of the loaded positions; the motion of stretching nodes \
-             along the line slows their clocks further, by {most_s:.1e} s at most up to now."
-        ));
+        let further = if most_s == 0.0 {
+            "stretching has not moved any up to now, which would slow its clock further".to_owned()
+        } else {
+            format!(
+                "the motion of stretching nodes along the line slows their clocks further, by \
+                 {most_s:.1e} s at most up to now"
+            )
+        };
+        report.remarks.push(format!("Clock offsets are those of the loaded positions; {further}."));
         report.tables.push(stretch_table(state));
     }
     report

@@ -3,7 +3,7 @@
 use std::borrow::Cow;
 use std::sync::OnceLock;
 
-use super::{JudgedOver, Judgement, KEPT, NO_PHASE, ONE_MOMENT, Rule, RuleState, Subject};
+use super::{JudgedOver, Judgement, KEPT, NO_PHASE, NO_PLAN, ONE_MOMENT, Rule, RuleState, Subject};
 use crate::layout::{Course, Layout, Node};
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::C2_M2_S2;
@@ -78,7 +78,11 @@ impl<'a> Line<'a> {
     }
 
     pub(super) fn phase(&self, extreme: &Extreme) -> Result<usize, &'static str> {
-        if self.phases { Ok(extreme.phase) } else { Err(NO_PHASE) }
+        match (self.phases, self.thrust) {
+            (true, _) => Ok(extreme.phase),
+            (false, true) => Err(NO_PHASE),
+            (false, false) => Err(NO_PLAN),
+        }
     }
 
     /// The strongest thrust either way, the earlier of equals.
@@ -202,6 +206,9 @@ impl<'a> Line<'a> {
                 "less thrust, or `{name}` nearer to the reference: \
                  {limit} at the reference would bring it to the horizon"
             );
+        }
+        if !self.thrust {
+            return format!("nothing needs to: gravity brings `{name}` no nearer to a horizon");
         }
         format!("nothing needs to: no thrust of the plan brings `{name}` nearer to a horizon")
     }

@@ -5,7 +5,7 @@
 
 use super::placed::Placed;
 use super::trial::Trial;
-use super::{JudgedOver, Judgement, KEPT, NO_PHASE, ONE_MOMENT, Rule, RuleState, Subject};
+use super::{JudgedOver, Judgement, KEPT, NO_PHASE, NO_PLAN, ONE_MOMENT, Rule, RuleState, Subject};
 use crate::layout::{Course, Layout, Standing};
 use crate::model::array_time::ArrayTime;
 use crate::model::constants::{C2_M2_S2, SPEED_OF_LIGHT_M_S};
@@ -98,7 +98,7 @@ impl<'a> Parting<'a> {
         let (value, phase, at) = match self {
             Parting::Plan { peak, .. } => (parted(peak), peak.phase, peak.at),
             Parting::Moment(reached, instant) => (offset_s(instant), reached.phase, reached.at),
-            Parting::Standing(instant) => (offset_s(instant), Err(NO_PHASE), STANDING_FOR),
+            Parting::Standing(instant) => (offset_s(instant), Err(NO_PLAN), STANDING_FOR),
         };
         let value = value.abs().to_f64();
         let kept = value <= limit_s;

@@ -7,8 +7,8 @@
 use std::sync::Arc;
 
 use super::line::Line;
-use super::{JudgedOver, Judgement, KEPT, NO_PHASE, ONE_MOMENT, Rule, RuleState, Subject};
-use crate::layout::{Layout, SpanKind};
+use super::{JudgedOver, Judgement, KEPT, NO_PHASE, NO_PLAN, ONE_MOMENT, Rule, RuleState, Subject};
+use crate::layout::{Course, Layout, SpanKind};
 use crate::model::array_time::ArrayTime;
 use crate::model::dd::Dd;
 use crate::model::horizon::Extreme;
@@ -199,7 +199,11 @@ fn judgement(layout: &Layout, judged: LoadJudgement, is_moment: bool) -> Judgeme
     if let Some(why) = judged.not_judged {
         return Judgement::not_judged(rule, subject, why);
     }
-    let outside = if rule == Rule::Ramp { CUT } else { NO_PHASE };
+    let outside = match (&layout.course, rule) {
+        (Course::Standing(_), _) => NO_PLAN,
+        (_, Rule::Ramp) => CUT,
+        _ => NO_PHASE,
+    };
     let broken_from = match judged.from {
         Some((_, from)) => Ok(from),
         None if !judged.is_broken => Err(KEPT),

@@ -9,7 +9,7 @@
 use super::line::{Line, why};
 use super::placed::Placed;
 use super::trial::Trial;
-use super::{JudgedOver, Judgement, KEPT, NO_PHASE, Rule, RuleState, Subject};
+use super::{JudgedOver, Judgement, KEPT, Rule, RuleState, Subject};
 use crate::layout::{Course, Layout, Positions};
 use crate::model::array_time::ArrayTime;
 use crate::model::clocks::{Comparison, LinkNoise, Noise, RESOLVING_FACTOR, Resolved, Unresolved};
@@ -51,8 +51,7 @@ impl Resolving {
                 (strongest.acceleration_m_s2, line.phase(&strongest), Ok(strongest.at))
             }
             (JudgedOver::Moment(at), _) => {
-                let phase = if thrust { line.phase(&strongest) } else { Err(NO_PHASE) };
-                (strongest.acceleration_m_s2, phase, Ok(at))
+                (strongest.acceleration_m_s2, line.phase(&strongest), Ok(at))
             }
         };
         Resolving {
