@@ -90,6 +90,16 @@ impl Desk {
     }
 
     fn show_against(&mut self, row: Option<usize>) {
+        let is_gone =
+            |row: usize| self.state().is_some_and(|state| state.node(row).aboard().is_none());
+        if let Some(row) = row.filter(|row| is_gone(*row)) {
+            self.notice = Some(Notice::refused(
+                format!("`{}` is released", self.layout().nodes[row].name),
+                "rates and clock offsets are against a node of the line",
+                "the name of another node",
+            ));
+            return;
+        }
         self.against = row.filter(|row| *row != self.layout().reference);
         let name = match self.against {
             Some(row) => format!("`{}`", self.layout().nodes[row].name),
@@ -129,9 +139,15 @@ impl Desk {
 
     /// Applies a change, unless it has to be asked about.
     fn change_or_ask(&mut self, sentence: Sentence, effects: &mut Vec<Effect>) {
+        let was_running = self.running.is_some();
         self.stop_running(effects);
         let change = match self.changed_run(&sentence) {
-            Ok(change) => change,
+            Ok(mut change) => {
+                if was_running {
+                    change.told.push_str("; running has stopped");
+                }
+                change
+            }
             Err(notice) => {
                 self.notice = Some(notice);
                 return;

@@ -99,7 +99,7 @@ pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) -> Opti
         painter.put(area, area.right().saturating_sub(1), below, painter.glyphs.more_below, STRONG);
     }
     if table.rows == 0 {
-        painter.put(area, body.x, area.y + HEADINGS, "nothing yet", QUIET);
+        painter.put(area, body.x, area.y + HEADINGS, nothing_in(desk), QUIET);
     }
     let chosen = rows.iter().position(|row| *row == cursor.row)?;
     match cells.get(chosen)?.last()? {
@@ -110,6 +110,18 @@ pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) -> Opti
             is_cut.then(|| text.clone().into_owned())
         }
         _ => None,
+    }
+}
+
+/// What to say of a table without a row.
+fn nothing_in(desk: &Desk) -> &'static str {
+    let layout = desk.layout();
+    match desk.view().name {
+        "links" if layout.nodes.len() < 2 => "a link takes two nodes",
+        "reach" if layout.stations.is_empty() && desk.reach_of.is_none() => {
+            "the layout has no [[station]]"
+        }
+        _ => "nothing yet",
     }
 }
 

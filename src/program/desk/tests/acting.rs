@@ -413,6 +413,36 @@ fn a_layout_is_saved_as_it_was_flown() {
 }
 
 #[test]
+fn what_cannot_be_shown_is_said_in_its_place() {
+    let mut desk = desk();
+    say(&mut desk, "release pod8");
+    say(&mut desk, "to 6 h");
+    say(&mut desk, "against pod8");
+    assert!(told(&desk).contains("`pod8` is released"), "{}", told(&desk));
+    assert_eq!(desk.against, None);
+    let alone =
+        "name = \"t\"\n[[node]]\nname = \"hub\"\n[[phase]]\nhold = \"1 m/s^2\"\nfor = \"1 d\"\n";
+    let mut desk = desk_on(alone, &UNICODE);
+    for (key, said) in [('3', "a link takes two nodes"), ('4', "the layout has no [[station]]")] {
+        press(&mut desk, KeyCode::Char(key));
+        let text = drawn(&desk, 80, 24);
+        assert!(text.contains(said), "{text}");
+    }
+}
+
+#[test]
+fn a_change_while_running_says_that_it_stops() {
+    let mut desk = desk();
+    table_keys(&mut desk);
+    press(&mut desk, KeyCode::Tab);
+    press(&mut desk, KeyCode::Enter);
+    assert!(desk.running.is_some());
+    say(&mut desk, "note on the way");
+    assert!(desk.running.is_none());
+    assert!(told(&desk).contains("running has stopped"), "{}", told(&desk));
+}
+
+#[test]
 fn keys_act_on_an_entry_with_nothing_in_it_as_on_the_table() {
     let mut desk = desk();
     say(&mut desk, "release tug");
