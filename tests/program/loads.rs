@@ -274,3 +274,11 @@ fn a_line_that_runs_dry_says_up_to_when_its_forces_count() {
         assert!(!stdout.contains("runs dry:"), "{command}");
     }
 }
+
+#[test]
+fn stretch_says_that_heat_is_in_it() {
+    let (_, stdout, _) = seen(&clockspar(&["loads", "layouts/braking-run.toml"]));
+    let said = "The stretch of a span is that of force and temperature together.";
+    assert!(told(&stdout, "The stretch of a span").contains(said), "{stdout}");
+    assert!(!seen(&with_input(&["loads", "-"], LINE)).1.contains(said));
+}

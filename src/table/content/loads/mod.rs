@@ -9,7 +9,7 @@ use std::borrow::Cow;
 use std::sync::Arc;
 
 use super::{OVERFLOW, RELEASED, column, head, number};
-use crate::layout::{Course, Layout};
+use crate::layout::{Course, Layout, Span};
 use crate::model::array_time::ArrayTime;
 use crate::model::loads::{GradientWarning, Loads, Peak};
 use crate::run::State;
@@ -195,6 +195,11 @@ fn remarks(state: &State<'_>, over_plan: &LoadsOverPlan) -> Vec<String> {
         !member.is_tether && loads.force_peaks(gap).is_some_and(|peaks| peaks.smallest.value < 0.0)
     }) {
         remarks.push("A boom is pushed: buckling is not checked.".to_owned());
+    }
+    let is_heated =
+        |span: &Span| span.thermal_expansion_per_k != 0.0 && span.temperature_change_k != 0.0;
+    if layout.spans.iter().any(is_heated) {
+        remarks.push("The stretch of a span is that of force and temperature together.".to_owned());
     }
     if (0..state.rows()).any(|row| state.is_changed(row)) {
         remarks.push(
