@@ -146,7 +146,8 @@ pub enum Form {
 #[derive(Clone, Debug, Default, Args)]
 pub struct MomentArguments {
     /// Moment: a duration, `end`, or a date when the layout has an epoch
-    /// [default: the middle of the first hold]
+    /// [default: the middle of the first hold, else 0; 1 d of a line that stands; `check` takes
+    /// the whole plan, recordings every frame]
     #[arg(long, value_name = "MOMENT", allow_hyphen_values = true, conflicts_with_all = ["from", "until", "every"])]
     pub at: Option<String>,
     /// First moment of a table over time [default: 0]

@@ -254,6 +254,9 @@ impl Seen {
         debug_assert!(compared <= moments);
         match (self.differing.get(), self.first.get()) {
             (0, _) | (_, None) => format!("no recorded number differs by a single bit at {frames}"),
+            (1, Some(first)) if compared == 1 => {
+                format!("numbers differ at the frame compared, that at {first} s")
+            }
             (differing, Some(first)) => {
                 format!("numbers differ at {differing} of {frames}, first at {first} s")
             }
