@@ -23,6 +23,25 @@ fn every_example_prints_what_is_shown() {
     assert!(shown >= 3, "the README shows {shown} examples");
 }
 
+/// The layout that explains the keys is one that keeps its rules.
+#[test]
+fn the_layout_shown_keeps_its_rules() {
+    let root = Path::new(env!("CARGO_MANIFEST_DIR"));
+    let text = fs::read_to_string(root.join("README.md")).expect("README.md");
+    let blocks = text.split("```toml\n").skip(1).filter_map(|block| block.split("```").next());
+    let layout = blocks.into_iter().find(|block| block.contains("[[node]]")).expect("a layout");
+    let folder = tempfile::tempdir().expect("a folder");
+    fs::write(folder.path().join("shown.toml"), layout).expect("written");
+    let output = Command::new(env!("CARGO_BIN_EXE_clockspar"))
+        .args(["check", "shown.toml"])
+        .current_dir(folder.path())
+        .output()
+        .expect("the program ends");
+    assert_eq!(output.status.code(), Some(0), "{}", String::from_utf8_lossy(&output.stderr));
+    let told = String::from_utf8(output.stdout).expect("text");
+    assert!(told.contains("broken: 0") && told.contains("not judged: 0"), "{told}");
+}
+
 fn check(root: &Path, arguments: &str, expected: &str) {
     let script = format!("\"$CLOCKSPAR\" {arguments} 2>&1");
     let output = Command::new("sh")

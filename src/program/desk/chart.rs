@@ -47,13 +47,21 @@ pub fn draw(desk: &Desk, geometry: &Geometry, painter: &mut Painter<'_>) {
 /// The part of array time that is drawn: the plan, and the present moment in a hold for
 /// good that has gone on past what is drawn at first.
 fn shown_until(desk: &Desk) -> ArrayTime {
-    let mut until = desk.plan_shape.until.max(ArrayTime::from_attoseconds(1));
+    let mut until = desk.plan_shape.until.max(SHORTEST);
     while desk.plan_shape.is_open && until < desk.at {
         // Twice as much at a time, so that the chart stands still in between.
         let doubled = until.attoseconds().saturating_mul(2);
         until = ArrayTime::from_attoseconds(doubled.min(ArrayTime::LIMIT.attoseconds()));
     }
     until
+}
+
+/// What is shown of a plan that has no length.
+const SHORTEST: ArrayTime = ArrayTime::from_attoseconds(1);
+
+/// The end of what is shown, in words.
+fn end_of(until: ArrayTime) -> String {
+    if until == SHORTEST { "no plan".to_owned() } else { words::time(until) }
 }
 
 /// The columns of array time.
@@ -178,7 +186,7 @@ impl Chart {
             }
         }
         painter.put(area, self.time.left, y, glyphs.bottom_left, QUIET);
-        let until = words::time(self.time.until);
+        let until = end_of(self.time.until);
         let end = painter.put_right(area, y + 1, &until, QUIET);
         let middle = format!("τ, phase ends {}", glyphs.branch_up);
         painter.put(area, self.time.left, y + 1, "0 s", QUIET);
@@ -268,7 +276,7 @@ fn between(plan: &Plan, from: ArrayTime, to: ArrayTime) -> Between {
 /// The plan in one row: what the acceleration does, and the present moment.
 fn draw_strip(desk: &Desk, plan: &Plan, area: Rect, painter: &mut Painter<'_>) {
     let glyphs = painter.glyphs;
-    let until = words::time(shown_until(desk));
+    let until = end_of(shown_until(desk));
     let right = painter.put_right(area, area.y, &until, QUIET);
     let left = area.x + 6;
     let columns = right.saturating_sub(left + 1);

@@ -14,6 +14,8 @@ pub struct Completion {
     pub rest: Option<String>,
     /// The words that could stand where one is being typed.
     pub choices: Vec<String>,
+    /// Whether there are more than are listed.
+    pub has_more: bool,
 }
 
 /// What could follow a text.
@@ -49,6 +51,8 @@ impl Found {
         }
         if choices.len() < MOST_CHOICES {
             choices.push(word.to_owned());
+        } else {
+            self.completion.has_more = true;
         }
         let blank = if more_follows { " " } else { "" };
         // A word that stands there whole may still be the beginning of a longer one.
@@ -104,7 +108,7 @@ impl Found {
         match slot {
             Slot::Node => {
                 let fitting = layout.nodes.iter().filter(|node| node.name.starts_with(typed));
-                for node in fitting.take(MOST_CHOICES) {
+                for node in fitting.take(MOST_CHOICES + 1) {
                     self.offer(typed, &node.name, false);
                 }
             }

@@ -145,7 +145,8 @@ fn draw_entry(
         }
         let choices = &desk.entry.completion.choices;
         if choices.len() > 1 {
-            let list = choices.join("  ");
+            let more = if desk.entry.completion.has_more { "  …" } else { "" };
+            let list = format!("{}{more}", choices.join("  "));
             let columns = width_of(&list);
             if x.saturating_add(3 + columns) <= line.right() {
                 painter.put_right(line, line.y, &list, QUIET);

@@ -431,6 +431,29 @@ fn what_cannot_be_shown_is_said_in_its_place() {
 }
 
 #[test]
+fn more_choices_than_are_listed_are_hinted_at() {
+    let mut desk = desk();
+    let mut line = |typed: &str| {
+        for sign in typed.chars() {
+            press(&mut desk, KeyCode::Char(sign));
+        }
+        drawn(&desk, 120, 24).lines().last().expect("the entry").trim_end().to_owned()
+    };
+    assert!(line("against ").ends_with("…"), "twelve nodes");
+    assert!(line("pod").ends_with("pod8"), "eight of them");
+}
+
+#[test]
+fn a_line_without_a_plan_has_none_in_the_chart() {
+    let text = "name = \"t\"\n[[node]]\nname = \"hub\"\n[[node]]\nname = \"b\"\nposition = 1\n";
+    let desk = desk_on(text, &UNICODE);
+    for (width, height) in [(80, 24), (60, 16)] {
+        let text = drawn(&desk, width, height);
+        assert!(text.contains("no plan") && !text.contains("1 as"), "{text}");
+    }
+}
+
+#[test]
 fn a_change_while_running_says_that_it_stops() {
     let mut desk = desk();
     table_keys(&mut desk);
