@@ -190,7 +190,7 @@ impl<'a> Scene<'a> {
     /// The scene of the chosen row of the view.
     pub fn of(desk: &'a Desk) -> Result<Scene<'a>, &'static str> {
         let run = &desk.run;
-        let plan = run.plan().ok_or("a line in gravity has no launch frame")?;
+        let plan = run.plan().ok_or("no launch frame in gravity")?;
         let at = desk.at.min(run.last_moment());
         let light = Light::of(run);
         let row = desk.cursor().row;
