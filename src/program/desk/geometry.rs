@@ -25,8 +25,6 @@ pub const HEADINGS: u16 = 2;
 
 /// The most rows a note takes.
 const NOTE_ROWS: u16 = 3;
-/// Columns left free between the table and what is drawn beside it.
-const GAP: u16 = 2;
 
 /// The parts of the screen; each lies inside the area, and may be empty.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -94,7 +92,6 @@ impl Geometry {
             _ => 0,
         };
         let (table, beside) = split_columns(table, table.width - beside);
-        let (_, beside) = split_columns(beside, GAP.min(beside.width));
         let plan = take(plan);
         let entry = take(bottom);
         Geometry { extent, head, table, beside, note, plan, entry, has_horizon: desk.view().nodes }

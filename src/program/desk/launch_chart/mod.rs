@@ -58,12 +58,13 @@ pub fn draw(desk: &Desk, area: Rect, painter: &mut Painter<'_>) {
     if area.width < 8 || area.height < 4 {
         return;
     }
-    // A blank column between the table and the chart.
-    let area = Rect { x: area.x + 1, width: area.width - 1, ..area };
+    let long = "launch frame, time up, fore right";
+    // A blank column between the table and the chart; two where the title has room.
+    let gap = if width_of(long) + 2 <= area.width { 2 } else { 1 };
+    let area = Rect { x: area.x + gap, width: area.width - gap, ..area };
     let top = Rect { height: 1, ..area };
     let inside = Rect { y: area.y + 1, height: area.height - 2, ..area };
     let bottom = Rect { y: area.bottom() - 1, height: 1, ..area };
-    let long = "launch frame, time up, fore right";
     let title = if width_of(long) <= top.width { long } else { "time up, fore right" };
     painter.put(top, top.x, top.y, title, QUIET);
     let scene = match Scene::of(desk) {
