@@ -10,35 +10,7 @@ use clockspar::model::array_time::ArrayTime;
 use clockspar::model::constants::SPEED_OF_LIGHT_M_S;
 use clockspar::table::content::{Check, JudgedOver, Judgement, Rule, RuleState};
 
-/// Seeded random numbers: splitmix64 (Steele, Lea & Flood, OOPSLA 2014).
-struct Dice(u64);
-
-impl Dice {
-    fn unit(&mut self) -> f64 {
-        self.0 = self.0.wrapping_add(0x9e37_79b9_7f4a_7c15);
-        let mut z = self.0;
-        z = (z ^ (z >> 30)).wrapping_mul(0xbf58_476d_1ce4_e5b9);
-        z = (z ^ (z >> 27)).wrapping_mul(0x94d0_49bb_1331_11eb);
-        ((z ^ (z >> 31)) >> 11) as f64 / (1_u64 << 53) as f64
-    }
-
-    fn between(&mut self, low: f64, high: f64) -> f64 {
-        low + (high - low) * self.unit()
-    }
-
-    fn below(&mut self, count: usize) -> usize {
-        (self.unit() * count as f64) as usize
-    }
-
-    fn is(&mut self, share: f64) -> bool {
-        self.unit() < share
-    }
-
-    /// A size between two, even in its logarithm.
-    fn size(&mut self, low: f64, high: f64) -> f64 {
-        (self.between(low.ln(), high.ln())).exp()
-    }
-}
+use crate::dice::Dice;
 
 /// A value as a layout states it: a bare number or a quantity.
 type Stated = String;

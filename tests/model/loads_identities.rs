@@ -6,27 +6,7 @@ use clockspar::model::dd::Dd;
 use clockspar::model::loads::{Engine, Gravity, Joint, Loads, Member, State, Structure};
 use clockspar::model::plan::{Phase, Plan};
 
-/// A small generator of doubles, so that a failing line can be made again.
-struct Dice(u64);
-
-impl Dice {
-    fn unit(&mut self) -> f64 {
-        // splitmix64 (Steele, Lea & Flood, OOPSLA 2014).
-        self.0 = self.0.wrapping_add(0x9e37_79b9_7f4a_7c15);
-        let mut z = self.0;
-        z = (z ^ (z >> 30)).wrapping_mul(0xbf58_476d_1ce4_e5b9);
-        z = (z ^ (z >> 27)).wrapping_mul(0x94d0_49bb_1331_11eb);
-        ((z ^ (z >> 31)) >> 11) as f64 / (1_u64 << 53) as f64
-    }
-
-    fn between(&mut self, low: f64, high: f64) -> f64 {
-        low + (high - low) * self.unit()
-    }
-
-    fn below(&mut self, count: usize) -> usize {
-        (self.unit() * count as f64) as usize
-    }
-}
+use crate::dice::Dice;
 
 fn random_structure(dice: &mut Dice) -> Structure {
     let count = 2 + dice.below(6);

@@ -10,6 +10,7 @@ mod check;
 mod check_advice;
 mod clocks;
 mod demo_recordings;
+mod dice;
 mod history;
 mod hostile;
 mod identities;
