@@ -309,10 +309,11 @@ impl Plan {
         check_shape(index, &phase, self.end())?;
         let mut sum = self.until[index];
         let start_rapidity = if index == 0 { Dd::ZERO } else { near_rapidity_of(sum.gain) };
-        let launch = motion::launch_gain(&phase, start_rapidity, phase.end);
         sum.gain = sum.gain + phase.gain(phase.end);
         let end_rapidity = near_rapidity_of(sum.gain);
         check_rapidity(index, &phase, start_rapidity, end_rapidity)?;
+        // It takes a time that grows with the rapidity, which is small by now.
+        let launch = motion::launch_gain(&phase, start_rapidity, phase.end);
         sum.velocity_spent.add(phase.velocity_spent(phase.end));
         sum.launch_time_s.add(launch.time_s);
         sum.launch_position_m.add(launch.position_m);

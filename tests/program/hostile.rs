@@ -132,6 +132,12 @@ fn nesting_and_counts_beyond_all_measure_are_refused() {
     let many: String =
         (0..1000).map(|number| series.replace("PREFIX", &format!("p{number}-"))).collect();
     is_refused(rates_of(format!("{LINE}{many}").as_bytes()), "1000000 nodes");
+    // A ramp to a rapidity of a hundred millions need not be integrated to be refused.
+    let begun = Instant::now();
+    let ramp = "ramp = [\"0 m/s^2\", \"1e6 m/s^2\"]\nfor = \"1e11 s\"";
+    let far = LINE.replace("hold = \"1 g0\"\nfor = \"1 h\"", ramp);
+    is_refused(rates_of(far.as_bytes()), "beyond the limit of 700");
+    assert!(begun.elapsed() < LONGEST / 6, "{:?}", begun.elapsed());
     let digits = "9".repeat(1_000_000);
     is_refused(rates_of(LINE.replace("1 km", &format!("{digits} km")).as_bytes()), "position");
 }
