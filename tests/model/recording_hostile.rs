@@ -222,7 +222,7 @@ fn a_line_without_end_is_passed_over_in_bounded_memory() {
 }
 
 /// Counts the bytes that are read.
-struct Counted<'a>(&'a [u8], Cell<u64>);
+pub struct Counted<'a>(pub &'a [u8], pub Cell<u64>);
 
 impl ReadAt for Counted<'_> {
     fn size(&self) -> io::Result<u64> {

@@ -1,16 +1,16 @@
 //! Recordings made under an older model, and recordings of very long lines.
 
 use std::cell::Cell;
-use std::io;
 
 use clockspar::model::array_time::ArrayTime;
 use clockspar::run::Run;
 use clockspar::run::recording::{
-    Basis, Opening, ReadAt, ReadFault, Reader, Recorder, Seek, allowed_difference, verify,
+    Basis, Opening, ReadFault, Reader, Recorder, Seek, allowed_difference, verify,
 };
 use serde_json::Value;
 
 use crate::recording::{TINY, bodies, layout, resealed, seconds, verdict};
+use crate::recording_hostile::Counted;
 
 /// The numbers of a frame that are not zero: where each stands, and its value.
 fn numbers(body: &str) -> Vec<(&'static str, Option<usize>, f64)> {
@@ -94,21 +94,6 @@ fn a_recording_of_an_older_model_holds_within_the_allowed_errors() {
     assert!(!verdict(&resealed(&changed)).holds);
     older.remove(frame);
     assert!(!verdict(&resealed(&older)).is_good());
-}
-
-/// Counts the bytes that are read.
-struct Counted<'a>(&'a [u8], Cell<u64>);
-
-impl ReadAt for Counted<'_> {
-    fn size(&self) -> io::Result<u64> {
-        self.0.size()
-    }
-
-    fn read_at(&self, offset: u64, buffer: &mut [u8]) -> io::Result<usize> {
-        let count = self.0.read_at(offset, buffer)?;
-        self.1.set(self.1.get() + count as u64);
-        Ok(count)
-    }
 }
 
 #[test]
