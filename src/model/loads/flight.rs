@@ -58,11 +58,9 @@ pub(super) struct Drive {
 /// The drive at a moment of a plan; in a phase that is named, its end meaning the limit from
 /// below, or wherever the moment falls.
 pub(super) fn drive(plan: &Plan, mass: &Propulsion, phase: Option<usize>, at: ArrayTime) -> Drive {
-    let (acceleration_m_s2, slope_m_s3) = match phase {
-        Some(index) => {
-            let phase = &plan.phases()[index];
-            (phase.acceleration(at), slope(phase))
-        }
+    // A plan that was changed after its end has a coast more than the one before the change.
+    let (acceleration_m_s2, slope_m_s3) = match phase.and_then(|index| plan.phases().get(index)) {
+        Some(phase) => (phase.acceleration(at), slope(phase)),
         None => (Dd::ZERO, 0.0),
     };
     if !mass.is_falling() {

@@ -453,6 +453,17 @@ fn a_line_without_a_plan_has_none_in_the_chart() {
     }
 }
 
+/// The coast between the end of the plan and a change has a phase in the plan as changed and
+/// none in the plan before.
+#[test]
+fn what_is_passed_is_found_across_a_change_after_the_end_of_the_plan() {
+    let mut desk = desk();
+    for sentence in ["to 40 h", "hold 0.2 g0", "reach of pod8", "to 12 h", "to 30 h", "to 41 h"] {
+        say(&mut desk, sentence);
+        assert!(!drawn(&desk, 120, 40).is_empty());
+    }
+}
+
 #[test]
 fn a_change_while_running_says_that_it_stops() {
     let mut desk = desk();
