@@ -57,9 +57,10 @@ impl Desk {
         effects
     }
 
-    /// What a released node passes, and so the number of rows, changes with the moment.
+    /// What a released node passes changes with the moment, and `undo` takes an event away.
     fn keep_row_in_table(&mut self) {
-        if self.reach_of.is_some() && self.cursor().row > 0 {
+        let may_shrink = self.reach_of.is_some() || !self.view().nodes;
+        if may_shrink && self.cursor().row > 0 {
             let last = self.rows().saturating_sub(1);
             let cursor = self.cursor_mut();
             cursor.row = cursor.row.min(last);

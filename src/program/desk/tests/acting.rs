@@ -465,6 +465,19 @@ fn what_is_passed_is_found_across_a_change_after_the_end_of_the_plan() {
 }
 
 #[test]
+fn the_row_chosen_stays_in_a_list_of_events_that_shrinks() {
+    let mut desk = desk();
+    say(&mut desk, "note one");
+    say(&mut desk, "note two");
+    press(&mut desk, KeyCode::Char('9'));
+    press(&mut desk, KeyCode::End);
+    let before = desk.cursor().row;
+    say(&mut desk, "undo");
+    assert_eq!(desk.cursor().row + 1, desk.rows());
+    assert!(desk.cursor().row < before);
+}
+
+#[test]
 fn a_change_while_running_says_that_it_stops() {
     let mut desk = desk();
     table_keys(&mut desk);

@@ -95,7 +95,7 @@ fn messages() -> impl Strategy<Value = Vec<Message>> {
 }
 
 proptest! {
-    #![proptest_config(ProptestConfig { cases: 48, ..ProptestConfig::default() })]
+    #![proptest_config(ProptestConfig { cases: 300, ..ProptestConfig::default() })]
 
     #[test]
     fn no_sequence_of_messages_and_no_size_panics(
